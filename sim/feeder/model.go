@@ -260,19 +260,19 @@ const (
 
 // CapacitorSettings is one row of the settings sheet of a capacitor control.
 type CapacitorSettings struct {
-	At                    tables.Pos
-	Control               CapacitorControl
-	Phase                 []Phase  // nothing: unnamed; one: a phase; two: a pair
-	Watched               *Watched // section, transformer, regulator or switch; nil where the control needs none
-	Profile               string   // temperature
-	On, Off               float64  // of the control's own quantity: V, kvar, A, power factor (signed), °C
-	OverrideOn            float64  // V; NaN none
-	OverrideOff           float64  // V; NaN none
-	OverrideDeadband      float64  // V
-	TimeOn, TimeOff       float64  // seconds after local midnight
-	Weekdays              bool
-	Delay, Lockout        float64 // s
-	DailyLimit            int     // 0: none
+	At               tables.Pos
+	Control          CapacitorControl
+	Phase            []Phase  // nothing: unnamed; one: a phase; two: a pair
+	Watched          *Watched // section, transformer, regulator or switch; nil where the control needs none
+	Profile          string   // temperature
+	On, Off          float64  // of the control's own quantity: V, kvar, A, power factor (signed), °C
+	OverrideOn       float64  // V; NaN none
+	OverrideOff      float64  // V; NaN none
+	OverrideDeadband float64  // V
+	TimeOn, TimeOff  float64  // seconds after local midnight
+	Weekdays         bool
+	Delay, Lockout   float64 // s
+	DailyLimit       int     // 0: none
 }
 
 // Watched is an element whose flow a control reads, at its from end.
@@ -293,10 +293,10 @@ type Load struct {
 	At         tables.Pos
 	Node       int
 	Connection Connection
-	Phases     []Phase // wye
-	Pairs      []Pair  // delta
-	KW, KVAR   float64 // total, before the profile; of a [kW] profile: NaN, and the ratio in KVARPerKW
-	KVARPerKW  float64 // tangent of the power-factor angle, for a [kW] profile without [kvar]
+	Phases     []Phase       // wye
+	Pairs      []Pair        // delta
+	KW, KVAR   float64       // total, before the profile; of a [kW] profile: NaN, and the ratio in KVARPerKW
+	KVARPerKW  float64       // tangent of the power-factor angle, for a [kW] profile without [kvar]
 	EnergyKWh  []MonthEnergy // where given by energy: month "" is the whole period; KW is NaN then
 	ZIP        ZIP
 	Profile    string
