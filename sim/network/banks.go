@@ -102,7 +102,7 @@ func (n *Network) windings(t *feeder.Transformer) (ws []winding, inner []int32, 
 		return nil, nil, fmt.Errorf("transformer %q: a 1ph unit stands on one phase or on a pair", t.Name)
 	case "open-wye/open-delta":
 		for _, p := range t.Pairs {
-			ws = append(ws, winding{hi[p[0]], Ground, lo[p[0]], lo[p[1]], high / math.Sqrt3, low, tap / math.Sqrt3})
+			ws = append(ws, winding{hi[p[0]], Ground, lo[p[0]], lo[p[1]], high / sqrt3, low, tap / sqrt3})
 		}
 		return ws, nil, nil
 	case "open-delta/open-delta":
@@ -134,7 +134,7 @@ func (n *Network) vectorGroup(t *feeder.Transformer) (ws []winding, inner []int3
 		if side == "YN" || side == "yn" {
 			return Ground
 		}
-		u := n.add(Unknown{-1, 0, n.Model.Nodes[node].Nominal * 1000 / math.Sqrt3, "star of " + t.Name})
+		u := n.add(Unknown{-1, 0, n.Model.Nodes[node].Nominal * 1000 / sqrt3, "star of " + t.Name})
 		inner = append(inner, u)
 		return u
 	}
@@ -142,10 +142,10 @@ func (n *Network) vectorGroup(t *feeder.Transformer) (ws []winding, inner []int3
 	hiStar, loStar := Ground, Ground
 	hv, lv, tv := high, low, tap
 	if !hiDelta {
-		hiStar, hv, tv = star(h, t.From), high/math.Sqrt3, tap/math.Sqrt3
+		hiStar, hv, tv = star(h, t.From), high/sqrt3, tap/sqrt3
 	}
 	if !loDelta {
-		loStar, lv = star(l, t.To), low/math.Sqrt3
+		loStar, lv = star(l, t.To), low/sqrt3
 	}
 	if odd := clock%2 == 1; odd != (hiDelta != loDelta) {
 		return nil, nil, fmt.Errorf("transformer %q: connection %q: clock number %d cannot be had from these windings", t.Name, t.Connection, clock)
@@ -177,19 +177,10 @@ func (n *Network) vectorGroup(t *feeder.Transformer) (ws []winding, inner []int3
 			turn = (turn + 6) % 12
 		}
 		shift := turn / 4
-		// The low side lags by 120° per shift: phase b of the low side then carries
-		// what belongs to phase a at shift 0.
-		r, s := lo[(k+shift)%3], loStar
+		// A low side that lags by 120° per shift has the terminal before in phase.
+		r, s := lo[(k-shift+3)%3], loStar
 		if loDelta {
-			s = lo[(k+shift+1)%3]
-		}
-		if shift != 0 {
-			// lag by 120°: V_a of the low side = a⁻¹·(in phase with A); the terminal in
-			// phase with A is then c→... so count backwards
-			r = lo[((k-shift)%3+3)%3]
-			if loDelta {
-				s = lo[((k-shift+1)%3+3)%3]
-			}
+			s = lo[(k-shift+4)%3]
 		}
 		if reversed {
 			r, s = s, r
@@ -205,10 +196,10 @@ func (n *Network) vectorGroup(t *feeder.Transformer) (ws []winding, inner []int3
 // made for it), the no-load loss on the source side at nominal voltage.
 func (n *Network) regulator(i int) {
 	r := &n.Model.Regulators[i]
-	ln := n.Model.Nodes[r.From].Nominal * 1000 / math.Sqrt3
+	ln := n.Model.Nodes[r.From].Nominal * 1000 / sqrt3
 	unitV := ln
 	if r.Connection != feeder.RegulatorWye {
-		unitV = ln * math.Sqrt3
+		unitV = ln * sqrt3
 	}
 	from, to := n.At[r.From], n.At[r.To]
 	out := to // what the ideal part feeds: the bus, or the inner point before the series part

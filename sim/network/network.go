@@ -10,7 +10,6 @@ package network
 
 import (
 	"fmt"
-	"math"
 	"math/cmplx"
 	"sort"
 
@@ -44,6 +43,8 @@ func (k Kind) String() string {
 	}
 	return fmt.Sprintf("Kind(%d)", uint8(k))
 }
+
+const sqrt3 = 1.7320508075688772935274463415058723669428
 
 // Ground stands for the earth in a list of terminals.
 const Ground = int32(-1)
@@ -116,7 +117,7 @@ func Build(m *feeder.Model) (*Network, error) {
 	for i := range m.Nodes {
 		n.At[i] = [3]int32{Ground, Ground, Ground}
 		for _, p := range m.Nodes[i].Phases {
-			n.At[i][p] = n.add(Unknown{i, p, m.Nodes[i].Nominal * 1000 / math.Sqrt3, m.Nodes[i].Name + "." + p.String()})
+			n.At[i][p] = n.add(Unknown{i, p, m.Nodes[i].Nominal * 1000 / sqrt3, m.Nodes[i].Name + "." + p.String()})
 		}
 	}
 	// Everything is stamped in the order of names, so that the order of rows moves
