@@ -1,0 +1,484 @@
+package powerflow
+
+import (
+	"fmt"
+	"math"
+	"math/cmplx"
+
+	"yearflow/sim/network"
+)
+
+// Path tells how a solution was found.
+type Path uint8
+
+// The paths of a solution. None: there is no solution.
+const (
+	None Path = iota
+	FixedPoint
+	Newton
+)
+
+// String returns the name of the path in the words of run.json.
+func (p Path) String() string {
+	switch p {
+	case FixedPoint:
+		return "fixed point"
+	case Newton:
+		return "newton"
+	}
+	return "none"
+}
+
+// Input is what changes from instant to instant.
+type Input struct {
+	Source []complex128 // V, by Network.Fixed
+	Power  []complex128 // VA at 1 p.u., by injection
+}
+
+// Tolerance says when an iteration has arrived.
+type Tolerance struct {
+	Change   float64 // largest change of a voltage, p.u.
+	Mismatch float64 // of max(1 kVA, nominal power at the node)
+}
+
+// Contract is the tolerance that every result is held to.
+var Contract = Tolerance{Change: 1e-8, Mismatch: 1e-6}
+
+// Reference is the tolerance of a measurement that stands near an edge.
+var Reference = Tolerance{Change: 1e-12, Mismatch: 1e-9}
+
+// Solution is the state of a network at one instant. A caller owns its slices;
+// NewSolution makes them.
+type Solution struct {
+	V          []complex128 // V to ground, by Network.Unknowns
+	Path       Path
+	Iterations int
+	// Worst is the unknown that moved most in the last iteration, Change by how much
+	// in p.u.: where no solution was found, the place to look at.
+	Worst  int
+	Change float64
+}
+
+// Solver solves one network with one set of injections. It is not safe for use by
+// several goroutines at once. After New nothing allocates.
+type Solver struct {
+	Net        *network.Network
+	Injections []Injection
+
+	red *reduction
+	pat *pattern
+	// stamps of what no ratio moves, of what ratios move, and of fixed voltages.
+	still, moving []stamp
+	toFixed       []fixedStamp
+
+	ratio        []float64
+	closed       []bool
+	base         []complex128 // values without the moving stamps
+	y, f         []complex128 // values of the reduced matrix, and its factor
+	x, rhs, pull []complex128 // in elimination order; pull is that of the fixed voltages
+	inject, old  []complex128 // current that injections put into each unknown, A
+	nodeSize     []float64    // VA by node of an unknown's node (inner points have none)
+	nodeMismatch []complex128
+	noLoad       []complex128
+	noLoadValid  bool
+	noLoadSource []complex128
+	perUnit      []float64 // 1/V by unknown
+	newton       *newton
+}
+
+// stamp adds c(a)·c(b)·y of an element to a slot.
+type stamp struct {
+	slot    int32
+	element int32
+	entry   int32
+	a, b    int32 // coefficients, −1 for one
+}
+
+type fixedStamp struct {
+	row, fixed     int32 // row in elimination order
+	element, entry int32
+	a, b           int32
+}
+
+// New prepares a solver. The error names ideal devices that leave a current open.
+func New(n *network.Network, injections []Injection) (*Solver, error) {
+	red, err := newReduction(n)
+	if err != nil {
+		return nil, err
+	}
+	s := &Solver{Net: n, Injections: injections, red: red}
+	var entries [][2]int32
+	couple := func(t []int32) {
+		for _, u := range t {
+			for _, v := range t {
+				for _, a := range red.terms[u] {
+					for _, b := range red.terms[v] {
+						if a.col >= 0 && b.col >= 0 && a.col < b.col {
+							entries = append(entries, [2]int32{a.col, b.col})
+						}
+					}
+				}
+			}
+		}
+	}
+	for _, e := range n.Elements {
+		couple(e.Terminals)
+	}
+	for _, j := range injections {
+		if j.To != network.Ground {
+			couple([]int32{j.From, j.To})
+		} else {
+			couple([]int32{j.From})
+		}
+	}
+	s.pat = newPattern(red.free, entries)
+	s.plan()
+	k := s.pat.slots()
+	s.base, s.y, s.f = make([]complex128, k), make([]complex128, k), make([]complex128, k)
+	s.x, s.rhs, s.pull = make([]complex128, red.free), make([]complex128, red.free), make([]complex128, red.free)
+	u := len(n.Unknowns)
+	s.inject, s.old, s.noLoad = make([]complex128, u), make([]complex128, u), make([]complex128, u)
+	s.noLoadSource = make([]complex128, len(n.Fixed))
+	s.perUnit = make([]float64, u)
+	for i := range n.Unknowns {
+		s.perUnit[i] = 1 / n.Unknowns[i].Nominal
+	}
+	s.nodeSize, s.nodeMismatch = make([]float64, len(n.At)), make([]complex128, len(n.At))
+	for _, j := range injections {
+		if node := n.Unknowns[j.From].Node; node >= 0 {
+			s.nodeSize[node] += j.Size
+		}
+	}
+	s.ratio = make([]float64, len(n.Couplings))
+	for i := range s.ratio {
+		s.ratio[i] = 1
+	}
+	s.closed = make([]bool, len(n.Model.Capacitors))
+	for i := range n.Model.Capacitors {
+		s.closed[i] = n.Model.Capacitors[i].Closed
+	}
+	s.newton = newNewton(s)
+	return s, s.assemble()
+}
+
+// plan lists where each entry of each element goes.
+func (s *Solver) plan() {
+	n, red := s.Net, s.red
+	for e := range n.Elements {
+		el := &n.Elements[e]
+		w := len(el.Terminals)
+		for p, u := range el.Terminals {
+			for q, v := range el.Terminals {
+				if el.Y[p*w+q] == 0 {
+					continue
+				}
+				for _, a := range red.terms[u] {
+					if a.col < 0 {
+						continue
+					}
+					row := s.pat.place[a.col]
+					for _, b := range red.terms[v] {
+						if b.col < 0 {
+							s.toFixed = append(s.toFixed, fixedStamp{row, -1 - b.col, int32(e), int32(p*w + q), a.coef, b.coef})
+							continue
+						}
+						// The slots hold one triangle: what falls into the other is left out.
+						if col := s.pat.place[b.col]; col > row {
+							continue
+						}
+						st := stamp{s.pat.slot(a.col, b.col), int32(e), int32(p*w + q), a.coef, b.coef}
+						if a.coef < 0 && b.coef < 0 && el.Kind != network.Capacitor {
+							s.still = append(s.still, st)
+						} else {
+							s.moving = append(s.moving, st)
+						}
+					}
+				}
+			}
+		}
+	}
+}
+
+// SetDevices takes the ratio of every coupling (Network.Couplings; 1 where it has
+// no unit) and the state of every capacitor bank, and factors anew where they
+// changed. The error says that the network has no unique solution.
+func (s *Solver) SetDevices(ratio []float64, closed []bool) error {
+	same := true
+	for i, r := range ratio {
+		same = same && s.ratio[i] == r
+	}
+	for i, c := range closed {
+		same = same && s.closed[i] == c
+	}
+	if same {
+		return nil
+	}
+	copy(s.ratio, ratio)
+	copy(s.closed, closed)
+	return s.refactor()
+}
+
+func (s *Solver) assemble() error {
+	clear(s.base)
+	for _, st := range s.still {
+		s.base[st.slot] += s.Net.Elements[st.element].Y[st.entry]
+	}
+	return s.refactor()
+}
+
+func (s *Solver) refactor() error {
+	s.noLoadValid = false
+	if !s.red.update(s.ratio) {
+		return fmt.Errorf("the taps of the regulators make the network's equations singular: look at regulators in a loop")
+	}
+	copy(s.y, s.base)
+	for _, st := range s.moving {
+		el := &s.Net.Elements[st.element]
+		if el.Kind == network.Capacitor && !s.closed[el.Index] {
+			continue
+		}
+		s.y[st.slot] += el.Y[st.entry] * complex(s.coef(st.a)*s.coef(st.b), 0)
+	}
+	copy(s.f, s.y)
+	if !s.pat.factor(s.f) {
+		return fmt.Errorf("the network's equations are singular: some part of the feeder has nothing to hold its voltage")
+	}
+	return nil
+}
+
+func (s *Solver) coef(c int32) float64 {
+	if c < 0 {
+		return 1
+	}
+	return s.red.coef[c]
+}
+
+// NoLoad sets dst to the voltages without any injection.
+func (s *Solver) NoLoad(dst []complex128, in *Input) {
+	s.setPull(in)
+	s.ensureNoLoad(in)
+	copy(dst, s.noLoad)
+}
+
+func (s *Solver) ensureNoLoad(in *Input) {
+	same := s.noLoadValid
+	for i, v := range in.Source {
+		same = same && s.noLoadSource[i] == v
+	}
+	if same {
+		return
+	}
+	copy(s.noLoadSource, in.Source)
+	copy(s.x, s.pull)
+	s.pat.solve(s.f, s.x)
+	s.expand(s.noLoad, s.x, in)
+	s.noLoadValid = true
+}
+
+// setPull sets the currents that the fixed voltages drive into the others.
+func (s *Solver) setPull(in *Input) {
+	clear(s.pull)
+	for _, st := range s.toFixed {
+		s.pull[st.row] -= s.Net.Elements[st.element].Y[st.entry] * complex(s.coef(st.a)*s.coef(st.b), 0) * in.Source[st.fixed]
+	}
+}
+
+// expand writes every voltage from the independent ones.
+func (s *Solver) expand(v, x []complex128, in *Input) {
+	place := s.pat.place
+	for u, terms := range s.red.terms {
+		if len(terms) == 1 && terms[0].coef < 0 {
+			if c := terms[0].col; c >= 0 {
+				v[u] = x[place[c]]
+			} else {
+				v[u] = in.Source[-1-c]
+			}
+			continue
+		}
+		var sum complex128
+		for _, t := range terms {
+			if t.col >= 0 {
+				sum += x[place[t.col]] * complex(s.red.value(t), 0)
+			} else {
+				sum += in.Source[-1-t.col] * complex(s.red.value(t), 0)
+			}
+		}
+		v[u] = sum
+	}
+}
+
+// gather sets rhs to Tᵀ·J for the currents J that are put into each unknown.
+func (s *Solver) gather(rhs, j []complex128) {
+	place := s.pat.place
+	for u, terms := range s.red.terms {
+		c := j[u]
+		if c == 0 {
+			continue
+		}
+		for _, t := range terms {
+			if t.col < 0 {
+				continue
+			}
+			if t.coef < 0 {
+				rhs[place[t.col]] += c
+			} else {
+				rhs[place[t.col]] += c * complex(s.red.coef[t.coef], 0)
+			}
+		}
+	}
+}
+
+// currents sets inject to the currents that the injections put into each unknown
+// at voltages v.
+func (s *Solver) currents(inject, v []complex128, in *Input) {
+	clear(inject)
+	for k := range s.Injections {
+		j := &s.Injections[k]
+		i := j.current(in.Power[k], j.across(v))
+		inject[j.From] -= i
+		if j.To != network.Ground {
+			inject[j.To] += i
+		}
+	}
+}
+
+// SolveBy solves by one method alone, from the no-load voltages: for tests and for
+// the engineer who doubts the other.
+func (s *Solver) SolveBy(p Path, in *Input, tol Tolerance, out *Solution) bool {
+	s.setPull(in)
+	s.ensureNoLoad(in)
+	out.Iterations = 0
+	copy(out.V, s.noLoad)
+	ok := false
+	switch p {
+	case FixedPoint:
+		ok = s.fixedPoint(in, tol, out)
+	case Newton:
+		ok = s.newton.solve(in, tol, out)
+	}
+	if !ok {
+		out.Path = None
+	}
+	return ok
+}
+
+// maxFixedPoint bounds the fixed-point iterations; slow contraction is left to
+// Newton's method before that.
+const maxFixedPoint = 80
+
+// Solve finds the voltages for in, starting from start, or from the no-load
+// voltages where start is nil. Of several solutions the one reached from the
+// no-load voltages counts: a start that does not lead anywhere is given up for
+// them, and Newton's method begins there. It reports whether there is a solution;
+// out says which and how.
+func (s *Solver) Solve(in *Input, start []complex128, tol Tolerance, out *Solution) bool {
+	s.setPull(in)
+	s.ensureNoLoad(in)
+	out.Iterations = 0
+	if start != nil {
+		copy(out.V, start)
+		if s.fixedPoint(in, tol, out) {
+			return true
+		}
+	}
+	copy(out.V, s.noLoad)
+	if s.fixedPoint(in, tol, out) {
+		return true
+	}
+	copy(out.V, s.noLoad)
+	if s.newton.solve(in, tol, out) {
+		return true
+	}
+	out.Path = None
+	return false
+}
+
+func (s *Solver) fixedPoint(in *Input, tol Tolerance, out *Solution) bool {
+	out.Path = FixedPoint
+	s.currents(s.inject, out.V, in)
+	last := math.Inf(1)
+	slow := 0
+	for range maxFixedPoint {
+		out.Iterations++
+		copy(s.x, s.pull)
+		s.gather(s.x, s.inject)
+		s.pat.solve(s.f, s.x)
+		copy(s.old, out.V)
+		s.expand(out.V, s.x, in)
+		change, worst := s.change(out.V, s.old)
+		out.Change, out.Worst = change, worst
+		if change != change || change > 1e3 {
+			return false
+		}
+		s.old, s.inject = s.inject, s.old
+		s.currents(s.inject, out.V, in)
+		if change < tol.Change || change < 1e-10 && change > 0.5*last {
+			// The second: no digit is left to gain.
+			if s.matched(out.V, tol) {
+				return true
+			}
+		}
+		if change > 0.9*last {
+			if slow++; slow > 12 {
+				return false
+			}
+		}
+		last = change
+	}
+	return false
+}
+
+// change returns the largest change of a voltage in p.u., and where.
+func (s *Solver) change(v, old []complex128) (float64, int) {
+	worst, at := 0.0, 0
+	for u := range v {
+		d := v[u] - old[u]
+		m := (real(d)*real(d) + imag(d)*imag(d)) * s.perUnit[u] * s.perUnit[u]
+		if m > worst || m != m {
+			worst, at = m, u
+			if m != m {
+				break
+			}
+		}
+	}
+	return math.Sqrt(worst), at
+}
+
+// matched tells whether the currents of the injections at v (inject) are those that
+// v was solved with (old), as power at every node.
+func (s *Solver) matched(v []complex128, tol Tolerance) bool {
+	clear(s.nodeMismatch)
+	for u := range v {
+		if node := s.Net.Unknowns[u].Node; node >= 0 {
+			if d := s.inject[u] - s.old[u]; d != 0 {
+				s.nodeMismatch[node] += complex(cmplx.Abs(v[u]*cmplx.Conj(d)), 0)
+			}
+		}
+	}
+	for n, m := range s.nodeMismatch {
+		if real(m) > tol.Mismatch*max(1000, s.nodeSize[n]) {
+			return false
+		}
+	}
+	return true
+}
+
+// NewSolution makes room for a solution of the solver.
+func (s *Solver) NewSolution() *Solution {
+	return &Solution{V: make([]complex128, len(s.Net.Unknowns))}
+}
+
+// LowAt returns the injection with a bent characteristic that stands furthest below
+// the corner, or −1 where none does.
+func (s *Solver) LowAt(v []complex128) int {
+	at, least := -1, Corner*(1-1e-12)
+	for k := range s.Injections {
+		j := &s.Injections[k]
+		if j.Bent() && !j.Generator {
+			if m := cmplx.Abs(j.across(v)) / j.Nominal; m < least {
+				at, least = k, m
+			}
+		}
+	}
+	return at
+}
