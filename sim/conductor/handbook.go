@@ -42,8 +42,9 @@ const tapeMil = 5
 // kind and size; the slices are the caller's own. Sizes up to 4/0 are AWG, others
 // kcmil; AA is all aluminium of hard-drawn (1350) wire, ACSR has the strands of
 // aluminium and steel before it, Cu is hard-drawn copper. CN is a concentric neutral
-// of a third of the core's conductance (1/3) or all of it (full), TS a tape shield.
-// A rating is common practice for planning, not a limit of a maker.
+// of a third of the core's conductance (1/3, and no fewer than six strands) or all of
+// it (full), TS a tape shield. A rating is common practice for planning, not a limit
+// of a maker.
 func Handbook() ([]Conductor, []Cable) {
 	cs := make([]Conductor, 0, len(bares))
 	for _, b := range bares {
@@ -117,10 +118,10 @@ var bares = [...]bare{
 	{"250 AA", 0.410, 0.0171, 0.567, 329, fromAppendixA},
 	{"266.8 AA", 0.384, 0.0177, 0.586, unknown, fromStranding},
 	{"336.4 AA", 0.305, 0.0210, 0.666, 410, fromAppendixA},
-	{"350 AA", 0.294, 0.0214, 0.679, 399, fromStranding},
+	{"350 AA", 0.294, 0.0214, 0.679, unknown, fromStranding},
 	{"397.5 AA", 0.258, 0.0228, 0.724, 440, fromAppendixA},
 	{"477 AA", 0.216, 0.0254, 0.795, 510, fromAppendixA},
-	{"500 AA", 0.206, 0.0260, 0.813, 483, fromStranding},
+	{"500 AA", 0.206, 0.0260, 0.813, unknown, fromStranding},
 	{"556.5 AA", 0.186, 0.0275, 0.858, 560, fromAppendixA},
 	{"700 AA", 0.148, 0.0308, 0.963, unknown, fromStranding},
 	{"750 AA", 0.139, 0.0319, 0.997, unknown, fromStranding},
