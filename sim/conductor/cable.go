@@ -172,5 +172,5 @@ func (l CableLine) matrices(s sheath) (Matrices, error) {
 	for i := range n {
 		m.B[i][i] = b // each cable is shielded: nothing between them
 	}
-	return m, nil
+	return m.sound()
 }

@@ -110,7 +110,7 @@ func (fs *faults) checkPlaces(ws []wire, phases int, overhead bool) {
 		case !w.at.finite():
 			fs.add("%s has no place: x and y must be numbers", w.name)
 		case overhead && !(w.at.Y > w.radius):
-			fs.add("%s is %.4g ft above the earth; an overhead conductor hangs above it (y > 0)", w.name, w.at.Y/foot)
+			fs.add("%s is at y = %.4g ft; an overhead conductor hangs above the earth (y > 0)", w.name, w.at.Y/foot)
 		}
 	}
 	for i := range ws {
@@ -131,16 +131,20 @@ func (fs *faults) checkPair(a, b wire) {
 	}
 }
 
-// checkDepth reports distances for which the earth's return no longer lies deep
+// checkDepth reports the widest distance where the earth's return no longer lies
 // below the line.
 func (fs *faults) checkDepth(f, resistivity float64, ws []wire) {
-	depth := EarthDepth(f, resistivity)
+	var a, b wire
+	widest := 0.0
 	for i := range ws {
 		for j := range i {
-			if d := ws[i].at.distance(ws[j].at); d >= depth {
-				fs.add("%s and %s are %.4g ft apart, beyond the depth of the earth's return, %.4g ft: check the places and the earth resistivity",
-					ws[j].name, ws[i].name, d/foot, depth/foot)
+			if d := ws[i].at.distance(ws[j].at); d > widest {
+				a, b, widest = ws[j], ws[i], d
 			}
 		}
+	}
+	if depth := EarthDepth(f, resistivity); widest >= depth {
+		fs.add("%s and %s are %.4g ft apart, beyond the depth of the earth's return, %.4g ft: check the places and the earth resistivity",
+			a.name, b.name, widest/foot, depth/foot)
 	}
 }

@@ -1,6 +1,9 @@
 package conductor
 
-import "math"
+import (
+	"errors"
+	"math"
+)
 
 // Matrices are the series impedance and the shunt susceptance of a construction
 // per kilometre, by position; the neutral is reduced.
@@ -29,6 +32,22 @@ func Sequence(z1, z0 complex128, b1, b0 float64) Matrices {
 		m.B[i][i] = (b0 + 2*b1) / 3
 	}
 	return m
+}
+
+// sound returns m, or an error where the values of a construction, each possible by
+// itself, are together beyond what the numbers or the equations hold.
+func (m Matrices) sound() (Matrices, error) {
+	for i := range m.N {
+		for j := range m.N {
+			if !finite(real(m.Z[i][j])) || !finite(imag(m.Z[i][j])) || !finite(m.B[i][j]) {
+				return Matrices{}, errors.New("the values are too large or too small to compute with: check the units")
+			}
+		}
+		if !(real(m.Z[i][i]) > 0) || m.B[i][i] < 0 {
+			return Matrices{}, errors.New("the impedances or susceptances come out negative: check distances, radii and units")
+		}
+	}
+	return m, nil
 }
 
 // Admittance returns the inverse of Z, g + jb in S·km: the series admittance of one

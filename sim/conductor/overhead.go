@@ -44,7 +44,7 @@ func (l Line) Overhead() (Matrices, error) {
 	if err := m.setPotential(l.Frequency, kron(potential(ws), n)); err != nil {
 		return Matrices{}, err
 	}
-	return m, nil
+	return m.sound()
 }
 
 func (l Line) check(ws []wire) error {

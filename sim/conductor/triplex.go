@@ -36,5 +36,5 @@ func (l TriplexLine) Triplex() (Matrices, error) {
 	m.setZ(kron(primitive(l.Frequency, l.EarthResistivity,
 		[]float64{p.R, p.R, q.R},
 		[][]float64{{p.GMR}, {leg, p.GMR}, {neutral, neutral, q.GMR}}), 2))
-	return m, nil
+	return m.sound()
 }
