@@ -1,0 +1,142 @@
+package sim
+
+import (
+	"fmt"
+
+	"yearflow/devices"
+	"yearflow/sim/powerflow"
+	"yearflow/sim/results"
+)
+
+// solve finds the voltages for the inputs and the device positions at hand and
+// everything that is measured from them. It reports whether there is a solution.
+func (e *Engine) solve(tol powerflow.Tolerance) (bool, error) {
+	for k := range e.net.Couplings {
+		c := &e.net.Couplings[k]
+		e.ratio[k] = 1
+		if c.Unit >= 0 {
+			e.ratio[k] = e.tapRatio(c.Index, e.state.Taps[e.unitAt[c.Index]+c.Unit])
+		}
+	}
+	if err := e.flow.SetDevices(e.ratio, e.state.Closed); err != nil {
+		return false, err
+	}
+	var start []complex128
+	if e.anchored {
+		start = e.anchor
+	}
+	ok := e.flow.Solve(&e.input, start, tol, e.solution)
+	e.paths[e.solution.Path]++
+	e.state.V = e.solution.V
+	if !ok {
+		return false, nil
+	}
+	e.flow.Flows(e.state.Flow, e.state.V)
+	e.flow.Couplings(e.state.Coupling, e.source, &e.input, e.state.V, e.state.Flow)
+	e.flow.Drawn(e.drawn, &e.input, e.state.V)
+	clear(e.state.Load)
+	clear(e.state.Generation)
+	for k, s := range e.drawn {
+		if l := e.in.loadOf[k]; l >= 0 {
+			e.state.Load[l] += s
+		} else if g := e.in.generator[k]; g >= 0 {
+			e.state.Generation[g] -= s
+		}
+	}
+	e.sources()
+	return true, nil
+}
+
+// sources sets what each source sends into its node: the current of the voltage that
+// it holds. Behind an impedance that is the current through it, the same at both ends.
+func (e *Engine) sources() {
+	clear(e.state.Source)
+	for f, x := range e.net.Fixed {
+		e.state.Source[x.Source][x.Phase] = e.source[f]
+	}
+}
+
+func (e *Engine) tapRatio(regulator, tap int) float64 {
+	r := &e.net.Model.Regulators[regulator]
+	t := devices.TapChanger{Range: r.Range, Steps: r.Steps, TypeB: r.TypeB}
+	return t.Ratio(tap)
+}
+
+// keep makes the solution at hand the start of those to come, until the next action
+// or the next day.
+func (e *Engine) keep() {
+	copy(e.anchor, e.solution.V)
+	e.anchored = true
+}
+
+// low returns the place of a load below the corner, or blank.
+func (e *Engine) low() string {
+	k := e.flow.LowAt(e.state.V)
+	if k < 0 {
+		return ""
+	}
+	return e.net.Unknowns[e.in.injections[k].From].Name
+}
+
+// Instant is the solution of one step's inputs.
+type Instant struct {
+	Start  int64 // of the step, ns
+	Status results.Status
+	Where  string // of a low or unsolved instant
+	State  *results.State
+	Path   powerflow.Path
+	// Iterations, and the largest change of a voltage in the last one, p.u.
+	Iterations int
+	Change     float64
+	// StillMoving names devices that did not come to rest.
+	StillMoving []string
+	Actions     int
+}
+
+// Positions says where the devices stand for a single instant.
+type Positions struct {
+	// Given takes the positions of the tables as they are; otherwise the controls bring
+	// the devices to rest on the step's inputs, as at the start of a run.
+	Given bool
+	// Taps (by Plan.TapNames) and Closed (by Model.Capacitors), where not nil, are
+	// positions to hold, such as those of a results folder.
+	Taps   []int
+	Closed []bool
+}
+
+// Solve solves the inputs of one step. Its State belongs to the engine and holds
+// until the next call.
+func (e *Engine) Solve(step int, p Positions) (*Instant, error) {
+	if step < 0 || step >= e.Steps() {
+		return nil, fmt.Errorf("step %d is outside the period, which has %d steps", step, e.Steps())
+	}
+	e.Reset()
+	start, _ := e.in.axis.Bounds(step)
+	out := &Instant{Start: start}
+	switch {
+	case p.Taps != nil:
+		copy(e.state.Taps, p.Taps)
+		copy(e.state.Closed, p.Closed)
+	case !p.Given:
+		var err error
+		if out.StillMoving, out.Actions, err = e.settle(step); err != nil {
+			return nil, err
+		}
+	}
+	e.anchored = false
+	e.in.at(step, &e.input)
+	ok, err := e.solveExact()
+	if err != nil {
+		return nil, err
+	}
+	out.Path, out.Iterations, out.Change = e.solution.Path, e.solution.Iterations, e.solution.Change
+	if !ok {
+		out.Status, out.Where = results.Unsolved, e.net.Unknowns[e.solution.Worst].Name
+		return out, nil
+	}
+	if out.Where = e.low(); out.Where != "" {
+		out.Status = results.Low
+	}
+	out.State = &e.state
+	return out, nil
+}

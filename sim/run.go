@@ -1,0 +1,372 @@
+package sim
+
+import (
+	"context"
+	"fmt"
+	"math"
+
+	"yearflow/devices"
+	"yearflow/profiles"
+	"yearflow/sim/powerflow"
+	"yearflow/sim/results"
+)
+
+// A Recorder takes what a run finds, in order: the actions and the intervals of a
+// step, then the step. It must neither keep nor change what it is handed. An error
+// ends the run. results.Writer is one; statistics and tests are others.
+type Recorder interface {
+	Interval(*results.Interval) error
+	Action(*results.Action) error
+	Step(*results.Step) error
+}
+
+// startUp is the longest event time of a start-up.
+const startUp = 24 * 3600 * devices.Second
+
+// Run walks through the study's period and hands everything to the recorders. It
+// begins settled, unless the study says "given". A cancelled context ends it between
+// two steps.
+func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outcome, error) {
+	e.Reset()
+	out := &results.Outcome{Paths: map[string]int{}}
+	if !e.Study.Settings.Run.Given {
+		moving, _, err := e.settle(0)
+		if err != nil {
+			return nil, err
+		}
+		out.StillMoving = moving
+	}
+	clear(e.paths)
+	e.anchored = false
+	out.Taps = append(out.Taps, e.state.Taps...)
+	out.Closed = append(out.Closed, e.state.Closed...)
+	r := &runner{Engine: e, recorders: recorders, out: out}
+	r.coarse = newCoarse(e)
+	n := e.in.axis.Steps()
+	for step := range n {
+		if err := ctx.Err(); err != nil {
+			return nil, err
+		}
+		if err := r.step(step); err != nil {
+			return nil, err
+		}
+	}
+	for p, k := range e.paths {
+		out.Paths[p.String()] = k
+	}
+	out.CoarseAt = r.coarse.names(e)
+	return out, nil
+}
+
+// Steps is the number of steps of the study's period.
+func (e *Engine) Steps() int { return e.in.axis.Steps() }
+
+// StepAt returns the step that an instant lies in.
+func (e *Engine) StepAt(t int64) (int, bool) { return e.in.axis.Index(t) }
+
+// settle runs the event loop on one step's inputs without an end, time of day
+// standing at its start, until nothing asks or 24 h have passed. Actions are not
+// operations; clocks, lockouts and counts are forgotten after it. Where there is no
+// solution the devices stay at the positions of the tables.
+func (e *Engine) settle(step int) (moving []string, actions int, err error) {
+	start, _ := e.in.axis.Bounds(step)
+	e.in.at(step, &e.input)
+	now := start
+	for {
+		ok, err := e.solveExact()
+		if err != nil {
+			return nil, actions, err
+		}
+		if !ok {
+			e.Reset()
+			return nil, 0, nil
+		}
+		for {
+			if err := e.observe(now, start); err != nil {
+				return nil, actions, err
+			}
+			due := e.due()
+			if due == devices.Never || due >= start+startUp {
+				for _, d := range e.devices {
+					if d.Due() != devices.Never {
+						moving = append(moving, d.title())
+					}
+				}
+				for _, d := range e.devices {
+					d.Forget()
+				}
+				return moving, actions, nil
+			}
+			if due <= now {
+				break
+			}
+			now = due
+		}
+		for _, d := range e.devices {
+			if d.Due() <= now {
+				d.Act(now)
+				actions++
+			}
+		}
+		e.takePositions()
+		e.keep()
+	}
+}
+
+func (d *device) title() string {
+	if d.Phase == "" {
+		return d.Name
+	}
+	return d.Name + "." + d.Phase
+}
+
+// observe lets every control see the solution at hand. One that stands near an edge
+// gets it from the reference path.
+func (e *Engine) observe(now, wall devices.Time) error {
+	for _, d := range e.devices {
+		e.measure(d, wall)
+	}
+	if !e.exact && e.nearEdge() {
+		e.edges++
+		ok, err := e.solve(powerflow.Reference)
+		if err != nil {
+			return err
+		}
+		e.exact = true
+		if !ok {
+			return fmt.Errorf("the reference path finds no solution at %s where the fast one did", profiles.Format(now, e.in.axis.Zone))
+		}
+		for _, d := range e.devices {
+			e.measure(d, wall)
+		}
+	}
+	for _, d := range e.devices {
+		d.Observe(d.reading, now)
+	}
+	return nil
+}
+
+func (e *Engine) nearEdge() bool {
+	for _, d := range e.devices {
+		if x, ok := d.Controller.(edger); ok && x.Edge(d.reading) {
+			return true
+		}
+	}
+	return false
+}
+
+// solveExact solves at the contract's tolerance and marks the solution as not yet
+// exact.
+func (e *Engine) solveExact() (bool, error) {
+	e.exact = false
+	return e.solve(powerflow.Contract)
+}
+
+func (e *Engine) due() devices.Time {
+	due := devices.Never
+	for _, d := range e.devices {
+		due = min(due, d.Due())
+	}
+	return due
+}
+
+// runner is one walk through the period.
+type runner struct {
+	*Engine
+	recorders []Recorder
+	out       *results.Outcome
+	coarse    *coarse
+	day       int
+	started   bool
+	acted     bool // since the last solution
+	action    results.Action
+	record    results.Step
+}
+
+// step runs the events of one step.
+func (r *runner) step(step int) error {
+	e := r.Engine
+	start, end := e.in.axis.Bounds(step)
+	e.in.at(step, &e.input)
+	// Start voltages are those after the last action, or of the first step of the day:
+	// a function of the inputs and the calendar.
+	if day := profiles.Day(start, e.in.axis.Zone); !r.started || day != r.day {
+		r.day, r.started = day, true
+		e.anchored = false
+	}
+	r.record = results.Step{Start: start, End: end}
+	now := start
+	fresh := true
+	for {
+		if fresh {
+			ok, err := e.solveExact()
+			if err != nil {
+				return err
+			}
+			if !ok {
+				return r.unsolved(now, end)
+			}
+			if r.acted || !e.anchored {
+				e.keep()
+			}
+			fresh, r.acted = false, false
+		}
+		if err := e.observe(now, now); err != nil {
+			return err
+		}
+		if now == start {
+			r.coarse.see(e)
+		}
+		due, turn := e.due(), e.nextSwitch(now)
+		if due <= now {
+			if err := r.act(now); err != nil {
+				return err
+			}
+			fresh = true
+			continue
+		}
+		next := min(due, turn, end)
+		if err := r.interval(now, next); err != nil {
+			return err
+		}
+		if now = next; now >= end {
+			break
+		}
+	}
+	if where := e.low(); where != "" {
+		r.record.Status, r.record.Where = results.Low, where
+	}
+	r.record.Last = &e.state
+	r.record.Solver = e.solution.Path.String()
+	return r.close()
+}
+
+// nextSwitch returns the next instant at which time alone changes something: the
+// clock of a control, or the end of an hour of hunting.
+func (e *Engine) nextSwitch(now devices.Time) devices.Time {
+	next := devices.Never
+	for _, d := range e.devices {
+		if until, ok := d.hunting.Until(); ok && until > now {
+			next = min(next, until)
+		}
+		if s, ok := d.Controller.(switcher); ok {
+			if t := s.NextSwitch(now); t > now {
+				next = min(next, t)
+			}
+		}
+	}
+	return next
+}
+
+func (r *runner) close() error {
+	for _, rec := range r.recorders {
+		if err := rec.Step(&r.record); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// unsolved ends a step that has no solution: requests are dropped, positions stay.
+func (r *runner) unsolved(now, end int64) error {
+	for _, d := range r.devices {
+		d.Drop()
+	}
+	r.record.Status = results.Unsolved
+	r.record.Where = r.net.Unknowns[r.solution.Worst].Name
+	r.record.Solver = powerflow.None.String()
+	r.record.Last = nil
+	r.started, r.acted = false, false
+	return r.close()
+}
+
+// act takes every action that is due, in the order of the tables.
+func (r *runner) act(now devices.Time) error {
+	e := r.Engine
+	for k, d := range e.devices {
+		if d.Due() > now {
+			continue
+		}
+		a := d.Act(now)
+		if a.From == a.To {
+			continue
+		}
+		r.record.Actions++
+		r.action = results.Action{Time: now, Device: k, From: a.From, To: a.To, Reason: a.Reason.String(), Measured: a.Measured, Set: a.Set, Waited: a.Waited}
+		for _, rec := range r.recorders {
+			if err := rec.Action(&r.action); err != nil {
+				return err
+			}
+		}
+		var began bool
+		if d.hunting, began = d.hunting.See(now, a.To-a.From); began {
+			r.out.Hunting = append(r.out.Hunting, results.HuntingEvent{Time: now, Device: k})
+		}
+	}
+	e.takePositions()
+	e.keep()
+	r.acted = true
+	return nil
+}
+
+// interval hands on a time over which nothing changes.
+func (r *runner) interval(from, to devices.Time) error {
+	e := r.Engine
+	iv := &e.interval
+	iv.Devices = iv.Devices[:0]
+	iv.Start, iv.End, iv.Settled, iv.State = from, to, true, &e.state
+	for _, d := range e.devices {
+		s, standing := d.State(d.reading)
+		s.Hunting = d.hunting.Hunts(from)
+		iv.Devices = append(iv.Devices, s)
+		iv.Settled = iv.Settled && !standing
+	}
+	for _, rec := range r.recorders {
+		if err := rec.Interval(iv); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// coarse watches how far the voltage that a tap changer regulates moves from step to
+// step: a step is too coarse for operations and durations where the mean exceeds the
+// bandwidth.
+type coarse struct {
+	last, sum []float64
+	count     []int
+}
+
+func newCoarse(e *Engine) *coarse {
+	n := len(e.devices)
+	c := &coarse{make([]float64, n), make([]float64, n), make([]int, n)}
+	for i := range c.last {
+		c.last[i] = math.NaN()
+	}
+	return c
+}
+
+func (c *coarse) see(e *Engine) {
+	for i, d := range e.devices {
+		t, ok := d.Controller.(*tapControl)
+		if !ok || t.sheet.Held {
+			continue
+		}
+		// At the present tap: what the inputs alone do.
+		v := t.sheet.Measure(d.reading.Volts, d.reading.Amperes).Relay / t.sheet.Ratio(t.state.Position)
+		if c.last[i] == c.last[i] {
+			c.sum[i] += math.Abs(v - c.last[i])
+			c.count[i]++
+		}
+		c.last[i] = v
+	}
+}
+
+func (c *coarse) names(e *Engine) (out []string) {
+	for i, d := range e.devices {
+		if t, ok := d.Controller.(*tapControl); ok && c.count[i] > 0 && c.sum[i]/float64(c.count[i]) > t.sheet.Bandwidth {
+			out = append(out, d.title())
+		}
+	}
+	return out
+}
