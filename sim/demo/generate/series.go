@@ -17,10 +17,10 @@ type column struct {
 // zone is that of the study.
 const zone = "America/Denver"
 
-// The week that is also given by the minute, in local time: showers and sun in turn, in the second
-// week of June.
+// The week that is also given by the minute, in local time: showers and sun in turn, at the
+// end of April.
 var (
-	minuteFrom = time.Date(2025, 6, 9, 0, 0, 0, 0, time.UTC)
+	minuteFrom = time.Date(2025, 4, 28, 0, 0, 0, 0, time.UTC)
 	minuteDays = 7
 )
 

@@ -2,7 +2,7 @@ package main
 
 import "math"
 
-// sunshineOn returns the output of a solar plant at h hours of the year, per unit of
+// plantOutput returns the output of a solar plant at h hours of the year, per unit of
 // its inverter's rating.
 func (c *climate) plantOutput(p plant, h float64) float64 {
 	day := math.Floor(h/24) + 1

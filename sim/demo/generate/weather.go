@@ -45,7 +45,6 @@ type climate struct {
 	sky      *noise // cloudiness, by spells of a day and more
 	passing  *noise // clouds that pass within hours
 	gusts    *noise // clouds that pass within minutes
-	spring   *noise
 	grid     *noise // wandering of the 69 kV voltage
 	start    time.Time
 	latitude float64 // degrees
@@ -113,7 +112,7 @@ func (c *climate) voltage(h float64) float64 {
 		day *= 0.6
 	}
 	heat := softplus((c.temperature(h-1)-26)/4) * 0.0022
-	return 1.0165 - 0.007*day - heat + 0.0022*c.grid.at(h)
+	return 1.0165 - 0.0085*day - heat + 0.0028*c.grid.at(h)
 }
 
 // softplus is a smooth max(0, x).
