@@ -161,7 +161,7 @@ func (l CableLine) matrices(s sheath) (Matrices, error) {
 			r[i], d[i][i] = l.Core.R, l.Core.GMR
 		case i < 2*n:
 			r[i], d[i][i] = s.r, s.gmr
-			d[i][i-n], d[i-n][i] = s.reach, s.reach
+			d[i][i-n] = s.reach // primitive reads the lower triangle
 		default:
 			r[i], d[i][i] = l.NeutralConductor.R, l.NeutralConductor.GMR
 		}

@@ -110,6 +110,16 @@ func refused(t *testing.T, m Matrices, err error, want []string) {
 	}
 }
 
+// Strands of 0.0641 in on a circle of 1.2259 in leave room for π/asin(0.0641/1.2259) = 60.05 of them.
+func TestFullRingOfStrands(t *testing.T) {
+	l := buried(t, "250 AA CN 15kV 1/3", "", 0, -4)
+	l.Cable.Strands = 60
+	must(t)(l.ConcentricNeutral())
+	l.Cable.Strands = 61
+	m, err := l.ConcentricNeutral()
+	refused(t, m, err, []string{"61 strands"})
+}
+
 // Cables laid against each other touch and are taken, however inches round.
 func TestTouchingCables(t *testing.T) {
 	for _, name := range []string{"250 AA CN 15kV 1/3", "1/0 AA CN 15kV full"} {

@@ -116,6 +116,17 @@ func TestAdmittanceIsInverse(t *testing.T) {
 	}
 }
 
+// A matrix as given may have a first entry of next to nothing beside its others.
+func TestAdmittancePivots(t *testing.T) {
+	m := Matrices{N: 3}
+	m.Z = [3][3]complex128{{1e-18, 1i, 2}, {1i, 1e-18, 3 + 1i}, {2, 3 + 1i, 1e-18i}}
+	y, err := m.Admittance()
+	if err != nil {
+		t.Fatal(err)
+	}
+	identity(t, m.Z, y, 3)
+}
+
 func identity(t *testing.T, a, b [3][3]complex128, n int) {
 	t.Helper()
 	for i := range n {
