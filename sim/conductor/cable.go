@@ -48,7 +48,7 @@ type sheath struct {
 }
 
 // ConcentricNeutral returns the matrices of cables with concentric neutrals
-// (Kersting, ch. 4, eq. 4.81 to 4.85, and ch. 5, eq. 5.32): k strands of radius
+// (Kersting, ch. 4 and 5): k strands of radius
 // RDs stand on a circle of radius R = (outside diameter − strand diameter)/2,
 //
 //	GMR = (GMR_s·k·R^(k−1))^(1/k),  r = r_s/k,
@@ -87,8 +87,8 @@ func (l CableLine) ConcentricNeutral() (Matrices, error) {
 	})
 }
 
-// TapeShield returns the matrices of cables with tape shields (Kersting, ch. 4,
-// eq. 4.86 to 4.89, and ch. 5, eq. 5.34): of outside diameter d and thickness t,
+// TapeShield returns the matrices of cables with tape shields (Kersting, ch. 4
+// and 5): of outside diameter d and thickness t,
 //
 //	GMR = d/2 − t/2,  r = ρ/(π·d·t),  b = ω·2π·ε0·εr/ln(d/2/RDc)
 //

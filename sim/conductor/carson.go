@@ -21,7 +21,7 @@ const (
 	DefaultEarthResistivity = 100.0
 	// DefaultShieldResistivity is that of a copper tape at 50 °C in ohm m; it makes
 	// the shield of the published configuration 607 (18.83/(d·t) ohm/mi, d in inch
-	// and t in mil; Kersting, Distribution System Modeling and Analysis, eq. 4.87,
+	// and t in mil; Kersting, Distribution System Modeling and Analysis, ch. 4,
 	// recalled from memory).
 	DefaultShieldResistivity = 2.3715e-8
 	// DefaultPermittivity is that of cross-linked polyethylene, relative to vacuum.

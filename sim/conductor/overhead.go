@@ -68,7 +68,7 @@ func (l Line) check(ws []wire) error {
 //	p_ij = ln(S_ij/D_ij)
 //
 // S from conductor i to the image of conductor j in the earth, D between the
-// conductors, the radius in the diagonal (Kersting, ch. 5, eq. 5.9 and 5.10).
+// conductors, the radius in the diagonal (Kersting, ch. 5).
 func potential(ws []wire) [][]float64 {
 	p := square[float64](len(ws))
 	for i, a := range ws {
