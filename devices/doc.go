@@ -87,8 +87,9 @@ type Action struct {
 
 // Control is the shape of every control in this package, with its state S and its
 // reading R. An implementation must be a function of its arguments and its constant
-// settings, must not keep anything, and must never ask again at the instant of its
-// own action (its shortest delay is [Shortest]).
+// settings, and must not keep anything. It must come to rest at every instant: what
+// it asks for is due at least [Shortest] after its last action, unless a limit turns it
+// around, once.
 type Control[S comparable, R any] interface {
 	// Observe returns the state after a reading at an instant: the request starts,
 	// stays, is dropped, or turns around.
