@@ -28,7 +28,7 @@ type age int
 const (
 	modern  age = iota
 	old         // built 1960 to 1990: 2 to 3 times the no-load loss (common practice)
-	unknown     // the record is blank: the program assumes a typical unit
+	unknown     // the card is missing: an old core, and the program assumes a typical impedance
 )
 
 type class int

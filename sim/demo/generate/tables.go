@@ -167,7 +167,7 @@ func transformerTable(low []string) file {
 transformers of a street in parallel: losses are those of all of them.
 No-load and load losses of modern units meet the DOE minimum of 2016 (10 CFR 431.196);
 units of 1960 to 1990 lose 2.2 times as much in the core (common practice: 2 to 3 times).
-Where the card is missing, the cells are blank and the program assumes a typical unit.
+Where the card is missing, an old core is taken and the program assumes a typical impedance.
 Written by sim/demo/generate.`,
 		"transformer", "from", "to", "phases", "rating [kVA]", "high [kV]", "low [kV]", "connection",
 		"impedance [%]", "x/r", "load loss [W]", "no-load loss [W]", "exciting current [%]", "note")
@@ -189,7 +189,7 @@ Written by sim/demo/generate.`,
 			d.exciting *= 1.5
 			note += "; 1960 to 1990"
 		case unknown:
-			s.row(append(cells, "", "", "", "", "", note+"; card missing")...)
+			s.row(append(cells, "", "", "", number(n*d.noLoad*oldCore, 0), "", note+"; card missing")...)
 			continue
 		}
 		s.row(append(cells, number(d.impedance, 1), "", number(n*d.loadLoss, 0), number(n*d.noLoad, 0),
