@@ -140,3 +140,12 @@ func (e *Engine) Solve(step int, p Positions) (*Instant, error) {
 	out.State = &e.state
 	return out, nil
 }
+
+// OutOfBand tells whether the device at a position of Plan.Devices stood outside its
+// band at the instant solved last.
+func (e *Engine) OutOfBand(device int) bool {
+	d := e.devices[device]
+	e.measure(d, 0)
+	s, _ := d.State(d.reading)
+	return s.OutOfBand
+}
