@@ -1,0 +1,126 @@
+package plots
+
+import (
+	"fmt"
+	"math"
+
+	"gonum.org/v1/plot/text"
+	"gonum.org/v1/plot/vg"
+	"gonum.org/v1/plot/vg/draw"
+)
+
+// timeBody is the usual data area of a voltage panel that is as wide as the page.
+func (p *page) timeBody(bottom vg.Length) vg.Rectangle {
+	return vg.Rectangle{
+		Min: vg.Point{X: p.body.Min.X + 38, Y: p.body.Min.Y + bottom},
+		Max: vg.Point{X: p.body.Max.X - 34, Y: p.body.Max.Y - 20},
+	}
+}
+
+func drawEnvelope(s *survey, st *style) (*page, Figure) {
+	daily := s.span.days() > 62
+	fig := Figure{Title: "Voltage envelope: the lowest and the highest of each day"}
+	if !daily {
+		fig.Title = "Voltage envelope: the lowest and the highest on the feeder"
+	}
+	p0 := s.bins(900)
+	low := reduce(s.Steps.Time, s.lowest, p0)
+	high := reduce(s.Steps.Time, s.highest, p0)
+	fig.Finding = s.envelopeFinding() + s.unsolved()
+	fig.Alt = "Band between the lowest and the highest voltage over time, with the limits shaded. " + fig.Finding
+	p := st.newPage(250, fig.Title, fig.Finding, s.foot())
+	lo, hi := s.voltageRange(low.lo, high.hi)
+	n := p.panel(p.timeBody(44), s.span.lo(), s.span.hi(), lo, hi)
+	n.shadeLimits(s.limits)
+	n.gaps(p0, low.lo)
+	n.voltageAxes(6)
+	n.xAxis(s.span.timeTicks(n.text(labelSize, black), n.width()), "")
+	n.band(p0, low.lo, high.hi, mix(white, sky, 0.45))
+	n.band(p0, low.mean, high.mean, mix(white, sky, 0.9))
+	lx, ly := steps(p0, low.lo)
+	hx, hy := steps(p0, high.hi)
+	n.add(line{lx, ly, draw.LineStyle{Color: blue, Width: vg.Points(1.2)}},
+		line{hx, hy, draw.LineStyle{Color: vermilion, Width: vg.Points(1.2)}})
+	items := []key{
+		{line: draw.LineStyle{Color: vermilion, Width: vg.Points(dataWidth)}, text: "highest"},
+		{line: draw.LineStyle{Color: blue, Width: vg.Points(dataWidth)}, text: "lowest"},
+		{fill: mix(white, sky, 0.9), text: "between their means"},
+		{fill: outsideA, text: "outside " + s.rangeWords},
+	}
+	if !daily {
+		items[2].text = "between"
+	}
+	n.keys(items, n.rect.Min.X, n.rect.Min.Y-32)
+	return p, fig
+}
+
+func (s *survey) envelopeFinding() string {
+	if s.low < 0 {
+		return "No step was solved, so there is no voltage to show."
+	}
+	g := s.byDay(s.lowest, true)
+	h := s.byDay(s.highest, false)
+	below, above, days := 0, 0, 0
+	widest, widestDay := 0.0, 0
+	for d := range g.days {
+		lo, _ := extremes(g.cell[d*g.rows : (d+1)*g.rows])
+		_, hi := extremes(h.cell[d*h.rows : (d+1)*h.rows])
+		if math.IsInf(lo, 0) {
+			continue
+		}
+		days++
+		if lo < s.limits.Low-1e-9 {
+			below++
+		}
+		if hi > s.limits.High+1e-9 {
+			above++
+		}
+		if hi-lo > widest {
+			widest, widestDay = hi-lo, d
+		}
+	}
+	day := s.span.start.AddDate(0, 0, widestDay).Format("2 Jan")
+	if days == 1 {
+		return fmt.Sprintf("The voltage stays between %s and %s, %s V apart on 120 V.", number(s.lowest[s.low], 3), pu(s.highest[s.high]), number(120*widest, 1))
+	}
+	return fmt.Sprintf("Somewhere the voltage falls below %s on %d and rises above it on %d of %d days; the widest spread of a day is %s V on 120 V, on %s.",
+		s.rangeWords, below, above, days, number(120*widest, 1), day)
+}
+
+// key is an entry of a legend: a line, a patch or a glyph, and its text.
+type key struct {
+	line  draw.LineStyle
+	fill  interface{ RGBA() (r, g, b, a uint32) }
+	glyph *draw.GlyphStyle
+	text  string
+}
+
+// keys draws a legend in one row (broken where the page ends), from x on at the
+// height y.
+func (n *panel) keys(items []key, x, y vg.Length) {
+	t := n.text(labelSize, black)
+	start := x
+	for _, k := range items {
+		w := 24 + t.Width(k.text) + 14
+		if x+w-14 > pageWidth-2 && x > start {
+			x, y = start, y-14
+		}
+		n.keyMark(k, x, y)
+		n.label(t, x+24, y, text.XLeft, text.YCenter, k.text)
+		x += w
+	}
+}
+
+func (n *panel) keyMark(k key, x, y vg.Length) {
+	if k.fill != nil {
+		r := vg.Rectangle{Min: vg.Point{X: x, Y: y - 4}, Max: vg.Point{X: x + 19, Y: y + 4}}
+		n.fill(r, k.fill)
+		n.outline(n.snap(r), draw.LineStyle{Color: gridGrey, Width: vg.Points(0.5)})
+	}
+	if k.line.Width > 0 {
+		n.c.StrokeLine2(k.line, x, y, x+19, y)
+	}
+	if k.glyph != nil {
+		n.c.DrawGlyphNoClip(*k.glyph, vg.Point{X: x + 9.5, Y: y})
+	}
+}
