@@ -135,7 +135,6 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 	e.ratio = make([]float64, len(net.Couplings))
 	e.source = make([]complex128, len(net.Fixed))
 	e.drawn = make([]complex128, len(in.injections))
-	var faults tables.Faults
 	for i := range m.Regulators {
 		e.regulator(i, o)
 	}
@@ -147,8 +146,11 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 			return nil, fmt.Errorf("no device named %q to control; there are %s", name, e.names())
 		}
 	}
+	if st.Settings.Limits.Allowance != 0 {
+		e.Plan.LoadPeak = in.peaks(len(m.Loads))
+	}
 	e.Reset()
-	return e, faults.Err()
+	return e, nil
 }
 
 func (e *Engine) has(name string) bool {
