@@ -140,7 +140,14 @@ func (f *folder) swap() (old string, err error) {
 	if err := exchangeNames(f.temp, f.dir); err == nil {
 		return f.temp, nil
 	}
-	old = filepath.Join(filepath.Dir(f.dir), hiddenName(f.dir, "old")+strings.TrimPrefix(filepath.Base(f.temp), hiddenName(f.dir, "new")))
+	return f.setAside()
+}
+
+// setAside does the same with two renames; a run killed between them leaves the old
+// folder under a hidden name, from where the next Create puts it back.
+func (f *folder) setAside() (old string, err error) {
+	mark := strings.TrimPrefix(filepath.Base(f.temp), hiddenName(f.dir, "new"))
+	old = filepath.Join(filepath.Dir(f.dir), hiddenName(f.dir, "old")+mark)
 	if err := os.Rename(f.dir, old); err != nil {
 		return "", err
 	}

@@ -18,14 +18,14 @@ func appendPU(dst []byte, x float64) []byte {
 }
 
 // appendFigure appends a power, a current, an energy or a share: four decimals,
-// and as many more as six significant digits take. What is smaller than 5e-13
+// and as many more as six significant digits take. What is smaller than 1e-12
 // is rounding of sums that cancel and is written as zero.
 func appendFigure(dst []byte, x float64) []byte {
 	if math.IsNaN(x) {
 		return dst
 	}
 	decimals, a := 4, math.Abs(x)
-	if a < 5e-13 {
+	if a < 1e-12 {
 		return append(dst, "0.0000"...)
 	}
 	for limit := 10.0; a < limit && decimals < 17; limit /= 10 {
