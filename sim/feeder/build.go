@@ -21,14 +21,19 @@ type builder struct {
 	index map[string]int // of nodes
 	links []link         // what joins nodes, in the order of tables
 
-	// lowPhases are the phases at the low side of single-phase transformers on a
-	// pair: they are those of what stands there.
 	spacing map[string]*spacing
+}
+
+func plural(n int, one, more string) string {
+	if n == 1 {
+		return one
+	}
+	return more
 }
 
 func itoa(n int) string { return strconv.Itoa(n) }
 
-// number is a value as messages print it.
+// amount is a value as messages print it.
 func amount(x float64) string { return strconv.FormatFloat(x, 'g', 5, 64) }
 
 func newBuilder(t *feederTables, frequency float64, faults *tables.Faults) *builder {
@@ -56,6 +61,8 @@ func (b *builder) build() *Model {
 	if len(*b.faults) == before && b.connected() {
 		b.parts()
 		b.nominals()
+		b.idealLoops()
+		b.phaseShifts()
 	}
 	b.capacitors()
 	b.loads()
@@ -63,11 +70,11 @@ func (b *builder) build() *Model {
 	if len(*b.faults) == before {
 		b.floating()
 	}
-	sort.SliceStable(b.model.Assumed, func(i, j int) bool { return before2(b.model.Assumed[i].Pos, b.model.Assumed[j].Pos) })
+	sort.SliceStable(b.model.Assumed, func(i, j int) bool { return earlier(b.model.Assumed[i].Pos, b.model.Assumed[j].Pos) })
 	return b.model
 }
 
-func before2(a, b tables.Pos) bool {
+func earlier(a, b tables.Pos) bool {
 	if a.File != b.File {
 		return a.File < b.File
 	}
@@ -120,6 +127,9 @@ func (b *builder) nodes() {
 // place puts a row of nodes.csv on its node.
 func (b *builder) place(r *nodeRow) {
 	i, ok := b.index[r.Node.Value]
+	if !ok && (b.t.removed["sections"] != nil || b.t.removed["transformers"] != nil || b.t.removed["switches"] != nil || b.t.removed["regulators"] != nil) {
+		return // the case took away what met it
+	}
 	if !ok {
 		b.faults.Add(r.Node.At, "node %q: no source, section, switch, transformer or regulator meets it%s", r.Node.Value, tables.Hint(r.Node.Value, b.names))
 		return

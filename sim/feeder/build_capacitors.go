@@ -57,7 +57,7 @@ func (b *builder) capacitors() {
 		for _, n := range banks {
 			known = known || n == s.Capacitor.Value
 		}
-		if !known {
+		if !known && !b.t.removed["capacitors"][s.Capacitor.Value] {
 			b.faults.Add(s.Capacitor.At, "unknown capacitor %q%s", s.Capacitor.Value, tables.Hint(s.Capacitor.Value, banks))
 		}
 	}

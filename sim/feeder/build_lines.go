@@ -130,6 +130,7 @@ func (b *builder) constructions() {
 	for i := range b.t.constructions {
 		r := &b.t.constructions[i]
 		c := Construction{Name: r.Name.Value, Kind: r.Kind.Value, At: r.Row.At, Rating: r.Rating.Value}
+		b.unread(r)
 		switch r.Kind.Value {
 		case "overhead":
 			b.overhead(r, &c, lib)
@@ -150,6 +151,27 @@ func (b *builder) constructions() {
 		if !used[r.Construction.Value] {
 			b.faults.Add(r.Construction.At, "construction %q is not one of kind matrix in constructions.csv%s", r.Construction.Value, tables.Hint(r.Construction.Value, b.constructionNames()))
 			used[r.Construction.Value] = true
+		}
+	}
+}
+
+// unread reports cells that a construction of this kind does not read: they would be
+// a second source of its impedances.
+func (b *builder) unread(r *constructionRow) {
+	geometry := r.Kind.Value == "overhead" || r.Kind.Value == "concentric neutral" || r.Kind.Value == "tape shield" || r.Kind.Value == "triplex"
+	for _, c := range []struct {
+		name  string
+		given bool
+		at    tables.Pos
+		read  bool
+	}{
+		{"spacing", r.Spacing.Given, r.Spacing.At, geometry}, {"phase conductor", r.Phase.Given, r.Phase.At, geometry}, {"neutral conductor", r.Neutral.Given, r.Neutral.At, geometry},
+		{"r1", r.R1.Given, r.R1.At, r.Kind.Value == "sequence"}, {"x1", r.X1.Given, r.X1.At, r.Kind.Value == "sequence"},
+		{"r0", r.R0.Given, r.R0.At, r.Kind.Value == "sequence"}, {"x0", r.X0.Given, r.X0.At, r.Kind.Value == "sequence"},
+		{"b1", r.B1.Given, r.B1.At, r.Kind.Value == "sequence"}, {"b0", r.B0.Given, r.B0.At, r.Kind.Value == "sequence"},
+	} {
+		if c.given && !c.read && r.Kind.Value != "" {
+			b.faults.Add(c.at, "construction %q: kind %s does not read %s; leave it blank, or say the kind that is meant", r.Name.Value, r.Kind.Value, c.name)
 		}
 	}
 }
@@ -343,6 +365,12 @@ func (b *builder) sections() {
 	for i := range b.model.Constructions {
 		at[b.model.Constructions[i].Name] = i
 	}
+	rated, firstRated := 0, tables.Pos{}
+	defer func() {
+		if rated > 0 {
+			b.assume(firstRated, "sections: rating [A] (blank in "+itoa(rated)+plural(rated, " row", " rows")+")", "that of the construction")
+		}
+	}()
 	for i := range b.t.sections {
 		r := &b.t.sections[i]
 		what := "section " + strconv.Quote(r.Name.Value)
@@ -361,8 +389,11 @@ func (b *builder) sections() {
 		}
 		s := Section{Name: r.Name.Value, At: r.Row.At, From: from, To: to, Phases: ps, LengthKM: r.Length.Value, Construction: k,
 			Rating: r.Rating.Value, Emergency: r.Emergency.Value, Winter: r.Winter.Value}
-		if math.IsNaN(s.Rating) {
+		if math.IsNaN(s.Rating) && !math.IsNaN(c.Rating) {
 			s.Rating = c.Rating
+			if rated++; rated == 1 {
+				firstRated = s.At
+			}
 		}
 		b.model.Sections = append(b.model.Sections, s)
 		b.join(link{kind: "section", name: s.Name, at: s.At, from: from, to: to, fromPhases: ps, toPhases: ps, perPhase: true, galvanic: true})

@@ -51,6 +51,9 @@ func (b *builder) loads() {
 	}
 	for i := range b.t.energies {
 		e := &b.t.energies[i]
+		if b.t.removed["loads"][e.Load.Value] {
+			continue
+		}
 		if !known[e.Load.Value] {
 			b.faults.Add(e.Load.At, "unknown load %q%s", e.Load.Value, tables.Hint(e.Load.Value, names))
 			continue

@@ -37,7 +37,7 @@ func (b *builder) regulators() {
 		for _, n := range banks {
 			known = known || n == s.Regulator.Value
 		}
-		if !known {
+		if !known && !b.t.removed["regulators"][s.Regulator.Value] {
 			b.faults.Add(s.Regulator.At, "unknown regulator %q%s", s.Regulator.Value, tables.Hint(s.Regulator.Value, banks))
 		}
 	}

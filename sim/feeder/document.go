@@ -78,13 +78,13 @@ type scaleDocument struct {
 // places holds where each key stands: "period.step", "profiles[1].files".
 type places map[string]tables.Pos
 
-// readDocument reads a settings file; what it cannot make sense of is a fault.
-func readDocument(fsys fs.FS, name string, faults *tables.Faults) (document, places) {
-	var d document
-	data, fault := tables.ReadText(fsys, name)
-	if fault != nil {
-		*faults = append(*faults, *fault)
-		return d, places{}
+// readDocument reads a settings file; what it cannot make sense of is a fault. whole
+// is false where the file cannot be read to its end: what it lacks is no fault then.
+func readDocument(fsys fs.FS, name string, faults *tables.Faults) (d document, at places, whole bool) {
+	data, unreadable := tables.ReadText(fsys, name)
+	if unreadable != nil {
+		*faults = append(*faults, *unreadable)
+		return d, places{}, false
 	}
 	at, err := keyPlaces(name, data)
 	if err == nil {
@@ -92,9 +92,14 @@ func readDocument(fsys fs.FS, name string, faults *tables.Faults) (document, pla
 	}
 	var strict *toml.StrictMissingError
 	var wrong *toml.DecodeError
+	var syntax fault
 	switch {
 	case err == nil:
+		whole = true
+	case errors.As(err, &syntax):
+		faults.Add(syntax.at, "%s", syntax.text)
 	case errors.As(err, &strict):
+		whole = true
 		for i := range strict.Errors {
 			e := &strict.Errors[i]
 			line, column := e.Position()
@@ -114,7 +119,7 @@ func readDocument(fsys fs.FS, name string, faults *tables.Faults) (document, pla
 	default:
 		faults.Add(tables.Pos{File: name}, "%v", strings.TrimPrefix(err.Error(), "toml: "))
 	}
-	return d, at
+	return d, at, whole
 }
 
 // keyHint names the nearest key to the last part of an unknown one.

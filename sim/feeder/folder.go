@@ -32,6 +32,7 @@ type feederTables struct {
 
 	folder  string
 	assumed []Assumption
+	removed map[string]map[string]bool // by table: keys that the case took away
 }
 
 // tableNames are the tables that may stand in the folder of a feeder; those of the
@@ -52,7 +53,7 @@ type tableReader struct {
 }
 
 func (s *Study) readTables(folder string, faults *tables.Faults) *feederTables {
-	t := &feederTables{folder: folder}
+	t := &feederTables{folder: folder, removed: map[string]map[string]bool{}}
 	r := &tableReader{study: s, folder: folder, faults: faults, out: t}
 	if s.Case != Base {
 		r.cases = path.Join("cases", s.Case)
@@ -153,14 +154,16 @@ func readTable[T any](r *tableReader, name string, split splitter) []T {
 		}
 		p.Keys(r.faults)
 		s.Patch(p, r.faults)
+		for _, key := range s.Removed {
+			if r.out.removed[name] == nil {
+				r.out.removed[name] = map[string]bool{}
+			}
+			r.out.removed[name][key] = true
+		}
 	}
 	for _, d := range s.Defaults() {
-		rows := "row"
-		if d.Count > 1 {
-			rows = "rows"
-		}
 		r.out.assumed = append(r.out.assumed, Assumption{Pos: d.At,
-			What: name + ": " + d.Column + " (blank in " + itoa(d.Count) + " " + rows + ")", Value: d.Value})
+			What: name + ": " + d.Column + " (blank in " + itoa(d.Count) + plural(d.Count, " row", " rows") + ")", Value: d.Value})
 	}
 	return s.Rows(r.faults)
 }

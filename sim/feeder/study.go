@@ -46,9 +46,12 @@ func Open(fsys fs.FS, caseName string) (*Study, error) {
 	s := &Study{FS: fsys, Case: caseName}
 	var faults tables.Faults
 	s.Cases = caseNames(fsys)
-	d, at := s.documents(&faults)
+	d, at, whole := s.documents(&faults)
 	s.at = at
 	r := &settingsReader{d: d, at: at, faults: &faults}
+	if !whole {
+		r.faults = &tables.Faults{} // what such a file lacks is no fault of its own
+	}
 	s.Settings = r.settings()
 	s.Title = s.Settings.Title
 	s.Compare, s.Tune, s.Hosting = d.Compare, d.Tune, d.Hosting
@@ -102,16 +105,16 @@ func caseNames(fsys fs.FS) []string {
 }
 
 // documents reads study.toml and the case's case.toml.
-func (s *Study) documents(faults *tables.Faults) (document, places) {
+func (s *Study) documents(faults *tables.Faults) (d document, at places, whole bool) {
 	const name = "study.toml"
-	d, at := readDocument(s.FS, name, faults)
+	d, at, whole = readDocument(s.FS, name, faults)
 	at[""] = tables.Pos{File: name}
 	s.Files = append(s.Files, name)
 	if d.Scale != (scaleDocument{}) {
 		faults.Add(at.of("scale"), "scale belongs to a case: put it into cases/<name>/case.toml")
 	}
 	if s.Case == Base {
-		return d, at
+		return d, at, whole
 	}
 	folder := path.Join("cases", s.Case)
 	known := false
@@ -120,13 +123,13 @@ func (s *Study) documents(faults *tables.Faults) (document, places) {
 	}
 	if !known {
 		faults.Add(tables.Pos{File: "cases"}, "there is no case %q%s", s.Case, tables.Hint(s.Case, append([]string{Base}, s.Cases...)))
-		return d, at
+		return d, at, whole
 	}
 	file := path.Join(folder, "case.toml")
 	if _, err := fs.Stat(s.FS, file); err != nil {
-		return d, at
+		return d, at, whole
 	}
-	c, cat := readDocument(s.FS, file, faults)
+	c, cat, cwhole := readDocument(s.FS, file, faults)
 	s.Files = append(s.Files, file)
 	if c.Profiles != nil {
 		for k := range at {
@@ -139,7 +142,7 @@ func (s *Study) documents(faults *tables.Faults) (document, places) {
 		at[k] = p
 	}
 	d.overlay(c)
-	return d, at
+	return d, at, whole && cwhole
 }
 
 // checkPlaces checks the names in [run].
@@ -186,6 +189,10 @@ func (s *Study) checkPlaces(faults *tables.Faults) {
 		}
 	}
 }
+
+// Place returns where a key of study.toml, such as "period.step", is written, or the
+// place of the table that it belongs to.
+func (s *Study) Place(key string) tables.Pos { return s.at.of(key) }
 
 // ProfileUse is one place that names a profile, and what it wants of it.
 type ProfileUse struct {

@@ -130,6 +130,7 @@ func (s *Sheet[T]) Patch(p *Sheet[T], faults *Faults) {
 			faults.Add(pos, "%s %q cannot be removed: it is not there%s", p.keyNames(), clip(key), Hint(key, names))
 		case r.remove:
 			gone[i] = true
+			s.Removed = append(s.Removed, key)
 		case known:
 			for k, c := range r.cells {
 				if c.Text == "" || s.columns[k].key {

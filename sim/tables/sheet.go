@@ -29,7 +29,8 @@ type row struct {
 // the row struct T, with their places.
 type Sheet[T any] struct {
 	File    string
-	Found   bool // the file exists
+	Found   bool     // the file exists
+	Removed []string // keys that a case took away
 	columns []column
 	rows    []row
 	named   []int // by columns: position in the header, 0 where it is not there
