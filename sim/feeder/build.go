@@ -20,6 +20,7 @@ type builder struct {
 	names []string       // of nodes, for hints
 	index map[string]int // of nodes
 	links []link         // what joins nodes, in the order of tables
+	torn  bool           // a row that joins nodes was left out for its faults
 
 	spacing map[string]*spacing
 }
@@ -58,7 +59,10 @@ func (b *builder) build() *Model {
 	b.phases()
 	// What follows reads the phases and parts of nodes; faults in what joins them
 	// would only be told twice.
-	if len(*b.faults) == before && b.connected() {
+	for _, name := range []string{"source", "sections", "switches", "transformers", "regulators"} {
+		b.torn = b.torn || b.t.dropped[name]
+	}
+	if len(*b.faults) == before && !b.torn && b.connected() {
 		b.parts()
 		b.nominals()
 		b.idealLoops()
@@ -67,7 +71,7 @@ func (b *builder) build() *Model {
 	b.capacitors()
 	b.loads()
 	b.generators()
-	if len(*b.faults) == before {
+	if len(*b.faults) == before && !b.torn {
 		b.floating()
 	}
 	sort.SliceStable(b.model.Assumed, func(i, j int) bool { return earlier(b.model.Assumed[i].Pos, b.model.Assumed[j].Pos) })
@@ -136,6 +140,9 @@ func (b *builder) place(r *nodeRow) {
 	}
 	n := &b.model.Nodes[i]
 	n.Area = r.Area.Value
+	if r.Row.Bad {
+		return
+	}
 	plane, globe := r.X.Given || r.Y.Given, r.Longitude.Given || r.Latitude.Given
 	switch {
 	case plane && globe:
@@ -193,7 +200,7 @@ func (b *builder) phasesOf(c tables.Text, what string) ([]Phase, bool) {
 //
 // each with its own X/R (IEC 60909-0 has the same sequence circuits).
 func (b *builder) sources() {
-	if len(b.t.sources) == 0 && len(*b.faults) == 0 {
+	if len(b.t.sources) == 0 && !b.t.dropped["source"] && len(*b.faults) == 0 {
 		b.faults.Add(tables.Pos{File: b.t.folder + "/source.csv"}, "has no row; a feeder needs a source")
 	}
 	for i := range b.t.sources {
@@ -214,6 +221,9 @@ func (b *builder) sources() {
 
 func (b *builder) shortCircuit(r *sourceRow, s *Source) {
 	what := "source " + strconv.Quote(r.Node.Value)
+	if r.Row.Bad {
+		return
+	}
 	if !r.MVA3.Given {
 		if r.XR3.Given || r.MVA1.Given || r.XR1.Given {
 			b.faults.Add(r.Row.At, "%s: short circuit 3ph [MVA] is blank; give it, or leave the whole impedance blank for a stiff source", what)

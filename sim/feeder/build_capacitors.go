@@ -77,7 +77,7 @@ func (b *builder) capacitors() {
 			k.NominalKV = b.model.Nodes[n].Nominal
 			b.assume(r.Row.At, what+": nominal [kV]", amount(k.NominalKV)+" (its node's)")
 		}
-		if s := settings[r.Name.Value]; s != nil {
+		if s := settings[r.Name.Value]; s != nil && !s.Row.Bad {
 			k.Control = b.capacitorSettings(s, &k, what)
 		}
 		b.model.Capacitors = append(b.model.Capacitors, k)

@@ -131,6 +131,11 @@ func (b *builder) constructions() {
 		r := &b.t.constructions[i]
 		c := Construction{Name: r.Name.Value, Kind: r.Kind.Value, At: r.Row.At, Rating: r.Rating.Value}
 		b.unread(r)
+		if r.Row.Bad {
+			used[r.Name.Value] = true
+			b.model.Constructions = append(b.model.Constructions, c)
+			continue
+		}
 		switch r.Kind.Value {
 		case "overhead":
 			b.overhead(r, &c, lib)
@@ -381,6 +386,7 @@ func (b *builder) sections() {
 			b.faults.Add(r.Construction.At, "%s: unknown construction %q%s", what, r.Construction.Value, tables.Hint(r.Construction.Value, b.constructionNames()))
 		}
 		if !ok || !okPhases || !known {
+			b.torn = true
 			continue
 		}
 		c := &b.model.Constructions[k]
@@ -407,6 +413,7 @@ func (b *builder) switches() {
 		from, to, ok := b.ends(r.From, r.To, what)
 		ps, okPhases := b.phasesOf(r.Phases, what)
 		if !ok || !okPhases {
+			b.torn = true
 			continue
 		}
 		ps = ordered(ps)

@@ -21,6 +21,11 @@ func (b *builder) zips() (map[string]ZIP, []string) {
 			b.faults.Add(r.ZIP.At, "zip %q is built in; give the row another name", name)
 			continue
 		}
+		if r.Row.Bad {
+			out[name] = ZIP{PP: 1, QP: 1}
+			names = append(names, name)
+			continue
+		}
 		z := ZIP{r.PZ.Value, r.PI.Value, r.PP.Value, r.QZ.Value, r.QI.Value, r.QP.Value}
 		z.PP += b.rest(r.PZ.At, name, "pz, pi and pp", z.PZ+z.PI+z.PP)
 		z.QP += b.rest(r.QZ.At, name, "qz, qi and qp", z.QZ+z.QI+z.QP)
@@ -81,7 +86,7 @@ func (b *builder) load(r *loadRow, energies []*energyRow, zips map[string]ZIP, z
 	}
 	l := Load{Name: r.Name.Value, At: r.Row.At, Node: n, Connection: c, Phases: ps, Pairs: pairs, ZIP: z, Profile: r.Profile.Value,
 		Customers: r.Customers.Value, KW: math.NaN(), KVAR: math.NaN()}
-	amountOK := b.loadAmount(r, &l, energies, what)
+	amountOK := !r.Row.Bad && b.loadAmount(r, &l, energies, what)
 	if !ok || !knownZIP || !amountOK {
 		return
 	}
@@ -207,6 +212,9 @@ func (b *builder) generator(r *generatorRow) {
 			b.faults.Add(x.at, "%s: %s %s; give a profile or real [kW]", what, x.name, later)
 			ok = false
 		}
+	}
+	if r.Row.Bad {
+		return
 	}
 	if !r.Real.Given && !r.Profile.Given {
 		b.faults.Add(r.Row.At, "%s: how much does it give? give real [kW] or a profile", what)

@@ -51,6 +51,7 @@ func (b *builder) regulator(r *regulatorRow, rows []*regulatorSettingsRow) {
 	from, to, ok := b.ends(r.From, r.To, what)
 	ps, okPhases := b.phasesOf(r.Phases, what)
 	if !ok || !okPhases {
+		b.torn = true
 		return
 	}
 	g := Regulator{Name: r.Name.Value, At: r.Row.At, From: from, To: to, Phases: ordered(ps), Ganged: r.Ganged.Value,
@@ -61,6 +62,7 @@ func (b *builder) regulator(r *regulatorRow, rows []*regulatorSettingsRow) {
 	if g.Connection != RegulatorWye {
 		if len(ps) != 3 {
 			b.faults.Add(r.Phases.At, "%s: a %s bank stands on phases ABC, got %s", what, r.Connection.Value, r.Phases.Value)
+			b.torn = true
 			return
 		}
 		for _, p := range pairs {
@@ -74,7 +76,7 @@ func (b *builder) regulator(r *regulatorRow, rows []*regulatorSettingsRow) {
 	if g.Range >= 0.5 {
 		b.faults.Add(r.Range.At, "%s: range %s %% is none; a usual one is 10 %%", what, amount(100*g.Range))
 	}
-	if (g.LoadLoss > 0 || g.Impedance > 0) && Unknown(g.Rating) {
+	if !r.Row.Bad && (g.LoadLoss > 0 || g.Impedance > 0) && Unknown(g.Rating) {
 		b.faults.Add(r.Row.At, "%s: rating [A] is blank; load loss and impedance are given at the rating", what)
 	}
 	b.tapSettings(r, &g, rows, what)
@@ -96,9 +98,13 @@ func (b *builder) tapSettings(r *regulatorRow, g *Regulator, rows []*regulatorSe
 			b.faults.Add(s.Phase.At, "%s has no unit %q; its units are %s; all stands for each of them", what, s.Phase.Value, strings.Join(names, ", "))
 			continue
 		}
+		if s.Row.Bad {
+			g.Units[u].Settings = &TapSettings{At: s.Row.At}
+			continue
+		}
 		g.Units[u].Settings = b.tapSetting(s, g, what+" "+s.Phase.Value)
 	}
-	if len(rows) == 0 {
+	if len(rows) == 0 && !b.t.dropped["regulator-settings"] {
 		b.warnings.Add(r.Row.At, "%s has no settings: it stays at tap 0", what)
 		if g.Ganged {
 			g.Units[0].Watched = true

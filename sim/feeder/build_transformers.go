@@ -11,7 +11,9 @@ import (
 
 func (b *builder) transformers() {
 	for i := range b.t.transformers {
+		joined := len(b.links)
 		b.transformer(&b.t.transformers[i])
+		b.torn = b.torn || len(b.links) == joined
 	}
 }
 
@@ -76,7 +78,9 @@ func (b *builder) transformer(r *transformerRow) {
 			units = 2
 		}
 	}
-	b.leakage(r, &t, units, what)
+	if !r.Row.Bad {
+		b.leakage(r, &t, units, what)
+	}
 	b.model.Transformers = append(b.model.Transformers, t)
 	b.join(l)
 }

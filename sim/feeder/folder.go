@@ -33,6 +33,7 @@ type feederTables struct {
 	folder  string
 	assumed []Assumption
 	removed map[string]map[string]bool // by table: keys that the case took away
+	dropped map[string]bool            // tables that lost rows to faults
 }
 
 // tableNames are the tables that may stand in the folder of a feeder; those of the
@@ -53,7 +54,7 @@ type tableReader struct {
 }
 
 func (s *Study) readTables(folder string, faults *tables.Faults) *feederTables {
-	t := &feederTables{folder: folder, removed: map[string]map[string]bool{}}
+	t := &feederTables{folder: folder, removed: map[string]map[string]bool{}, dropped: map[string]bool{}}
 	r := &tableReader{study: s, folder: folder, faults: faults, out: t}
 	if s.Case != Base {
 		r.cases = path.Join("cases", s.Case)
@@ -154,6 +155,7 @@ func readTable[T any](r *tableReader, name string, split splitter) []T {
 		}
 		p.Keys(r.faults)
 		s.Patch(p, r.faults)
+		s.Dropped = s.Dropped || p.Dropped
 		for _, key := range s.Removed {
 			if r.out.removed[name] == nil {
 				r.out.removed[name] = map[string]bool{}
@@ -161,6 +163,7 @@ func readTable[T any](r *tableReader, name string, split splitter) []T {
 			r.out.removed[name][key] = true
 		}
 	}
+	r.out.dropped[name] = s.Dropped
 	for _, d := range s.Defaults() {
 		r.out.assumed = append(r.out.assumed, Assumption{Pos: d.At,
 			What: name + ": " + d.Column + " (blank in " + itoa(d.Count) + plural(d.Count, " row", " rows") + ")", Value: d.Value})

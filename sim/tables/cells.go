@@ -7,9 +7,12 @@ import (
 	"strings"
 )
 
-// Row is the field of a row struct that holds where the row stands (tag "@").
+// Row is the field of a row struct that holds where the row stands (tag "@"). Bad
+// tells that a cell of it is a fault already: what follows from that cell's being
+// blank now need not be told as well.
 type Row struct {
-	At Pos
+	At  Pos
+	Bad bool
 }
 
 // Text is a cell of text or of a keyword. Given tells whether the file has it; a
@@ -70,7 +73,9 @@ func unpack(s string) (text string, given bool, at Pos, err error) {
 
 // UnmarshalCSV reads what the Sheet hands on.
 func (r *Row) UnmarshalCSV(s string) (err error) {
-	_, _, r.At, err = unpack(s)
+	var good bool
+	_, good, r.At, err = unpack(s)
+	r.Bad = !good
 	return err
 }
 

@@ -90,8 +90,9 @@ func (s *Sheet[T]) Keys(faults *Faults) {
 	for _, r := range s.rows {
 		key, at, whole := s.keyOf(r)
 		if !whole {
+			s.Dropped = true
 			for i := range s.columns {
-				if s.columns[i].key && r.cells[i].Text == "" && s.named[i] > 0 {
+				if s.columns[i].key && r.cells[i].Text == "" && s.named[i] > 0 && !r.cells[i].bad {
 					faults.Add(r.cells[i].At, "column %s: the cell is blank; it is needed to name the row", s.columns[i].name)
 				}
 			}
@@ -133,7 +134,7 @@ func (s *Sheet[T]) Patch(p *Sheet[T], faults *Faults) {
 			s.Removed = append(s.Removed, key)
 		case known:
 			for k, c := range r.cells {
-				if c.Text == "" || s.columns[k].key {
+				if c.Text == "" && !c.bad || s.columns[k].key {
 					continue
 				}
 				if c.Text == "-" {

@@ -12,10 +12,12 @@ import (
 // maxFaults is how many faults of one table are listed; the others are counted.
 const maxFaults = 200
 
-// Cell is the checked text of a cell and where it stands; a blank cell has no text.
+// Cell is the checked text of a cell and where it stands; a blank cell has no text,
+// nor has one that is a fault.
 type Cell struct {
 	Text string
 	At   Pos
+	bad  bool
 }
 
 type row struct {
@@ -30,6 +32,7 @@ type row struct {
 type Sheet[T any] struct {
 	File    string
 	Found   bool     // the file exists
+	Dropped bool     // some rows could not be told apart by their keys, or are not whole
 	Removed []string // keys that a case took away
 	columns []column
 	rows    []row
@@ -74,6 +77,7 @@ func read[T any](fsys fs.FS, name string, patch bool, faults *Faults) *Sheet[T] 
 // place is what a position in the header stands for.
 type place struct {
 	column int // into columns; −1: note, −2: remove, −3: not known
+	bad    int // the column that it names without a unit that would do; −1: none
 	conv   conversion
 	title  string
 }
@@ -89,6 +93,7 @@ func (s *Sheet[T]) read(records []record, semicolons bool, faults *Faults) {
 	for _, r := range records[1:] {
 		if len(r.cells) < len(places) {
 			faults.Add(Pos{File: s.File, Line: r.line}, "the row has %d cells, the header %d: write blank cells too", len(r.cells), len(places))
+			s.Dropped = true
 			continue
 		}
 		for i := len(places); i < len(r.cells); i++ {
@@ -106,6 +111,9 @@ func (s *Sheet[T]) read(records []record, semicolons bool, faults *Faults) {
 			at := Pos{s.File, r.line, i + 1}
 			switch p.column {
 			case noteColumn, unknownColumn:
+				if p.bad >= 0 {
+					out.cells[p.bad].bad = true
+				}
 			case removeColumn:
 				switch strings.ToLower(r.cells[i]) {
 				case "yes":
@@ -125,11 +133,13 @@ func (s *Sheet[T]) read(records []record, semicolons bool, faults *Faults) {
 					faults.Add(at, "column %s: %v", p.title, err)
 					good = good && !c.key
 				}
-				out.cells[p.column].Text = v
+				out.cells[p.column].Text, out.cells[p.column].bad = v, err != nil
 			}
 		}
 		if good {
 			s.rows = append(s.rows, out)
+		} else {
+			s.Dropped = true
 		}
 	}
 }
@@ -148,10 +158,15 @@ func (s *Sheet[T]) readHeader(r record, faults *Faults) []place {
 	seen := map[string]int{}
 	for i, h := range cells {
 		at := Pos{s.File, r.line, i + 1}
-		places[i] = place{column: unknownColumn, conv: conversion{same: true}, title: h}
+		places[i] = place{column: unknownColumn, bad: -1, conv: conversion{same: true}, title: h}
 		name, u, hasUnit, err := splitHeader(h)
 		if err != nil {
 			faults.Add(at, "%v", err)
+			for j := range s.columns {
+				if strings.HasPrefix(strings.ToLower(h), s.columns[j].name+" [") {
+					places[i].bad, s.named[j] = j, i+1
+				}
+			}
 			continue
 		}
 		if first, twice := seen[name]; twice {
@@ -188,6 +203,7 @@ func (s *Sheet[T]) readHeader(r record, faults *Faults) []place {
 		conv, err := s.columns[k].conversion(u, hasUnit)
 		if err != nil {
 			faults.Add(at, "column %s: %v", name, err)
+			places[i].bad = k
 			continue
 		}
 		places[i].column, places[i].conv = k, conv
@@ -247,11 +263,15 @@ func (s *Sheet[T]) Rows(faults *Faults) []T {
 	}
 	lines := [][]string{head}
 	for _, r := range s.rows {
-		cells := []string{pack("", true, r.at)}
+		good := true
+		cells := []string{""}
 		for i, c := range r.cells {
 			col := &s.columns[i]
 			given := c.Text != ""
-			if !given && col.required && c.At.Column > 0 {
+			good = good && !c.bad && (given || !col.required)
+			if c.bad {
+				// told already
+			} else if !given && col.required && c.At.Column > 0 {
 				faults.Add(c.At, "column %s: the cell is blank; it needs a value", col.title())
 			} else if !given && col.required && r.patch {
 				faults.Add(r.at, "column %s is needed for a new row", col.title())
@@ -262,6 +282,7 @@ func (s *Sheet[T]) Rows(faults *Faults) []T {
 			}
 			cells = append(cells, pack(text, given, c.At))
 		}
+		cells[0] = pack("", good, r.at)
 		lines = append(lines, cells)
 	}
 	var out []T
@@ -305,7 +326,7 @@ func (s *Sheet[T]) Defaults() []Default {
 		}
 		d := Default{Column: c.title(), Value: c.fallback}
 		for _, r := range s.rows {
-			if r.cells[i].Text == "" {
+			if r.cells[i].Text == "" && !r.cells[i].bad {
 				if d.Count == 0 {
 					d.At = r.at
 				}
