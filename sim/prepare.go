@@ -200,6 +200,17 @@ func rotation(c feeder.RegulatorConnection, p feeder.Pair, s *feeder.TapSettings
 	return -math.Pi / 6
 }
 
+// initialTap is the position that the tables give a unit: that of its own row of the
+// settings sheet, in a ganged bank that of the watched one.
+func initialTap(r *feeder.Regulator, unit int) int {
+	for u := range r.Units {
+		if s := r.Units[u].Settings; s != nil && (u == unit || r.Ganged && r.Units[u].Watched) {
+			return s.Tap
+		}
+	}
+	return 0
+}
+
 func (e *Engine) regulator(i int, o Options) {
 	m := e.net.Model
 	r := &m.Regulators[i]
@@ -207,12 +218,8 @@ func (e *Engine) regulator(i int, o Options) {
 	e.unitAt = append(e.unitAt, first)
 	var all []int
 	for u := range r.Units {
-		tap := 0
-		if s := r.Units[u].Settings; s != nil {
-			tap = s.Tap
-		}
 		all = append(all, len(e.state.Taps))
-		e.state.Taps = append(e.state.Taps, tap)
+		e.state.Taps = append(e.state.Taps, initialTap(r, u))
 		e.Plan.TapNames = append(e.Plan.TapNames, r.Name+"."+r.Units[u].Name(r.Connection))
 	}
 	for u := range r.Units {
@@ -307,11 +314,7 @@ func (e *Engine) Reset() {
 	for _, d := range e.devices {
 		switch c := d.Controller.(type) {
 		case *tapControl:
-			tap := 0
-			if s := m.Regulators[d.Index].Units[d.Unit].Settings; s != nil {
-				tap = s.Tap
-			}
-			c.state = devices.TapState{Position: tap}
+			c.state = devices.TapState{Position: initialTap(&m.Regulators[d.Index], d.Unit)}
 		case *capacitorControl:
 			c.state = devices.CapacitorState{Closed: m.Capacitors[d.Index].Closed}
 		}
@@ -319,9 +322,7 @@ func (e *Engine) Reset() {
 	}
 	for i := range m.Regulators {
 		for u := range m.Regulators[i].Units {
-			if s := m.Regulators[i].Units[u].Settings; s != nil {
-				e.state.Taps[e.unitAt[i]+u] = s.Tap
-			}
+			e.state.Taps[e.unitAt[i]+u] = initialTap(&m.Regulators[i], u)
 		}
 	}
 	e.takePositions()

@@ -119,6 +119,7 @@ type span struct {
 	hunting  bool // of any device
 	taps     []int
 	closed   []bool
+	devices  []results.DeviceState
 }
 
 // witness is the Recorder of these tests: it keeps what it is handed, and holds every
@@ -150,7 +151,7 @@ func (w *witness) Interval(iv *results.Interval) error {
 		w.t.Errorf("an interval from %v s to %v s after one that ended at %v s", seconds(iv.Start), seconds(iv.End), seconds(w.end))
 	}
 	w.end = iv.End
-	s := span{from: seconds(iv.Start), to: seconds(iv.End), settled: iv.Settled,
+	s := span{from: seconds(iv.Start), to: seconds(iv.End), settled: iv.Settled, devices: append([]results.DeviceState(nil), iv.Devices...),
 		taps: append([]int(nil), iv.State.Taps...), closed: append([]bool(nil), iv.State.Closed...)}
 	for _, d := range iv.Devices {
 		s.hunting = s.hunting || d.Hunting
