@@ -76,11 +76,7 @@ func (c *cycle) at(t int64) (shift, next int64) {
 	}
 	reading := c.target.local(t)
 	next = min(c.target.to, t+c.nextBreak(reading)-reading)
-	if t < c.start {
-		next = min(next, c.start)
-	}
-	again := t-c.target.from < hour*24 && c.repeated(t, reading)
-	u := c.find(c.image(reading), again)
+	u := c.find(c.image(reading), c.repeated(t, reading))
 	c.source.local(u)
 	// The stretch of the source's offset, and the file, may end before.
 	until := min(c.source.to, c.end())
@@ -95,7 +91,7 @@ func (c *cycle) repeated(t, reading int64) bool {
 }
 
 // nextBreak returns the clock's reading at the next midnight, or at the next time
-// of day at which the file begins.
+// of day at which the file begins; the file's own start is such a time.
 func (c *cycle) nextBreak(reading int64) int64 {
 	midnight := (floorDiv(reading, day) + 1) * day
 	begin := floorDiv(reading, day)*day + floorMod(c.first, day)

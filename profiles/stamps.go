@@ -73,33 +73,32 @@ func (r *reader) checkTimes() {
 		return
 	}
 	step := r.commonStep()
-	expected := r.times[0]
+	var expected int64
+	sure := false // a row whose time could not be read says nothing of the next one
 	for k, t := range r.times {
-		if t != noTime && t != expected && k > 0 {
+		if t == noTime {
+			sure = false
+			continue
+		}
+		if sure && t != expected {
 			r.irregular(k, expected, step)
 		}
-		if t != noTime {
-			expected = t
-		}
-		expected += step
+		expected, sure = t+step, true
 	}
 }
 
-// commonStep returns the distance that occurs most often among the first rows.
+// commonStep returns the distance that occurs most often among the first rows, the
+// smaller of two that occur equally often.
 func (r *reader) commonStep() int64 {
 	const rows = 64
-	step, most := hour, 0
+	count := make(map[int64]int)
 	for k := 1; k < min(len(r.times), rows); k++ {
-		d := r.times[k] - r.times[k-1]
-		if d <= 0 || r.times[k-1] == noTime {
-			continue
+		if a, b := r.times[k-1], r.times[k]; a != noTime && b > a {
+			count[b-a]++
 		}
-		n := 0
-		for j := 1; j < min(len(r.times), rows); j++ {
-			if r.times[j]-r.times[j-1] == d && r.times[j-1] != noTime {
-				n++
-			}
-		}
+	}
+	step, most := hour, 0
+	for d, n := range count {
 		if n > most || n == most && d < step {
 			step, most = d, n
 		}
@@ -107,10 +106,21 @@ func (r *reader) commonStep() int64 {
 	return step
 }
 
+// stepText writes a step in the unit that suits it.
+func stepText(step int64) string {
+	switch {
+	case step%hour == 0:
+		return fmt.Sprintf("%d h", step/hour)
+	case step%minute == 0:
+		return fmt.Sprintf("%d min", step/minute)
+	}
+	return time.Duration(step).String()
+}
+
 // irregular reports row k, which stands where expected should.
 func (r *reader) irregular(k int, expected, step int64) {
 	t, line := r.times[k], r.numbers[k]
-	want := fmt.Sprintf("expected %s (the step is %s)", Format(expected, r.clock.zone), time.Duration(step))
+	want := fmt.Sprintf("expected %s (the step is %s)", Format(expected, r.clock.zone), stepText(step))
 	before := expected - step
 	switch {
 	case t == before:
