@@ -36,13 +36,13 @@ func drawDistance(s *survey, st *style) (*page, Figure) {
 			low.voltage[n.Node+"."+n.Phase] = n.Min
 			high.voltage[n.Node+"."+n.Phase] = n.Max
 		}
-		low.worst, high.worst = s.Steps.LowestAt[s.low], s.Steps.HighestAt[s.high]
+		low.worst, high.worst = s.lowAt, s.highAt
 		fig.Finding = fmt.Sprintf("The lowest voltage is %s at %s, the highest %s at %s. (The run kept no voltages of single instants: each place shows its own worst.)",
 			pu(s.lowest[s.low]), low.worst, pu(s.highest[s.high]), high.worst)
 	default:
 		low.heading = "Lowest, " + on(s.At(s.low))
 		high.heading = "Highest, " + on(s.At(s.high))
-		low.worst, high.worst = s.Steps.LowestAt[s.low], s.Steps.HighestAt[s.high]
+		low.worst, high.worst = s.lowAt, s.highAt
 		fig.Finding = fmt.Sprintf("On %s the voltage falls to %s at %s%s; on %s it rises to %s at %s%s.",
 			on(s.At(s.low)), pu(s.lowest[s.low]), low.worst, s.howFar(low.worst),
 			on(s.At(s.high)), pu(s.highest[s.high]), high.worst, s.howFar(high.worst))
@@ -67,10 +67,10 @@ func drawDistance(s *survey, st *style) (*page, Figure) {
 		hi = append(hi, v)
 	}
 	vlo, vhi := s.voltageRange(lo, hi)
-	gap := vg.Length(20)
+	gap := vg.Length(28)
 	full := vg.Rectangle{
 		Min: vg.Point{X: p.body.Min.X + 38, Y: p.body.Min.Y + 58},
-		Max: vg.Point{X: p.body.Max.X - 34, Y: p.body.Max.Y - 36},
+		Max: vg.Point{X: p.body.Max.X - 34, Y: p.body.Max.Y - 40},
 	}
 	w := (full.Max.X - full.Min.X - gap) / 2
 	phases := map[string]bool{}
@@ -91,19 +91,18 @@ func drawDistance(s *survey, st *style) (*page, Figure) {
 			for j := range right {
 				right[j].at /= 120
 			}
-			n.rightAxis(right, "[V on 120 V]")
+			n.rightAxis(right, "[V, 120 V base]")
 		}
 		n.xAxis(linear(0, far*1.03, 5), "Distance from the source [km]")
-		n.label(n.bold(labelSize, black), n.rect.Min.X, n.rect.Max.Y+20, text.XLeft, text.YBottom, pr.heading)
+		n.label(n.bold(labelSize, black), n.rect.Min.X, n.rect.Max.Y+24, text.XLeft, text.YBottom, pr.heading)
 		s.profileLines(n, pr, phases)
 	}
 	var items []key
 	for _, ph := range sortedPhases(phases) {
 		items = append(items, key{line: phaseStyle(ph), text: "phase " + ph})
 	}
-	items = append(items, key{fill: outsideA, text: "outside " + s.rangeWords},
-		key{glyph: &draw.GlyphStyle{Color: black, Radius: vg.Points(4), Shape: draw.RingGlyph{}}, text: "worst place"})
-	p.panel(full, 0, 1, 0, 1).keys(items, full.Min.X, full.Min.Y-46)
+	both := p.panel(full, 0, 1, vlo, vhi)
+	both.keys(append(items, s.limitKeys(both)...), full.Min.X, full.Min.Y-46)
 	return p, fig
 }
 
@@ -141,7 +140,7 @@ func (s *survey) profileLines(n *panel, pr profile, seen map[string]bool) {
 	var lone []segment
 	joined := map[string]bool{}
 	for _, b := range s.Branches {
-		if b.To == "" {
+		if b.To == "" || b.Open() {
 			continue
 		}
 		from, to := s.places[b.From], s.places[b.To]
@@ -193,9 +192,6 @@ func (s *survey) profileLines(n *panel, pr profile, seen map[string]bool) {
 		st.Width = width
 		if g.thin {
 			st.Width, st.Dashes = vg.Points(0.6), nil
-			if col, ok := st.Color.(interface{ RGBA() (a, b, c, d uint32) }); ok {
-				_ = col
-			}
 		}
 		n.add(line{[]float64{g.x0, g.x1}, []float64{g.y0, g.y1}, st})
 	}
@@ -207,11 +203,23 @@ func (s *survey) profileLines(n *panel, pr profile, seen map[string]bool) {
 		node, _ := splitPlace(pr.worst)
 		x, y := n.x(s.places[node].DistanceKM), n.yIn(v)
 		n.ring(x, y, 4)
-		side, dx := text.XRight, vg.Length(-7)
-		if x < n.rect.Min.X+n.width()*0.5 {
-			side, dx = text.XLeft, 7
+		var crowd []vg.Point
+		for _, g := range segments {
+			x0, y0, x1, y1 := n.x(g.x0), n.y(g.y0), n.x(g.x1), n.y(g.y1)
+			k := int(math.Hypot(float64(x1-x0), float64(y1-y0))/4) + 1
+			for i := 0; i <= k; i++ {
+				f := vg.Length(i) / vg.Length(k)
+				crowd = append(crowd, vg.Point{X: x0 + f*(x1-x0), Y: y0 + f*(y1-y0)})
+			}
 		}
-		n.haloed(n.bold(smallSize, black), x+dx, y, side, text.YCenter, pr.worst)
+		t := n.bold(smallSize, black)
+		name := fit(t, pr.worst, n.width()/2)
+		box, side := labelBox(vg.Point{X: x, Y: y}, t.Width(name), nil, crowd, n.rect)
+		lx := box.Min.X
+		if side == text.XRight {
+			lx = box.Max.X
+		}
+		n.haloed(t, lx, (box.Min.Y+box.Max.Y)/2, side, text.YCenter, name)
 	}
 }
 

@@ -12,7 +12,7 @@ import (
 // drawDuration draws, by phase, for which share of the time the lowest and the
 // highest voltage exceed a value.
 func drawDuration(s *survey, st *style) (*page, Figure) {
-	fig := Figure{Title: "Duration curves of the lowest and the highest voltage"}
+	fig := Figure{Title: "Duration curves of lowest and highest voltage " + s.where}
 	curves := s.phases
 	if len(curves) == 0 {
 		curves = []phaseVoltages{{"", s.lowest, s.highest}}
@@ -33,8 +33,16 @@ func drawDuration(s *survey, st *style) (*page, Figure) {
 	if rows == 0 {
 		fig.Finding = "No step was solved, so there is no voltage to show."
 	} else {
-		fig.Finding = fmt.Sprintf("Somewhere on the feeder the voltage is below %s for %s of the time and above it for %s.",
-			s.rangeWords, percent(100*float64(below)/float64(rows)), percent(100*float64(above)/float64(rows)))
+		share := func(n int) string {
+			if n == 0 {
+				return "never"
+			}
+			return "for " + percent(100*float64(n)/float64(rows)) + " of the time"
+		}
+		fig.Finding = fmt.Sprintf("The lowest voltage %s is below %s %s, the highest above it %s.", s.where, s.rangeWords, share(below), share(above))
+		if below+above == 0 {
+			fig.Finding = fmt.Sprintf("The voltage %s never leaves %s.", s.where, s.rangeWords)
+		}
 	}
 	if len(s.phases) == 0 && rows > 0 {
 		fig.Finding += " (The run kept no voltages by phase.)"
@@ -62,7 +70,7 @@ func drawDuration(s *survey, st *style) (*page, Figure) {
 		}
 		items = append(items, key{line: style, text: name})
 	}
-	items = append(items, key{fill: outsideA, text: "outside " + s.rangeWords})
+	items = append(items, s.limitKeys(n)...)
 	n.tagCurves(curves)
 	n.keys(items, n.rect.Min.X, n.rect.Min.Y-46)
 	return p, fig

@@ -13,15 +13,15 @@ import (
 func (p *page) timeBody(bottom vg.Length) vg.Rectangle {
 	return vg.Rectangle{
 		Min: vg.Point{X: p.body.Min.X + 38, Y: p.body.Min.Y + bottom},
-		Max: vg.Point{X: p.body.Max.X - 34, Y: p.body.Max.Y - 20},
+		Max: vg.Point{X: p.body.Max.X - 34, Y: p.body.Max.Y - 23},
 	}
 }
 
 func drawEnvelope(s *survey, st *style) (*page, Figure) {
 	daily := s.span.days() > 62
-	fig := Figure{Title: "Voltage envelope: the lowest and the highest of each day"}
+	fig := Figure{Title: "Voltage envelope " + s.where + ": lowest and highest of each day"}
 	if !daily {
-		fig.Title = "Voltage envelope: the lowest and the highest on the feeder"
+		fig.Title = "Voltage envelope " + s.where + ": lowest and highest"
 	}
 	p0 := s.bins(900)
 	low := reduce(s.Steps.Time, s.lowest, p0)
@@ -34,9 +34,12 @@ func drawEnvelope(s *survey, st *style) (*page, Figure) {
 	n.shadeLimits(s.limits)
 	n.gaps(p0, low.lo)
 	n.voltageAxes(6)
+	n.verticals(s.span.timeTicks(n.text(labelSize, black), n.width()))
 	n.xAxis(s.span.timeTicks(n.text(labelSize, black), n.width()), "")
 	n.band(p0, low.lo, high.hi, mix(white, sky, 0.45))
-	n.band(p0, low.mean, high.mean, mix(white, sky, 0.9))
+	if daily {
+		n.band(p0, low.mean, high.mean, mix(white, sky, 0.9))
+	}
 	lx, ly := steps(p0, low.lo)
 	hx, hy := steps(p0, high.hi)
 	n.add(line{lx, ly, draw.LineStyle{Color: blue, Width: vg.Points(1.2)}},
@@ -44,12 +47,11 @@ func drawEnvelope(s *survey, st *style) (*page, Figure) {
 	items := []key{
 		{line: draw.LineStyle{Color: vermilion, Width: vg.Points(dataWidth)}, text: "highest"},
 		{line: draw.LineStyle{Color: blue, Width: vg.Points(dataWidth)}, text: "lowest"},
-		{fill: mix(white, sky, 0.9), text: "between their means"},
-		{fill: outsideA, text: "outside " + s.rangeWords},
 	}
-	if !daily {
-		items[2].text = "between"
+	if daily {
+		items = append(items, key{fill: mix(white, sky, 0.9), text: "between daily means"})
 	}
+	items = append(items, s.limitKeys(n)...)
 	n.keys(items, n.rect.Min.X, n.rect.Min.Y-32)
 	return p, fig
 }
@@ -63,8 +65,8 @@ func (s *survey) envelopeFinding() string {
 	below, above, days := 0, 0, 0
 	widest, widestDay := 0.0, 0
 	for d := range g.days {
-		lo, _ := extremes(g.cell[d*g.rows : (d+1)*g.rows])
-		_, hi := extremes(h.cell[d*h.rows : (d+1)*h.rows])
+		lo, _ := extremes(inRun(g.cell[d*g.rows : (d+1)*g.rows]))
+		_, hi := extremes(inRun(h.cell[d*h.rows : (d+1)*h.rows]))
 		if math.IsInf(lo, 0) {
 			continue
 		}
@@ -81,10 +83,13 @@ func (s *survey) envelopeFinding() string {
 	}
 	day := s.span.start.AddDate(0, 0, widestDay).Format("2 Jan")
 	if days == 1 {
-		return fmt.Sprintf("The voltage stays between %s and %s, %s V apart on 120 V.", number(s.lowest[s.low], 3), pu(s.highest[s.high]), number(120*widest, 1))
+		return fmt.Sprintf("The voltage %s stays between %s and %s, %s V apart on 120 V.", s.where, number(s.lowest[s.low], 3), pu(s.highest[s.high]), number(120*widest, 1))
 	}
-	return fmt.Sprintf("Somewhere the voltage falls below %s on %d and rises above it on %d of %d days; the widest spread of a day is %s V on 120 V, on %s.",
-		s.rangeWords, below, above, days, number(120*widest, 1), day)
+	if below+above == 0 {
+		return fmt.Sprintf("The voltage %s stays in %s on all %d days; the widest spread of a day is %s V on 120 V, on %s.", s.where, s.rangeWords, days, number(120*widest, 1), day)
+	}
+	return fmt.Sprintf("The voltage %s falls below %s on %d and rises above it on %d of %d days; the widest spread of a day is %s V on 120 V, on %s.",
+		s.where, s.rangeWords, below, above, days, number(120*widest, 1), day)
 }
 
 // key is an entry of a legend: a line, a patch or a glyph, and its text.
@@ -99,10 +104,17 @@ type key struct {
 // height y.
 func (n *panel) keys(items []key, x, y vg.Length) {
 	t := n.text(labelSize, black)
+	total := vg.Length(0)
+	for _, k := range items {
+		total += 24 + t.Width(k.text) + 13
+	}
+	if x+total-13 > pageWidth-pageMargin+1 {
+		x = pageMargin
+	}
 	start := x
 	for _, k := range items {
-		w := 24 + t.Width(k.text) + 14
-		if x+w-14 > pageWidth-2 && x > start {
+		w := 24 + t.Width(k.text) + 13
+		if x+w-13 > pageWidth-pageMargin+1 && x > start {
 			x, y = start, y-14
 		}
 		n.keyMark(k, x, y)
@@ -123,4 +135,29 @@ func (n *panel) keyMark(k key, x, y vg.Length) {
 	if k.glyph != nil {
 		n.c.DrawGlyphNoClip(*k.glyph, vg.Point{X: x + 9.5, Y: y})
 	}
+}
+
+// limitKeys names the shaded bands that a panel shows.
+func (s *survey) limitKeys(n *panel) []key {
+	l := s.limits
+	keys := []key{{fill: outsideA, text: "outside " + s.rangeWords}}
+	if n.plot.Y.Max > l.OuterHigh || n.plot.Y.Min < l.OuterLow {
+		name := "outside range B"
+		if s.Run.Limits.Own {
+			name = "outside the outer range"
+		}
+		keys = append(keys, key{fill: outsideB, text: name})
+	}
+	return keys
+}
+
+// inRun leaves out what is not part of the run.
+func inRun(cells []float64) []float64 {
+	var v []float64
+	for _, c := range cells {
+		if c != notInRun {
+			v = append(v, c)
+		}
+	}
+	return v
 }

@@ -14,40 +14,36 @@ import (
 )
 
 func drawLowestYear(s *survey, st *style) (*page, Figure) {
-	fig := Figure{Title: "Lowest voltage on the feeder, hour by hour"}
-	place := ""
-	if s.low >= 0 {
-		place = s.Steps.LowestAt[s.low]
-	}
+	fig := Figure{Title: "Lowest voltage " + s.where + ", by day and hour"}
 	below, worst := s.outside(func(n results.NodeRow) float64 { return n.HoursBelowA })
 	switch {
 	case s.low < 0:
 		fig.Finding = "No step was solved, so there is no voltage to show."
 	default:
-		fig.Finding = fmt.Sprintf("The lowest voltage is %s at %s on %s; ", puVolts(s.lowest[s.low]), place, on(s.At(s.low)))
+		fig.Finding = fmt.Sprintf("The lowest voltage is %s at %s on %s; ", puVolts(s.lowest[s.low]), s.lowAt, on(s.At(s.low)))
 		if below == 0 {
-			fig.Finding += "no place with customers falls below " + s.rangeWords + "."
+			fig.Finding += "no judged place falls below " + s.rangeWords + "."
 		} else {
-			fig.Finding += fmt.Sprintf("%s of %d with customers fall below %s, the worst, %s, for %s.",
-				count(below, "place", "places"), len(s.judged), s.rangeWords, worst.Node+"."+worst.Phase, hours(worst.HoursBelowA))
+			fig.Finding += fmt.Sprintf("%s below %s, the worst, %s, for %s.",
+				s.placesThat(below, "falls", "fall"), s.rangeWords, worst.Node+"."+worst.Phase, hours(worst.HoursBelowA))
 		}
 	}
 	return s.heatMap(st, fig, s.lowest, true)
 }
 
 func drawHighestYear(s *survey, st *style) (*page, Figure) {
-	fig := Figure{Title: "Highest voltage on the feeder, hour by hour"}
+	fig := Figure{Title: "Highest voltage " + s.where + ", by day and hour"}
 	above, worst := s.outside(func(n results.NodeRow) float64 { return n.HoursAboveA })
 	switch {
 	case s.high < 0:
 		fig.Finding = "No step was solved, so there is no voltage to show."
 	default:
-		fig.Finding = fmt.Sprintf("The highest voltage is %s at %s on %s; ", puVolts(s.highest[s.high]), s.Steps.HighestAt[s.high], on(s.At(s.high)))
+		fig.Finding = fmt.Sprintf("The highest voltage is %s at %s on %s; ", puVolts(s.highest[s.high]), s.highAt, on(s.At(s.high)))
 		if above == 0 {
-			fig.Finding += "no place with customers rises above " + s.rangeWords + "."
+			fig.Finding += "no judged place rises above " + s.rangeWords + "."
 		} else {
-			fig.Finding += fmt.Sprintf("%s of %d with customers rise above %s, the worst, %s, for %s.",
-				count(above, "place", "places"), len(s.judged), s.rangeWords, worst.Node+"."+worst.Phase, hours(worst.HoursAboveA))
+			fig.Finding += fmt.Sprintf("%s above %s, the worst, %s, for %s.",
+				s.placesThat(above, "rises", "rise"), s.rangeWords, worst.Node+"."+worst.Phase, hours(worst.HoursAboveA))
 		}
 	}
 	return s.heatMap(st, fig, s.highest, false)
@@ -65,6 +61,14 @@ func (s *survey) outside(of func(results.NodeRow) float64) (n int, worst results
 		}
 	}
 	return n, worst
+}
+
+// placesThat begins a sentence on n of the judged places; a place is a node.phase.
+func (s *survey) placesThat(n int, one, many string) string {
+	if n == 1 {
+		return fmt.Sprintf("1 of %d judged places %s", len(s.judged), one)
+	}
+	return fmt.Sprintf("%s of %d judged places %s", number(float64(n), 0), len(s.judged), many)
 }
 
 // dayGrid is values by local day and time of day; NaN where there is none.
@@ -102,8 +106,21 @@ func (s *survey) byDay(values []float64, lowest bool) dayGrid {
 			put(s.At(i), v)
 		}
 	}
+	// What lies before the run and after it is no missing value.
+	clock := func(t time.Time) int { return (t.Hour()*3600 + t.Minute()*60 + t.Second()) * rows / 86400 }
+	for r := range clock(s.span.start) {
+		g.cell[r] = notInRun
+	}
+	if end := clock(s.span.end); end > 0 && dayNumber(s.span.end) == last {
+		for r := end; r < rows; r++ {
+			g.cell[(g.days-1)*rows+r] = notInRun
+		}
+	}
 	return g
 }
+
+// notInRun marks the hours of the first and the last day that are not run.
+var notInRun = math.Inf(1)
 
 // dayNumber counts local days, whatever their length.
 func dayNumber(t time.Time) int {
@@ -118,7 +135,7 @@ type shade struct {
 
 var shadeStops = [...]color.NRGBA{
 	{0xf4, 0xf9, 0xfc, 0xff}, // well inside
-	{0x7f, 0xbf, 0xe3, 0xff}, // at the limit, from inside
+	{0x5f, 0xa9, 0xd8, 0xff}, // at the limit, from inside
 	{0xe0, 0x6a, 0x10, 0xff}, // just outside
 	{0x8f, 0x2c, 0x06, 0xff}, // at range B
 	{0x3a, 0x0a, 0x12, 0xff}, // far outside
@@ -127,6 +144,9 @@ var shadeStops = [...]color.NRGBA{
 func (k shade) color(v float64) color.NRGBA {
 	if math.IsNaN(v) {
 		return missing
+	}
+	if v == notInRun {
+		return white
 	}
 	part := func(a, b float64) float64 {
 		if a == b {
@@ -151,7 +171,7 @@ func (s *survey) heatMap(st *style, fig Figure, values []float64, lowest bool) (
 	if !lowest {
 		side = "highest"
 	}
-	fig.Alt = fmt.Sprintf("Heat map of the %s voltage on the feeder, days of %s across, hours of the day upwards, darker towards the limit and red outside it. %s", side, s.span.spoken(), fig.Finding)
+	fig.Alt = fmt.Sprintf("Heat map of the %s voltage %s, days of %s across, hours of the day upwards, darker towards the limit and red outside it. %s", side, s.where, s.span.spoken(), fig.Finding)
 	lo, hi := extremes(values)
 	l := s.limits
 	k := shade{calm: math.Max(hi, l.Low+0.03), limit: l.Low, outer: l.OuterLow, end: math.Min(lo, l.OuterLow-0.02)}
@@ -166,17 +186,17 @@ func (s *survey) heatMap(st *style, fig Figure, values []float64, lowest bool) (
 	left, right := vg.Length(38), vg.Length(92)
 	rect := vg.Rectangle{
 		Min: vg.Point{X: p.body.Min.X + left, Y: p.body.Min.Y + 26},
-		Max: vg.Point{X: p.body.Max.X - right, Y: p.body.Max.Y - 20},
+		Max: vg.Point{X: p.body.Max.X - right, Y: p.body.Max.Y - 23},
 	}
 	days := span{start: midnight(s.span.start), end: midnight(s.span.end.Add(-time.Nanosecond)).AddDate(0, 0, 1)}
-	n := p.panel(rect, days.lo(), days.hi(), 0, 24)
+	n := p.panel(rect, 0, float64(g.days), 0, 24)
 	n.image(func(fx, fy float64) color.NRGBA {
 		d := min(int(fx*float64(g.days)), g.days-1)
 		r := min(int(fy*float64(g.rows)), g.rows-1)
 		return k.color(g.cell[d*g.rows+r])
 	})
 	n.outline(n.rect, axisLine)
-	n.xAxis(days.calendarTicks(n), "")
+	n.xAxis(days.byDay(days.calendarTicks(n)), "")
 	var hourTicks []tick
 	for h := 0; h <= 24; h += 6 {
 		hourTicks = append(hourTicks, tick{at: float64(h), label: fmt.Sprintf("%02d:00", h)})
@@ -192,6 +212,25 @@ func (s span) calendarTicks(n *panel) []tick {
 		return s.timeTicks(n.text(labelSize, black), n.width())
 	}
 	return s.dayTicks(1)
+}
+
+// byDay moves ticks from time to days since the start: every day is equally wide,
+// also those of 23 and 25 hours.
+func (s span) byDay(ticks []tick) []tick {
+	first := dayNumber(s.start)
+	day := func(at float64) float64 {
+		t := time.Unix(0, int64(math.Round(at))*1e9).In(s.start.Location())
+		n := dayNumber(t)
+		m := midnight(t)
+		return float64(n-first) + float64(t.Sub(m))/float64(m.AddDate(0, 0, 1).Sub(m))
+	}
+	for i := range ticks {
+		ticks[i].at = day(ticks[i].at)
+		if ticks[i].mid != 0 {
+			ticks[i].mid = day(ticks[i].mid)
+		}
+	}
+	return ticks
 }
 
 // image paints every device pixel of the panel by its place in it: fx from the left,
@@ -269,7 +308,7 @@ func (s *survey) colourBar(n *panel, k shade, lo, hi float64, lowest bool) {
 			n.label(t, bar.rect.Max.X+5, y, text.XLeft, text.YCenter, tk.label)
 		}
 	}
-	n.label(n.text(labelSize, black), bar.rect.Min.X, bar.rect.Max.Y+6, text.XLeft, text.YBottom, "Voltage [p.u.]")
+	n.label(n.text(labelSize, black), bar.rect.Min.X, bar.rect.Max.Y+9, text.XLeft, text.YBottom, "Voltage [p.u.]")
 	for _, v := range s.Steps.Status {
 		if v != results.OK {
 			y := n.rect.Min.Y - 16

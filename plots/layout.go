@@ -97,7 +97,7 @@ func newWalk(s *survey) walk {
 	for _, b := range s.Branches {
 		i, ok1 := index[b.From]
 		k, ok2 := index[b.To]
-		if ok1 && ok2 && i != k {
+		if ok1 && ok2 && i != k && !b.Open() {
 			w.near[i] = append(w.near[i], k)
 			w.near[k] = append(w.near[k], i)
 		}

@@ -11,15 +11,17 @@ import (
 // lossKind is a kind of losses: its column of powers in steps.csv and its colour,
 // chosen so that neighbours differ in lightness as well.
 type lossKind struct {
-	column, name string
-	color        color.NRGBA
+	column, month string // of steps.csv and of monthly.csv
+	name          string
+	spoken        string
+	color         color.NRGBA
 }
 
 var lossKinds = [...]lossKind{
-	{"line losses [kW]", "lines", blue},
-	{"transformer load losses [kW]", "transformers, load", orange},
-	{"transformer no-load losses [kW]", "transformers, no-load", yellow},
-	{"regulator losses [kW]", "regulators", color.NRGBA{0x55, 0x30, 0x45, 0xff}},
+	{"line losses [kW]", "line losses [kWh]", "lines", "line losses", blue},
+	{"transformer load losses [kW]", "transformer load losses [kWh]", "transformers, load", "load losses of transformers", orange},
+	{"transformer no-load losses [kW]", "transformer no-load losses [kWh]", "transformers, no-load", "no-load losses of transformers", yellow},
+	{"regulator losses [kW]", "regulator losses [kWh]", "regulators", "losses of regulators", color.NRGBA{0x55, 0x30, 0x45, 0xff}},
 }
 
 func drawLosses(s *survey, st *style) (*page, Figure) {
@@ -44,7 +46,7 @@ func drawLosses(s *survey, st *style) (*page, Figure) {
 	_, hi := roundRange(0, math.Max(top/divide, 1e-3), 5)
 	n := p.panel(vg.Rectangle{
 		Min: vg.Point{X: p.body.Min.X + 44, Y: p.body.Min.Y + 42},
-		Max: vg.Point{X: p.body.Max.X - 8, Y: p.body.Max.Y - 20},
+		Max: vg.Point{X: p.body.Max.X - 8, Y: p.body.Max.Y - 23},
 	}, 0, float64(len(cal.starts)), 0, hi)
 	n.yAxis(linear(0, hi, 5), "Energy lost ["+unit+"]")
 	w := min(0.72, 60/float64(n.width())*float64(len(cal.starts)))
@@ -98,11 +100,15 @@ func sumOf(v []float64) float64 {
 	return sum
 }
 
-// lossEnergies returns kWh by kind and column of the calendar. steps.csv has the
-// energy of all losses of a row but only the powers of the kinds, at its end: the
-// energy is shared out in the proportion of those powers.
+// lossEnergies returns kWh by kind and column of the calendar: by month those of
+// monthly.csv. By day or by year they come from steps.csv, which has the energy of all
+// losses of a row but only the powers of the kinds, at its end: the energy is shared
+// out in the proportion of those powers.
 func (s *survey) lossEnergies(cal calendar) [len(lossKinds)][]float64 {
 	var out [len(lossKinds)][]float64
+	if cal.word == "month" && s.monthlyLosses(cal, &out) {
+		return out
+	}
 	var powers [len(lossKinds)][]float64
 	for k, kind := range lossKinds {
 		out[k] = make([]float64, len(cal.starts))
@@ -148,9 +154,39 @@ func (s *survey) lossesFinding(kwh [len(lossKinds)][]float64, cal calendar) stri
 	if in > 0 {
 		txt += fmt.Sprintf(", %s of the energy that enters the feeder", percent(100*total/in))
 	}
-	txt += fmt.Sprintf("; %s make %s of it", lossKinds[best].name, percent(100*sumOf(kwh[best])/total))
+	txt += fmt.Sprintf("; %s make %s of it", lossKinds[best].spoken, percent(100*sumOf(kwh[best])/total))
 	if best != 2 && sumOf(kwh[2]) > 0 {
 		txt += fmt.Sprintf(" and no-load losses %s", percent(100*sumOf(kwh[2])/total))
 	}
 	return txt + "."
+}
+
+// monthlyLosses reads the energies from monthly.csv; false where it has not all of
+// them.
+func (s *survey) monthlyLosses(cal calendar, out *[len(lossKinds)][]float64) bool {
+	var kwh [len(lossKinds)][]float64
+	month := s.Monthly.Column("month")
+	for k := range lossKinds {
+		kwh[k] = make([]float64, len(cal.starts))
+	}
+	for i, start := range cal.starts {
+		found := false
+		for r, row := range s.Monthly.Rows {
+			if row[month] != start.Format("2006-01") {
+				continue
+			}
+			found = true
+			for k, kind := range lossKinds {
+				kwh[k][i] = s.Monthly.Number(r, kind.month)
+				if math.IsNaN(kwh[k][i]) {
+					return false
+				}
+			}
+		}
+		if !found {
+			return false
+		}
+	}
+	*out = kwh
+	return true
 }

@@ -48,7 +48,7 @@ func drawMap(s *survey, st *style) (*page, Figure) {
 		fig.Finding += " The study gives no coordinates: branches are spread evenly, from the source to the right."
 	}
 	fig.Alt = "Map of the feeder: lines coloured from blue (low) to red (high) by their worst voltage, triangles where range A is left, devices marked. " + fig.Finding
-	p := st.newPage(330, fig.Title, fig.Finding, s.foot())
+	p := st.newPage(l.bodyHeight(), fig.Title, fig.Finding, s.foot())
 	n := mapPanel(p, l)
 	s.mapLines(n, l, worst)
 	s.mapNodes(n, l, worst)
@@ -78,7 +78,7 @@ func (s *survey) mapFinding(worst map[string]worstVoltage) string {
 		}
 	}
 	if low+high == 0 {
-		return fmt.Sprintf("No place with customers leaves its range in %s.", s.span.spoken())
+		return "No place with customers leaves its range."
 	}
 	txt := ""
 	if low > 0 {
@@ -108,18 +108,11 @@ func sortedKeys[V any](m map[string]V) []string {
 // proportions, a tree fills the room.
 func mapPanel(p *page, l layout) *panel {
 	r := vg.Rectangle{Min: vg.Point{X: p.body.Min.X + 10, Y: p.body.Min.Y + 26}, Max: vg.Point{X: p.body.Max.X - 128, Y: p.body.Max.Y - 10}}
-	x0, x1, y0, y1 := math.Inf(1), math.Inf(-1), math.Inf(1), math.Inf(-1)
-	for _, xy := range l.at {
-		x0, x1 = math.Min(x0, xy[0]), math.Max(x1, xy[0])
-		y0, y1 = math.Min(y0, xy[1]), math.Max(y1, xy[1])
-	}
-	if math.IsInf(x0, 0) {
-		x0, x1, y0, y1 = 0, 1, 0, 1
-	}
+	x0, x1, y0, y1 := l.bounds()
 	w, h := float64(r.Max.X-r.Min.X), float64(r.Max.Y-r.Min.Y)
 	dx, dy := math.Max(x1-x0, 1e-6), math.Max(y1-y0, 1e-6)
 	if l.tree {
-		return p.panel(r, x0-0.03*dx, x1+0.03*dx, y0-0.03*dy, y1+0.03*dy)
+		return p.panel(r, x0-0.07*dx, x1+0.04*dx, y0-0.03*dy, y1+0.03*dy)
 	}
 	scale := math.Min(w*0.94/dx, h*0.94/dy) // points per km
 	cx, cy := (x0+x1)/2, (y0+y1)/2
@@ -257,10 +250,10 @@ func (s *survey) mapLegend(n *panel, l layout, worst map[string]worstVoltage, ki
 		}
 	}
 	if anyLow {
-		row(func(x, y vg.Length) { n.triangle(x, y, 4.4, true, k.color(lim.Low-0.005)) }, "below range A")
+		row(func(x, y vg.Length) { n.triangle(x, y, 4.4, true, k.color(lim.Low-0.005)) }, "below "+a)
 	}
 	if anyHigh {
-		row(func(x, y vg.Length) { n.triangle(x, y, 4.4, false, k.color(lim.High+0.005)) }, "above range A")
+		row(func(x, y vg.Length) { n.triangle(x, y, 4.4, false, k.color(lim.High+0.005)) }, "above "+a)
 	}
 	words := map[string]string{"source": "source", "transformer": "transformer", "regulator": "regulator", "capacitor": "capacitor", "generator": "generator"}
 	for _, kind := range kinds {
@@ -295,4 +288,29 @@ func (s *survey) mapLegend(n *panel, l layout, worst map[string]worstVoltage, ki
 		unit += " along the feeder"
 	}
 	n.label(n.text(labelSize, black), x+w+6, y, text.XLeft, text.YCenter, unit)
+}
+
+// bodyHeight gives the map the height that its shape wants, within what the legend
+// needs and a page bears.
+func (l layout) bodyHeight() vg.Length {
+	const least, most = vg.Length(310), vg.Length(430)
+	if l.tree {
+		return least + 40
+	}
+	x0, x1, y0, y1 := l.bounds()
+	wide := float64(pageWidth) - 160
+	return max(least, min(most, vg.Length(wide*(y1-y0)/math.Max(x1-x0, 1e-9))+50))
+}
+
+// bounds of all places, km; the unit square where there are none.
+func (l layout) bounds() (x0, x1, y0, y1 float64) {
+	x0, x1, y0, y1 = math.Inf(1), math.Inf(-1), math.Inf(1), math.Inf(-1)
+	for _, xy := range l.at {
+		x0, x1 = math.Min(x0, xy[0]), math.Max(x1, xy[0])
+		y0, y1 = math.Min(y0, xy[1]), math.Max(y1, xy[1])
+	}
+	if math.IsInf(x0, 0) {
+		return 0, 1, 0, 1
+	}
+	return x0, x1, y0, y1
 }

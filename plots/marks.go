@@ -118,7 +118,7 @@ func labelBox(at vg.Point, width vg.Length, boxes []vg.Rectangle, crowd []vg.Poi
 		cost := math.Abs(float64(o.dy)) / 40
 		for _, b := range boxes {
 			if r.Min.X < b.Max.X && b.Min.X < r.Max.X && r.Min.Y < b.Max.Y && b.Min.Y < r.Max.Y {
-				cost += 50
+				cost += 300
 			}
 		}
 		for _, p := range crowd {
@@ -126,7 +126,7 @@ func labelBox(at vg.Point, width vg.Length, boxes []vg.Rectangle, crowd []vg.Poi
 				cost++
 			}
 		}
-		if r.Min.X < in.Min.X-8 || r.Max.X > in.Max.X+8 || r.Min.Y < in.Min.Y-8 || r.Max.Y > in.Max.Y+8 {
+		if r.Min.X < in.Min.X-14 || r.Max.X > in.Max.X+8 || r.Min.Y < in.Min.Y-8 || r.Max.Y > in.Max.Y+8 {
 			cost += 200
 		}
 		if cost < least {

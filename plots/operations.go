@@ -70,7 +70,7 @@ func drawOperations(s *survey, st *style) (*page, Figure) {
 		p.label(name, left-6, mid, text.XRight, text.YCenter, fit(name, r.name, left-6-p.body.Min.X))
 		for i, c := range r.counts {
 			x := left + w*vg.Length(i)
-			col := mix(white, blue, 0.08+0.92*math.Sqrt(float64(c)/float64(most)))
+			col := mix(white, blue, 0.08+0.92*math.Pow(float64(c)/float64(most), 0.8))
 			if c == 0 {
 				col = white
 			}

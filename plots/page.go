@@ -32,8 +32,8 @@ type page struct {
 
 // foot is what stands under every figure.
 type foot struct {
-	left string
-	tag  string // "" for none
+	lines [2]string // what was studied; when and how
+	tag   string    // "" for none
 }
 
 // newPage begins a figure whose body has the given height.
@@ -42,7 +42,7 @@ func (s *style) newPage(bodyHeight vg.Length, title, finding string, f foot) *pa
 	findingText := s.text(findingSize, inkGrey)
 	width := pageWidth - 2*pageMargin
 	lines := wrap(findingText, finding, width, 3)
-	const titleLine, findingLine, footLine = vg.Length(20), vg.Length(14.5), vg.Length(19)
+	const titleLine, findingLine, footLine = vg.Length(20), vg.Length(14.5), vg.Length(31)
 	head := titleLine + findingLine*vg.Length(len(lines)) + 7
 	height := pageMargin + head + bodyHeight + footLine + 3
 	p := &page{style: s, height: height}
@@ -66,7 +66,7 @@ func (s *style) newPage(bodyHeight vg.Length, title, finding string, f foot) *pa
 // foot writes the case on the left and the tag of an invented study, framed, on the right.
 func (p *page) foot(f foot, width vg.Length) {
 	small := p.text(smallSize-0.5, inkGrey)
-	base := vg.Length(8)
+	base := vg.Length(7)
 	if f.tag != "" {
 		w := small.Width(f.tag)
 		right := pageWidth - pageMargin
@@ -75,13 +75,18 @@ func (p *page) foot(f foot, width vg.Length) {
 		p.outline(box, draw.LineStyle{Color: axisGrey, Width: vg.Points(0.6)})
 		width -= w + 20
 	}
-	p.label(small, pageMargin, base, text.XLeft, text.YBottom, fit(small, f.left, width))
+	p.label(small, pageMargin, base, text.XLeft, text.YBottom, fit(small, f.lines[1], width))
+	p.label(small, pageMargin, base+12, text.XLeft, text.YBottom, fit(small, f.lines[0], pageWidth-2*pageMargin))
 }
 
 // label writes one line of text at a point.
 func (p *page) label(t text.Style, x, y vg.Length, ax text.XAlignment, ay text.YAlignment, txt string) {
 	if txt == "" {
 		return
+	}
+	if ay == text.YCenter {
+		// The library centres the line with its descent; the eye centres the capitals.
+		y += t.Font.Size * 0.16
 	}
 	p.c.FillText(aligned(t, ax, ay), vg.Point{X: x, Y: y}, txt)
 }

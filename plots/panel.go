@@ -69,7 +69,7 @@ func (n *panel) yAxis(ticks []tick, name string) {
 		}
 		n.label(t, n.rect.Min.X-5, y, text.XRight, text.YCenter, k.label)
 	}
-	n.label(n.text(labelSize, black), n.rect.Min.X-n.leftRoom(ticks), n.rect.Max.Y+6, text.XLeft, text.YBottom, name)
+	n.label(n.text(labelSize, black), n.rect.Min.X-n.leftRoom(ticks), n.rect.Max.Y+9, text.XLeft, text.YBottom, name)
 }
 
 // leftRoom is the width of the tick labels of a y axis with their distance.
@@ -85,12 +85,10 @@ func (n *panel) leftRoom(ticks []tick) vg.Length {
 // rightAxis labels the same axis in another unit.
 func (n *panel) rightAxis(ticks []tick, name string) {
 	t := n.text(labelSize, inkGrey)
-	w := t.Width(name)
 	for _, k := range ticks {
 		n.label(t, n.rect.Max.X+5, n.y(k.at), text.XLeft, text.YCenter, k.label)
 	}
-	n.label(n.text(labelSize, black), max(n.rect.Max.X+5, min(n.rect.Max.X+30, pageWidth-pageMargin)-0), n.rect.Max.Y+6, text.XRight, text.YBottom, name)
-	_ = w
+	n.label(n.text(labelSize, black), pageWidth-pageMargin, n.rect.Max.Y+9, text.XRight, text.YBottom, name)
 }
 
 // xAxis draws the base line, ticks and labels below. A tick's label stands under it,

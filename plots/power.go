@@ -20,8 +20,8 @@ func drawPower(s *survey, st *style) (*page, Figure) {
 	reactive := reduce(s.Steps.Time, s.okOnly("source reactive [kvar]"), edges)
 	generation := reduce(s.Steps.Time, s.okOnly("generation real [kW]"), edges)
 	left, right := p.body.Min.X+44, p.body.Max.X-8
-	top := vg.Rectangle{Min: vg.Point{X: left, Y: p.body.Min.Y + 152}, Max: vg.Point{X: right, Y: p.body.Max.Y - 20}}
-	low := vg.Rectangle{Min: vg.Point{X: left, Y: p.body.Min.Y + 40}, Max: vg.Point{X: right, Y: p.body.Min.Y + 126}}
+	top := vg.Rectangle{Min: vg.Point{X: left, Y: p.body.Min.Y + 152}, Max: vg.Point{X: right, Y: p.body.Max.Y - 23}}
+	low := vg.Rectangle{Min: vg.Point{X: left, Y: p.body.Min.Y + 40}, Max: vg.Point{X: right, Y: p.body.Min.Y + 123}}
 	_, gen := extremes(generation.hi)
 	many := manyRows(s.Steps.Time, edges)
 
@@ -29,26 +29,32 @@ func drawPower(s *survey, st *style) (*page, Figure) {
 	if many {
 		n.band(edges, n.scaled(source.lo), n.scaled(source.hi), mix(white, sky, 0.6))
 	}
-	n.curve(edges, source.mean, draw.LineStyle{Color: blue, Width: vg.Points(dataWidth)})
-	items := []key{{line: draw.LineStyle{Color: blue, Width: vg.Points(dataWidth)}, text: "source"}}
+	main := draw.LineStyle{Color: blue, Width: vg.Points(dataWidth)}
+	if many {
+		main.Width = vg.Points(1.2)
+	}
+	n.curve(edges, source.mean, main)
+	items := []key{{line: main, text: "source"}}
 	if many {
 		items[0].text = "source, mean"
 		items = append(items, key{fill: mix(white, sky, 0.6), text: "lowest to highest"})
 	}
 	if gen > 0 {
 		dash := draw.LineStyle{Color: orange, Width: vg.Points(dataWidth), Dashes: []vg.Length{vg.Points(5), vg.Points(2)}}
-		n.curve(edges, generation.hi, dash)
 		name := "generation"
 		if many {
+			// Dashes are lost on a line that jumps from day to day.
+			dash.Dashes, dash.Width = nil, vg.Points(1.1)
 			name = "generation, highest"
 		}
+		n.curve(edges, generation.hi, dash)
 		items = append(items, key{line: dash, text: name})
 	}
 	m := s.powerPanel(p, low, "Reactive power [%s]", 3, edges, reactive)
 	if many {
 		m.band(edges, m.scaled(reactive.lo), m.scaled(reactive.hi), mix(white, sky, 0.6))
 	}
-	m.curve(edges, reactive.mean, draw.LineStyle{Color: blue, Width: vg.Points(dataWidth)})
+	m.curve(edges, reactive.mean, main)
 	m.xAxis(s.span.timeTicks(m.text(labelSize, black), m.width()), "")
 	m.keys(items, left, m.rect.Min.Y-30)
 	return p, fig
@@ -94,7 +100,7 @@ func (s *survey) powerPanel(p *page, r vg.Rectangle, name string, ticks int, edg
 	n := p.panel(r, s.span.lo(), s.span.hi(), lo, hi)
 	n.gaps(edges, series[0].mean)
 	n.yAxis(linear(lo, hi, ticks), "")
-	n.label(n.text(labelSize, black), p.body.Min.X, n.rect.Max.Y+6, text.XLeft, text.YBottom, fmt.Sprintf(name, unit))
+	n.label(n.text(labelSize, black), p.body.Min.X, n.rect.Max.Y+9, text.XLeft, text.YBottom, fmt.Sprintf(name, unit))
 	n.verticals(s.span.timeTicks(n.text(labelSize, black), n.width()))
 	n.c.StrokeLine2(axisLine, n.rect.Min.X, n.y(0), n.rect.Max.X, n.y(0))
 	return scaledPanel{n, divide}

@@ -18,9 +18,12 @@ type survey struct {
 	// rangeWords names the limits: "range A (up to 600 V)".
 	rangeWords string
 	judged     []results.NodeRow
-	lowest     []float64 // by row of steps.csv; NaN where the step is not ok
-	highest    []float64
-	low, high  int // the rows of the two worst instants; -1 where there is none
+	// lowest and highest are by row of steps.csv, NaN where the step is not ok: over the
+	// judged places where voltages.csv has all of them, else over the whole feeder.
+	lowest, highest []float64
+	low, high       int    // the rows of the two worst instants; -1 where there is none
+	lowAt, highAt   string // node.phase
+	where           string // what the two are over: "at customers" or "on the feeder"
 	// phases holds the lowest and the highest judged voltage of each row by phase, from
 	// voltages.csv; empty where the run kept none.
 	phases []phaseVoltages
@@ -44,6 +47,39 @@ func newSurvey(f *results.Folder) (*survey, error) {
 	s.judge()
 	s.lowest = s.okOnly("lowest [pu]")
 	s.highest = s.okOnly("highest [pu]")
+	s.where = "on the feeder"
+	all := s.coverJudged()
+	if all && len(s.judged) < len(s.Nodes) {
+		s.where = "at customers"
+	}
+	s.worstInstants()
+	if err := s.readVoltages(all); err != nil {
+		return nil, err
+	}
+	return s, nil
+}
+
+// coverJudged tells whether voltages.csv has every judged place.
+func (s *survey) coverJudged() bool {
+	if len(s.VoltageNames) == 0 {
+		return false
+	}
+	have := make(map[string]bool, len(s.VoltageNames))
+	for _, n := range s.VoltageNames {
+		have[n] = true
+	}
+	for _, n := range s.judged {
+		if !have[n.Node+"."+n.Phase] {
+			return false
+		}
+	}
+	return true
+}
+
+// worstInstants finds the rows of the lowest and of the highest voltage; the first
+// of equals.
+func (s *survey) worstInstants() {
+	s.low, s.high, s.lowAt, s.highAt = -1, -1, "", ""
 	for i, v := range s.lowest {
 		if !math.IsNaN(v) && (s.low < 0 || v < s.lowest[s.low]) {
 			s.low = i
@@ -54,7 +90,12 @@ func newSurvey(f *results.Folder) (*survey, error) {
 			s.high = i
 		}
 	}
-	return s, s.readVoltages()
+	if s.low >= 0 {
+		s.lowAt = s.Steps.LowestAt[s.low]
+	}
+	if s.high >= 0 {
+		s.highAt = s.Steps.HighestAt[s.high]
+	}
 }
 
 // judge finds the places that count, in a fixed order, and the limits that hold for
@@ -108,11 +149,16 @@ func (s *survey) okOnly(column string) []float64 {
 	return v
 }
 
-// readVoltages goes through voltages.csv once.
-func (s *survey) readVoltages() error {
+// readVoltages goes through voltages.csv once. Where it has all judged places, what
+// is lowest and highest is taken from them.
+func (s *survey) readVoltages(all bool) error {
 	if s.VoltageNames == nil {
 		return nil
 	}
+	if all {
+		s.low, s.high = -1, -1
+	}
+	lowest, highest := math.Inf(1), math.Inf(-1)
 	judged := make(map[string]bool, len(s.judged))
 	for _, n := range s.judged {
 		judged[n.Node+"."+n.Phase] = true
@@ -158,6 +204,7 @@ func (s *survey) readVoltages() error {
 	}
 	rows := len(s.Steps.Time)
 	row := 0
+	var low, high []float64
 	err := s.EachVoltage(func(at int64, v []float64) error {
 		if row >= rows || at != s.Steps.Time[row] {
 			return fmt.Errorf("%s is not the time of row %d of steps.csv: the files are of two runs; run the study again",
@@ -179,21 +226,57 @@ func (s *survey) readVoltages() error {
 				if !(p.max[row] >= v[i]) {
 					p.max[row] = v[i]
 				}
+				if all && v[i] < lowest {
+					lowest, s.low, s.lowAt = v[i], row, s.VoltageNames[i]
+				}
+				if all && v[i] > highest {
+					highest, s.high, s.highAt = v[i], row, s.VoltageNames[i]
+				}
 			}
 		}
 		if row == s.low {
-			s.atLow = named(s.VoltageNames, v)
+			low = append(low[:0], v...)
 		}
 		if row == s.high {
-			s.atHigh = named(s.VoltageNames, v)
+			high = append(high[:0], v...)
 		}
 		row++
 		return nil
 	})
-	return err
+	if err != nil {
+		return err
+	}
+	if row != rows {
+		return fmt.Errorf("voltages.csv has %d rows, steps.csv %d: half a folder; run the study again", row, rows)
+	}
+	s.atLow, s.atHigh = named(s.VoltageNames, low), named(s.VoltageNames, high)
+	if all {
+		s.lowest, s.highest = s.overPhases()
+	}
+	return nil
+}
+
+// overPhases is the lowest and the highest voltage of each row over all phases.
+func (s *survey) overPhases() (lowest, highest []float64) {
+	for row := range s.Steps.Time {
+		lo, hi := math.NaN(), math.NaN()
+		for _, p := range s.phases {
+			if !(lo <= p.min[row]) && !math.IsNaN(p.min[row]) {
+				lo = p.min[row]
+			}
+			if !(hi >= p.max[row]) && !math.IsNaN(p.max[row]) {
+				hi = p.max[row]
+			}
+		}
+		lowest, highest = append(lowest, lo), append(highest, hi)
+	}
+	return lowest, highest
 }
 
 func named(names []string, v []float64) map[string]float64 {
+	if v == nil {
+		return nil
+	}
 	m := make(map[string]float64, len(names))
 	for i, n := range names {
 		m[n] = v[i]
@@ -203,12 +286,10 @@ func named(names []string, v []float64) map[string]float64 {
 
 // foot is the line below every figure.
 func (s *survey) foot() foot {
-	var parts []string
+	f := foot{lines: [2]string{"Case " + s.Run.Case, s.span.spoken() + "  ·  steps of " + stepWords(s.Run.Step) + "  ·  " + strings.ReplaceAll(s.Run.Zone, "_", " ")}}
 	if s.Run.Title != "" {
-		parts = append(parts, s.Run.Title)
+		f.lines[0] = s.Run.Title + "  ·  case " + s.Run.Case
 	}
-	parts = append(parts, "case "+s.Run.Case, s.span.spoken(), strings.ReplaceAll(s.Run.Zone, "_", " "), "steps of "+stepWords(s.Run.Step))
-	f := foot{left: strings.Join(parts, "  ·  ")}
 	if s.Run.Demo {
 		f.tag = "demo study, invented data"
 	}
@@ -305,7 +386,7 @@ func (n *panel) voltageAxes(every int) {
 	for i := range right {
 		right[i].at /= 120
 	}
-	n.rightAxis(right, "[V on 120 V]")
+	n.rightAxis(right, "[V, 120 V base]")
 }
 
 // unsolved tells in a few words how many rows are no statistic.
@@ -319,5 +400,5 @@ func (s *survey) unsolved() string {
 	if n == 0 {
 		return ""
 	}
-	return fmt.Sprintf(" Grey: %s low or unsolved.", count(n, "row", "rows"))
+	return fmt.Sprintf(" Grey: %s without a valid solution (low or unsolved).", count(n, "row", "rows"))
 }

@@ -93,11 +93,7 @@ func (g invented) feeder() (nodes []fakeNode, branches []fakeBranch) {
 			branches = append(branches, fakeBranch{fmt.Sprintf("lat%02d-%d", i, k), "section", lf, to, ph, step})
 			lf = to
 			sec := "h" + to[1:]
-			ground := ph
-			if g.ungrounded && i == g.trunk-2 && ph == "ABC" {
-				ground = "ABC"
-			}
-			add(fakeNode{name: sec, phases: ground, x: lx, y: ly, d: ld, kv: 0.48, customers: 3, weak: 0.004*float64(k+1) + 0.008})
+			add(fakeNode{name: sec, phases: ph, x: lx, y: ly, d: ld, kv: 0.48, customers: 3, weak: 0.004*float64(k+1) + 0.008})
 			branches = append(branches, fakeBranch{"t" + to[1:], "transformer", to, sec, ph, 0})
 		}
 	}
@@ -129,7 +125,7 @@ func (g invented) write() fstest.MapFS {
 	stamp := func(t time.Time) string { return t.Format("2006-01-02T15:04:05-07:00") }
 	w("run.json", `{"format":1,"version":"test","title":"Alder Bend 1203","case":"base","zone":"America/Denver","step_seconds":%d,"start":"%s","end":"%s","demo":%v,"limits":{"range":"ANSI C84.1","judge":"customers"}}`+"\n",
 		int(g.step/time.Second), stamp(g.start), stamp(g.end), g.demo)
-	w("places.csv", "node,x,y,longlat,distance [km],nominal [kV],phases\n")
+	w("places.csv", "node,x,y,longlat,distance [km],nominal [kV],phases,judged\n")
 	for _, n := range nodes {
 		x, y, ll := "", "", ""
 		switch {
@@ -138,7 +134,13 @@ func (g invented) write() fstest.MapFS {
 		case g.coordinates:
 			x, y = fmt.Sprintf("%.1f", n.x*1000), fmt.Sprintf("%.1f", n.y*1000)
 		}
-		w("places.csv", "%s,%s,%s,%s,%.4f,%g,%s\n", n.name, x, y, ll, n.d, n.kv, n.phases)
+		judged := ""
+		if n.customers > 0 {
+			for _, ph := range n.phases {
+				judged += " " + g.phaseName(n, ph)
+			}
+		}
+		w("places.csv", "%s,%s,%s,%s,%.4f,%g,%s,%s\n", n.name, x, y, ll, n.d, n.kv, n.phases, strings.TrimSpace(judged))
 	}
 	w("network.csv", "element,kind,from,to,phases,length [km]\n")
 	for _, b := range branches {
@@ -169,6 +171,14 @@ func shuffleRows(text string, seed uint64) string {
 	return strings.Join(lines, "\n") + "\n"
 }
 
+// phaseName is how a node's phase is called: a pair where nothing grounds it.
+func (g invented) phaseName(n fakeNode, ph rune) string {
+	if g.ungrounded && strings.HasPrefix(n.name, "h") && n.phases == "ABC" {
+		return map[rune]string{'A': "AB", 'B': "BC", 'C': "CA"}[ph]
+	}
+	return string(ph)
+}
+
 type fakePoint struct {
 	node, at   int // into nodes; column
 	name       string
@@ -187,10 +197,7 @@ func (g invented) series(w func(string, string, ...any), nodes []fakeNode, branc
 	var pts []fakePoint
 	for i, n := range nodes {
 		for _, ph := range n.phases {
-			name := string(ph)
-			if g.ungrounded && strings.HasPrefix(n.name, "h") && n.phases == "ABC" {
-				name = map[rune]string{'A': "AB", 'B': "BC", 'C': "CA"}[ph]
-			}
+			name := g.phaseName(n, ph)
 			pts = append(pts, fakePoint{node: i, name: n.name + "." + name, ph: int(ph - 'A'), min: math.Inf(1), max: math.Inf(-1)})
 		}
 	}
@@ -227,7 +234,7 @@ func (g invented) series(w func(string, string, ...any), nodes []fakeNode, branc
 		h := float64(lt.Hour()) + float64(lt.Minute())/60
 		doy := float64(lt.YearDay())
 		season := math.Cos(2 * math.Pi * (doy - 15) / 365)
-		load := 2600 + 900*math.Max(season, 0)*(0.6+0.4*math.Sin(2*math.Pi*(h-1)/24)) + 1500*math.Max(-season, 0)*math.Max(0, math.Sin(math.Pi*(h-8)/14)) +
+		load := 2600 + 1300*math.Max(season, 0)*(0.6+0.4*math.Sin(2*math.Pi*(h-1)/24)) + 1500*math.Max(-season, 0)*math.Max(0, math.Sin(math.Pi*(h-8)/14)) +
 			900*math.Exp(-(h-19)*(h-19)/8) + 350*math.Exp(-(h-8)*(h-8)/4) + 120*r.NormFloat64()
 		cloud += 0.2*(r.Float64()-0.5) - 0.05*(cloud-0.6)
 		sun := math.Max(0, math.Sin(math.Pi*(h-6+1.2*season)/(12-2.4*season)))
@@ -254,7 +261,7 @@ func (g invented) series(w func(string, string, ...any), nodes []fakeNode, branc
 			if n.d > 6 {
 				reg += 0.012
 			}
-			v[i] = 1.014 + reg - load/6000*phase*(n.d*0.0088+n.weak*1.6) + gen/1500*n.d*0.0058*phase + 0.0015*r.NormFloat64()
+			v[i] = 1.019 + reg - load/6000*phase*(n.d*0.0098+n.weak*2.2) + gen/1500*n.d*0.0070*phase + 0.0015*r.NormFloat64()
 			if n.kv > 100 {
 				v[i] = 1.01
 			}

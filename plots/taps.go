@@ -117,11 +117,7 @@ func drawTaps(s *survey, st *style) (*page, Figure) {
 		lo, hi = math.Min(lo, hi-4)-0.6, math.Max(hi, lo+4)+0.6
 		n := p.panel(vg.Rectangle{Min: vg.Point{X: left, Y: y - panelHeight}, Max: vg.Point{X: right, Y: y}}, s.span.lo(), s.span.hi(), lo, hi)
 		n.gaps(edges, reduced[0].mean)
-		step := math.Max(roundStep((hi-lo)/4), 1)
-		if step == 2.5 {
-			step = 4
-		}
-		n.yAxis(stepped(lo, hi, step), "")
+		n.yAxis(stepped(lo, hi, tapStep(hi-lo)), "")
 		ticks := s.span.timeTicks(n.text(labelSize, black), n.width())
 		n.verticals(ticks)
 		band := color.NRGBA{0xd9, 0xd9, 0xd9, 0xff}
@@ -165,7 +161,7 @@ func drawTaps(s *survey, st *style) (*page, Figure) {
 		items = append(items, key{fill: color.NRGBA{0xd9, 0xd9, 0xd9, 0xff}, text: "range of all phases"})
 	}
 	if len(capacitors) > 0 {
-		items = append(items, key{fill: blue, text: "closed"}, key{fill: white, text: "open"})
+		items = append(items, key{fill: blue, text: "closed all the time"}, key{fill: white, text: "open"})
 	}
 	last.keys(items, left, last.rect.Min.Y-30)
 	return p, fig
@@ -176,6 +172,16 @@ func tapStyle(phase string) draw.LineStyle {
 	l := phaseStyle(phase)
 	l.Width = vg.Points(1.4)
 	return l
+}
+
+// tapStep is a whole number of taps for about four labels over a range.
+func tapStep(taps float64) float64 {
+	for _, s := range [...]float64{1, 2, 4, 5, 8, 10} {
+		if taps/s <= 5.2 {
+			return s
+		}
+	}
+	return math.Ceil(roundStep(taps / 4))
 }
 
 // manyRows tells whether bins hold more than one row.
@@ -202,7 +208,7 @@ func (n *panel) shades(edges, values []float64) {
 	for i, v := range values {
 		c := missing
 		if !math.IsNaN(v) {
-			c = mix(white, blue, v)
+			c = mix(white, blue, math.Sqrt(v)) // an hour in a day must show
 		}
 		n.bar(n.x(edges[i]), n.rect.Min.Y, n.x(edges[i+1]), n.rect.Max.Y, c)
 	}

@@ -30,7 +30,8 @@ type Folder struct {
 	// kept no voltages.
 	VoltageNames []string
 
-	files fs.FS
+	files  fs.FS
+	judged map[string][]string // phases by node
 }
 
 // NodeRow is a row of nodes.csv: the statistics of one node.phase. Voltages are p.u.
@@ -98,7 +99,11 @@ type PlaceRow struct {
 	DistanceKM float64 // along the feeder, from the source
 	NominalKV  float64 // line-to-line
 	Phases     string
+	Judged     []string // phases or pairs whose voltage counts against the limits
 }
+
+// Open tells whether nothing flows through the element: an open switch.
+func (b BranchRow) Open() bool { return b.Kind == "open switch" }
 
 // BranchRow is a row of network.csv: an element between two nodes, or (To blank) at
 // one node.
@@ -176,6 +181,9 @@ func (f *Folder) agree(faults *tables.Faults) {
 		faults.Add(at, "ends at %s, the run of run.json at %s: half a folder; run it again",
 			f.Run.stamp(last), f.Run.stamp(f.Run.End))
 	}
+	if n := int64(f.Run.End.UnixNano()-s.Time[0]+row-1) / row; int64(len(s.Time)) > n {
+		faults.Add(at, "has %d rows, the run of run.json %d: the files are of two runs; run it again", len(s.Time), n)
+	}
 	if n := len(f.Devices.Time); n > 0 && len(f.Devices.Names) > 0 && f.Devices.Time[n-1] < s.Time[len(s.Time)-1]-row {
 		faults.Add(tables.Pos{File: "devices.csv"}, "ends at %s, steps.csv at %s: half a folder; run it again",
 			f.Run.stamp(time.Unix(0, f.Devices.Time[n-1])), f.Run.stamp(time.Unix(0, s.Time[len(s.Time)-1])))
@@ -193,8 +201,18 @@ func (f *Folder) agree(faults *tables.Faults) {
 }
 
 // Judged returns whether the voltage of a node.phase counts against the limits:
-// where customers stand, or anywhere if the study says so.
-func (f *Folder) Judged(n NodeRow) bool { return f.Run.Limits.All || n.Customers > 0 }
+// where loads stand, or anywhere if the study says so.
+func (f *Folder) Judged(n NodeRow) bool {
+	if f.Run.Limits.All {
+		return true
+	}
+	for _, ph := range f.judged[n.Node] {
+		if ph == n.Phase {
+			return true
+		}
+	}
+	return false
+}
 
 // LimitsOf returns the limits that hold at a node of the given nominal voltage
 // (line-to-line, kV): low and high are those that a feeder should keep (range A),

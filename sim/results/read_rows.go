@@ -1,5 +1,7 @@
 package results
 
+import "strings"
+
 // The small files of the folder, column by column as section 7 of the design has them.
 
 func (f *Folder) readNodes(rd *reader) {
@@ -61,9 +63,13 @@ func (f *Folder) readPlaces(rd *reader) {
 	rd.each("places.csv", func(c cells) {
 		f.Places = append(f.Places, PlaceRow{
 			Node: c.text(0), X: c.number(1), Y: c.number(2), LongLat: c.text(3) == "yes",
-			DistanceKM: c.number(4), NominalKV: c.number(5), Phases: c.text(6),
+			DistanceKM: c.number(4), NominalKV: c.number(5), Phases: c.text(6), Judged: strings.Fields(c.text(7)),
 		})
-	}, "node", "x", "y", "longlat", "distance [km]", "nominal [kV]", "phases")
+	}, "node", "x", "y", "longlat", "distance [km]", "nominal [kV]", "phases", "judged")
+	f.judged = make(map[string][]string, len(f.Places))
+	for _, p := range f.Places {
+		f.judged[p.Node] = p.Judged
+	}
 }
 
 func (f *Folder) readBranches(rd *reader) {
