@@ -20,7 +20,7 @@ func aDay(t testing.TB) *tiny {
 func randomLevels(r *rand.Rand) map[string]float64 {
 	levels := map[string]float64{}
 	for _, n := range [...]string{"low", "n1", "n2", "n3", "shop", "src"} {
-		levels[n] = 0.98 + 0.04*r.Float64()
+		levels[n] = 0.92 + 0.14*r.Float64()
 		levels[n+" behind"] = 0.02 * r.Float64()
 		for _, p := range [...]string{".A", ".B", ".C"} {
 			levels[n+p] = 0.01 * r.Float64()

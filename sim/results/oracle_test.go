@@ -6,6 +6,7 @@ import (
 	"math/rand/v2"
 	"sort"
 	"strconv"
+	"strings"
 	"testing"
 	"time"
 
@@ -114,6 +115,7 @@ func TestNodesAgreeWithBruteForce(t *testing.T) {
 		t.Fatalf("%d rows, want %d", len(rows), len(points))
 	}
 	settled, settling := o.intervals(true), o.intervals(false)
+	met := map[string]bool{}
 	if len(settling) < 50 {
 		t.Fatalf("only %d settling intervals: the run shows nothing", len(settling))
 	}
@@ -160,6 +162,11 @@ func TestNodesAgreeWithBruteForce(t *testing.T) {
 		cell(t, row, "hours above A [h]", above)
 		cell(t, row, "hours below B [h]", belowB)
 		cell(t, row, "hours above B [h]", aboveB)
+		for c := range row {
+			if strings.Contains(c, "[h]") && num(t, row, c) > 0 {
+				met[c] = true
+			}
+		}
 		customers := num(t, row, "customers")
 		cell(t, row, "customer-hours below A [h]", customers*below)
 		cell(t, row, "customer-hours above A [h]", customers*above)
@@ -175,6 +182,9 @@ func TestNodesAgreeWithBruteForce(t *testing.T) {
 		cell(t, row, "settling hours outside A [h]", outside)
 		cell(t, row, "lowest settling [pu]", lows)
 		cell(t, row, "highest settling [pu]", highs)
+	}
+	if len(met) != 7 {
+		t.Errorf("only the columns %v are ever above nothing: the run shows too little", met)
 	}
 }
 
@@ -409,6 +419,9 @@ func TestSummaryAndMonthsAgreeWithBruteForce(t *testing.T) {
 		all.settling += b.settling
 		all.operations += b.operations
 		all.peak = max(all.peak, b.peak)
+	}
+	if all.customers == 0 || all.below == 0 || all.below >= all.settled {
+		t.Fatalf("%g customer-hours and %g of %g h below: the run shows nothing", all.customers, all.below, all.settled)
 	}
 	sum := map[string]map[string]string{}
 	for _, r := range sheetRows(t, dir, "summary.csv") {

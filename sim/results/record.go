@@ -13,6 +13,9 @@ type RunInfo struct {
 	// Wall holds wall times for timing.json, the only file that differs between two
 	// runs of the same inputs.
 	Wall []WallTime
+	// Figures, where it is not nil, draws pictures from the files written so far into
+	// the folder dir and returns their names below it, and how long it took.
+	Figures func(dir string) ([]string, WallTime, error)
 }
 
 // WallTime is the time that a part of a run took.

@@ -1,8 +1,11 @@
 package results
 
 import (
+	"crypto/sha256"
 	"errors"
 	"fmt"
+	"os"
+	"path/filepath"
 	"slices"
 )
 
@@ -349,7 +352,30 @@ func (w *Writer) finish(o *Outcome, run RunInfo) error {
 	if err := w.writeRun(o, run); err != nil {
 		return err
 	}
+	if run.Figures != nil {
+		if err := w.draw(o, &run); err != nil {
+			return err
+		}
+	}
 	return w.writeTiming(run)
+}
+
+// draw adds the figures, which are drawn from the files and from run.json, and
+// writes run.json anew with their hashes.
+func (w *Writer) draw(o *Outcome, run *RunInfo) error {
+	names, wall, err := run.Figures(w.folder.temp)
+	if err != nil {
+		return err
+	}
+	run.Wall = append(slices.Clone(run.Wall), wall)
+	for _, name := range names {
+		data, err := os.ReadFile(filepath.Join(w.folder.temp, name))
+		if err != nil {
+			return err
+		}
+		w.hashes[name] = fmt.Sprintf("%x", sha256.Sum256(data))
+	}
+	return w.writeRun(o, *run)
 }
 
 // keep finishes a file and notes its hash; err is how writing it went.

@@ -1,0 +1,144 @@
+package main
+
+import (
+	"encoding/csv"
+	"encoding/json"
+	"errors"
+	"fmt"
+	"io"
+	"io/fs"
+	"os"
+	"path/filepath"
+	"strconv"
+
+	"yearflow/profiles"
+	"yearflow/sim"
+)
+
+// positionsOf reads --positions: settled, given, a results folder; left out (trace),
+// the study's own results where they belong to the same inputs, else settled.
+func (c *console) positionsOf(st *opened, e *sim.Engine, step int, o *instantOptions) (sim.Positions, error) {
+	switch o.positions {
+	case "settled":
+		return sim.Positions{}, nil
+	case "given":
+		return sim.Positions{Given: true}, nil
+	case "":
+		dir := st.results(o.caseName)
+		if _, err := os.Stat(filepath.Join(dir, "run.json")); err != nil {
+			fmt.Fprintf(c.errs, "positions: settled on this step's inputs (no results in %s)\n", dir)
+			return sim.Positions{}, nil
+		}
+		p, err := c.logged(st, e, step, dir)
+		var in inputError
+		if errors.As(err, &in) {
+			fmt.Fprintf(c.errs, "positions: settled on this step's inputs (%v)\n", err)
+			return sim.Positions{}, nil
+		}
+		if err == nil {
+			fmt.Fprintf(c.errs, "positions: as logged in %s\n", dir)
+		}
+		return p, err
+	}
+	if info, err := os.Stat(o.positions); err != nil || !info.IsDir() {
+		return sim.Positions{}, wrongf("--positions %s: want settled, given, or a results folder", o.positions)
+	}
+	return c.logged(st, e, step, o.positions)
+}
+
+// logged reads the positions at the end of a step from a results folder, which must
+// come from the inputs as they are now.
+func (c *console) logged(st *opened, e *sim.Engine, step int, dir string) (sim.Positions, error) {
+	var none sim.Positions
+	data, err := os.ReadFile(filepath.Join(dir, "run.json"))
+	if err != nil {
+		return none, wrongf("%s is no results folder: %v", dir, err)
+	}
+	var run struct {
+		Case   string            `json:"case"`
+		Inputs map[string]string `json:"inputs_sha256"`
+	}
+	if err := json.Unmarshal(data, &run); err != nil {
+		return none, wrongf("%s: run.json cannot be read: %v", dir, err)
+	}
+	if run.Case != e.Study.Case {
+		return none, wrongf("the results in %s are those of case %q, not of %q: name the case, or other results", dir, run.Case, e.Study.Case)
+	}
+	now, err := st.inputs(e)
+	if err != nil {
+		return none, err
+	}
+	for f, h := range now {
+		if run.Inputs[f] != h {
+			return none, wrongf("%s has changed since the results in %s were made: run again", f, dir)
+		}
+	}
+	if len(run.Inputs) != len(now) {
+		return none, wrongf("the results in %s were made from other files than the study has now: run again", dir)
+	}
+	return c.readPositions(e, step, filepath.Join(dir, "devices.csv"))
+}
+
+// readPositions finds the row of devices.csv that a step belongs to.
+func (c *console) readPositions(e *sim.Engine, step int, file string) (sim.Positions, error) {
+	var none sim.Positions
+	f, err := os.Open(file)
+	if errors.Is(err, fs.ErrNotExist) {
+		return none, wrongf("%s is missing: run again", file)
+	} else if err != nil {
+		return none, machineError{err}
+	}
+	defer f.Close()
+	p := e.Study.Settings.Period
+	at := p.Start + int64(step)*p.Step
+	r := csv.NewReader(f)
+	header, err := r.Read()
+	if err != nil {
+		return none, wrongf("%s: %v", file, err)
+	}
+	var last []string
+	for {
+		row, err := r.Read()
+		if err == io.EOF {
+			break
+		}
+		if err != nil {
+			return none, wrongf("%s: %v", file, err)
+		}
+		t, err := profiles.ParseTime(row[0], p.Zone)
+		if err != nil {
+			return none, wrongf("%s: %v", file, err)
+		}
+		if t > at {
+			break
+		}
+		last = row
+	}
+	if last == nil {
+		return none, wrongf("%s has no row for that step", file)
+	}
+	value := map[string]int{}
+	for i, h := range header[1:] {
+		v, err := strconv.Atoi(last[i+1])
+		if err != nil {
+			return none, wrongf("%s, column %s: want a whole number, got %q", file, h, last[i+1])
+		}
+		value[h] = v
+	}
+	out := sim.Positions{Taps: make([]int, len(e.Plan.TapNames)), Closed: make([]bool, len(e.Study.Model.Capacitors))}
+	for i, n := range e.Plan.TapNames {
+		v, ok := value[n]
+		if !ok {
+			return none, wrongf("%s has no column %s", file, n)
+		}
+		out.Taps[i] = v
+	}
+	for i := range e.Study.Model.Capacitors {
+		v, ok := value[e.Study.Model.Capacitors[i].Name]
+		if !ok {
+			return none, wrongf("%s has no column %s", file, e.Study.Model.Capacitors[i].Name)
+		}
+		out.Closed[i] = v == 1
+	}
+	return out, nil
+}

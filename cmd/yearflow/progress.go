@@ -1,0 +1,68 @@
+package main
+
+import (
+	"fmt"
+	"io"
+	"os"
+	"strings"
+	"time"
+
+	"golang.org/x/term"
+
+	"yearflow/sim/results"
+)
+
+// progress shows how far a run is: a bar on a terminal, a line every few seconds
+// elsewhere. It is a sim.Recorder that records nothing.
+type progress struct {
+	w        io.Writer
+	terminal bool
+	total    int
+	done     int
+	began    time.Time
+	shown    time.Time
+}
+
+func newProgress(w io.Writer, total int) *progress {
+	p := &progress{w: w, total: total, began: time.Now()}
+	if f, ok := w.(*os.File); ok {
+		p.terminal = term.IsTerminal(int(f.Fd()))
+	}
+	p.shown = p.began
+	return p
+}
+
+func (p *progress) Interval(*results.Interval) error { return nil }
+func (p *progress) Action(*results.Action) error     { return nil }
+
+func (p *progress) Step(*results.Step) error {
+	p.done++
+	if p.done%64 != 0 && p.done != p.total {
+		return nil
+	}
+	now := time.Now()
+	every := 5 * time.Second
+	if p.terminal {
+		every = 200 * time.Millisecond
+	}
+	if now.Sub(p.shown) < every {
+		return nil
+	}
+	p.shown = now
+	share := float64(p.done) / float64(p.total)
+	left := time.Duration(float64(now.Sub(p.began)) * (1 - share) / share).Round(time.Second)
+	if p.terminal {
+		n := int(30 * share)
+		fmt.Fprintf(p.w, "\r[%s%s] %3.0f %%, %v left  ", strings.Repeat("=", n), strings.Repeat(" ", 30-n), 100*share, left)
+	} else {
+		fmt.Fprintf(p.w, "step %d of %d (%.0f %%), about %v left\n", p.done, p.total, 100*share, left)
+	}
+	return nil
+}
+
+// end clears the bar.
+func (p *progress) end() {
+	if p.terminal {
+		fmt.Fprintf(p.w, "\r%s\r", strings.Repeat(" ", 60))
+	}
+}

@@ -1,0 +1,66 @@
+package main
+
+import (
+	"fmt"
+	"os"
+	"path/filepath"
+
+	"github.com/spf13/cobra"
+
+	"yearflow/plots"
+	"yearflow/profiles"
+	"yearflow/sim"
+	"yearflow/sim/results"
+)
+
+func reportCommand(c *console) *cobra.Command {
+	return &cobra.Command{
+		Use: "report RESULTS", Short: "draws the figures again from a results folder alone",
+		Example: "  yearflow run\n  yearflow report results/base",
+		Args: func(_ *cobra.Command, args []string) error {
+			if len(args) != 1 {
+				return wrongf("report takes one results folder, such as results/base")
+			}
+			return nil
+		},
+		RunE: func(_ *cobra.Command, args []string) error { return c.report(args[0]) },
+	}
+}
+
+// report draws beside the old figures and exchanges them when all are there.
+func (c *console) report(dir string) error {
+	if info, err := os.Stat(dir); err != nil || !info.IsDir() {
+		return wrongf("there is no results folder %q", dir)
+	}
+	if _, err := results.ReadFolder(os.DirFS(dir)); err != nil {
+		return inputError{fmt.Errorf("%s is no whole results folder: %w", dir, err)}
+	}
+	tmp, err := os.MkdirTemp(dir, ".figures-*")
+	if err != nil {
+		return machineError{err}
+	}
+	defer os.RemoveAll(tmp)
+	figures, err := drawTo(dir, tmp)
+	if err != nil {
+		return machineOr(err)
+	}
+	final := filepath.Join(dir, "figures")
+	if err := os.MkdirAll(final, 0o755); err != nil {
+		return machineError{err}
+	}
+	for _, f := range figures {
+		if err := os.Rename(filepath.Join(tmp, f.Name), filepath.Join(final, f.Name)); err != nil {
+			return machineError{err}
+		}
+	}
+	printFigures(c, figures)
+	return nil
+}
+
+func printFigures(c *console, figures []plots.Figure) {
+	for _, f := range figures {
+		c.printf("figures/%s: %s\n", f.Name, f.Finding)
+	}
+}
+
+func stamp(e *sim.Engine, t int64) string { return profiles.Format(t, e.Study.Settings.Period.Zone) }

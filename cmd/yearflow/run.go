@@ -1,0 +1,200 @@
+package main
+
+import (
+	"context"
+	"errors"
+	"fmt"
+	"io"
+	"os"
+	"path/filepath"
+	"time"
+
+	"github.com/spf13/cobra"
+
+	"yearflow/plots"
+	"yearflow/sim"
+	"yearflow/sim/results"
+)
+
+// runOptions are the options of run.
+type runOptions struct {
+	caseName, out string
+	strict        bool
+	noFigures     bool
+	csv, json     string
+}
+
+func runCommand(c *console) *cobra.Command {
+	var o runOptions
+	cmd := &cobra.Command{
+		Use: "run [STUDY] [--case NAME] [--out DIR]", Short: "the period: logs, statistics and figures",
+		Long: `Runs the study's period and writes a results folder: results/<case> in the study's
+folder, or --out. The folder is exchanged for the old one when everything is written,
+so it is whole or absent.
+
+Exit status: 0 done; 1 steps were low or unsolved, or with --strict a limit was
+violated; 2 the input is wrong; 3 the machine failed.`,
+		Example: "  yearflow run\n  yearflow run --case lower-band --out results/lower-band",
+		Args:    atMostOne("study"),
+		RunE:    func(cmd *cobra.Command, args []string) error { return c.run(cmd.Context(), args, &o) },
+	}
+	f := cmd.Flags()
+	f.StringVar(&o.caseName, "case", "", "a case of the study (default: the study as it stands)")
+	f.StringVar(&o.out, "out", "", "results folder (default: results/<case> in the study's folder)")
+	f.BoolVar(&o.strict, "strict", false, "exit status 1 where a voltage limit was violated")
+	f.BoolVar(&o.noFigures, "no-figures", false, "draw no figures (\"yearflow report\" draws them later)")
+	f.StringVar(&o.csv, "csv", "", "write the summary to this file too; - for standard output")
+	f.StringVar(&o.json, "json", "", "the same as JSON")
+	return cmd
+}
+
+func (c *console) run(ctx context.Context, args []string, o *runOptions) error {
+	began := time.Now()
+	st, err := c.find(args)
+	if err != nil {
+		return err
+	}
+	e, err := st.prepare(o.caseName)
+	if err != nil {
+		return err
+	}
+	c.warn(e.Study.Warnings)
+	dir := o.out
+	if dir == "" {
+		dir = st.results(o.caseName)
+	}
+	inputs, err := st.inputs(e)
+	if err != nil {
+		return err
+	}
+	read := time.Now()
+	w, err := results.Create(dir, e.Plan)
+	if err != nil {
+		return machineOr(err)
+	}
+	bar := newProgress(c.errs, e.Steps())
+	counts := &tally{}
+	outcome, err := e.Run(ctx, w, counts, bar)
+	bar.end()
+	if err != nil {
+		return errors.Join(machineOr(err), w.Abort())
+	}
+	ran := time.Now()
+	info := results.RunInfo{Version: version, Inputs: inputs, Wall: []results.WallTime{
+		{Part: "reading", Seconds: read.Sub(began).Seconds()}, {Part: "run", Seconds: ran.Sub(read).Seconds()}}}
+	if !o.noFigures {
+		info.Figures = func(dir string) ([]string, results.WallTime, error) {
+			start := time.Now()
+			figures, err := drawInto(dir)
+			var names []string
+			for _, f := range figures {
+				names = append(names, "figures/"+f.Name)
+			}
+			return names, results.WallTime{Part: "figures", Seconds: time.Since(start).Seconds()}, err
+		}
+	}
+	if err := w.Finish(outcome, info); err != nil {
+		return machineOr(err)
+	}
+	return c.tellRun(e, outcome, counts, dir, o)
+}
+
+// machineOr marks an error of the file system as the machine's; any other stays what
+// it is.
+func machineOr(err error) error {
+	var path *os.PathError
+	var link *os.LinkError
+	if errors.As(err, &path) || errors.As(err, &link) {
+		return machineError{err}
+	}
+	return err
+}
+
+// drawInto draws all figures of a results folder into its figures folder.
+func drawInto(dir string) ([]plots.Figure, error) {
+	figures := filepath.Join(dir, "figures")
+	if err := os.MkdirAll(figures, 0o755); err != nil {
+		return nil, err
+	}
+	return drawTo(dir, figures)
+}
+
+// drawTo draws the figures of the results in dir into another folder.
+func drawTo(dir, figures string) ([]plots.Figure, error) {
+	return plots.Draw(os.DirFS(dir), func(name string) (io.WriteCloser, error) {
+		return os.Create(filepath.Join(figures, name))
+	}, plots.Options{})
+}
+
+// tally counts steps that are not ok.
+type tally struct {
+	low, unsolved int
+	first         *results.Step
+}
+
+var _ sim.Recorder = (*tally)(nil)
+
+func (t *tally) Interval(*results.Interval) error { return nil }
+func (t *tally) Action(*results.Action) error     { return nil }
+
+func (t *tally) Step(s *results.Step) error {
+	switch s.Status {
+	case results.Low:
+		t.low++
+	case results.Unsolved:
+		t.unsolved++
+	default:
+		return nil
+	}
+	if t.first == nil {
+		first := *s
+		first.Last = nil
+		t.first = &first
+	}
+	return nil
+}
+
+// tellRun prints the summary and what is wrong.
+func (c *console) tellRun(e *sim.Engine, outcome *results.Outcome, t *tally, dir string, o *runOptions) error {
+	folder, err := results.ReadFolder(os.DirFS(dir))
+	if err != nil {
+		return machineError{fmt.Errorf("read the results back: %w", err)}
+	}
+	out := c.quiet(o.csv, o.json)
+	fmt.Fprintf(out, "%s, case %s: results in %s\n\n", e.Study.Title, e.Study.Case, dir)
+	rows := [][]string{{"quantity", "value", "unit"}}
+	s := sheet{left: 1}
+	for _, r := range folder.Summary {
+		s.add(r.Quantity, r.Value, r.Unit)
+		rows = append(rows, []string{r.Quantity, r.Value, r.Unit})
+	}
+	s.write(out)
+	for _, name := range outcome.StillMoving {
+		fmt.Fprintf(c.errs, "warning: at the start %s had not come to rest after 24 h of event time\n", name)
+	}
+	for _, name := range outcome.CoarseAt {
+		fmt.Fprintf(c.errs, "warning: the step is too coarse for operations and durations: from step to step the voltage at %s moves more than its bandwidth\n", name)
+	}
+	if len(outcome.Hunting) > 0 {
+		fmt.Fprintf(c.errs, "warning: %s of hunting; see operations.csv and duty.csv\n", count(len(outcome.Hunting), "instant"))
+	}
+	if t.first != nil {
+		fmt.Fprintf(c.errs, "%s low, %s without a solution; the first at %s, %s (%s)\n", count(t.low, "step"), count(t.unsolved, "step"),
+			stamp(e, t.first.Start), t.first.Where, t.first.Status)
+		c.status = exitFound
+	}
+	if o.strict {
+		bad := 0
+		for _, n := range folder.Nodes {
+			if folder.Judged(n) && (n.HoursBelowA > 0 || n.HoursAboveA > 0) {
+				bad++
+			}
+		}
+		if bad > 0 {
+			fmt.Fprintf(c.errs, "%s outside the voltage limits at some time\n", count(bad, "place"))
+			c.status = exitFound
+		}
+	}
+	io := instantOptions{csv: o.csv, json: o.json}
+	return c.export(&io, rows)
+}

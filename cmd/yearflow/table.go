@@ -1,0 +1,134 @@
+package main
+
+import (
+	"encoding/csv"
+	"encoding/json"
+	"fmt"
+	"io"
+	"os"
+	"strings"
+	"unicode/utf8"
+)
+
+// sheet is a small table for people: the first row is the header.
+type sheet struct {
+	rows [][]string
+	left int // so many columns are aligned to the left
+}
+
+func (s *sheet) add(cells ...string) { s.rows = append(s.rows, cells) }
+
+// write prints the sheet with two blanks between columns and numbers to the right.
+func (s *sheet) write(w io.Writer) {
+	var width []int
+	for _, r := range s.rows {
+		for i, c := range r {
+			if i == len(width) {
+				width = append(width, 0)
+			}
+			width[i] = max(width[i], utf8.RuneCountInString(c))
+		}
+	}
+	for _, r := range s.rows {
+		var b strings.Builder
+		for i, c := range r {
+			pad := strings.Repeat(" ", width[i]-utf8.RuneCountInString(c))
+			if i > 0 {
+				b.WriteString("  ")
+			}
+			if i < s.left {
+				b.WriteString(c + pad)
+			} else {
+				b.WriteString(pad + c)
+			}
+		}
+		fmt.Fprintln(w, strings.TrimRight(b.String(), " "))
+	}
+}
+
+// save writes rows to a file, or to standard output for "-". The file appears whole.
+func (c *console) save(name string, write func(io.Writer) error) error {
+	if name == "-" {
+		return write(c.out)
+	}
+	f, err := os.CreateTemp(dirOf(name), ".yearflow-*")
+	if err != nil {
+		return machineError{fmt.Errorf("write %s: %w", name, err)}
+	}
+	defer os.Remove(f.Name())
+	err = write(f)
+	if err == nil {
+		err = f.Chmod(0o644)
+	}
+	if cerr := f.Close(); err == nil {
+		err = cerr
+	}
+	if err == nil {
+		err = os.Rename(f.Name(), name)
+	}
+	if err != nil {
+		return machineError{fmt.Errorf("write %s: %w", name, err)}
+	}
+	return nil
+}
+
+func dirOf(name string) string {
+	if i := strings.LastIndexByte(name, os.PathSeparator); i >= 0 {
+		return name[:i+1]
+	}
+	return "."
+}
+
+func (c *console) saveCSV(name string, rows [][]string) error {
+	return c.save(name, func(w io.Writer) error {
+		cw := csv.NewWriter(w)
+		if err := cw.WriteAll(rows); err != nil {
+			return err
+		}
+		return cw.Error()
+	})
+}
+
+func (c *console) saveJSON(name string, v any) error {
+	return c.save(name, func(w io.Writer) error {
+		e := json.NewEncoder(w)
+		e.SetIndent("", "  ")
+		return e.Encode(v)
+	})
+}
+
+// quiet tells whether standard output is taken by a file format, so that the words
+// for people go elsewhere.
+func (c *console) quiet(files ...string) io.Writer {
+	for _, f := range files {
+		if f == "-" {
+			return io.Discard
+		}
+	}
+	return c.out
+}
+
+// records turns rows under a header into objects.
+func records(rows [][]string) []map[string]string {
+	out := make([]map[string]string, 0, len(rows))
+	for _, r := range rows[1:] {
+		m := map[string]string{}
+		for i, h := range rows[0] {
+			m[h] = r[i]
+		}
+		out = append(out, m)
+	}
+	return out
+}
+
+// cell copies a figure with a fixed number of decimals; nothing for one not known.
+func cell(v float64, decimals int) string {
+	if v != v {
+		return ""
+	}
+	s := fmt.Sprintf("%.*f", decimals, v)
+	if strings.Trim(s, "-0.") == "" {
+		s = strings.TrimPrefix(s, "-")
+	}
+	return s
+}
