@@ -142,7 +142,8 @@ func (c *CapacitorControl) calendar(s CapacitorState, clock Time) CapacitorState
 // NextSwitch returns the next instant at which the clock alone may change what the
 // control asks for: a switching time, or midnight where there is a daily limit; Never
 // where the clock plays no part. It is an event: the control must Observe there,
-// before it acts on anything due at that instant. It is right after an Observe.
+// before it acts on anything due at that instant. It is right after an Observe; where
+// none was possible (no solution), it may lie in the past and is then no event.
 func (c *CapacitorControl) NextSwitch(s CapacitorState) Time {
 	if c.Kind == CapacitorHeld || c.Kind != CapacitorTime && c.DailyLimit <= 0 {
 		return Never

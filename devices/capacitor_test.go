@@ -174,6 +174,7 @@ func TestCapacitorTimelines(t *testing.T) {
 			{midnight + 700, 116, 0, 0, never, nil},
 		}},
 		{"held", held, false, []capRow{{0, 90, 900, 0, never, nil}, {100, 140, -900, 0, never, nil}}},
+		{"before 1970", voltage, false, []capRow{{-1e8, 117, 0, +1, -1e8 + 60, nil}}},
 		{"no voltage is no request", voltage, false, []capRow{{0, math.NaN(), 0, 0, never, nil}}},
 		{"an edge met exactly is inside", voltage, false, []capRow{
 			{0, 118 - 0.9e-7, 0, 0, never, nil}, {1, 118 - 1.1e-7, 0, +1, 61, nil},

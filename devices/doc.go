@@ -106,7 +106,7 @@ type Control[S comparable, R any] interface {
 	// Forget leaves only the position, as after start-up.
 	Forget(s S) S
 	// Edge tells whether a reading is so near to a threshold it is compared with that
-	// it must be taken from an exact solution.
+	// it must be taken from an exact solution; s is the state before Observe sees it.
 	Edge(s S, r R) bool
 }
 

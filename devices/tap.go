@@ -124,9 +124,10 @@ func (c *TapChanger) Observe(s TapState, r TapReading, now Time) TapState {
 	return s
 }
 
-// resumed returns what the clock shows when a request appears in direction ask.
+// resumed returns what the clock shows when a request appears in direction ask: what
+// is left of the last one in that direction, which is nothing unless timers integrate.
 func (c *TapChanger) resumed(s TapState, ask int8, now Time) Time {
-	if !c.Integrate || s.Ask != 0 || s.Side != ask {
+	if s.Side != ask {
 		return 0
 	}
 	return max(0, s.Clock-(now-s.Since))

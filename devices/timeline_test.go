@@ -78,6 +78,8 @@ func TestTapTimelines(t *testing.T) {
 	quick.Delay, quick.TapTime = 0, 1
 	quickLimited := limited
 	quickLimited.LimitHigh, quickLimited.LimitLow, quickLimited.LimitMargin = 120.2, 119.8, 0
+	waiting := quickLimited
+	waiting.LimitHigh, waiting.Delay = 121.5, 2*Second
 
 	tests := []struct {
 		name string
@@ -197,6 +199,13 @@ func TestTapTimelines(t *testing.T) {
 			{0, 119, 120, +1, 5, nil}, // another device overdid it meanwhile
 			{5, 119, 120, +1, 5, act(-1, 0, LimitLow, 119, 119.8, 5)},
 			{5.5, 121, 120, -1, 5.5, nil}, // at a later instant: at once
+		}},
+		{"a forced step that waits, and is no longer forced, has its delay", waiting, 0, []tapRow{
+			{0, 122, 120, -1, 0, act(0, -1, LimitHigh, 122, 121.5, 0)},
+			{0, 119, 120, +1, 5, nil},
+			{1, 119.9, 118, +1, 2, nil}, // the band asks since 0 s
+			{1.5, 119, 118, +1, 1.5, nil},
+			{3, 119.9, 118, +1, 3, nil}, // and is overdue
 		}},
 		{"nothing is asked at a stop", stops, 1, []tapRow{
 			{0, 118, 118, +1, 30, nil},
