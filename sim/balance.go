@@ -128,6 +128,9 @@ func (e *Engine) balanceElement(k int, u int32) (BalanceElement, bool) {
 			term(t)
 		}
 	}
+	if r := e.net.Model.Regulators; el.Kind == network.RegulatorSeries {
+		be.Neighbour = e.net.Model.Nodes[r[el.Index].From].Name // beyond the inner point
+	}
 	be.Current = e.state.Flow[e.net.Offsets[k]+at]
 	be.Power = e.state.V[u] * cmplx.Conj(be.Current)
 	return be, true

@@ -3,6 +3,7 @@ package main
 import (
 	"fmt"
 	"io"
+	"math"
 	"math/cmplx"
 	"strings"
 
@@ -170,6 +171,7 @@ func complexText(v complex128, decimals int) string {
 	if im < 0 {
 		sign, im = "-", -im
 	}
+	im = math.Abs(im) // no −0
 	return fmt.Sprintf("%s %s j%.*f", cell(real(v), decimals), sign, decimals, im)
 }
 
