@@ -112,7 +112,9 @@ func (b *builder) spacings() {
 			phases--
 		}
 		if len(s.phase) != phases || phases == 0 {
-			b.faults.Add(s.at, "spacing %q: its positions must be 1, or 1 and 2, or 1, 2 and 3, with N where there is a neutral", name)
+			if !b.t.dropped["spacings"] {
+				b.faults.Add(s.at, "spacing %q: its positions must be 1, or 1 and 2, or 1, 2 and 3, with N where there is a neutral", name)
+			}
 			s.phase = nil
 		}
 	}
@@ -197,10 +199,18 @@ func named[T any](b *builder, c tables.Text, what, kind string, from map[string]
 		return zero, false
 	}
 	v, ok := from[c.Value]
-	if !ok {
+	if !ok && !b.t.dropped[kindTable(kind)] {
 		b.faults.Add(c.At, "%s: unknown %s %q%s", what, kind, c.Value, tables.Hint(c.Value, names))
 	}
 	return v, ok
+}
+
+// kindTable is the table that holds what a cell of a construction names.
+func kindTable(kind string) string {
+	if kind == "spacing" {
+		return "spacings"
+	}
+	return "conductors"
 }
 
 func (b *builder) spacingNames() []string {
@@ -350,11 +360,13 @@ func (b *builder) matrix(r *constructionRow, rows []*impedanceRow) conductor.Mat
 		m.N = max(m.N, i+1, j+1)
 	}
 	if m.N == 0 {
-		b.faults.Add(r.Row.At, "construction %q: there are no rows of it in impedances.csv", r.Name.Value)
+		if !b.t.dropped["impedances"] {
+			b.faults.Add(r.Row.At, "construction %q: there are no rows of it in impedances.csv", r.Name.Value)
+		}
 	}
 	for i := range m.N {
 		for j := range i + 1 {
-			if !has[i][j] {
+			if !has[i][j] && !b.t.dropped["impedances"] {
 				b.faults.Add(r.Row.At, "construction %q: row %d, column %d is missing in impedances.csv", r.Name.Value, i+1, j+1)
 			}
 		}

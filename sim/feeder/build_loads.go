@@ -65,7 +65,6 @@ func (b *builder) loads() {
 		}
 		if _, err := time.Parse("2006-01", e.Month.Value); err != nil {
 			b.faults.Add(e.Month.At, "load %q: month %q: want one such as 2025-01", e.Load.Value, e.Month.Value)
-			continue
 		}
 		energies[e.Load.Value] = append(energies[e.Load.Value], e)
 	}

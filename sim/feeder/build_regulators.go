@@ -87,6 +87,10 @@ func (b *builder) regulator(r *regulatorRow, rows []*regulatorSettingsRow) {
 // tapSettings puts the rows of the settings sheet on the units of a bank.
 func (b *builder) tapSettings(r *regulatorRow, g *Regulator, rows []*regulatorSettingsRow, what string) {
 	names := unitNames(r)
+	written := map[tables.Pos]int{} // a row for all phases stands here once for each
+	for _, s := range rows {
+		written[s.Row.At]++
+	}
 	for _, s := range rows {
 		u := -1
 		for i := range g.Units {
@@ -98,11 +102,15 @@ func (b *builder) tapSettings(r *regulatorRow, g *Regulator, rows []*regulatorSe
 			b.faults.Add(s.Phase.At, "%s has no unit %q; its units are %s; all stands for each of them", what, s.Phase.Value, strings.Join(names, ", "))
 			continue
 		}
+		whose := what
+		if written[s.Row.At] == 1 {
+			whose += " " + s.Phase.Value
+		}
 		if s.Row.Bad {
 			g.Units[u].Settings = &TapSettings{At: s.Row.At}
 			continue
 		}
-		g.Units[u].Settings = b.tapSetting(s, g, what+" "+s.Phase.Value)
+		g.Units[u].Settings = b.tapSetting(s, g, whose)
 	}
 	if len(rows) == 0 && !b.t.dropped["regulator-settings"] {
 		b.warnings.Add(r.Row.At, "%s has no settings: it stays at tap 0", what)

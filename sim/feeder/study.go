@@ -78,10 +78,19 @@ func Open(fsys fs.FS, caseName string) (*Study, error) {
 	return s, nil
 }
 
-// limited sorts the faults and cuts the list to a length that can be read.
+// limited sorts the faults, leaves out what is told twice and cuts the list to a length that can be read.
 func limited(faults tables.Faults) error {
+	faults.Sort()
+	seen := map[tables.Fault]bool{}
+	once := faults[:0:0]
+	for _, f := range faults {
+		if !seen[f] {
+			seen[f] = true
+			once = append(once, f)
+		}
+	}
+	faults = once
 	if len(faults) > maxFaults {
-		faults.Sort()
 		more := len(faults) - maxFaults
 		faults = faults[:maxFaults:maxFaults]
 		faults = append(faults, tables.Fault{Pos: faults[maxFaults-1].Pos, Text: fmt.Sprintf("and %d more faults", more)})

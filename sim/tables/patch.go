@@ -108,6 +108,17 @@ func (s *Sheet[T]) Keys(faults *Faults) {
 	s.rows = out
 }
 
+// lacks lists the columns that a new row needs and that the case's table does not have.
+func (s *Sheet[T]) lacks(r row) []string {
+	var out []string
+	for i := range s.columns {
+		if c := &s.columns[i]; c.required && r.cells[i].Text == "" && s.named[i] == 0 {
+			out = append(out, c.title())
+		}
+	}
+	return out
+}
+
 // Patch lays a case's sheet over this one: a row with a known key replaces the cells
 // that it fills in, "-" empties a cell, a new key adds a row, remove takes it away.
 func (s *Sheet[T]) Patch(p *Sheet[T], faults *Faults) {
@@ -148,7 +159,11 @@ func (s *Sheet[T]) Patch(p *Sheet[T], faults *Faults) {
 					r.cells[k].Text = ""
 				}
 			}
-			r.patch = true
+			if lacks := p.lacks(r); len(lacks) > 0 {
+				faults.Add(pos, "%s %q is not in the table, and a new row needs %s too%s", p.keyNames(), clip(key), strings.Join(lacks, ", "), near(key, names))
+				s.Dropped = true
+				continue
+			}
 			added = append(added, r)
 		}
 	}

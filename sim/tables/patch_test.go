@@ -94,7 +94,7 @@ func TestPatchFaults(t *testing.T) {
 	for _, tt := range []struct{ name, patch, want string }{
 		{"removes what is not there", "line,phase,remove\nmian,A,yes\n", `case/t.csv:2:1: line, phase "mian, A" cannot be removed: it is not there; did you mean "main, A"?`},
 		{"remove neither yes nor no", "line,phase,remove\nmain,A,si\n", `case/t.csv:2:3: column remove: want yes or no, got "si"`},
-		{"new row without a needed column", "line,phase,factor\nnew,A,2\n", `case/t.csv:2: column length [km] is needed for a new row`},
+		{"new row without a needed column", "line,phase,factor\nnew,A,2\n", `case/t.csv:2:1: line, phase "new, A" is not in the table, and a new row needs length [km] too`},
 		{"new row with a needed cell blank", "line,phase,length [m]\nnew,A,\n", `case/t.csv:2:3: column length [km]: the cell is blank; it needs a value`},
 		{"needed cell emptied", "line,phase,length [m]\nmain,A,-\n", `case/t.csv:2:3: column length [km]: the cell is blank; it needs a value`},
 		{"key column missing", "line,factor\nmain,2\n", `case/t.csv:1: column phase is missing`},

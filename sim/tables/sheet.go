@@ -24,7 +24,6 @@ type row struct {
 	at     Pos
 	cells  []Cell // by columns
 	remove bool
-	patch  bool // added by a case
 }
 
 // Sheet is a table before it is decoded: cells checked one by one, in the units of
@@ -273,8 +272,6 @@ func (s *Sheet[T]) Rows(faults *Faults) []T {
 				// told already
 			} else if !given && col.required && c.At.Column > 0 {
 				faults.Add(c.At, "column %s: the cell is blank; it needs a value", col.title())
-			} else if !given && col.required && r.patch {
-				faults.Add(r.at, "column %s is needed for a new row", col.title())
 			}
 			text := c.Text
 			if !given {
