@@ -160,3 +160,47 @@ func FuzzOpen(f *testing.F) {
 		}
 	})
 }
+
+// FuzzSampler: whatever the file's time, the axis and the zone, a step's mean lies
+// among the file's values, or the file is refused with a fault.
+func FuzzSampler(f *testing.F) {
+	zones := []string{"UTC", "America/Denver", "Europe/Zurich", "Australia/Lord_Howe", "Pacific/Apia", "America/Havana", "Asia/Tehran", "Africa/Monrovia", "America/St_Johns"}
+	var loaded []*time.Location
+	for _, name := range zones {
+		loaded = append(loaded, zone(f, name))
+	}
+	f.Add(uint8(1), uint8(1), true, true, int64(482000), uint16(24), uint8(60), int64(-30), uint16(100), uint16(900))
+	f.Add(uint8(4), uint8(1), false, false, int64(367992), uint16(24), uint8(60), int64(-100), uint16(200), uint16(60)) // the day that Samoa skipped
+	f.Add(uint8(3), uint8(2), true, false, int64(486000), uint16(336), uint8(30), int64(400), uint16(400), uint16(45))
+	f.Add(uint8(2), uint8(3), false, true, int64(482135), uint16(8760), uint8(60), int64(-9000), uint16(500), uint16(2000))
+	f.Fuzz(func(t *testing.T, z, again uint8, lines, end bool, startHour int64, n uint16, stepMinutes uint8, axisHours int64, steps, runMinutes uint16) {
+		if n < 2 || stepMinutes == 0 || runMinutes == 0 || startHour < -400000 || startHour > 1500000 || axisHours < -100000 || axisHours > 100000 {
+			return
+		}
+		g := grid{
+			start: startHour * hour, step: int64(stepMinutes) * minute, n: int(n), lines: lines,
+			again: repeat(again % 4), zone: loaded[int(z)%len(loaded)],
+		}
+		g.stamp = g.start
+		if end {
+			g.stamp += g.step
+		}
+		values := make([]float64, n)
+		for k := range values {
+			values[k] = float64(k%50) / 7
+		}
+		one := newSeries("x", unit{"pu", 0, 1, 1}, tables.Pos{File: "p.csv"}, g, values)
+		a := Axis{Start: g.start + axisHours*hour, Step: int64(runMinutes) * minute}
+		a.End = a.Start + int64(steps%2000)*a.Step + minute
+		s, err := NewSampler(a, []*Series{one})
+		if err != nil {
+			return
+		}
+		var v [1]float64
+		for i := range a.Steps() {
+			if s.Step(v[:], i); v[0] < -1e-15 || v[0] > 49.0/7+1e-15 || v[0] != v[0] {
+				t.Fatalf("step %d: %v", i, v[0])
+			}
+		}
+	})
+}
