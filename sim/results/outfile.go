@@ -29,7 +29,7 @@ type outFile struct {
 }
 
 func createFile(dir, name string) (*outFile, error) {
-	f, err := os.OpenFile(filepath.Join(dir, name), os.O_CREATE|os.O_EXCL|os.O_WRONLY, 0o644)
+	f, err := os.OpenFile(filepath.Join(dir, name), os.O_CREATE|os.O_TRUNC|os.O_WRONLY, 0o644)
 	if err != nil {
 		return nil, fmt.Errorf("create %s: %w", name, err)
 	}

@@ -2,8 +2,10 @@ package results
 
 import (
 	"crypto/sha256"
+	"encoding/hex"
 	"errors"
 	"fmt"
+	"io"
 	"os"
 	"path/filepath"
 	"slices"
@@ -369,13 +371,28 @@ func (w *Writer) draw(o *Outcome, run *RunInfo) error {
 	}
 	run.Wall = append(slices.Clone(run.Wall), wall)
 	for _, name := range names {
-		data, err := os.ReadFile(filepath.Join(w.folder.temp, name))
-		if err != nil {
+		if w.hashes[name], err = syncAndHash(w.folder.temp, name); err != nil {
 			return err
 		}
-		w.hashes[name] = fmt.Sprintf("%x", sha256.Sum256(data))
 	}
 	return w.writeRun(o, *run)
+}
+
+// syncAndHash hands a file that somebody else wrote to the disk and returns its hash.
+func syncAndHash(dir, name string) (string, error) {
+	f, err := os.OpenFile(filepath.Join(dir, name), os.O_RDWR, 0)
+	if err != nil {
+		return "", fmt.Errorf("read %s: %w", name, err)
+	}
+	defer f.Close()
+	sum := sha256.New()
+	if _, err := io.Copy(sum, f); err != nil {
+		return "", fmt.Errorf("read %s: %w", name, err)
+	}
+	if err := f.Sync(); err != nil {
+		return "", fmt.Errorf("write %s: %w", name, err)
+	}
+	return hex.EncodeToString(sum.Sum(nil)), nil
 }
 
 // keep finishes a file and notes its hash; err is how writing it went.

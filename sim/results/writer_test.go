@@ -113,6 +113,50 @@ func TestRunRecord(t *testing.T) {
 	}
 }
 
+func TestFiguresBelongToTheFolder(t *testing.T) {
+	x := aDay(t)
+	parent, dir := oldResults(t)
+	for _, broken := range []bool{true, false} {
+		w, err := Create(dir, x.plan)
+		if err != nil {
+			t.Fatal(err)
+		}
+		constant(x, func(int) *State { return x.state(nil, [3]int{}, true) }).play(t, w)
+		err = w.Finish(&Outcome{}, RunInfo{Figures: func(at string) ([]string, WallTime, error) {
+			if _, err := os.Stat(filepath.Join(at, "run.json")); err != nil {
+				t.Error("figures are drawn from a folder without run.json:", err)
+			}
+			if broken {
+				return nil, WallTime{}, errors.New("no ink")
+			}
+			if err := os.WriteFile(filepath.Join(at, "a.png"), []byte("ink"), 0o644); err != nil {
+				t.Error(err)
+			}
+			return []string{"a.png"}, WallTime{"figures", 2}, nil
+		}})
+		if broken {
+			if err == nil || !strings.Contains(err.Error(), "no ink") {
+				t.Errorf("error %v", err)
+			}
+			wantOld(t, dir)
+			wantEntries(t, parent, "base")
+			continue
+		}
+		if err != nil {
+			t.Fatal(err)
+		}
+		data, err := os.ReadFile(filepath.Join(dir, "run.json"))
+		// The hash is that of the word ink.
+		want := sha256.Sum256([]byte("ink"))
+		if err != nil || !strings.Contains(string(data), `"a.png": "`+hex.EncodeToString(want[:])) || !json.Valid(data) {
+			t.Errorf("run.json does not name the figure (%v)", err)
+		}
+		if data, err = os.ReadFile(filepath.Join(dir, "timing.json")); err != nil || !strings.Contains(string(data), `"figures"`) {
+			t.Errorf("timing.json does not name the figures (%v)", err)
+		}
+	}
+}
+
 func TestSameRunSameBytes(t *testing.T) {
 	x := aDay(t)
 	s := chance(x, rand.New(rand.NewPCG(2, 6)))
