@@ -101,6 +101,9 @@ func (w *newton) solve(in *Input, tol Tolerance, out *Solution) bool {
 		}
 		change, worst := s.change(w.trial, w.v)
 		out.Change, out.Worst = change, worst
+		if !(change <= runaway) {
+			return false
+		}
 		w.v, w.trial = w.trial, w.v
 		copy(out.V, w.v)
 		if !done {

@@ -362,6 +362,11 @@ func (s *Solver) SolveBy(p Path, in *Input, tol Tolerance, out *Solution) bool {
 	return ok
 }
 
+// runaway is the change of a voltage in one iteration, p.u., beyond which there is no
+// way back to a solution that a feeder could have. Without this rule a resonance ends
+// at voltages so high that rounding hides the mismatch.
+const runaway = 1e3
+
 // maxFixedPoint bounds the fixed-point iterations; slow contraction is left to
 // Newton's method before that.
 const maxFixedPoint = 80
@@ -407,7 +412,7 @@ func (s *Solver) fixedPoint(in *Input, tol Tolerance, out *Solution) bool {
 		s.expand(out.V, s.x, in)
 		change, worst := s.change(out.V, s.old)
 		out.Change, out.Worst = change, worst
-		if change != change || change > 1e3 {
+		if !(change <= runaway) {
 			return false
 		}
 		s.old, s.inject = s.inject, s.old
