@@ -3,7 +3,6 @@ package profiles
 import (
 	"bytes"
 	"errors"
-	"fmt"
 	"io/fs"
 	"math"
 
@@ -35,12 +34,16 @@ type reader struct {
 	clock    *clock
 	later    bool // the first stamp, in a repeated hour, is its second occurrence
 
-	times   []int64
-	numbers []int // the line of each row
-	rows    []float64
-	row     int // rows in rows
+	count        int       // of rows
+	first        []rowTime // the first rows, until the step is known
+	step         int64     // 0: not yet known
+	before, last rowTime   // the last two rows
+	checked      rowTime   // the row that was checked last
+	unclear      bool      // the first stamp lies in a repeated hour
+
+	rows    []float64 // a block of rows, to be sorted into columns
+	row     int       // rows in it
 	columns [][]float64
-	unclear bool // the first stamp lies in a repeated hour
 }
 
 // readFile reads a file into series, in the order of its columns, a [kvar]
@@ -123,14 +126,14 @@ func (r *reader) read(size int64) {
 		if !ok {
 			break
 		}
-		if len(r.times) == 0 {
+		if r.count == 0 {
 			r.reserve(size, len(line))
 		}
 		r.readRow(line)
 	}
 	r.flush()
 	if r.lines.err == nil && !r.lines.tooLong {
-		r.checkTimes()
+		r.endTimes()
 	}
 	if r.untold > 0 {
 		r.faults.Add(tables.Pos{File: r.name, Line: r.lines.number}, "and %d more faults in this file", r.untold)
@@ -178,8 +181,6 @@ func (r *reader) nextRow() ([]byte, bool) {
 func (r *reader) reserve(size int64, line int) {
 	const most = 1 << 24 // a file may lie about its size
 	n := int(min(size/int64(line+1)+size/int64(16*(line+1))+16, most))
-	r.times = make([]int64, 0, n)
-	r.numbers = make([]int, 0, n)
 	for i := range r.columns {
 		if !r.headings[i].note {
 			r.columns[i] = make([]float64, 0, n)
@@ -328,10 +329,10 @@ func (r *reader) series() []*Series {
 
 func (r *reader) grid() grid {
 	g := grid{
-		start: r.times[0],
-		stamp: r.times[0],
-		step:  r.times[1] - r.times[0],
-		n:     len(r.times),
+		start: r.first[0].t,
+		stamp: r.first[0].t,
+		step:  r.step,
+		n:     r.count,
 		lines: r.block.Interpolate,
 		zone:  r.clock.zone,
 	}
@@ -348,6 +349,3 @@ func (r *reader) grid() grid {
 	}
 	return g
 }
-
-// found says what stands at a time, and where.
-func (r *reader) found(t int64) string { return fmt.Sprintf("found %s", Format(t, r.clock.zone)) }

@@ -23,9 +23,48 @@ func (r *reader) readTime(cell []byte) {
 	r.addTime(noTime)
 }
 
+// rowTime is the instant of a row, or noTime, and its line.
+type rowTime struct {
+	t    int64
+	line int
+}
+
+// stepRows is the number of rows from which the step of a file is told.
+const stepRows = 64
+
+// addTime takes the instant of a row. The first rows are kept until the step can be
+// told from them; later ones are checked at once, so that a long file needs no
+// room for its times.
 func (r *reader) addTime(t int64) {
-	r.times = append(r.times, t)
-	r.numbers = append(r.numbers, r.lines.number)
+	row := rowTime{t, r.lines.number}
+	r.count++
+	r.before, r.last = r.last, row
+	if r.step == 0 {
+		r.first = append(r.first, row)
+		if len(r.first) == stepRows {
+			r.tellStep()
+		}
+		return
+	}
+	r.checkTime(row)
+}
+
+// tellStep finds the step and checks the rows that were kept.
+func (r *reader) tellStep() {
+	r.step = commonStep(r.first)
+	r.checked.t = noTime
+	for _, row := range r.first {
+		r.checkTime(row)
+	}
+}
+
+// checkTime reports a row that is not a step after the row before. A row whose time
+// could not be read says nothing of the next one.
+func (r *reader) checkTime(row rowTime) {
+	if row.t != noTime && r.checked.t != noTime && row.t != r.checked.t+r.step {
+		r.irregular(row)
+	}
+	r.checked = row
 }
 
 // resolve returns the instant of a clock reading: in a repeated hour the one that
@@ -39,61 +78,44 @@ func (r *reader) resolve(civil int64) int64 {
 	case 1:
 		return first
 	}
-	k := len(r.times)
-	if k == 0 {
+	switch {
+	case r.count == 0:
 		r.unclear = true
 		if r.later {
 			return last
 		}
 		return first
-	}
-	before := r.times[k-1]
-	if before == noTime {
+	case r.last.t == noTime:
 		return first
-	}
-	if k > 1 && r.times[k-2] != noTime {
-		if next := before + (before - r.times[k-2]); next == first || next == last {
+	case r.count > 1 && r.before.t != noTime:
+		if next := r.last.t + (r.last.t - r.before.t); next == first || next == last {
 			return next
 		}
 	}
-	if first > before {
+	if first > r.last.t {
 		return first
 	}
 	return last
 }
 
-// checkTimes reports every place where the step is not regular.
-func (r *reader) checkTimes() {
-	switch len(r.times) {
-	case 0:
-		r.faultAt(r.lines.number, 0, "there are no rows below the header; want at least two, since their distance is the step")
-		return
-	case 1:
-		r.faultAt(r.numbers[0], 0, "there is only one row; want at least two, since their distance is the step (a constant is two equal rows)")
-		return
-	}
-	step := r.commonStep()
-	var expected int64
-	sure := false // a row whose time could not be read says nothing of the next one
-	for k, t := range r.times {
-		if t == noTime {
-			sure = false
-			continue
-		}
-		if sure && t != expected {
-			r.irregular(k, expected, step)
-		}
-		expected, sure = t+step, true
+// endTimes closes the check of the times.
+func (r *reader) endTimes() {
+	switch {
+	case r.count == 0:
+		r.fault(0, "there are no rows below the header; want at least two, since their distance is the step")
+	case r.count == 1:
+		r.faultAt(r.last.line, 0, "there is only one row; want at least two, since their distance is the step (a constant is two equal rows)")
+	case r.step == 0:
+		r.tellStep()
 	}
 }
 
-// commonStep returns the distance that occurs most often among the first rows, the
-// smaller of two that occur equally often.
-func (r *reader) commonStep() int64 {
-	const rows = 64
+// commonStep returns the distance that occurs most often among rows, the smaller of
+// two that occur equally often.
+func commonStep(rows []rowTime) int64 {
 	count := make(map[int64]int)
-	for k := 1; k < min(len(r.times), rows); k++ {
-		if a, b := r.times[k-1], r.times[k]; a != noTime && b > a {
+	for k := 1; k < len(rows); k++ {
+		if a, b := rows[k-1].t, rows[k].t; a != noTime && b > a {
 			count[b-a]++
 		}
 	}
@@ -117,21 +139,22 @@ func stepText(step int64) string {
 	return time.Duration(step).String()
 }
 
-// irregular reports row k, which stands where expected should.
-func (r *reader) irregular(k int, expected, step int64) {
-	t, line := r.times[k], r.numbers[k]
+// irregular reports a row that is not a step after the one checked before.
+func (r *reader) irregular(row rowTime) {
+	t, line, step := row.t, row.line, r.step
+	before := r.checked.t
+	expected := before + step
 	want := fmt.Sprintf("expected %s (the step is %s)", Format(expected, r.clock.zone), stepText(step))
-	before := expected - step
 	switch {
 	case t == before:
-		r.faultAt(line, 1, "%s stands twice, on line %d too; %s%s", Format(t, r.clock.zone), r.numbers[k-1], want, r.localHint(expected, t, step))
+		r.faultAt(line, 1, "%s stands twice, on line %d too; %s%s", Format(t, r.clock.zone), r.checked.line, want, r.localHint(expected, t, step))
 	case t < before:
 		r.faultAt(line, 1, "the time goes back to %s; %s; put the rows in order", Format(t, r.clock.zone), want)
 	case t > expected && (t-expected)%step == 0:
 		n := (t - expected) / step
 		r.faultAt(line, 1, "a gap: %s, found %s; add the missing rows (%d)%s", want, Format(t, r.clock.zone), n, r.localHint(expected, t, step))
 	default:
-		r.faultAt(line, 1, "the step is not regular: %s, %s%s", want, r.found(t), r.localHint(expected, t, step))
+		r.faultAt(line, 1, "the step is not regular: %s, found %s%s", want, Format(t, r.clock.zone), r.localHint(expected, t, step))
 	}
 }
 
