@@ -97,10 +97,7 @@ func drawDistance(s *survey, st *style) (*page, Figure) {
 		n.label(n.bold(labelSize, black), n.rect.Min.X, n.rect.Max.Y+24, text.XLeft, text.YBottom, pr.heading)
 		s.profileLines(n, pr, phases)
 	}
-	var items []key
-	for _, ph := range sortedPhases(phases) {
-		items = append(items, key{line: phaseStyle(ph), text: "phase " + ph})
-	}
+	items := phaseKeys(sortedPhases(phases), phaseStyle)
 	both := p.panel(full, 0, 1, vlo, vhi)
 	both.keys(append(items, s.limitKeys(both)...), full.Min.X, full.Min.Y-46)
 	return p, fig
@@ -172,7 +169,7 @@ func (s *survey) profileLines(n *panel, pr profile, seen map[string]bool) {
 		case a.thin != b.thin:
 			return a.thin
 		case a.ph != b.ph:
-			return a.ph > b.ph
+			return a.ph < b.ph // dashes over the solid line show both
 		case a.x0 != b.x0:
 			return a.x0 < b.x0
 		case a.y0 != b.y0:
@@ -244,4 +241,20 @@ func branchOrder(rows []results.BranchRow) []results.BranchRow {
 		return rows[i].Element < rows[j].Element
 	})
 	return rows
+}
+
+// phaseKeys is a legend of phases; a pair shares the line of its first phase, and so
+// its entry.
+func phaseKeys(phases []string, style func(string) draw.LineStyle) []key {
+	var keys []key
+	entry := map[byte]int{}
+	for _, ph := range phases {
+		if i, ok := entry[ph[0]]; ok {
+			keys[i].text += ", " + ph
+			continue
+		}
+		entry[ph[0]] = len(keys)
+		keys = append(keys, key{line: style(ph), text: "phase " + ph})
+	}
+	return keys
 }

@@ -60,16 +60,18 @@ func drawDuration(s *survey, st *style) (*page, Figure) {
 	n.voltageAxes(6)
 	n.xAxis(percentTicks(), "Share of time for which the voltage is exceeded")
 	var items []key
+	var names []string
 	for _, c := range curves {
 		style := phaseStyle(c.phase)
 		n.duration(c.max, style)
 		n.duration(c.min, style)
-		name := "phase " + c.phase
 		if c.phase == "" {
-			name = "whole feeder"
+			items = append(items, key{line: style, text: "all phases"})
+		} else {
+			names = append(names, c.phase)
 		}
-		items = append(items, key{line: style, text: name})
 	}
+	items = append(items, phaseKeys(names, phaseStyle)...)
 	items = append(items, s.limitKeys(n)...)
 	n.tagCurves(curves)
 	n.keys(items, n.rect.Min.X, n.rect.Min.Y-46)
@@ -139,6 +141,6 @@ func (n *panel) tagCurves(curves []phaseVoltages) {
 		return sum / float64(max(k, 1))
 	}
 	x := n.x(80)
-	n.haloed(t, x, n.yIn(at(highs))+12, text.XCenter, text.YBottom, "highest")
-	n.haloed(t, x, n.yIn(at(lows))-14, text.XCenter, text.YBottom, "lowest")
+	n.haloed(t, x, min(n.yIn(at(highs))+8, n.rect.Max.Y-14), text.XCenter, text.YBottom, "highest")
+	n.haloed(t, x, max(n.yIn(at(lows))-19, n.rect.Min.Y+2), text.XCenter, text.YBottom, "lowest")
 }

@@ -142,9 +142,9 @@ func (s *survey) limitKeys(n *panel) []key {
 	l := s.limits
 	keys := []key{{fill: outsideA, text: "outside " + s.rangeWords}}
 	if n.plot.Y.Max > l.OuterHigh || n.plot.Y.Min < l.OuterLow {
-		name := "outside range B"
+		name := "outside B"
 		if s.Run.Limits.Own {
-			name = "outside the outer range"
+			name = "outside the outer"
 		}
 		keys = append(keys, key{fill: outsideB, text: name})
 	}

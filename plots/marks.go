@@ -126,7 +126,7 @@ func labelBox(at vg.Point, width vg.Length, boxes []vg.Rectangle, crowd []vg.Poi
 				cost++
 			}
 		}
-		if r.Min.X < in.Min.X-14 || r.Max.X > in.Max.X+8 || r.Min.Y < in.Min.Y-8 || r.Max.Y > in.Max.Y+8 {
+		if r.Min.X < in.Min.X-14 || r.Max.X > in.Max.X+8 || r.Min.Y < in.Min.Y-2 || r.Max.Y > in.Max.Y+2 {
 			cost += 200
 		}
 		if cost < least {

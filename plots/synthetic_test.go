@@ -123,7 +123,7 @@ func (g invented) write() fstest.MapFS {
 		fmt.Fprintf(b, format, args...)
 	}
 	stamp := func(t time.Time) string { return t.Format("2006-01-02T15:04:05-07:00") }
-	w("run.json", `{"format":1,"version":"test","title":"Alder Bend 1203","case":"base","zone":"America/Denver","step_seconds":%d,"start":"%s","end":"%s","demo":%v,"limits":{"range":"ANSI C84.1","judge":"customers"}}`+"\n",
+	w("run.json", `{"format":1,"version":"test","title":"Alder Bend 1203","case":"base","zone":"America/Denver","step_seconds":%d,"row_seconds":%[1]d,"start":"%[2]s","end":"%[3]s","demo":%[4]v,"limits":{"range":"ANSI C84.1","judge":"customers"}}`+"\n",
 		int(g.step/time.Second), stamp(g.start), stamp(g.end), g.demo)
 	w("places.csv", "node,x,y,longlat,distance [km],nominal [kV],phases,judged\n")
 	for _, n := range nodes {

@@ -125,7 +125,7 @@ func drawTaps(s *survey, st *style) (*page, Figure) {
 		if manyRows(s.Devices.Time, edges) {
 			n.band(edges, low, high, band)
 		}
-		for i := len(b.units) - 1; i >= 0; i-- {
+		for i := range b.units { // dashes over the solid line show both
 			x, v := steps(edges, reduced[i].mean)
 			line{x, v, tapStyle(b.units[i].phase)}.Plot(n.area, n.plot)
 			phases[b.units[i].phase] = true
@@ -149,10 +149,7 @@ func drawTaps(s *survey, st *style) (*page, Figure) {
 		}
 	}
 	last.xAxis(s.span.timeTicks(last.text(labelSize, black), last.width()), "")
-	var items []key
-	for _, ph := range sortedPhases(phases) {
-		items = append(items, key{line: tapStyle(ph), text: "phase " + ph})
-	}
+	items := phaseKeys(sortedPhases(phases), tapStyle)
 	if manyRows(s.Devices.Time, edges) && len(regulators) > 0 {
 		items[0].text += " (daily mean)"
 		if s.span.days() <= 62 {
@@ -257,16 +254,20 @@ func (s *survey) tapsFinding(regulators, capacitors []bank) string {
 	}
 	if best >= 0 {
 		if capacitors[best].moves > 0 {
-			parts = append(parts, fmt.Sprintf("of the capacitors %s switches most, %s, closed for %s of the time",
+			parts = append(parts, fmt.Sprintf("capacitor %s switches most, %s, and is closed for %s of the time",
 				capacitors[best].name, count(capacitors[best].moves, "time", "times"), percent(share)))
 		} else {
-			parts = append(parts, "no capacitor switches")
+			words := "no capacitor switches"
+			if len(parts) == 0 {
+				words = "No capacitor switches"
+			}
+			parts = append(parts, words)
 		}
 	}
 	if len(parts) == 0 {
 		return "There is nothing that moves."
 	}
-	return strings.ToUpper(parts[0][:1]) + strings.Join(parts, "; ")[1:] + "."
+	return strings.Join(parts, "; ") + "."
 }
 
 func signed(tap int) string {

@@ -139,6 +139,7 @@ func ReadFolder(fsys fs.FS) (*Folder, error) {
 	f.Monthly.need("month")
 	f.readSummary(&rd)
 	f.readVoltageHeader(&rd)
+	f.allThere(&faults)
 	if len(faults) == 0 {
 		f.agree(&faults)
 	}
@@ -146,6 +147,20 @@ func ReadFolder(fsys fs.FS) (*Folder, error) {
 		return nil, err
 	}
 	return f, nil
+}
+
+// allThere checks that every file of the run is in the folder, also those that are
+// not read here.
+func (f *Folder) allThere(faults *tables.Faults) {
+	named := make(map[string]bool, len(*faults))
+	for _, x := range *faults {
+		named[x.Pos.File] = true
+	}
+	for _, file := range f.Run.Files {
+		if _, err := fs.Stat(f.files, file); err != nil && !named[file] {
+			*faults = append(*faults, missingFile(file, err))
+		}
+	}
 }
 
 // asFaults returns the faults in err, or err as one.

@@ -7,7 +7,9 @@ import (
 	"fmt"
 	"io"
 	"io/fs"
+	"maps"
 	"math"
+	"slices"
 	"time"
 
 	"yearflow/sim/tables"
@@ -19,9 +21,10 @@ type RunRecord struct {
 	Zone        string // IANA name
 	Location    *time.Location
 	Start, End  time.Time
-	Step        time.Duration
+	Step, Row   time.Duration // of a row of the logs; a step or longer
 	Limits      RunLimits
-	Demo        bool // an invented study: pictures say so
+	Demo        bool     // an invented study: pictures say so
+	Files       []string // the result files that the run wrote
 }
 
 // RunLimits is the [limits] of the study: own numbers, or the rows of ANSI C84.1.
@@ -52,9 +55,11 @@ type runJSON struct {
 		OuterHigh *float64 `json:"outer_high"`
 		Allowance float64  `json:"allowance_volts"`
 	} `json:"limits"`
+	RowSeconds float64           `json:"row_seconds"`
+	Results    map[string]string `json:"results_sha256"`
 }
 
-// Format is the version of the results folder's layout. A reader refuses others.
+// runFormat is the version of the results folder's layout. A reader refuses others.
 const runFormat = 1
 
 func (f *Folder) readRun() error {
@@ -101,6 +106,11 @@ func (f *Folder) readRun() error {
 		faults.Add(at, "step_seconds is %g, want 1 to 86400", j.StepSeconds)
 	}
 	r.Step = time.Duration(math.Round(j.StepSeconds * float64(time.Second)))
+	r.Row = time.Duration(math.Round(j.RowSeconds * float64(time.Second)))
+	if !(j.RowSeconds >= j.StepSeconds && j.RowSeconds <= 366*86400) {
+		faults.Add(at, "row_seconds is %g, want step_seconds (%g) or more", j.RowSeconds, j.StepSeconds)
+	}
+	r.Files = slices.Sorted(maps.Keys(j.Results))
 	l := j.Limits
 	r.Limits = RunLimits{All: l.Judge == "all", Allowance: l.Allowance}
 	if l.Low != nil || l.High != nil || l.OuterLow != nil || l.OuterHigh != nil {

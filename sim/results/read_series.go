@@ -105,13 +105,7 @@ func (f *Folder) readSteps(rd *reader) {
 		*rd.faults = append(*rd.faults, asFaults(err)...)
 		return
 	}
-	s.RowLength = f.Run.Step.Nanoseconds()
-	if len(s.Time) > 1 && s.Time[1] > s.Time[0] {
-		s.RowLength = s.Time[1] - s.Time[0]
-	} else if len(s.Time) == 1 {
-		// One row: as long as the run where the log has rows longer than a step.
-		s.RowLength = max(s.RowLength, f.Run.End.UnixNano()-s.Time[0])
-	}
+	s.RowLength = f.Run.Row.Nanoseconds()
 }
 
 // intern returns the text of b, shared with the row before where it is the same:
@@ -358,6 +352,12 @@ func parseCell(b []byte) (float64, error) {
 var powers = [...]float64{1, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9, 1e10, 1e11, 1e12, 1e13, 1e14, 1e15}
 
 func parseSlow(b []byte) (float64, error) {
+	for _, c := range b {
+		// What else strconv takes (hexadecimal, underscores, inf) is not ours.
+		if c != '+' && c != '-' && c != '.' && c != 'e' && c != 'E' && (c < '0' || c > '9') {
+			return 0, fmt.Errorf("want a number, got %q", clip(b))
+		}
+	}
 	x, err := strconv.ParseFloat(string(b), 64)
 	if err != nil || math.IsNaN(x) || math.IsInf(x, 0) {
 		return 0, fmt.Errorf("want a number, got %q", clip(b))

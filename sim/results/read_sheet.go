@@ -7,7 +7,6 @@ import (
 	"io"
 	"io/fs"
 	"math"
-	"strconv"
 	"time"
 
 	"yearflow/sim/tables"
@@ -112,7 +111,7 @@ func (s *Sheet) Number(row int, column string) float64 {
 	if c < 0 || s.Rows[row][c] == "" {
 		return math.NaN()
 	}
-	x, err := strconv.ParseFloat(s.Rows[row][c], 64)
+	x, err := parseSlow([]byte(s.Rows[row][c]))
 	if err != nil {
 		return math.NaN()
 	}
@@ -149,8 +148,8 @@ func (c cells) number(i int) float64 {
 	if t == "" {
 		return math.NaN()
 	}
-	x, err := strconv.ParseFloat(t, 64)
-	if err != nil || math.IsInf(x, 0) || math.IsNaN(x) {
+	x, err := parseSlow([]byte(t))
+	if err != nil {
 		c.fault(c.lines[c.row], c.at[i]+1, "column %s: want a number, got %q", c.Header[c.at[i]], t)
 		return math.NaN()
 	}
