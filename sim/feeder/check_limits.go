@@ -44,7 +44,7 @@ func (r *settingsReader) ownRange(v map[string]any, l *Limits) {
 		f, ok := fields[name]
 		if !ok {
 			r.fault(key, "unknown key %q%s", k, tables.Hint(k, names))
-			continue
+			return
 		}
 		given[name] = true
 		*f = r.number(key+"."+k, v[k], math.NaN())

@@ -37,27 +37,31 @@ func Hint(written string, names []string) string {
 	return ""
 }
 
-// changes is the Levenshtein distance, or something above limit where it exceeds it.
+// changes is the number of letters to replace, add, leave out or exchange with their
+// neighbour (Damerau's distance without overlaps), or something above limit where it
+// exceeds it.
 func changes(a, b string, limit int) int {
 	x, y := []rune(a), []rune(b)
 	if d := len(x) - len(y); d > limit || -d > limit {
 		return limit + 1
 	}
-	row := make([]int, len(y)+1)
-	for j := range row {
-		row[j] = j
+	before, last, row := make([]int, len(y)+1), make([]int, len(y)+1), make([]int, len(y)+1)
+	for j := range last {
+		last[j] = j
 	}
 	for i := range x {
-		diagonal := row[0]
 		row[0] = i + 1
 		for j := range y {
-			cost := diagonal
-			if x[i] != y[j] {
-				cost++
+			cost := 1
+			if x[i] == y[j] {
+				cost = 0
 			}
-			diagonal = row[j+1]
-			row[j+1] = min(cost, row[j]+1, row[j+1]+1)
+			row[j+1] = min(last[j]+cost, row[j]+1, last[j+1]+1)
+			if i > 0 && j > 0 && x[i] == y[j-1] && x[i-1] == y[j] {
+				row[j+1] = min(row[j+1], before[j-1]+1)
+			}
 		}
+		before, last, row = last, row, before
 	}
-	return row[len(y)]
+	return last[len(y)]
 }

@@ -257,6 +257,7 @@ func TestNearest(t *testing.T) {
 		{"n12", []string{"n1", "n2", "n123"}, "n1"},
 		{"Main Streat", []string{"main street", "mill street"}, "main street"},
 		{"xyz", []string{"abc", "def"}, ""},
+		{"hihg", []string{"low", "high"}, "high"},
 		{"ab", []string{"ba", "aa"}, "aa"},
 	} {
 		got, _ := Nearest(tt.written, tt.names)
