@@ -86,11 +86,11 @@ func (c *CapacitorControl) nextSwitch(t Time) Time {
 	first, second := min(c.TimeOn, c.TimeOff), max(c.TimeOn, c.TimeOff)
 	for d := today; d <= today+8; d++ { // a weekend and a day of grace
 		for _, w := range [3]wall{d * day, d*day + first, d*day + second} {
-			if c.closedAt(w) == wants || w <= now {
+			if w <= now {
 				continue
 			}
 			// In the skipped hour the clock shows something later at once.
-			if x := firstShown(w, zone); x > t && c.closedAt(shown(x, zone)) != wants {
+			if x := firstShown(w, zone); c.closedAt(shown(x, zone)) != wants {
 				return x
 			}
 		}

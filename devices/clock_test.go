@@ -231,5 +231,11 @@ func byMinutes(t *testing.T, name string, c CapacitorControl, from time.Time) {
 				at.In(c.zone()), s.Window, want)
 		}
 		was, next = want, c.NextSwitch(s)
+		// A control that has seen nothing before reads the clock the same way.
+		fresh := c.Observe(CapacitorState{}, CapacitorReading{V120: 120, Clock: now}, now)
+		if fresh.Window != want || c.NextSwitch(fresh) != next {
+			t.Fatalf("%s, %v to %v, weekdays %v: at %v a fresh control wants closed: %v until %v, want %v until %v", name, c.TimeOn, c.TimeOff, c.Weekdays,
+				at.In(c.zone()), fresh.Window, time.Unix(0, c.NextSwitch(fresh)).In(c.zone()), want, time.Unix(0, next).In(c.zone()))
+		}
 	}
 }
