@@ -1,7 +1,6 @@
 package sim
 
 import (
-	"fmt"
 	"math"
 	"math/cmplx"
 	"sort"
@@ -33,6 +32,8 @@ type inputs struct {
 
 	fixed   []fixedVoltage
 	outside []int // by capacitor: series of the temperature, or −1
+
+	odd tables.Faults // possible, but hardly meant
 }
 
 // driver says how a step's values scale an injection: by one series, by two (real
@@ -64,7 +65,7 @@ func newInputs(st *feeder.Study, net *network.Network) (*inputs, error) {
 		return nil, err
 	}
 	p := st.Settings.Period
-	in := &inputs{set: set, axis: profiles.Axis{Start: p.Start, End: p.End, Step: p.Step, Zone: p.Zone}}
+	in := &inputs{set: set, odd: unmatched(st.FS, blocks), axis: profiles.Axis{Start: p.Start, End: p.End, Step: p.Step, Zone: p.Zone}}
 	index := map[*profiles.Series]int{}
 	var series []*profiles.Series
 	use := func(s *profiles.Series) int {
@@ -79,27 +80,8 @@ func newInputs(st *feeder.Study, net *network.Network) (*inputs, error) {
 		}
 		return k
 	}
-	find := func(name string, at tables.Pos, units ...string) *profiles.Series {
-		if name == "" {
-			return nil
-		}
-		s, ok := set.Lookup(name)
-		if !ok {
-			hint := ""
-			if near := set.Suggest(name); near != "" {
-				hint = fmt.Sprintf(": did you mean %q?", near)
-			}
-			faults.Add(at, "no profile named %q%s", name, hint)
-			return nil
-		}
-		for _, u := range units {
-			if s.Unit == u {
-				return s
-			}
-		}
-		faults.Add(at, "profile %q is in [%s] (%s): here it must be in %s", name, s.Unit, s.Pos, list(units))
-		return nil
-	}
+	names := naming{uses: st.ProfileUses(), told: map[int]bool{}, set: set, faults: &faults}
+	find := names.find
 	m := net.Model
 	in.months, in.monthOf = months(in.axis)
 	for i := range m.Loads {
@@ -115,11 +97,16 @@ func newInputs(st *feeder.Study, net *network.Network) (*inputs, error) {
 			in.outside[i] = use(find(c.Profile, c.At, "degC"))
 		}
 	}
+	held := make([]*profiles.Series, len(m.Sources)) // asked for once, not by phase
+	for i := range m.Sources {
+		held[i] = find(m.Sources[i].Profile, m.Sources[i].At, "pu", "V")
+	}
+	names.prices(st.Settings.Prices.Currency)
 	for _, f := range net.Fixed {
 		s := &m.Sources[f.Source]
 		fv := fixedVoltage{series: -1, unit: cmplx.Rect(1, (s.Angle-120*float64(f.Phase))*math.Pi/180)}
 		fv.volts = complex(s.Voltage*s.Nominal*1000/sqrt3, 0) * fv.unit
-		if ser := find(s.Profile, s.At, "pu", "V"); ser != nil {
+		if ser := held[f.Source]; ser != nil {
 			fv.series = use(ser)
 			fv.nominal = s.Nominal * 1000
 			if ser.Unit == "V" {
@@ -141,19 +128,6 @@ func newInputs(st *feeder.Study, net *network.Network) (*inputs, error) {
 	}
 	return in, nil
 }
-
-func list(words []string) string {
-	out := ""
-	for i, w := range words {
-		if i > 0 {
-			out += " or "
-		}
-		out += "[" + w + "]"
-	}
-	return out
-}
-
-type finder func(name string, at tables.Pos, units ...string) *profiles.Series
 
 // branches lists where a load or generator stands.
 func branches(net *network.Network, node int, c feeder.Connection, phases []feeder.Phase, pairs []feeder.Pair) []powerflow.Injection {

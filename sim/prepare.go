@@ -38,6 +38,8 @@ type Options struct {
 type Engine struct {
 	Study *feeder.Study
 	Plan  *results.Plan
+	// Warnings are those of the study and of its profiles, sorted by place.
+	Warnings []tables.Fault
 
 	net     *network.Network
 	flow    *powerflow.Solver
@@ -117,6 +119,8 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 		return nil, faults.Err()
 	}
 	e := &Engine{Study: st, net: net, flow: flow, in: in, paths: map[powerflow.Path]int{}}
+	e.Warnings = append(append(e.Warnings, st.Warnings...), in.odd...)
+	tables.Faults(e.Warnings).Sort()
 	name := st.Case
 	if name == "" {
 		name = "base"

@@ -51,8 +51,7 @@ func (c *console) check(args []string, caseName, csvFile, jsonFile string) error
 	}
 	if e != nil {
 		c.describe(out, e)
-		odd := append([]tables.Fault(nil), e.Study.Warnings...)
-		tables.Faults(odd).Sort()
+		odd := e.Warnings
 		printFaults(out, "Odd, but possible", odd)
 		add("warning", odd)
 		var assumed []tables.Fault

@@ -58,7 +58,7 @@ func (c *console) run(ctx context.Context, args []string, o *runOptions) error {
 	if err != nil {
 		return err
 	}
-	c.warn(e.Study.Warnings)
+	c.warn(e.Warnings)
 	dir := o.out
 	if dir == "" {
 		dir = st.results(o.caseName)

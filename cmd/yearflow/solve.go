@@ -55,7 +55,7 @@ func (c *console) instant(args []string, o *instantOptions) (*sim.Engine, *sim.I
 	if err != nil {
 		return nil, nil, err
 	}
-	c.warn(e.Study.Warnings)
+	c.warn(e.Warnings)
 	step, err := stepAt(e, o.at)
 	if err != nil {
 		return nil, nil, err
