@@ -148,7 +148,7 @@ func (g invented) write() fstest.MapFS {
 	}
 	g.series(w, nodes, branches, stamp)
 	w("monthly.csv", "month\n")
-	w("summary.csv", "quantity,value,unit\nsteps,1,\n")
+	w("summary.csv", "quantity,value,unit\nsteps,1,1\n")
 	fsys := fstest.MapFS{}
 	for name, b := range files {
 		text := b.String()

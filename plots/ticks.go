@@ -127,7 +127,7 @@ func (s span) timeTicks(t text.Style, width vg.Length) []tick {
 		}
 	}
 	for _, every := range []int{5, 15, 30, 60, 120, 180, 360, 720} {
-		if per(d*24*60/float64(every)) > t.Width("00:00")+8 || every == 720 {
+		if per(d*24*60/float64(every)) > t.Width("00:00")+12 || every == 720 {
 			return s.minuteTicks(every)
 		}
 	}
