@@ -69,8 +69,8 @@ func phasors(e *sim.Engine, in *sim.Instant) map[string]complex128 {
 	return out
 }
 
-// shortDemo is the demo study with a period of some hours.
-func shortDemo(t testing.TB, hours int) overlay {
+// demoHours is the demo study with a period of some hours.
+func demoHours(t testing.TB, hours int) overlay {
 	t.Helper()
 	o := laid(demo.Study())
 	toml := content(t, o, "study.toml")
@@ -84,7 +84,7 @@ func shortDemo(t testing.TB, hours int) overlay {
 
 // studies are those that a change of names, order or direction must not move.
 func studies(t testing.TB) map[string]fs.FS {
-	out := map[string]fs.FS{"thirteen-node": os.DirFS("../testdata/published/thirteen-node"), "thirty-four-node": os.DirFS("../testdata/published/thirty-four-node"), "demo": shortDemo(t, 2)}
+	out := map[string]fs.FS{"thirteen-node": os.DirFS("../testdata/published/thirteen-node"), "thirty-four-node": os.DirFS("../testdata/published/thirty-four-node"), "demo": demoHours(t, 2)}
 	for _, bank := range []string{"Dyn1", "YNd11", "YNy0", "Dd0", "open-wye/open-delta AB-BC", "open-delta/open-delta BC-CA"} {
 		out[bank] = small{bank: bank, grounded: strings.Contains(bank, "yn")}.study()
 	}
