@@ -373,6 +373,25 @@ func TestImbalanceShowsInTheRecord(t *testing.T) {
 	}
 }
 
+func TestOfEqualExtremesTheFirstIsNamed(t *testing.T) {
+	x := aDay(t)
+	low, high := x.state(map[string]float64{"n3": 0.97}, [3]int{}, true), x.state(map[string]float64{"n3": 1.02}, [3]int{}, true)
+	dir := constant(x, func(step int) *State {
+		if step%2 == 0 {
+			return low
+		}
+		return high
+	}).write(t, x)
+	n3 := find(t, sheetRows(t, dir, "nodes.csv"), "node", "n3")
+	if n3["min time"] != "2025-01-01T00:00:00+00:00" || n3["max time"] != "2025-01-01T01:00:00+00:00" {
+		t.Errorf("lowest at %s, highest at %s, want the first two hours", n3["min time"], n3["max time"])
+	}
+	lat := find(t, sheetRows(t, dir, "loading.csv"), "element", "lat")
+	if at := lat["peak time"]; at != "2025-01-01T00:00:00+00:00" && at != "2025-01-01T01:00:00+00:00" {
+		t.Errorf("peak of lat at %s, want the first of its hours", at)
+	}
+}
+
 func TestPairsOfTwoPhasesHaveOnePlace(t *testing.T) {
 	x := aDay(t)
 	x.plan.Model.Nodes[4].Phases = x.plan.Model.Nodes[4].Phases[:0:0]

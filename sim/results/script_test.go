@@ -115,6 +115,13 @@ func (s *script) play(t testing.TB, w *Writer) {
 func (s *script) write(t testing.TB, x *tiny) string {
 	t.Helper()
 	dir := filepath.Join(t.TempDir(), "base")
+	s.writeTo(t, x, dir)
+	return dir
+}
+
+// writeTo plays a run into a folder of that name.
+func (s *script) writeTo(t testing.TB, x *tiny, dir string) {
+	t.Helper()
 	w, err := Create(dir, x.plan)
 	if err != nil {
 		t.Fatal(err)
@@ -123,7 +130,6 @@ func (s *script) write(t testing.TB, x *tiny) string {
 	if err := w.Finish(&Outcome{Taps: []int{0, 0, 0}, Closed: []bool{true}}, RunInfo{Version: "test"}); err != nil {
 		t.Fatal(err)
 	}
-	return dir
 }
 
 // sheetRows reads a file as rows of cells by column name.

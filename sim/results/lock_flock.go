@@ -1,17 +1,12 @@
+//go:build darwin || dragonfly || freebsd || linux || netbsd || openbsd
+
 package results
 
 import (
 	"errors"
 	"os"
 	"syscall"
-
-	"golang.org/x/sys/unix"
 )
-
-// exchangeNames swaps two folders in one indivisible act.
-func exchangeNames(a, b string) error {
-	return unix.Renameat2(unix.AT_FDCWD, a, unix.AT_FDCWD, b, unix.RENAME_EXCHANGE)
-}
 
 // lockFolder marks an open folder as in use until it is closed or its process
 // ends. A file system without locks leaves it unmarked.

@@ -1,13 +1,8 @@
-//go:build !linux
+//go:build !(darwin || dragonfly || freebsd || linux || netbsd || openbsd)
 
 package results
 
-import (
-	"errors"
-	"os"
-)
-
-func exchangeNames(a, b string) error { return errors.ErrUnsupported }
+import "os"
 
 func lockFolder(*os.File) {}
 

@@ -1,0 +1,7 @@
+//go:build !linux
+
+package results
+
+import "errors"
+
+func exchangeNames(a, b string) error { return errors.ErrUnsupported }
