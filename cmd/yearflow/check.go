@@ -23,9 +23,9 @@ the feeder is. Exit status 2 where there are errors.`,
 		Args:    atMostOne("study"),
 		RunE:    func(_ *cobra.Command, args []string) error { return c.check(args, caseName, csvFile, jsonFile) },
 	}
-	cmd.Flags().StringVar(&caseName, "case", "", "check only the study with this case over it (default: the study and every case)")
-	cmd.Flags().StringVar(&csvFile, "csv", "", "write the findings to this file; - for standard output")
-	cmd.Flags().StringVar(&jsonFile, "json", "", "the same as JSON")
+	cmd.Flags().StringVar(&caseName, "case", "", "check only the study with the case `NAME` over it (default: the study and every case)")
+	cmd.Flags().StringVar(&csvFile, "csv", "", "write the findings to this `FILE`; - for standard output")
+	cmd.Flags().StringVar(&jsonFile, "json", "", "write it to this `FILE` as JSON; - for standard output")
 	return cmd
 }
 

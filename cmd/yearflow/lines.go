@@ -22,9 +22,9 @@ symmetrical components.`,
 		Args:    atMostOne("study"),
 		RunE:    func(_ *cobra.Command, args []string) error { return c.lines(args, &o) },
 	}
-	cmd.Flags().StringVar(&o.caseName, "case", "", "a case of the study")
-	cmd.Flags().StringVar(&o.csv, "csv", "", "write the table to this file; - for standard output")
-	cmd.Flags().StringVar(&o.json, "json", "", "the same as JSON")
+	cmd.Flags().StringVar(&o.caseName, "case", "", "the `NAME` of a case (default: the study as it stands)")
+	cmd.Flags().StringVar(&o.csv, "csv", "", "write the table to this `FILE`; - for standard output")
+	cmd.Flags().StringVar(&o.json, "json", "", "write it to this `FILE` as JSON; - for standard output")
 	return cmd
 }
 

@@ -1,6 +1,7 @@
 package main
 
 import (
+	"errors"
 	"fmt"
 	"os"
 	"path/filepath"
@@ -11,6 +12,7 @@ import (
 	"yearflow/profiles"
 	"yearflow/sim"
 	"yearflow/sim/results"
+	"yearflow/sim/tables"
 )
 
 func reportCommand(c *console) *cobra.Command {
@@ -33,7 +35,14 @@ func (c *console) report(dir string) error {
 		return wrongf("there is no results folder %q", dir)
 	}
 	if _, err := results.ReadFolder(os.DirFS(dir)); err != nil {
-		return inputError{fmt.Errorf("%s is no whole results folder: %w", dir, err)}
+		var faults tables.Faults
+		if !errors.As(err, &faults) {
+			return inputError{fmt.Errorf("%s is no whole results folder: %w", dir, err)}
+		}
+		for i := range faults {
+			faults[i].Pos.File = filepath.Join(dir, faults[i].Pos.File)
+		}
+		return inputError{faults}
 	}
 	tmp, err := os.MkdirTemp(dir, ".figures-*")
 	if err != nil {

@@ -21,12 +21,30 @@ const (
 	exitFound   = 1 // the study ran but has low or unsolved steps, or violations with --strict
 	exitInput   = 2 // the input is wrong
 	exitMachine = 3 // the machine failed: disk, memory
+
+	exitStopped = 130 // stopped by Ctrl-C or a signal, as shells have it
 )
 
 // console is where a command writes: results to out, everything else to errs.
 type console struct {
 	out, errs io.Writer
 	status    int // of a command that did its work
+}
+
+// watchedWriter remembers the first error of writing, so that a full disk behind
+// standard output is told by the exit status.
+type watchedWriter struct {
+	w   io.Writer
+	err error
+}
+
+func (w *watchedWriter) Write(p []byte) (int, error) {
+	if w.err != nil {
+		return 0, w.err
+	}
+	n, err := w.w.Write(p)
+	w.err = err
+	return n, err
 }
 
 func (c *console) printf(format string, args ...any) { fmt.Fprintf(c.out, format, args...) }
@@ -44,18 +62,23 @@ func wrongf(format string, args ...any) error { return inputError{fmt.Errorf(for
 
 // run is the program: it returns the exit status.
 func run(ctx context.Context, args []string, out, errs io.Writer) int {
+	watched := &watchedWriter{w: out}
+	out = watched
 	c := &console{out: out, errs: errs}
 	root := newRoot(c)
 	root.SetArgs(args)
 	root.SetOut(out)
 	root.SetErr(errs)
 	err := root.ExecuteContext(ctx)
+	if err == nil && watched.err != nil {
+		err = machineError{fmt.Errorf("write to standard output: %w", watched.err)}
+	}
 	switch {
 	case err == nil:
 		return c.status
 	case errors.Is(err, context.Canceled):
 		fmt.Fprintln(errs, "stopped: the results of the last whole run are as they were")
-		return 130
+		return exitStopped
 	}
 	var faults tables.Faults
 	if errors.As(err, &faults) {
@@ -98,7 +121,7 @@ local codes, the utility's own standards and a licensed engineer.
 
 func newRoot(c *console) *cobra.Command {
 	root := &cobra.Command{
-		Use: "yearflow", Short: "a feeder's year: voltage, losses and device operations",
+		Use: "yearflow", Short: "a feeder's year: voltage, losses and device operations", Long: intro,
 		Version: version, SilenceErrors: true, SilenceUsage: true,
 		Args: func(cmd *cobra.Command, args []string) error {
 			if len(args) > 0 {
@@ -115,8 +138,23 @@ func newRoot(c *console) *cobra.Command {
 	root.SuggestionsMinimumDistance = 2
 	root.CompletionOptions.HiddenDefaultCmd = true
 	root.SetFlagErrorFunc(flagHint)
+	root.SetHelpCommand(helpCommand(c, root))
 	root.AddCommand(demoCommand(c), checkCommand(c), solveCommand(c), traceCommand(c), runCommand(c), linesCommand(c), reportCommand(c))
 	return root
+}
+
+func helpCommand(c *console, root *cobra.Command) *cobra.Command {
+	return &cobra.Command{
+		Use: "help [COMMAND]", Short: "what a command does, with an example",
+		RunE: func(_ *cobra.Command, args []string) error {
+			cmd, rest, err := root.Find(args)
+			if err != nil || len(rest) > 0 {
+				return wrongf("no command named %q (\"yearflow help\" lists them)", strings.Join(args, " "))
+			}
+			cmd.InitDefaultHelpFlag()
+			return cmd.Help()
+		},
+	}
 }
 
 // flagHint adds the nearest option to cobra's word on an unknown one.

@@ -7,6 +7,8 @@ import (
 	"io"
 	"os"
 	"path/filepath"
+	"strings"
+	"syscall"
 	"time"
 
 	"github.com/spf13/cobra"
@@ -22,6 +24,7 @@ type runOptions struct {
 	strict        bool
 	noFigures     bool
 	csv, json     string
+	study         string // as the user named it
 }
 
 func runCommand(c *console) *cobra.Command {
@@ -39,17 +42,20 @@ violated; 2 the input is wrong; 3 the machine failed.`,
 		RunE:    func(cmd *cobra.Command, args []string) error { return c.run(cmd.Context(), args, &o) },
 	}
 	f := cmd.Flags()
-	f.StringVar(&o.caseName, "case", "", "a case of the study (default: the study as it stands)")
-	f.StringVar(&o.out, "out", "", "results folder (default: results/<case> in the study's folder)")
+	f.StringVar(&o.caseName, "case", "", "the `NAME` of a case (default: the study as it stands)")
+	f.StringVar(&o.out, "out", "", "the results folder `DIR` (default: results/<case> in the study's folder)")
 	f.BoolVar(&o.strict, "strict", false, "exit status 1 where a voltage limit was violated")
 	f.BoolVar(&o.noFigures, "no-figures", false, "draw no figures (\"yearflow report\" draws them later)")
-	f.StringVar(&o.csv, "csv", "", "write the summary to this file too; - for standard output")
-	f.StringVar(&o.json, "json", "", "the same as JSON")
+	f.StringVar(&o.csv, "csv", "", "write the summary to this `FILE` too; - for standard output")
+	f.StringVar(&o.json, "json", "", "write it to this `FILE` as JSON; - for standard output")
 	return cmd
 }
 
 func (c *console) run(ctx context.Context, args []string, o *runOptions) error {
 	began := time.Now()
+	if len(args) > 0 {
+		o.study = args[0]
+	}
 	st, err := c.find(args)
 	if err != nil {
 		return err
@@ -62,6 +68,9 @@ func (c *console) run(ctx context.Context, args []string, o *runOptions) error {
 	dir := o.out
 	if dir == "" {
 		dir = st.results(o.caseName)
+	}
+	if err := replaceable(dir); err != nil {
+		return err
 	}
 	inputs, err := st.inputs(e)
 	if err != nil {
@@ -99,12 +108,27 @@ func (c *console) run(ctx context.Context, args []string, o *runOptions) error {
 	return c.tellRun(e, outcome, counts, dir, o)
 }
 
+// replaceable refuses to put results in the place of something else.
+func replaceable(dir string) error {
+	entries, err := os.ReadDir(dir)
+	if err != nil || len(entries) == 0 {
+		return nil // absent or empty, or the writer says what is wrong with it
+	}
+	for _, e := range entries {
+		if e.Name() == "run.json" {
+			return nil
+		}
+	}
+	return wrongf("--out %s: the folder is not empty and holds no results (no run.json), and results replace a folder: name a new one, such as %s", dir, filepath.Join(dir, "results"))
+}
+
 // machineOr marks an error of the file system as the machine's; any other stays what
 // it is.
 func machineOr(err error) error {
 	var path *os.PathError
 	var link *os.LinkError
-	if errors.As(err, &path) || errors.As(err, &link) {
+	var number syscall.Errno
+	if errors.As(err, &path) || errors.As(err, &link) || errors.As(err, &number) {
 		return machineError{err}
 	}
 	return err
@@ -165,7 +189,7 @@ func (c *console) tellRun(e *sim.Engine, outcome *results.Outcome, t *tally, dir
 	rows := [][]string{{"quantity", "value", "unit"}}
 	s := sheet{left: 1}
 	for _, r := range folder.Summary {
-		s.add(r.Quantity, r.Value, r.Unit)
+		s.add(r.Quantity, r.Value, unitForPeople(r.Unit))
 		rows = append(rows, []string{r.Quantity, r.Value, r.Unit})
 	}
 	s.write(out)
@@ -195,6 +219,44 @@ func (c *console) tellRun(e *sim.Engine, outcome *results.Outcome, t *tally, dir
 			c.status = exitFound
 		}
 	}
-	io := instantOptions{csv: o.csv, json: o.json}
-	return c.export(&io, rows)
+	c.tellNext(out, folder, dir, o)
+	return c.export(&instantOptions{csv: o.csv, json: o.json}, rows)
+}
+
+// unitForPeople leaves out what is no unit.
+func unitForPeople(unit string) string {
+	switch unit {
+	case "kWh", "kW", "kvar", "%", "h", "V", "A", "kVA":
+		return unit
+	case "pu":
+		return "p.u."
+	}
+	return ""
+}
+
+// tellNext says where the figures are and how to follow the worst voltage down.
+func (c *console) tellNext(out io.Writer, folder *results.Folder, dir string, o *runOptions) {
+	said := map[string]string{}
+	for _, r := range folder.Summary {
+		said[r.Quantity] = r.Value
+	}
+	fmt.Fprintln(out)
+	if !o.noFigures {
+		fmt.Fprintf(out, "Figures: %s. ", filepath.Join(dir, "figures"))
+	}
+	place, at := said["lowest judged voltage place"], said["lowest judged voltage time"]
+	if i := strings.LastIndexByte(place, '.'); i > 0 && at != "" {
+		fmt.Fprintf(out, "To follow the lowest voltage down: yearflow trace")
+		if o.study != "" {
+			fmt.Fprintf(out, " %s", o.study)
+		}
+		if o.caseName != "" {
+			fmt.Fprintf(out, " --case %s", o.caseName)
+		}
+		if o.out != "" {
+			fmt.Fprintf(out, " --positions %s", o.out)
+		}
+		fmt.Fprintf(out, " --node %s --at %s", place[:i], at)
+	}
+	fmt.Fprintln(out)
 }

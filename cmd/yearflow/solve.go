@@ -23,11 +23,11 @@ type instantOptions struct {
 
 func (o *instantOptions) flags(cmd *cobra.Command, positions string) {
 	f := cmd.Flags()
-	f.StringVar(&o.at, "at", "", "an instant, such as 2025-07-18T17:00; a time inside a step means that step (default: the first step)")
-	f.StringVar(&o.caseName, "case", "", "a case of the study (default: the study as it stands)")
-	f.StringVar(&o.positions, "positions", positions, "where the devices stand: settled (their controls bring them to rest), given (as in the tables), or a results folder (as logged there at that step)")
-	f.StringVar(&o.csv, "csv", "", "write the table to this file; - for standard output")
-	f.StringVar(&o.json, "json", "", "the same as JSON")
+	f.StringVar(&o.at, "at", "", "the `TIME` to look at, such as 2025-07-18T17:00; a time inside a step means that step (default: the first step)")
+	f.StringVar(&o.caseName, "case", "", "the `NAME` of a case (default: the study as it stands)")
+	f.StringVar(&o.positions, "positions", positions, "`WHERE` the devices stand: settled (their controls bring them to rest), given (as in the tables), or a results folder (as logged there at that step)")
+	f.StringVar(&o.csv, "csv", "", "write the table to this `FILE`; - for standard output")
+	f.StringVar(&o.json, "json", "", "write it to this `FILE` as JSON; - for standard output")
 }
 
 func solveCommand(c *console) *cobra.Command {
@@ -41,7 +41,7 @@ With --node it prints the balance of one node as the nodal equation has it.`,
 		RunE:    func(_ *cobra.Command, args []string) error { return c.solve(args, &o) },
 	}
 	o.flags(cmd, "settled")
-	cmd.Flags().StringVar(&o.node, "node", "", "print the balance of this node")
+	cmd.Flags().StringVar(&o.node, "node", "", "print the balance of this `NODE`")
 	return cmd
 }
 
@@ -56,6 +56,11 @@ func (c *console) instant(args []string, o *instantOptions) (*sim.Engine, *sim.I
 		return nil, nil, err
 	}
 	c.warn(e.Warnings)
+	if o.node != "" {
+		if _, ok := e.Study.Model.NodeIndex(o.node); !ok {
+			return nil, nil, c.noNode(e, o.node)
+		}
+	}
 	step, err := stepAt(e, o.at)
 	if err != nil {
 		return nil, nil, err
@@ -67,6 +72,10 @@ func (c *console) instant(args []string, o *instantOptions) (*sim.Engine, *sim.I
 	in, err := e.Solve(step, p)
 	if err != nil {
 		return nil, nil, inputError{err}
+	}
+	if in.State == nil {
+		fmt.Fprintf(c.errs, "%s: no solution: neither the fixed point nor Newton's method arrives; the voltage that moved most in the last iteration is that of %s (%.3g p.u.). Look at the loads behind it, at their size and at the impedances on the way.\n",
+			stamp(e, in.Start), in.Where, in.Change)
 	}
 	for _, name := range in.StillMoving {
 		fmt.Fprintf(c.errs, "warning: %s had not come to rest after 24 h of event time\n", name)
@@ -82,14 +91,11 @@ func (c *console) solve(args []string, o *instantOptions) error {
 	if err != nil {
 		return err
 	}
-	zone := e.Study.Settings.Period.Zone
 	if in.State == nil {
-		fmt.Fprintf(c.errs, "%s: no solution: neither the fixed point nor Newton's method arrives; the voltage that moved most in the last iteration is that of %s (%.3g p.u.). Look at the loads behind it, at their size and at the impedances on the way.\n",
-			profiles.Format(in.Start, zone), in.Where, in.Change)
 		return nil
 	}
 	if in.Status == results.Low {
-		fmt.Fprintf(c.errs, "%s: low: a load at %s stands below 0.7 p.u. and is not served as asked\n", profiles.Format(in.Start, zone), in.Where)
+		fmt.Fprintf(c.errs, "%s: low: a load at %s stands below 0.7 p.u. and is not served as asked\n", stamp(e, in.Start), in.Where)
 	}
 	out := c.quiet(o.csv, o.json)
 	if o.node != "" {

@@ -1,11 +1,14 @@
 package main
 
 import (
+	"bytes"
 	"encoding/csv"
 	"encoding/json"
 	"fmt"
 	"io"
+	"math"
 	"os"
+	"strconv"
 	"strings"
 	"unicode/utf8"
 )
@@ -49,7 +52,10 @@ func (s *sheet) write(w io.Writer) {
 // save writes rows to a file, or to standard output for "-". The file appears whole.
 func (c *console) save(name string, write func(io.Writer) error) error {
 	if name == "-" {
-		return write(c.out)
+		if err := write(c.out); err != nil {
+			return machineError{fmt.Errorf("write to standard output: %w", err)}
+		}
+		return nil
 	}
 	f, err := os.CreateTemp(dirOf(name), ".yearflow-*")
 	if err != nil {
@@ -108,15 +114,59 @@ func (c *console) quiet(files ...string) io.Writer {
 	return c.out
 }
 
-// records turns rows under a header into objects.
-func records(rows [][]string) []map[string]string {
-	out := make([]map[string]string, 0, len(rows))
-	for _, r := range rows[1:] {
-		m := map[string]string{}
-		for i, h := range rows[0] {
-			m[h] = r[i]
+// record is a row as a JSON object: the columns in their order, numbers as numbers.
+type record struct{ header, cells []string }
+
+var _ json.Marshaler = record{}
+
+// MarshalJSON writes a cell of a column with a unit as a number and null for a blank;
+// any other as a string. A "value" has its unit beside it.
+func (r record) MarshalJSON() ([]byte, error) {
+	var b bytes.Buffer
+	b.WriteByte('{')
+	for i, h := range r.header {
+		if i > 0 {
+			b.WriteByte(',')
 		}
-		out = append(out, m)
+		key, err := json.Marshal(h)
+		if err != nil {
+			return nil, err
+		}
+		value, err := json.Marshal(r.value(i))
+		if err != nil {
+			return nil, err
+		}
+		b.Write(key)
+		b.WriteByte(':')
+		b.Write(value)
+	}
+	b.WriteByte('}')
+	return b.Bytes(), nil
+}
+
+func (r record) value(i int) any {
+	number := strings.HasSuffix(r.header[i], "]")
+	switch r.header[i] {
+	case "line", "column", "row", "tap":
+		number = true
+	case "value":
+		unit := r.cells[i+1]
+		number = unit == "1" || unitForPeople(unit) != ""
+	}
+	if !number {
+		return r.cells[i]
+	}
+	if v, err := strconv.ParseFloat(r.cells[i], 64); err == nil && !math.IsNaN(v) && !math.IsInf(v, 0) {
+		return json.Number(strings.TrimPrefix(r.cells[i], "+"))
+	}
+	return nil
+}
+
+// records turns rows under a header into objects.
+func records(rows [][]string) []record {
+	out := make([]record, 0, len(rows))
+	for _, r := range rows[1:] {
+		out = append(out, record{rows[0], r})
 	}
 	return out
 }

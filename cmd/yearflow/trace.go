@@ -17,12 +17,12 @@ func traceCommand(c *console) *cobra.Command {
 does to the voltage on the 120 V base, its loss and its tap. Where the study has
 results, devices stand as logged there at that step; else their controls bring them
 to rest.`,
-		Example: "  yearflow trace --node mill-12 --at 2025-07-18T17:00",
+		Example: "  yearflow trace --node cotton5-s --at 2025-08-09T18:00",
 		Args:    atMostOne("study"),
 		RunE:    func(_ *cobra.Command, args []string) error { return c.trace(args, &o) },
 	}
 	o.flags(cmd, "")
-	cmd.Flags().StringVar(&o.node, "node", "", "the node to walk to (required)")
+	cmd.Flags().StringVar(&o.node, "node", "", "the `NODE` to walk to (required)")
 	return cmd
 }
 
@@ -35,7 +35,6 @@ func (c *console) trace(args []string, o *instantOptions) error {
 		return err
 	}
 	if in.State == nil {
-		fmt.Fprintf(c.errs, "%s: no solution; worst at %s\n", profiles.Format(in.Start, e.Study.Settings.Period.Zone), in.Where)
 		return nil
 	}
 	way, err := e.Trace(o.node)
