@@ -53,6 +53,7 @@ type runOut struct {
 	Balance     balanceOut        `json:"balance"`
 	Coarse      coarseOut         `json:"coarse_step"`
 	Hunting     []huntingOut      `json:"hunting"`
+	Trouble     []troubleOut      `json:"first_low_and_unsolved_steps"`
 	Inputs      map[string]string `json:"inputs_sha256"`
 	Results     map[string]string `json:"results_sha256"`
 }
@@ -119,6 +120,17 @@ type coarseOut struct {
 	Regulators      []string `json:"regulators"`
 }
 
+// troubleKept is the number of low and unsolved steps that run.json names; steps.csv
+// has them all.
+const troubleKept = 100
+
+// troubleOut names a step that is not ok, and where it fails.
+type troubleOut struct {
+	Time   string `json:"time"`
+	Status string `json:"status"`
+	Where  string `json:"where"`
+}
+
 type huntingOut struct {
 	Time   string `json:"time"`
 	Device string `json:"device"`
@@ -139,7 +151,7 @@ func (w *Writer) writeRun(o *Outcome, run RunInfo) error {
 		StepsBy: w.solver, SolutionsBy: notNil(o.Paths),
 		Balance: balanceOut{Checked: w.balance.checked, Worst: w.balance.worst},
 		Coarse:  w.coarse(o),
-		Hunting: []huntingOut{}, Inputs: notNil(run.Inputs), Results: w.hashes,
+		Hunting: []huntingOut{}, Trouble: append([]troubleOut{}, w.trouble...), Inputs: notNil(run.Inputs), Results: w.hashes,
 	}
 	if set.Run.Given {
 		r.Begins = "given"

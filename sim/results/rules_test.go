@@ -7,6 +7,7 @@ import (
 	"math/rand/v2"
 	"os"
 	"path/filepath"
+	"regexp"
 	"strings"
 	"testing"
 	"time"
@@ -80,6 +81,7 @@ func TestNothingOfAStepThatIsNotOKEntersAStatistic(t *testing.T) {
 	})
 	s.steps[3].Status, s.steps[3].Actions = Low, 1
 	s.steps[3].actions = []*Action{{Time: s.steps[3].Start + 7, Device: 1, From: 0, To: 1, Reason: "band low"}}
+	s.steps[3].Where = "low.B"
 	s.steps[5].Status, s.steps[5].Last = Unsolved, nil
 	// The tap stays where the low step left it.
 	for i := 4; i < 24; i++ {
@@ -114,6 +116,10 @@ func TestNothingOfAStepThatIsNotOKEntersAStatistic(t *testing.T) {
 	}
 	if row := sheetRows(t, dir, "operations.csv")[0]; row["time"] != "2025-01-01T03:00:00.000000007+00:00" || row["phase"] != "B" || row["to"] != "1" {
 		t.Errorf("operation logged as %v", row)
+	}
+	record, err := os.ReadFile(filepath.Join(dir, "run.json"))
+	if err != nil || !regexp.MustCompile(`"time": "2025-01-01T03:00:00\+00:00",\s*"status": "low",\s*"where": "low.B"`).Match(record) {
+		t.Errorf("run.json does not name the low step and its place (%v)", err)
 	}
 	sum := sheetRows(t, dir, "summary.csv")
 	cell(t, find(t, sum, "quantity", "settled hours"), "value", 22)
@@ -389,6 +395,40 @@ func TestOfEqualExtremesTheFirstIsNamed(t *testing.T) {
 	lat := find(t, sheetRows(t, dir, "loading.csv"), "element", "lat")
 	if at := lat["peak time"]; at != "2025-01-01T00:00:00+00:00" && at != "2025-01-01T01:00:00+00:00" {
 		t.Errorf("peak of lat at %s, want the first of its hours", at)
+	}
+}
+
+// Phase B of low is raised or lowered until the line-to-line voltages are 4 % and 2.5 %
+// unbalanced; only the hours of the first count as above 3 %.
+func TestHoursOfUnbalance(t *testing.T) {
+	x := aDay(t)
+	m := NewMeter(x.net)
+	r := m.NewReading()
+	at := func(percent float64) *State {
+		low, high := 0.0, 0.3
+		for range 60 {
+			mid := (low + high) / 2
+			m.Read(x.state(map[string]float64{"low.B": -mid}, [3]int{}, true), r)
+			if r.Unbalance < percent {
+				low = mid
+			} else {
+				high = mid
+			}
+		}
+		return x.state(map[string]float64{"low.B": -low}, [3]int{}, true)
+	}
+	much, some := at(4), at(2.5)
+	dir := constant(x, func(step int) *State {
+		if step >= 6 && step < 13 {
+			return much
+		}
+		return some
+	}).write(t, x)
+	sum := sheetRows(t, dir, "summary.csv")
+	cell(t, find(t, sum, "quantity", "hours with unbalance above 3 %"), "value", 7)
+	cell(t, find(t, sum, "quantity", "highest unbalance"), "value", 4)
+	if p, at := find(t, sum, "quantity", "highest unbalance place"), find(t, sum, "quantity", "highest unbalance time"); p["value"] != "low" || at["value"] != "2025-01-01T06:00:00+00:00" {
+		t.Errorf("highest unbalance at %s, %s", p["value"], at["value"])
 	}
 }
 

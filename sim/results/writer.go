@@ -42,6 +42,7 @@ type Writer struct {
 	caps []bool
 
 	solver  map[string]int // steps by the path of their last solution
+	trouble []troubleOut   // the first steps that are not OK, at most troubleKept
 	balance balanceCheck
 	flowNow []flowReading
 }
@@ -250,6 +251,9 @@ func (w *Writer) Step(s *Step) error {
 	}
 	if s.Solver != "" {
 		w.solver[s.Solver]++
+	}
+	if s.Status != OK && len(w.trouble) < troubleKept {
+		w.trouble = append(w.trouble, troubleOut{w.clock.text(s.Start), s.Status.String(), s.Where})
 	}
 	if s.Last != nil {
 		w.meter.Read(s.Last, w.now)
