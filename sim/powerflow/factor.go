@@ -101,13 +101,14 @@ func (p *pattern) at(i, j int32) int32 {
 func (p *pattern) slot(u, v int32) int32 { return p.at(p.place[u], p.place[v]) }
 
 // factor turns the values a of a symmetric matrix into L·D·Lᵀ in place: the
-// diagonal slots hold 1/D. It reports false where a pivot vanishes.
-func (p *pattern) factor(a []complex128) bool {
+// diagonal slots hold 1/D. It returns the row, in elimination order, of a pivot that
+// vanishes, or −1.
+func (p *pattern) factor(a []complex128) int {
 	d := 0
 	for k := range p.n {
 		piv := a[k]
 		if piv == 0 || piv != piv {
-			return false
+			return k
 		}
 		inv := 1 / piv
 		a[k] = inv
@@ -123,7 +124,7 @@ func (p *pattern) factor(a []complex128) bool {
 			col[x] *= inv
 		}
 	}
-	return true
+	return -1
 }
 
 // solve replaces x, in elimination order, by the solution with a factored matrix.

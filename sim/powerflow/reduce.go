@@ -211,8 +211,8 @@ func (r *reduction) loopError(members []int32) error {
 }
 
 // update computes the coefficients of every cluster at the couplings' ratios. It
-// allocates nothing.
-func (r *reduction) update(ratio []float64) bool {
+// allocates nothing, and returns the cluster that has no unique solution, or −1.
+func (r *reduction) update(ratio []float64) int {
 	for k := range r.clusters {
 		c := &r.clusters[k]
 		m, f := len(c.dep), len(c.ind)
@@ -235,7 +235,7 @@ func (r *reduction) update(ratio []float64) bool {
 			}
 		}
 		if !invertReal(c.inverse, c.cp, m) {
-			return false
+			return k
 		}
 		for i := range m {
 			for j := range f {
@@ -247,7 +247,7 @@ func (r *reduction) update(ratio []float64) bool {
 			}
 		}
 	}
-	return true
+	return -1
 }
 
 // value returns the coefficient of a term.

@@ -82,6 +82,7 @@ type Solver struct {
 	noLoad       []complex128
 	noLoadValid  bool
 	noLoadSource []complex128
+	singular     int32     // unknown at which the equations of the devices' state are singular; −1: they are not
 	perUnit      []float64 // 1/V by unknown
 	newton       *newton
 }
@@ -201,9 +202,10 @@ func (s *Solver) plan() {
 
 // SetDevices takes the ratio of every coupling (Network.Couplings; 1 where it has
 // no unit) and the state of every capacitor bank, and factors anew where they
-// changed. The error says that the network has no unique solution.
+// changed. The error says that the network has no unique solution; Solve then finds
+// none, and where.
 func (s *Solver) SetDevices(ratio []float64, closed []bool) error {
-	same := true
+	same := s.singular < 0
 	for i, r := range ratio {
 		same = same && s.ratio[i] == r
 	}
@@ -228,8 +230,9 @@ func (s *Solver) assemble() error {
 
 func (s *Solver) refactor() error {
 	s.noLoadValid = false
-	if !s.red.update(s.ratio) {
-		return fmt.Errorf("the taps of the regulators make the network's equations singular: look at regulators in a loop")
+	if k := s.red.update(s.ratio); k >= 0 {
+		s.singular = s.red.clusters[k].dep[0]
+		return fmt.Errorf("the taps of the regulators make the network's equations singular at %s: look at regulators in a loop", s.Net.Unknowns[s.singular].Name)
 	}
 	copy(s.y, s.base)
 	for _, st := range s.moving {
@@ -240,10 +243,22 @@ func (s *Solver) refactor() error {
 		s.y[st.slot] += el.Y[st.entry] * complex(s.coef(st.a)*s.coef(st.b), 0)
 	}
 	copy(s.f, s.y)
-	if !s.pat.factor(s.f) {
-		return fmt.Errorf("the network's equations are singular: some part of the feeder has nothing to hold its voltage")
+	if row := s.pat.factor(s.f); row >= 0 {
+		s.singular = s.unknownAt(row)
+		return fmt.Errorf("the network's equations are singular at %s: some part of the feeder has nothing to hold its voltage, or a capacitor resonates with a line", s.Net.Unknowns[s.singular].Name)
 	}
+	s.singular = -1
 	return nil
+}
+
+// unknownAt returns the unknown that stands for a row of the elimination order.
+func (s *Solver) unknownAt(row int) int32 {
+	for u, terms := range s.red.terms {
+		if len(terms) == 1 && terms[0].coef < 0 && terms[0].col >= 0 && int(s.pat.place[terms[0].col]) == row {
+			return int32(u)
+		}
+	}
+	return 0
 }
 
 func (s *Solver) coef(c int32) float64 {
@@ -362,9 +377,9 @@ func (s *Solver) SolveBy(p Path, in *Input, tol Tolerance, out *Solution) bool {
 	return ok
 }
 
-// runaway is the change of a voltage in one iteration, p.u., beyond which there is no
-// way back to a solution that a feeder could have. Without this rule a resonance ends
-// at voltages so high that rounding hides the mismatch.
+// runaway is the voltage, and the change of one in an iteration, p.u., beyond which
+// there is no way back to a solution that a feeder could have. Without this rule a
+// resonance ends at voltages so high that rounding hides the mismatch.
 const runaway = 1e3
 
 // maxFixedPoint bounds the fixed-point iterations; slow contraction is left to
@@ -377,25 +392,40 @@ const maxFixedPoint = 80
 // them, and Newton's method begins there. It reports whether there is a solution;
 // out says which and how.
 func (s *Solver) Solve(in *Input, start []complex128, tol Tolerance, out *Solution) bool {
-	s.setPull(in)
-	s.ensureNoLoad(in)
 	out.Iterations = 0
-	if start != nil {
-		copy(out.V, start)
-		if s.fixedPoint(in, tol, out) {
+	if s.singular < 0 {
+		s.setPull(in)
+		s.ensureNoLoad(in)
+		if start != nil {
+			copy(out.V, start)
+			if s.fixedPoint(in, tol, out) && s.bounded(out) {
+				return true
+			}
+		}
+		copy(out.V, s.noLoad)
+		if s.fixedPoint(in, tol, out) && s.bounded(out) {
 			return true
 		}
-	}
-	copy(out.V, s.noLoad)
-	if s.fixedPoint(in, tol, out) {
-		return true
-	}
-	copy(out.V, s.noLoad)
-	if s.newton.solve(in, tol, out) {
-		return true
+		copy(out.V, s.noLoad)
+		if s.newton.solve(in, tol, out) && s.bounded(out) {
+			return true
+		}
+	} else {
+		out.Worst = int(s.singular)
 	}
 	out.Path = None
 	return false
+}
+
+// bounded tells whether no voltage has run away.
+func (s *Solver) bounded(out *Solution) bool {
+	for u, v := range out.V {
+		if m := cmplx.Abs(v) * s.perUnit[u]; !(m <= runaway) {
+			out.Worst, out.Change = u, m
+			return false
+		}
+	}
+	return true
 }
 
 func (s *Solver) fixedPoint(in *Input, tol Tolerance, out *Solution) bool {
