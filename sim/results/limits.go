@@ -48,8 +48,7 @@ type service struct {
 	points    []int
 	peak      float64 // W; 0: no drop
 
-	below, above, outside int64 // settled ns outside range A, and outside in either way
-	belowNow, aboveNow    bool
+	outside int64 // settled ns outside range A
 }
 
 // newJudge chooses the limits of every point: own ones, or the row of ANSI C84.1

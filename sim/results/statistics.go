@@ -251,11 +251,9 @@ func (s *statistics) serve(x *sample, ns int64, out *outsideTimes) {
 			above = above || pu > c.HighA+limitSlack
 		}
 		if below {
-			v.below += ns
 			out.customersBelow += v.customers * float64(ns)
 		}
 		if above {
-			v.above += ns
 			out.customersAbove += v.customers * float64(ns)
 		}
 		if below || above {
