@@ -11,6 +11,22 @@ import (
 // power and constant current turn into constant impedance.
 const Corner = 0.7
 
+// Law is a power that depends on voltage in another way than a load's, such as an
+// inverter's functions. It must be continuous and must not keep anything.
+type Law interface {
+	// Draws returns the power that a group draws in all, VA, and its slope by voltage,
+	// VA per p.u., where s is given for the instant and v is the mean voltage of the
+	// group's branches in p.u., at least Corner.
+	Draws(s complex128, v float64) (power, slope complex128)
+}
+
+// Group is several injections that act as one by a law: each draws the same share of
+// what the law says for their mean voltage. The s of its first member is the law's.
+type Group struct {
+	Law     Law
+	Members []int32 // into the solver's injections
+}
+
 // Injection is a branch that draws power between two voltages, as a load does:
 //
 //	P(v) = P₀·(Z·v² + I·v + C),  v = |V|/Nominal ≥ 0.7
@@ -24,7 +40,10 @@ type Injection struct {
 	// Shares of constant impedance, current and power, of P and of Q.
 	PZ, PI, PC float64
 	QZ, QI, QC float64
-	Generator  bool // feeds power in; its voltage makes no step low
+	// Group is one more than the position of the injection's group in Groups; zero: it
+	// stands alone and follows its shares.
+	Group     int32
+	Generator bool // feeds power in; its voltage makes no step low
 	// Size is the nominal apparent power, VA: the measure of a mismatch.
 	Size float64
 }
@@ -95,11 +114,55 @@ func (j *Injection) derivative(s, v complex128) [4]float64 {
 	}
 	m := a / j.Nominal
 	cv := cmplx.Conj(v)
-	g := cmplx.Conj(j.slope(s, m)) / cv
-	h := -cmplx.Conj(j.Power(s, m)) / (cv * cv)
-	mr, mi := real(v)/(a*j.Nominal), imag(v)/(a*j.Nominal)
+	return jacobian(cmplx.Conj(j.slope(s, m))/cv, -cmplx.Conj(j.Power(s, m))/(cv*cv), v, j.Nominal)
+}
+
+// jacobian returns the real 2 × 2 matrix, row by row, of dI = g·dm + h·conj(dV) with
+// m = |V|/nominal.
+func jacobian(g, h, v complex128, nominal float64) [4]float64 {
+	a := cmplx.Abs(v) * nominal
+	mr, mi := real(v)/a, imag(v)/a
 	return [4]float64{
 		real(g)*mr + real(h), real(g)*mi + imag(h),
 		imag(g)*mr + imag(h), imag(g)*mi - real(h),
 	}
+}
+
+// draws returns the power of a group in all and its slope, at voltages v. Below the
+// corner it turns into constant impedance as a load does.
+func (g *Group) draws(js []Injection, power, v []complex128) (s, slope complex128, mean float64) {
+	for _, k := range g.Members {
+		mean += cmplx.Abs(js[k].across(v)) / js[k].Nominal
+	}
+	mean /= float64(len(g.Members))
+	given := power[g.Members[0]]
+	if mean >= Corner {
+		s, slope = g.Law.Draws(given, mean)
+		return s, slope, mean
+	}
+	s, _ = g.Law.Draws(given, Corner)
+	k := mean / Corner
+	s *= complex(k*k, 0)
+	if mean > 0 {
+		slope = s * complex(2/mean, 0)
+	}
+	return s, slope, mean
+}
+
+// derivative returns d(current of member i)/dV of member j as derivative does. Each
+// member draws the share S(m̄)/n of the group, m̄ the mean of the members' voltages:
+//
+//	I = conj(S/n)/conj(V),  dI = conj(S′/n)·dm̄/conj(V) − conj(S/n)·conj(dV)/conj(V)²
+func (g *Group) derivative(js []Injection, i, j int32, share, slope complex128, v []complex128) [4]float64 {
+	x, y := js[i].across(v), js[j].across(v)
+	if x == 0 || y == 0 {
+		return [4]float64{}
+	}
+	n := complex(float64(len(g.Members)), 0)
+	cx := cmplx.Conj(x)
+	var own complex128
+	if i == j {
+		own = -cmplx.Conj(share) / (cx * cx)
+	}
+	return jacobian(cmplx.Conj(slope/n)/cx/n, own, y, js[j].Nominal)
 }

@@ -68,10 +68,10 @@ func (s *Solver) Couplings(own, source []complex128, in *Input, v, flow []comple
 
 // Drawn sets power to what each injection draws, VA, at voltages v.
 func (s *Solver) Drawn(power []complex128, in *Input, v []complex128) {
+	s.shares(v, in)
 	for k := range s.Injections {
-		j := &s.Injections[k]
-		x := j.across(v)
-		i := j.current(in.Power[k], x)
+		x := s.Injections[k].across(v)
+		i := s.ampere(k, x, in)
 		power[k] = x * complex(real(i), -imag(i))
 	}
 }

@@ -22,13 +22,14 @@ type newton struct {
 
 type block [4]float64
 
-// injectionStamp adds sign·c(a)·c(b)·dI/dV of an injection to a block.
+// injectionStamp adds sign·c(a)·c(b)·dI/dV to a block: the current of an injection by
+// its own voltage, or by that of another member of its group.
 type injectionStamp struct {
-	injection int32
-	sign      float64
-	a, b      int32 // coefficients
-	slot      int32
-	upper     bool
+	injection, by int32
+	sign          float64
+	a, b          int32 // coefficients
+	slot          int32
+	upper         bool
 }
 
 func newNewton(s *Solver) *newton {
@@ -40,30 +41,45 @@ func newNewton(s *Solver) *newton {
 		x: make([]complex128, n), base: make([]complex128, n),
 	}
 	for k := range s.Injections {
-		j := &s.Injections[k]
-		ends := []int32{j.From}
-		if j.To != network.Ground {
-			ends = append(ends, j.To)
+		by := []int32{int32(k)}
+		if g := s.Injections[k].Group; g > 0 {
+			by = s.Groups[g-1].Members
 		}
-		for p, u := range ends {
-			for q, v := range ends {
-				sign := 1.0
-				if p != q {
-					sign = -1
-				}
-				for _, a := range s.red.terms[u] {
-					for _, b := range s.red.terms[v] {
-						if a.col < 0 || b.col < 0 {
-							continue
-						}
-						row, col := s.pat.place[a.col], s.pat.place[b.col]
-						w.stamps = append(w.stamps, injectionStamp{int32(k), sign, a.coef, b.coef, s.pat.at(row, col), row < col})
+		for _, j := range by {
+			w.stamp(int32(k), j)
+		}
+	}
+	return w
+}
+
+// ends are the unknowns between which an injection stands.
+func (j *Injection) ends() []int32 {
+	if j.To == network.Ground {
+		return []int32{j.From}
+	}
+	return []int32{j.From, j.To}
+}
+
+// stamp lists where the derivative of injection k by the voltage of injection by goes.
+func (w *newton) stamp(k, by int32) {
+	s := w.s
+	for p, u := range s.Injections[k].ends() {
+		for q, v := range s.Injections[by].ends() {
+			sign := 1.0
+			if p != q {
+				sign = -1
+			}
+			for _, a := range s.red.terms[u] {
+				for _, b := range s.red.terms[v] {
+					if a.col < 0 || b.col < 0 {
+						continue
 					}
+					row, col := s.pat.place[a.col], s.pat.place[b.col]
+					w.stamps = append(w.stamps, injectionStamp{k, by, sign, a.coef, b.coef, s.pat.at(row, col), row < col})
 				}
 			}
 		}
 	}
-	return w
 }
 
 const maxNewton = 40
@@ -172,13 +188,19 @@ func (w *newton) jacobian(in *Input) {
 		w.lower[k] = block{real(y), -imag(y), imag(y), real(y)}
 		w.upper[k] = w.lower[k]
 	}
-	last := int32(-1)
+	s.shares(w.v, in)
+	last, lastBy := int32(-1), int32(-1)
 	var d [4]float64
 	for _, st := range w.stamps {
-		if st.injection != last {
-			last = st.injection
+		if st.injection != last || st.by != lastBy {
+			last, lastBy = st.injection, st.by
 			j := &s.Injections[last]
-			d = j.derivative(in.Power[last], j.across(w.v))
+			if j.Group > 0 {
+				g := j.Group - 1
+				d = s.Groups[g].derivative(s.Injections, last, lastBy, s.share[g], s.slope[g], w.v)
+			} else {
+				d = j.derivative(in.Power[last], j.across(w.v))
+			}
 		}
 		c := st.sign * s.coef(st.a) * s.coef(st.b)
 		b := &w.diag[0]

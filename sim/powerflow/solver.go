@@ -64,6 +64,9 @@ type Solution struct {
 type Solver struct {
 	Net        *network.Network
 	Injections []Injection
+	Groups     []Group
+
+	share, slope []complex128 // by group: power of one member, slope of the whole
 
 	red *reduction
 	pat *pattern
@@ -101,13 +104,15 @@ type fixedStamp struct {
 	a, b           int32
 }
 
-// New prepares a solver. The error names ideal devices that leave a current open.
-func New(n *network.Network, injections []Injection) (*Solver, error) {
+// New prepares a solver; groups are those of the injections that name one. The error
+// names ideal devices that leave a current open.
+func New(n *network.Network, injections []Injection, groups ...Group) (*Solver, error) {
 	red, err := newReduction(n)
 	if err != nil {
 		return nil, err
 	}
-	s := &Solver{Net: n, Injections: injections, red: red}
+	s := &Solver{Net: n, Injections: injections, Groups: groups, red: red,
+		share: make([]complex128, len(groups)), slope: make([]complex128, len(groups))}
 	var entries [][2]int32
 	couple := func(t []int32) {
 		for _, u := range t {
@@ -125,12 +130,15 @@ func New(n *network.Network, injections []Injection) (*Solver, error) {
 	for _, e := range n.Elements {
 		couple(e.Terminals)
 	}
-	for _, j := range injections {
-		if j.To != network.Ground {
-			couple([]int32{j.From, j.To})
-		} else {
-			couple([]int32{j.From})
+	for i := range injections {
+		couple(injections[i].ends())
+	}
+	for _, g := range groups {
+		var all []int32
+		for _, k := range g.Members {
+			all = append(all, injections[k].ends()...)
 		}
+		couple(all)
 	}
 	s.pat = newPattern(red.free, entries)
 	s.plan()
@@ -347,9 +355,10 @@ func (s *Solver) gather(rhs, j []complex128) {
 // at voltages v.
 func (s *Solver) currents(inject, v []complex128, in *Input) {
 	clear(inject)
+	s.shares(v, in)
 	for k := range s.Injections {
 		j := &s.Injections[k]
-		i := j.current(in.Power[k], j.across(v))
+		i := s.ampere(k, j.across(v), in)
 		inject[j.From] -= i
 		if j.To != network.Ground {
 			inject[j.To] += i
@@ -381,6 +390,30 @@ func (s *Solver) SolveBy(p Path, in *Input, tol Tolerance, out *Solution) bool {
 // there is no way back to a solution that a feeder could have. Without this rule a
 // resonance ends at voltages so high that rounding hides the mismatch.
 const runaway = 1e3
+
+// shares sets what each member of each group draws at voltages v, and the slope of
+// the group's power.
+func (s *Solver) shares(v []complex128, in *Input) {
+	for g := range s.Groups {
+		total, slope, _ := s.Groups[g].draws(s.Injections, in.Power, v)
+		s.share[g], s.slope[g] = total/complex(float64(len(s.Groups[g].Members)), 0), slope
+	}
+}
+
+// ampere returns the current of an injection at the voltage x across it; that of a
+// group's member from its share.
+func (s *Solver) ampere(k int, x complex128, in *Input) complex128 {
+	j := &s.Injections[k]
+	if j.Group == 0 {
+		return j.current(in.Power[k], x)
+	}
+	p := s.share[j.Group-1]
+	m2 := real(x)*real(x) + imag(x)*imag(x)
+	if m2 == 0 {
+		return 0
+	}
+	return complex(real(p), -imag(p)) * x * complex(1/m2, 0)
+}
 
 // maxFixedPoint bounds the fixed-point iterations; slow contraction is left to
 // Newton's method before that.
