@@ -2,6 +2,7 @@ package sim_test
 
 import (
 	"fmt"
+	"io/fs"
 	"math"
 	"math/cmplx"
 	"strings"
@@ -12,10 +13,10 @@ import (
 	"yearflow/sim/results"
 )
 
-// solveAny solves a study's first step, whatever comes of it.
-func solveAny(t *testing.T, loads string) (*sim.Engine, *sim.Instant) {
+// solveTables solves a study's first step, whatever comes of it.
+func solveTables(t *testing.T, study fs.FS) (*sim.Engine, *sim.Instant) {
 	t.Helper()
-	st, err := feeder.Open(oneLine(1.2, 2.4, "loads", loads), "")
+	st, err := feeder.Open(study, "")
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -44,7 +45,7 @@ func TestMoreThanTheLineCarries(t *testing.T) {
 	served, low := 0, 0
 	last := 1.0
 	for _, mw := range []float64{0.5, 2, 5, 8, 10, 11, 12, 13, 13.5, 14, 14.5, 15, 16, 18, 22, 30, 50, 80, 200, 1e3, 1e6} {
-		e, in := solveAny(t, fmt.Sprintf("load,node,phases,real [kW],power factor\nL,end,ABC,%g,0.95\n", 1000*mw))
+		e, in := solveTables(t, oneLine(1.2, 2.4, "loads", fmt.Sprintf("load,node,phases,real [kW],power factor\nL,end,ABC,%g,0.95\n", 1000*mw)))
 		if in.Status == results.Unsolved {
 			// Far beyond what the line carries Newton's method may give up: that is said
 			// honestly and with the place, never as a voltage.
@@ -78,24 +79,26 @@ func TestMoreThanTheLineCarries(t *testing.T) {
 	}
 }
 
+// A generator of constant power that presses more into the line than it can take: the
+// discriminant of the equation above, with P negative, is below zero.
+func TestMoreThanTheLineTakes(t *testing.T) {
+	const mw, vn2 = 100, 12.47 * 12.47
+	if b := 1 + 2*mw*1.2/vn2; b*b >= 4*mw*mw*(1.2*1.2+2.4*2.4)/(vn2*vn2) {
+		t.Fatal("the line can take it")
+	}
+	e, in := solveTables(t, oneLine(1.2, 2.4, "generators", fmt.Sprintf("generator,node,phases,kind,rating [kVA],real [kW]\nG,end,ABC,other,%g,%g\n", mw*1000.0, mw*1000.0)))
+	if in.Status != results.Unsolved || in.State != nil || !strings.HasPrefix(in.Where, "end.") {
+		t.Errorf("%v at %q: %v", in.Status, in.Where, e.Voltages())
+	}
+}
+
 // A load that is a capacitance in resonance with the line has no solution at all: the
 // instant is unsolved, a place is named, and there is no state to read.
 //
 //	X·B = 2.4·Q/V² = 1 at R = 0: Q = 12.47²/2.4 MVA
 func TestNoSolution(t *testing.T) {
 	kvar := 12470.0 * 12.47 / 2.4
-	st, err := feeder.Open(oneLine(0, 2.4, "loads", fmt.Sprintf("load,node,phases,real [kW],reactive [kvar],zip\nL,end,ABC,0,%.9f,impedance\n", -kvar)), "")
-	if err != nil {
-		t.Fatal(err)
-	}
-	e, err := sim.Prepare(st, sim.Options{})
-	if err != nil {
-		t.Fatal(err)
-	}
-	in, err := e.Solve(0, sim.Positions{Given: true})
-	if err != nil {
-		t.Fatal(err)
-	}
+	_, in := solveTables(t, oneLine(0, 2.4, "loads", fmt.Sprintf("load,node,phases,real [kW],reactive [kvar],zip\nL,end,ABC,0,%.9f,impedance\n", -kvar)))
 	// The line's micro-ohm leaves a resonance of 10⁶ times the source's voltage.
 	if in.Status != results.Unsolved || in.State != nil || !strings.HasPrefix(in.Where, "end.") {
 		t.Errorf("%v at %q with state %v", in.Status, in.Where, in.State != nil)

@@ -320,3 +320,26 @@ func TestClockNumbers(t *testing.T) {
 		t.Errorf("%d groups checked", checked)
 	}
 }
+
+// A ring fed by two sources, one behind its impedance and one that holds its bus, with a
+// regulator, a switch and a bank in it, against ngspice.
+func TestSpiceLoop(t *testing.T) {
+	e, in := solveFS(t, tablesOf(map[string]string{
+		"study.toml": oneHour,
+		"feeder/source.csv": "node,nominal [kV],voltage [pu],angle [deg],voltage at,short circuit 3ph [MVA],x/r 3ph,short circuit 1ph [MVA],x/r 1ph\n" +
+			"west,12.47,1.02,7,behind,150,8,110,5\neast,12.47,1.01,5,bus,,,,\n",
+		"feeder/sections.csv": "section,from,to,phases,length [km],construction\nS1,west,n1,BCA,3,open\nS2,n1,n2,ABC,2,cable\nS3,n3,n4,CAB,2,open\nS4,n4,n5,ABC,1,open\n" +
+			"S5,n1,n5,CBA,4,open\nS6,n5,east,ABC,6,open\nS7,n4,side,CA,2,open\nS8,low,far,ABC,0.3,cable\n",
+		"feeder/constructions.csv":      "construction,kind\nopen,matrix\ncable,matrix\nwire,matrix\n",
+		"feeder/impedances.csv":         untransposed,
+		"feeder/switches.csv":           "switch,from,to,phases,state\nW,n2,n2w,ABC,closed\nV,side,n1,CA,open\n",
+		"feeder/regulators.csv":         "regulator,from,to,phases,connection,pt ratio,ct primary [A],rating [A],load loss [W],impedance [%]\nR,n2w,n3,ABC,wye,60,200,300,900,1\n",
+		"feeder/regulator-settings.csv": "regulator,phase,set [V],bandwidth [V],delay [s],tap\nR,A,120,2,30,7\nR,B,120,2,30,-5\nR,C,120,2,30,2\n",
+		// Two unlike banks in parallel close a second loop through their windings.
+		"feeder/transformers.csv": "transformer,from,to,phases,rating [kVA],high [kV],low [kV],connection,impedance [%],x/r,no-load loss [W],exciting current [%],tap [kV]\n" +
+			"T1,n4,low,ABC,1000,12.47,4.16,Dyn1,5.5,6,1900,1.1,12.47\nT2,n5,low,ABC,500,12.47,4.16,Dyn1,4.5,4,1100,1.3,12.1\n",
+		"feeder/loads.csv":      "load,node,phases,connection,real [kW],reactive [kvar],zip\nL1,far,ABC,wye,700,300,impedance\nL2,far,BC,delta,250,60,impedance\nL3,side,CA,delta,200,-50,impedance\nL4,n2,B,wye,400,100,impedance\n",
+		"feeder/capacitors.csv": "capacitor,node,phases,size [kvar],connection,state\nK1,n4,ABC,300,wye,closed\nK2,n1,ABC,600,wye,open\n",
+	}))
+	t.Logf("%d places, largest difference %.2g p.u.", len(results.Points(e.Plan.Network)), againstSpice(t, e, in))
+}
