@@ -1,6 +1,7 @@
 package feeder
 
 import (
+	"fmt"
 	"math"
 	"sort"
 	"strconv"
@@ -21,6 +22,7 @@ type builder struct {
 	index map[string]int // of nodes
 	links []link         // what joins nodes, in the order of tables
 	torn  bool           // a row that joins nodes was left out for its faults
+	many  []*grouped     // assumptions of many rows
 
 	spacing map[string]*spacing
 }
@@ -43,6 +45,24 @@ func newBuilder(t *feederTables, frequency float64, faults *tables.Faults) *buil
 
 func (b *builder) assume(at tables.Pos, what, value string) {
 	b.model.Assumed = append(b.model.Assumed, Assumption{at, what, value})
+}
+
+// grouped is an assumption that is the same for many rows of a table.
+type grouped struct {
+	what, value string
+	first       tables.Pos
+	count       int
+}
+
+// assumeMany counts an assumption that is told once for its table.
+func (b *builder) assumeMany(at tables.Pos, what, value string) {
+	for _, g := range b.many {
+		if g.what == what {
+			g.count++
+			return
+		}
+	}
+	b.many = append(b.many, &grouped{what, value, at, 1})
 }
 
 // build makes the model. Where there were faults in it the model is not whole.
@@ -73,6 +93,9 @@ func (b *builder) build() *Model {
 	b.generators()
 	if len(*b.faults) == before && !b.torn {
 		b.floating()
+	}
+	for _, g := range b.many {
+		b.assume(g.first, fmt.Sprintf("%s (blank in %d%s)", g.what, g.count, plural(g.count, " row", " rows")), g.value)
 	}
 	sort.SliceStable(b.model.Assumed, func(i, j int) bool { return earlier(b.model.Assumed[i].Pos, b.model.Assumed[j].Pos) })
 	return b.model

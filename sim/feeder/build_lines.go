@@ -382,12 +382,6 @@ func (b *builder) sections() {
 	for i := range b.model.Constructions {
 		at[b.model.Constructions[i].Name] = i
 	}
-	rated, firstRated := 0, tables.Pos{}
-	defer func() {
-		if rated > 0 {
-			b.assume(firstRated, "sections: rating [A] (blank in "+itoa(rated)+plural(rated, " row", " rows")+")", "that of the construction")
-		}
-	}()
 	for i := range b.t.sections {
 		r := &b.t.sections[i]
 		what := "section " + strconv.Quote(r.Name.Value)
@@ -409,9 +403,7 @@ func (b *builder) sections() {
 			Rating: r.Rating.Value, Emergency: r.Emergency.Value, Winter: r.Winter.Value}
 		if math.IsNaN(s.Rating) && !math.IsNaN(c.Rating) {
 			s.Rating = c.Rating
-			if rated++; rated == 1 {
-				firstRated = s.At
-			}
+			b.assumeMany(s.At, "sections: rating [A]", "that of the construction")
 		}
 		b.model.Sections = append(b.model.Sections, s)
 		b.join(link{kind: "section", name: s.Name, at: s.At, from: from, to: to, fromPhases: ps, toPhases: ps, perPhase: true, galvanic: true})

@@ -132,7 +132,7 @@ func (b *builder) loadAmount(r *loadRow, l *Load, energies []*energyRow, what st
 		return false
 	}
 	if !hasFactor && !r.Reactive.Given {
-		b.assume(r.Row.At, what+": power factor", "1")
+		b.assumeMany(r.Row.At, "loads: power factor", "1")
 	}
 	l.KVARPerKW = tan
 	want := WantMultiplier

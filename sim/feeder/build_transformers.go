@@ -42,7 +42,7 @@ func (b *builder) transformer(r *transformerRow) {
 	}
 	if !r.Exciting.Given {
 		t.Exciting = t.NoLoadLoss / (t.KVA * 1000)
-		b.assume(r.Row.At, what+": exciting current [%]", amount(100*t.Exciting)+" (the no-load loss alone)")
+		b.assumeMany(r.Row.At, "transformers: exciting current [%]", "that of the no-load loss alone")
 	} else if t.Exciting < t.NoLoadLoss/(t.KVA*1000)*(1-1e-9) {
 		b.warnings.Add(r.Exciting.At, "%s: exciting current %s %% is less than its loss part, %s %%; it is the magnitude and includes the loss", what, amount(100*t.Exciting), amount(100*t.NoLoadLoss/(t.KVA*1000)))
 	}

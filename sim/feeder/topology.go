@@ -351,9 +351,7 @@ func (b *builder) floating() {
 		if c.Connection == Wye {
 			tell(c.At, c.Node, "capacitor %q", c.Name)
 		}
-		if s := c.Control; s != nil && len(s.Phase) == 1 && s.Control == CapacitorVoltage {
-			tell(s.At, c.Node, "the control of capacitor %q, which names phase %s,", c.Name, s.Phase[0])
-		}
+		b.floatingControl(c)
 	}
 	for i := range m.Generators {
 		if m.Generators[i].Connection == Wye {
@@ -367,7 +365,37 @@ func (b *builder) floating() {
 	}
 }
 
-// sorted returns the indices 0..n−1 in the order of names.
+// floatingControl reports a control that would read a voltage to ground on a part
+// that nothing grounds.
+func (b *builder) floatingControl(c *Capacitor) {
+	s, m := c.Control, b.model
+	if s == nil {
+		return
+	}
+	grounded := m.Nodes[c.Node].Grounded
+	reads := s.Control == CapacitorVoltage || !Unknown(s.OverrideOn) || !Unknown(s.OverrideOff)
+	switch {
+	case !grounded && reads && len(s.Phase) != 2:
+		b.faults.Add(s.At, "the control of capacitor %q reads a voltage, but nothing grounds the part of the feeder at node %q: name a pair such as AB, or leave the override blank", c.Name, m.Nodes[c.Node].Name)
+	case len(s.Phase) == 1 && (!grounded || s.Watched != nil && !m.Nodes[b.watchedFrom(s.Watched)].Grounded):
+		b.faults.Add(s.At, "the control of capacitor %q names phase %s, but nothing grounds the part of the feeder that it reads; leave the phase blank", c.Name, s.Phase[0])
+	}
+}
+
+// watchedFrom is the node at which a watched element is measured.
+func (b *builder) watchedFrom(w *Watched) int {
+	switch w.Kind {
+	case "section":
+		return b.model.Sections[w.Index].From
+	case "switch":
+		return b.model.Switches[w.Index].From
+	case "transformer":
+		return b.model.Transformers[w.Index].From
+	}
+	return b.model.Regulators[w.Index].From
+}
+
+// sortedBy returns the indices 0..n−1 in the order of names.
 func sortedBy(n int, name func(int) string) []int {
 	out := make([]int, n)
 	for i := range out {

@@ -43,7 +43,11 @@ func TestToGroundWhereNothingGrounds(t *testing.T) {
 	wantFault(t, with(base, "feeder/capacitors.csv", "capacitor,node,phases,size [kvar]\ncap,shop,ABC,30\n"), "feeder/capacitors.csv:2", `capacitor "cap" stands to ground`)
 	wantFault(t, with(base, "feeder/generators.csv", "generator,node,phases,kind,rating [kVA],real [kW]\ng,shop,ABC,engine,5,5\n"), "feeder/generators.csv:2", `generator "g" stands to ground`)
 	wantFault(t, with(base, "feeder/capacitors.csv", "capacitor,node,phases,connection,size [kvar]\ncap,shop,ABC,delta,30\n",
-		"feeder/capacitor-settings.csv", "capacitor,control,phase,voltage on [V],voltage off [V]\ncap,voltage,B,118,124\n"), "feeder/capacitor-settings.csv:2", "names phase B")
+		"feeder/capacitor-settings.csv", "capacitor,control,phase,voltage on [V],voltage off [V]\ncap,voltage,B,118,124\n"), "feeder/capacitor-settings.csv:2", "name a pair such as AB")
+	wantFault(t, with(base, "feeder/capacitors.csv", "capacitor,node,phases,connection,size [kvar]\ncap,shop,ABC,delta,30\n",
+		"feeder/capacitor-settings.csv", "capacitor,control,watched section,phase,current on [A],current off [A]\ncap,current,s1,B,80,60\n"), "feeder/capacitor-settings.csv:2", "names phase B, but nothing grounds")
+	opened(t, with(base, "feeder/capacitors.csv", "capacitor,node,phases,connection,size [kvar]\ncap,shop,ABC,delta,30\n",
+		"feeder/capacitor-settings.csv", "capacitor,control,phase,voltage on [V],voltage off [V]\ncap,voltage,BC,118,124\n"), "")
 	floating := with(small(), "feeder/transformers.csv", strings.Replace(banks("Dd0"), "Dyn1", "Dd0", 1), "feeder/loads.csv", "", "feeder/generators.csv", "", "feeder/capacitors.csv", "", "feeder/capacitor-settings.csv", "")
 	wantFault(t, floating, "feeder/regulators.csv:2", `regulator "reg", connected in wye, stands to ground`)
 }
