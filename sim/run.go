@@ -4,6 +4,7 @@ import (
 	"context"
 	"fmt"
 	"math"
+	"strings"
 
 	"yearflow/devices"
 	"yearflow/profiles"
@@ -19,6 +20,10 @@ type Recorder interface {
 	Action(*results.Action) error
 	Step(*results.Step) error
 }
+
+// rounds is how often devices may act at one instant. Those of a settings sheet come to
+// rest after two; a control of the user's own may not, and is named then.
+const rounds = 1000
 
 // startUp is the longest event time of a start-up.
 const startUp = 24 * 3600 * devices.Second
@@ -71,7 +76,7 @@ func (e *Engine) StepAt(t int64) (int, bool) { return e.in.axis.Index(t) }
 func (e *Engine) settle(step int) (moving []string, actions int, err error) {
 	start, _ := e.in.axis.Bounds(step)
 	e.in.at(step, &e.input)
-	now := start
+	now, at := start, 0
 	for {
 		ok, err := e.solveExact()
 		if err != nil {
@@ -100,7 +105,10 @@ func (e *Engine) settle(step int) (moving []string, actions int, err error) {
 			if due <= now {
 				break
 			}
-			now = due
+			now, at = due, 0
+		}
+		if at++; at > rounds {
+			return nil, actions, e.restless(now)
 		}
 		for _, d := range e.devices {
 			if d.Due() <= now {
@@ -111,6 +119,18 @@ func (e *Engine) settle(step int) (moving []string, actions int, err error) {
 		e.takePositions()
 		e.keep()
 	}
+}
+
+// restless is the error of a run whose devices do not come to rest at an instant.
+func (e *Engine) restless(now devices.Time) error {
+	var names []string
+	for _, d := range e.devices {
+		if d.Due() <= now {
+			names = append(names, d.title())
+		}
+	}
+	return fmt.Errorf("%s acted %d times at %s and ask again: a control must never ask at the instant of its own action",
+		strings.Join(names, ", "), rounds, profiles.Format(now, e.in.axis.Zone))
 }
 
 func (d *device) title() string {
@@ -195,8 +215,8 @@ func (r *runner) step(step int) error {
 		e.anchored = false
 	}
 	r.record = results.Step{Start: start, End: end}
-	now := start
-	fresh := true
+	now, at := start, 0
+	fresh, seen := true, false
 	for {
 		if fresh {
 			ok, err := e.solveExact()
@@ -214,11 +234,15 @@ func (r *runner) step(step int) error {
 		if err := e.observe(now, now); err != nil {
 			return err
 		}
-		if now == start {
+		if !seen { // before anything moves at the step's beginning
+			seen = true
 			r.coarse.see(e)
 		}
 		due, turn := e.due(), e.nextSwitch(now)
 		if due <= now {
+			if at++; at > rounds {
+				return e.restless(now)
+			}
 			if err := r.act(now); err != nil {
 				return err
 			}
@@ -229,6 +253,7 @@ func (r *runner) step(step int) error {
 		if err := r.interval(now, next); err != nil {
 			return err
 		}
+		at = 0
 		if now = next; now >= end {
 			break
 		}
