@@ -40,16 +40,15 @@ func drawDistance(s *survey, st *style) (*page, Figure) {
 		fig.Finding = fmt.Sprintf("The lowest voltage is %s at %s, the highest %s at %s. (The run kept no voltages of single instants: each place shows its own worst.)",
 			pu(s.lowest[s.low]), low.worst, pu(s.highest[s.high]), high.worst)
 	default:
-		low.heading = "Lowest, " + on(s.At(s.low))
-		high.heading = "Highest, " + on(s.At(s.high))
+		low.heading = "Lowest, " + s.span.on(s.At(s.low))
+		high.heading = "Highest, " + s.span.on(s.At(s.high))
 		low.worst, high.worst = s.lowAt, s.highAt
 		fig.Finding = fmt.Sprintf("On %s the voltage falls to %s at %s%s; on %s it rises to %s at %s%s.",
-			on(s.At(s.low)), pu(s.lowest[s.low]), low.worst, s.howFar(low.worst),
-			on(s.At(s.high)), pu(s.highest[s.high]), high.worst, s.howFar(high.worst))
+			s.span.on(s.At(s.low)), pu(s.lowest[s.low]), low.worst, s.howFar(low.worst),
+			s.span.on(s.At(s.high)), pu(s.highest[s.high]), high.worst, s.howFar(high.worst))
 	}
 	fig.Alt = "Two panels of voltage against distance from the source, one line per phase: at the instant of the lowest and at that of the highest voltage. " + fig.Finding
 
-	p := st.newPage(275, fig.Title, fig.Finding, s.foot())
 	far := 0.0
 	for _, pl := range s.Places {
 		if !math.IsNaN(pl.DistanceKM) {
@@ -67,13 +66,23 @@ func drawDistance(s *survey, st *style) (*page, Figure) {
 		hi = append(hi, v)
 	}
 	vlo, vhi := s.voltageRange(lo, hi)
+	phases := map[string]bool{}
+	for _, v := range []map[string]float64{low.voltage, high.voltage} {
+		for name := range v {
+			if node, ph := splitPlace(name); !math.IsNaN(s.places[node].DistanceKM) {
+				phases[ph] = true
+			}
+		}
+	}
+	items := append(phaseKeys(sortedPhases(phases), phaseStyle), s.limitKeys(vlo, vhi)...)
+	more := keyLine * vg.Length(len(st.keyRows(items, 47))-1)
+	p := st.newPage(275+more, fig.Title, fig.Finding, s.foot())
 	gap := vg.Length(28)
 	full := vg.Rectangle{
-		Min: vg.Point{X: p.body.Min.X + 38, Y: p.body.Min.Y + 58},
+		Min: vg.Point{X: p.body.Min.X + 38, Y: p.body.Min.Y + 58 + more},
 		Max: vg.Point{X: p.body.Max.X - 34, Y: p.body.Max.Y - 40},
 	}
 	w := (full.Max.X - full.Min.X - gap) / 2
-	phases := map[string]bool{}
 	for i, pr := range []profile{low, high} {
 		r := full
 		r.Min.X += vg.Length(i) * (w + gap)
@@ -95,11 +104,9 @@ func drawDistance(s *survey, st *style) (*page, Figure) {
 		}
 		n.xAxis(linear(0, far*1.03, 5), "Distance from the source [km]")
 		n.label(n.bold(labelSize, black), n.rect.Min.X, n.rect.Max.Y+24, text.XLeft, text.YBottom, pr.heading)
-		s.profileLines(n, pr, phases)
+		s.profileLines(n, pr)
 	}
-	items := phaseKeys(sortedPhases(phases), phaseStyle)
-	both := p.panel(full, 0, 1, vlo, vhi)
-	both.keys(append(items, s.limitKeys(both)...), full.Min.X, full.Min.Y-46)
+	p.panel(full, 0, 1, vlo, vhi).keys(items, full.Min.X, full.Min.Y-46)
 	return p, fig
 }
 
@@ -127,7 +134,7 @@ func (s *survey) howFar(place string) string {
 
 // profileLines joins the ends of each element, phase by phase. Transformers to
 // another voltage are drawn thin: the drop inside them is not one of the line.
-func (s *survey) profileLines(n *panel, pr profile, seen map[string]bool) {
+func (s *survey) profileLines(n *panel, pr profile) {
 	type segment struct {
 		ph             string
 		x0, y0, x1, y1 float64
@@ -184,7 +191,6 @@ func (s *survey) profileLines(n *panel, pr profile, seen map[string]bool) {
 		width = vg.Points(1)
 	}
 	for _, g := range segments {
-		seen[g.ph] = true
 		st := phaseStyle(g.ph)
 		st.Width = width
 		if g.thin {
@@ -193,7 +199,6 @@ func (s *survey) profileLines(n *panel, pr profile, seen map[string]bool) {
 		n.add(line{[]float64{g.x0, g.x1}, []float64{g.y0, g.y1}, st})
 	}
 	for _, g := range lone {
-		seen[g.ph] = true
 		n.dot(n.x(g.x0), n.yIn(g.y0), 1.6, phaseStyle(g.ph).Color)
 	}
 	if v, ok := pr.voltage[pr.worst]; ok && !math.IsNaN(v) {
@@ -211,7 +216,7 @@ func (s *survey) profileLines(n *panel, pr profile, seen map[string]bool) {
 		}
 		t := n.bold(smallSize, black)
 		name := fit(t, pr.worst, n.width()/2)
-		box, side := labelBox(vg.Point{X: x, Y: y}, t.Width(name), nil, crowd, n.rect)
+		box, side, _ := labelBox(vg.Point{X: x, Y: y}, t.Width(name), nil, crowd, n.rect)
 		lx := box.Min.X
 		if side == text.XRight {
 			lx = box.Max.X

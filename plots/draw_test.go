@@ -58,6 +58,7 @@ func variants() map[string]invented {
 	add("ungrounded", func(g *invented) { g.ungrounded, g.end = true, at(2025, 4, 1) })
 	add("three-years", func(g *invented) { g.end, g.step, g.trunk = at(2028, 1, 1), 6*time.Hour, 6 })
 	add("nothing-solved", func(g *invented) { g.end, g.unsolvedRows = at(2025, 1, 3), 48 })
+	add("huge", func(g *invented) { g.trunk, g.end = 1200, g.start.Add(6*time.Hour) })
 	return v
 }
 

@@ -6,6 +6,7 @@ import (
 	"sort"
 
 	"gonum.org/v1/plot/text"
+	"gonum.org/v1/plot/vg"
 	"gonum.org/v1/plot/vg/draw"
 )
 
@@ -49,30 +50,29 @@ func drawDuration(s *survey, st *style) (*page, Figure) {
 	}
 	fig.Alt = "Duration curves: voltage against the share of time for which it is exceeded, one curve per phase for the lowest and one for the highest voltage. " + fig.Finding
 
-	p := st.newPage(250, fig.Title, fig.Finding, s.foot())
 	var all [][]float64
-	for _, c := range curves {
-		all = append(all, c.min, c.max)
-	}
-	lo, hi := s.voltageRange(all...)
-	n := p.panel(p.timeBody(58), 0, 100, lo, hi)
-	n.shadeLimits(s.limits)
-	n.voltageAxes(6)
-	n.xAxis(percentTicks(), "Share of time for which the voltage is exceeded")
 	var items []key
 	var names []string
 	for _, c := range curves {
-		style := phaseStyle(c.phase)
-		n.duration(c.max, style)
-		n.duration(c.min, style)
+		all = append(all, c.min, c.max)
 		if c.phase == "" {
-			items = append(items, key{line: style, text: "all phases"})
+			items = append(items, key{line: phaseStyle(""), text: "all phases"})
 		} else {
 			names = append(names, c.phase)
 		}
 	}
-	items = append(items, phaseKeys(names, phaseStyle)...)
-	items = append(items, s.limitKeys(n)...)
+	lo, hi := s.voltageRange(all...)
+	items = append(append(items, phaseKeys(names, phaseStyle)...), s.limitKeys(lo, hi)...)
+	more := keyLine * vg.Length(len(st.keyRows(items, 47))-1)
+	p := st.newPage(250+more, fig.Title, fig.Finding, s.foot())
+	n := p.panel(p.timeBody(58+more), 0, 100, lo, hi)
+	n.shadeLimits(s.limits)
+	n.voltageAxes(6)
+	n.xAxis(percentTicks(), "Share of time for which the voltage is exceeded")
+	for _, c := range curves {
+		n.duration(c.max, phaseStyle(c.phase))
+		n.duration(c.min, phaseStyle(c.phase))
+	}
 	n.tagCurves(curves)
 	n.keys(items, n.rect.Min.X, n.rect.Min.Y-46)
 	return p, fig

@@ -18,7 +18,7 @@ func (p *page) timeBody(bottom vg.Length) vg.Rectangle {
 }
 
 func drawEnvelope(s *survey, st *style) (*page, Figure) {
-	daily := s.span.days() > 62
+	daily := s.daily()
 	fig := Figure{Title: "Voltage envelope " + s.where + ": lowest and highest of each day"}
 	if !daily {
 		fig.Title = "Voltage envelope " + s.where + ": lowest and highest"
@@ -51,7 +51,7 @@ func drawEnvelope(s *survey, st *style) (*page, Figure) {
 	if daily {
 		items = append(items, key{fill: mix(white, sky, 0.9), text: "between daily means"})
 	}
-	items = append(items, s.limitKeys(n)...)
+	items = append(items, s.limitKeys(lo, hi)...)
 	n.keys(items, n.rect.Min.X, n.rect.Min.Y-32)
 	return p, fig
 }
@@ -81,15 +81,15 @@ func (s *survey) envelopeFinding() string {
 			widest, widestDay = hi-lo, d
 		}
 	}
-	day := s.span.start.AddDate(0, 0, widestDay).Format("2 Jan")
+	day := s.span.day(s.span.start.AddDate(0, 0, widestDay))
 	if days == 1 {
 		return fmt.Sprintf("The voltage %s stays between %s and %s, %s V apart on 120 V.", s.where, number(s.lowest[s.low], 3), pu(s.highest[s.high]), number(120*widest, 1))
 	}
 	if below+above == 0 {
-		return fmt.Sprintf("The voltage %s stays in %s on all %d days; the widest spread of a day is %s V on 120 V, on %s.", s.where, s.rangeWords, days, number(120*widest, 1), day)
+		return fmt.Sprintf("The voltage %s stays in %s on all %s days; the widest spread of a day is %s V on 120 V, on %s.", s.where, s.rangeWords, number(float64(days), 0), number(120*widest, 1), day)
 	}
-	return fmt.Sprintf("The voltage %s falls below %s on %d and rises above it on %d of %d days; the widest spread of a day is %s V on 120 V, on %s.",
-		s.where, s.rangeWords, below, above, days, number(120*widest, 1), day)
+	return fmt.Sprintf("The voltage %s falls below %s on %d and rises above it on %d of %s days; the widest spread of a day is %s V on 120 V, on %s.",
+		s.where, s.rangeWords, below, above, number(float64(days), 0), number(120*widest, 1), day)
 }
 
 // key is an entry of a legend: a line, a patch or a glyph, and its text.
@@ -104,23 +104,54 @@ type key struct {
 // height y.
 func (n *panel) keys(items []key, x, y vg.Length) {
 	t := n.text(labelSize, black)
+	for i, row := range n.keyRows(items, x) {
+		at := x
+		if row.wide {
+			at = pageMargin
+		}
+		for _, k := range items[row.from:row.to] {
+			ky := y - keyLine*vg.Length(i)
+			n.keyMark(k, at, ky)
+			n.label(t, at+24, ky, text.XLeft, text.YCenter, k.text)
+			at += 24 + t.Width(k.text) + keyGap
+		}
+	}
+}
+
+// keyLine is the height of a row of a legend, keyGap what stands between entries.
+const keyLine, keyGap = vg.Length(14), vg.Length(13)
+
+// keyRow is a row of a legend: items[from:to], from the page's margin on if wide.
+type keyRow struct {
+	from, to int
+	wide     bool
+}
+
+// keyRows breaks a legend that begins at x into rows that fit on the page.
+func (s *style) keyRows(items []key, x vg.Length) []keyRow {
+	t := s.text(labelSize, black)
+	width := func(k key) vg.Length { return 24 + t.Width(k.text) + keyGap }
 	total := vg.Length(0)
 	for _, k := range items {
-		total += 24 + t.Width(k.text) + 13
+		total += width(k)
 	}
-	if x+total-13 > pageWidth-pageMargin+1 {
+	limit := pageWidth - pageMargin + 1 + keyGap
+	wide := x+total > limit
+	if wide {
 		x = pageMargin
 	}
-	start := x
-	for _, k := range items {
-		w := 24 + t.Width(k.text) + 13
-		if x+w-13 > pageWidth-pageMargin+1 && x > start {
-			x, y = start, y-14
+	rows := []keyRow{{wide: wide}}
+	at := x
+	for i, k := range items {
+		last := &rows[len(rows)-1]
+		if at+width(k) > limit && i > last.from {
+			rows = append(rows, keyRow{from: i, wide: wide})
+			last, at = &rows[len(rows)-1], x
 		}
-		n.keyMark(k, x, y)
-		n.label(t, x+24, y, text.XLeft, text.YCenter, k.text)
-		x += w
+		last.to = i + 1
+		at += width(k)
 	}
+	return rows
 }
 
 func (n *panel) keyMark(k key, x, y vg.Length) {
@@ -137,11 +168,11 @@ func (n *panel) keyMark(k key, x, y vg.Length) {
 	}
 }
 
-// limitKeys names the shaded bands that a panel shows.
-func (s *survey) limitKeys(n *panel) []key {
+// limitKeys names the shaded bands that a panel from lo to hi shows.
+func (s *survey) limitKeys(lo, hi float64) []key {
 	l := s.limits
 	keys := []key{{fill: outsideA, text: "outside " + s.rangeWords}}
-	if n.plot.Y.Max > l.OuterHigh || n.plot.Y.Min < l.OuterLow {
+	if hi > l.OuterHigh || lo < l.OuterLow {
 		name := "outside B"
 		if s.Run.Limits.Own {
 			name = "outside the outer"

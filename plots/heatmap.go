@@ -20,7 +20,7 @@ func drawLowestYear(s *survey, st *style) (*page, Figure) {
 	case s.low < 0:
 		fig.Finding = "No step was solved, so there is no voltage to show."
 	default:
-		fig.Finding = fmt.Sprintf("The lowest voltage is %s at %s on %s; ", puVolts(s.lowest[s.low]), s.lowAt, on(s.At(s.low)))
+		fig.Finding = fmt.Sprintf("The lowest voltage is %s at %s on %s; ", puVolts(s.lowest[s.low]), s.lowAt, s.span.on(s.At(s.low)))
 		if below == 0 {
 			fig.Finding += "no judged place falls below " + s.rangeWords + "."
 		} else {
@@ -38,7 +38,7 @@ func drawHighestYear(s *survey, st *style) (*page, Figure) {
 	case s.high < 0:
 		fig.Finding = "No step was solved, so there is no voltage to show."
 	default:
-		fig.Finding = fmt.Sprintf("The highest voltage is %s at %s on %s; ", puVolts(s.highest[s.high]), s.highAt, on(s.At(s.high)))
+		fig.Finding = fmt.Sprintf("The highest voltage is %s at %s on %s; ", puVolts(s.highest[s.high]), s.highAt, s.span.on(s.At(s.high)))
 		if above == 0 {
 			fig.Finding += "no judged place rises above " + s.rangeWords + "."
 		} else {

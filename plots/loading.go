@@ -39,7 +39,7 @@ func drawLoading(s *survey, st *style) (*page, Figure) {
 		fig.Finding = "No element has both a rating and a flow, so no loading can be shown."
 	default:
 		r := rows[0]
-		fig.Finding = fmt.Sprintf("%s is loaded most, to %s of its %s %s on %s; ", element(r), percent(r.Percent), number(r.Rating, 0), unit(r), on(r.PeakTime))
+		fig.Finding = fmt.Sprintf("%s is loaded most, to %s of its %s %s on %s; ", element(r), percent(r.Percent), number(r.Rating, 0), unit(r), s.span.on(r.PeakTime))
 		switch over {
 		case 0:
 			fig.Finding += "no element exceeds its rating."

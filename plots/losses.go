@@ -43,7 +43,10 @@ func drawLosses(s *survey, st *style) (*page, Figure) {
 	if top >= 5000 {
 		divide, unit = 1000, "MWh"
 	}
-	_, hi := roundRange(0, math.Max(top/divide, 1e-3), 5)
+	if top == 0 {
+		top = 1
+	}
+	_, hi := roundRange(0, top/divide, 5)
 	n := p.panel(vg.Rectangle{
 		Min: vg.Point{X: p.body.Min.X + 44, Y: p.body.Min.Y + 42},
 		Max: vg.Point{X: p.body.Max.X - 8, Y: p.body.Max.Y - 23},
@@ -140,6 +143,9 @@ func (s *survey) lossesFinding(kwh [len(lossKinds)][]float64, cal calendar) stri
 		}
 	}
 	if total <= 0 {
+		if s.low < 0 {
+			return "No step was solved, so there are no losses to show."
+		}
 		return "There are no losses."
 	}
 	in := 0.0

@@ -78,6 +78,9 @@ func (s *survey) mapFinding(worst map[string]worstVoltage) string {
 		}
 	}
 	if low+high == 0 {
+		if s.low < 0 {
+			return "No step was solved, so there are no voltages to show."
+		}
 		return "No place with customers leaves its range."
 	}
 	txt := ""
@@ -174,6 +177,10 @@ func between(worst map[string]worstVoltage, a, b string) float64 {
 
 func (s *survey) mapNodes(n *panel, l layout, worst map[string]worstVoltage) {
 	names := sortedKeys(l.at)
+	size := 4.4
+	if len(names) > 1500 {
+		size = 2.4
+	}
 	k := sides{s.limits}
 	for _, out := range [...]bool{false, true} {
 		for _, name := range names {
@@ -185,7 +192,7 @@ func (s *survey) mapNodes(n *panel, l layout, worst map[string]worstVoltage) {
 			x, y := n.x(l.at[name][0]), n.y(l.at[name][1])
 			switch {
 			case outside:
-				n.triangle(x, y, 4.4, w.low, k.color(w.pu))
+				n.triangle(x, y, size, w.low, k.color(w.pu))
 			case len(names) <= 500:
 				c := missing
 				if ok {

@@ -39,12 +39,16 @@ func (s *survey) mapDevices(n *panel, l layout) (kinds []string) {
 		boxes = append(boxes, vg.Rectangle{Min: vg.Point{X: p.X - 5, Y: p.Y - 5}, Max: vg.Point{X: p.X + 5, Y: p.Y + 5}})
 	}
 	t := n.bold(smallSize, black)
+	room := vg.Rectangle{Min: n.body.Min, Max: vg.Point{X: n.rect.Max.X + 8, Y: n.body.Max.Y}}
 	for i, d := range devices {
 		if i >= mostLabels {
 			break
 		}
 		name := fit(t, d.name, 90)
-		box, ax := labelBox(spots[i], t.Width(name), boxes, crowd, n.rect)
+		box, ax, ok := labelBox(spots[i], t.Width(name), boxes, crowd, room)
+		if !ok {
+			continue // better no name than two on top of each other
+		}
 		boxes = append(boxes, box)
 		x := box.Min.X
 		if ax == text.XRight {
@@ -103,8 +107,12 @@ func (s *survey) crowd(n *panel, l layout) []vg.Point {
 	return pts
 }
 
-// labelBox chooses among places around a mark the one that covers least.
-func labelBox(at vg.Point, width vg.Length, boxes []vg.Rectangle, crowd []vg.Point, in vg.Rectangle) (vg.Rectangle, text.XAlignment) {
+// covered is the cost of a label on top of another one.
+const covered = 300
+
+// labelBox chooses among places around a mark the one that covers least. It is not
+// free where even that covers another label or leaves the page.
+func labelBox(at vg.Point, width vg.Length, boxes []vg.Rectangle, crowd []vg.Point, in vg.Rectangle) (box vg.Rectangle, side text.XAlignment, free bool) {
 	const h = vg.Length(11)
 	best, bestAlign, least := vg.Rectangle{}, text.XLeft, math.Inf(1)
 	for _, o := range [...]struct{ dx, dy vg.Length }{{8, 0}, {-8, 0}, {6, 10}, {-6, 10}, {6, -10}, {-6, -10}, {6, 20}, {-6, 20}, {6, -20}, {-6, -20}} {
@@ -115,10 +123,10 @@ func labelBox(at vg.Point, width vg.Length, boxes []vg.Rectangle, crowd []vg.Poi
 			ax = text.XRight
 		}
 		r.Max = vg.Point{X: r.Min.X + width, Y: r.Min.Y + h}
-		cost := math.Abs(float64(o.dy)) / 40
+		cost := math.Abs(float64(o.dy)) / 6
 		for _, b := range boxes {
 			if r.Min.X < b.Max.X && b.Min.X < r.Max.X && r.Min.Y < b.Max.Y && b.Min.Y < r.Max.Y {
-				cost += 300
+				cost += covered
 			}
 		}
 		for _, p := range crowd {
@@ -126,14 +134,14 @@ func labelBox(at vg.Point, width vg.Length, boxes []vg.Rectangle, crowd []vg.Poi
 				cost++
 			}
 		}
-		if r.Min.X < in.Min.X-14 || r.Max.X > in.Max.X+8 || r.Min.Y < in.Min.Y-2 || r.Max.Y > in.Max.Y+2 {
-			cost += 200
+		if r.Min.X < in.Min.X || r.Max.X > in.Max.X+2 || r.Min.Y < in.Min.Y-2 || r.Max.Y > in.Max.Y+2 {
+			cost += 1000
 		}
 		if cost < least {
 			best, bestAlign, least = r, ax, cost
 		}
 	}
-	return best, bestAlign
+	return best, bestAlign, least < covered
 }
 
 // deviceMark draws the mark of a kind of device: shapes tell them apart in grey too.

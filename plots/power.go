@@ -96,6 +96,9 @@ func (s *survey) powerPanel(p *page, r vg.Rectangle, name string, ticks int, edg
 	if math.Max(-lo, hi) >= 2000 {
 		divide, unit = 1000, m
 	}
+	if lo == hi {
+		hi = 1
+	}
 	lo, hi = roundRange(lo/divide, hi/divide, ticks)
 	n := p.panel(r, s.span.lo(), s.span.hi(), lo, hi)
 	n.gaps(edges, series[0].mean)
@@ -127,7 +130,7 @@ func (s *survey) powerFinding() string {
 		return "No step was solved, so there is no power to show."
 	}
 	factor := sum / float64(rows) / peak
-	text := fmt.Sprintf("The feeder peaks at %s on %s", power(peak), on(s.At(at)))
+	text := fmt.Sprintf("The feeder peaks at %s on %s", power(peak), s.span.on(s.At(at)))
 	if peak > 0 && rows > 1 {
 		text += fmt.Sprintf(", with a load factor of %s", number(factor, 2))
 	}

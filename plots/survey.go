@@ -300,7 +300,7 @@ func (s *survey) foot() foot {
 // rows to a bin as make no more than columns bins.
 func (s *survey) bins(columns int) []float64 {
 	var edges []float64
-	if s.span.days() > 62 {
+	if s.daily() {
 		edges = append(edges, s.span.lo())
 		for m := midnight(s.span.start).AddDate(0, 0, 1); m.Before(s.span.end); m = m.AddDate(0, 0, 1) {
 			edges = append(edges, seconds(m))
@@ -401,4 +401,9 @@ func (s *survey) unsolved() string {
 		return ""
 	}
 	return fmt.Sprintf(" Grey: %s without a valid solution (low or unsolved).", count(n, "row", "rows"))
+}
+
+// daily tells whether series in time are shown by the day.
+func (s *survey) daily() bool {
+	return s.span.days() > 62 && s.Steps.RowLength <= 24*int64(time.Hour)
 }

@@ -152,7 +152,7 @@ func drawTaps(s *survey, st *style) (*page, Figure) {
 	items := phaseKeys(sortedPhases(phases), tapStyle)
 	if manyRows(s.Devices.Time, edges) && len(regulators) > 0 {
 		items[0].text += " (daily mean)"
-		if s.span.days() <= 62 {
+		if !s.daily() {
 			items[0].text = strings.TrimSuffix(items[0].text, "(daily mean)") + "(mean)"
 		}
 		items = append(items, key{fill: color.NRGBA{0xd9, 0xd9, 0xd9, 0xff}, text: "range of all phases"})

@@ -112,10 +112,10 @@ func (s span) timeTicks(t text.Style, width vg.Length) []tick {
 		months := d / 30.4
 		for _, every := range []int{1, 2, 3, 6, 12, 24, 60, 120} {
 			label := "Jan"
-			if every >= 12 {
+			if s.years() {
 				label = "2025"
 			}
-			if per(months/float64(every)) > t.Width(label)+5 || every == 120 {
+			if per(months/float64(every)) > t.Width(label)+8 || every == 120 {
 				return s.monthTicks(every)
 			}
 		}
@@ -144,10 +144,13 @@ func (s span) monthTicks(every int) []tick {
 		next := m.AddDate(0, every, 0)
 		a, b := math.Max(seconds(m), s.lo()), math.Min(seconds(next), s.hi())
 		k := tick{at: a, grid: m.After(s.start), bare: m.Before(s.start), label: m.Format("Jan"), mid: (a + b) / 2}
-		if every >= 12 {
+		if every > 1 {
+			k.mid = 0 // the name is that of the month that begins here
+		}
+		if m.Month() == time.January && s.years() {
 			k.label = m.Format("2006")
 		}
-		if b-a < 0.5*(seconds(next)-seconds(m)) {
+		if every == 1 && b-a < 0.5*(seconds(next)-seconds(m)) {
 			k.label = "" // a stub of a month has no room for its name
 		}
 		ticks = append(ticks, k)

@@ -14,8 +14,19 @@ func puVolts(v float64) string {
 	return fmt.Sprintf("%s p.u. (%s V on 120 V)", number(v, 3), number(120*v, 1))
 }
 
-// on prints a local instant in a sentence: "14 Jan at 18:00".
-func on(t time.Time) string { return t.Format("2 Jan") + " at " + t.Format("15:04") }
+// on prints a local instant in a sentence: "14 Jan at 18:00", with the year where the
+// run has several.
+func (s span) on(t time.Time) string { return s.day(t) + " at " + t.Format("15:04") }
+
+func (s span) day(t time.Time) string {
+	if s.years() {
+		return t.Format("2 Jan 2006")
+	}
+	return t.Format("2 Jan")
+}
+
+// years tells whether the span touches more than one calendar year.
+func (s span) years() bool { return s.start.Year() != s.end.Add(-time.Nanosecond).Year() }
 
 // hours prints a number of hours with the figures that matter.
 func hours(h float64) string {
