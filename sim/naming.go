@@ -43,13 +43,11 @@ func (n *naming) find(name string, at tables.Pos, units ...string) *profiles.Ser
 }
 
 func (n *naming) hint(name string) string {
-	if near := n.set.Suggest(name); near != "" {
-		return ": did you mean \"" + near + "\"?"
-	}
-	if len(n.set.Names()) == 0 {
+	names := n.set.Names()
+	if len(names) == 0 {
 		return ": the study reads no profiles; [[profiles]] with files = [\"profiles/*.csv\"] in study.toml names their files"
 	}
-	return "; there are " + some(n.set.Names())
+	return tables.Hint(name, names)
 }
 
 // cell returns the cell in which a row names a profile. A case may have put the name
@@ -108,12 +106,3 @@ func unmatched(fsys fs.FS, blocks []profiles.Block) (odd tables.Faults) {
 
 // list joins units as they stand in a header.
 func list(units []string) string { return "[" + strings.Join(units, "] or [") + "]" }
-
-// some joins the first names of a list.
-func some(names []string) string {
-	const most = 8
-	if len(names) <= most {
-		return strings.Join(names, ", ")
-	}
-	return strings.Join(names[:most], ", ") + " and others"
-}

@@ -17,10 +17,10 @@ func TestProfileNamesAreToldAtTheirCell(t *testing.T) {
 	const study = "[period]\nstart = 2025-01-01\nend = 2025-01-02\nstep = \"1h\"\nzone = \"UTC\"\n[[profiles]]\nfiles = [\"p/*.csv\"]\nrepeat = \"day\"\n"
 	const loads = "load,node,phases,profile,real [kW]\nshop,sub,ABC,day,10\nmill,sub,ABC,day,10\n"
 	for _, tt := range []struct{ name, file, text, caseName, want string }{
-		{"load", "feeder/loads.csv", strings.Replace(loads, "mill,sub,ABC,day", "mill,sub,ABC,daay", 1), "", `feeder/loads.csv:3:4: no profile named "daay": did you mean "day"?`},
-		{"source of three phases", "feeder/source.csv", "node,nominal [kV],voltage profile\nsub,12.47,grid\n", "", `feeder/source.csv:2:3: no profile named "grid"; there are day, air`},
+		{"load", "feeder/loads.csv", strings.Replace(loads, "mill,sub,ABC,day", "mill,sub,ABC,dya", 1), "", `feeder/loads.csv:3:4: no profile named "dya"; did you mean "day"?`},
+		{"source of three phases", "feeder/source.csv", "node,nominal [kV],voltage profile\nsub,12.47,grid\n", "", `feeder/source.csv:2:3: no profile named "grid"; there are: air, day`},
 		{"source of another kind", "feeder/source.csv", "node,nominal [kV],voltage profile\nsub,12.47,air\n", "", `feeder/source.csv:2:3: profile "air" is in [degC] (p/a.csv:1:3): here it must be in [pu] or [V]`},
-		{"case", "cases/new/loads.csv", "load,profile\nmill,daay\n", "new", `cases/new/loads.csv:2:2: no profile named "daay": did you mean "day"?`},
+		{"case", "cases/new/loads.csv", "load,profile\nmill,dya\n", "new", `cases/new/loads.csv:2:2: no profile named "dya"; did you mean "day"?`},
 		{"price", "study.toml", study + "[prices]\nenergy = \"air\"\n", "", `study.toml:10:1: profile "air" is in [degC] (p/a.csv:1:3): here it must be in [USD/kWh]`},
 		{"no file", "study.toml", strings.Replace(study, "p/*", "q/*", 1), "", `feeder/loads.csv:2:4: no profile named "day": the study reads no profiles; [[profiles]] with files = ["profiles/*.csv"] in study.toml names their files
 feeder/loads.csv:3:4: no profile named "day": the study reads no profiles; [[profiles]] with files = ["profiles/*.csv"] in study.toml names their files`},
