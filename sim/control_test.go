@@ -11,6 +11,7 @@ import (
 
 	"yearflow/devices"
 	"yearflow/sim"
+	"yearflow/sim/feeder"
 	"yearflow/sim/results"
 )
 
@@ -161,6 +162,59 @@ func TestRestlessControl(t *testing.T) {
 		e := prepare(t, f, "", sim.Options{Controls: map[string]sim.Controller{"R.A": &restless{}}})
 		if _, err := e.Run(context.Background()); err == nil || !strings.Contains(err.Error(), "R.A") {
 			t.Errorf("%s: %v, want an error that names R.A", start, err)
+		}
+	}
+}
+
+// A control of one's own is given to one device by its name: a bank's name is that of a
+// device only where the bank has one.
+func TestControlsByName(t *testing.T) {
+	build := func(ganged string, names ...string) ([]string, error) {
+		f := folder(inputs{step: time.Hour, steps: 1, volts: []float64{117}},
+			"regulators.csv", "regulator,from,to,phases,ganged,pt ratio,ct primary [A]\nR,S,X,ABC,"+ganged+",60,100\n",
+			"regulator-settings.csv", "regulator,phase,set [V],bandwidth [V],delay [s]\nR,all,120,2,30\n",
+			"capacitors.csv", "capacitor,node,phases,size [kvar]\nC,X,ABC,100\n")
+		st, err := feeder.Open(f, "")
+		if err != nil {
+			t.Fatal(err)
+		}
+		controls, spies := map[string]sim.Controller{}, map[string]*spy{}
+		for _, n := range names {
+			spies[n] = &spy{}
+			controls[n] = spies[n]
+		}
+		e, err := sim.Prepare(st, sim.Options{Controls: controls})
+		if err != nil {
+			return nil, err
+		}
+		w, _ := attend(t, e)
+		for n, s := range spies {
+			if len(s.seen) == 0 {
+				t.Errorf("%s was not asked", n)
+			}
+		}
+		return w.actions, nil
+	}
+	for _, tt := range []struct {
+		ganged  string
+		names   []string
+		actions int // of those that keep their settings sheet, three each
+		refused bool
+	}{
+		{"no", []string{"R.A", "R.C", "C"}, 3, false},
+		{"yes", []string{"R"}, 0, false},
+		{"yes", []string{"R.A", "C"}, 0, false},
+		{"no", []string{"R"}, 0, true}, // which of the three?
+		{"yes", []string{"R.B"}, 0, true},
+		{"no", []string{"C."}, 0, true},
+		{"no", []string{"Q"}, 0, true},
+	} {
+		actions, err := build(tt.ganged, tt.names...)
+		if (err != nil) != tt.refused || len(actions) != tt.actions {
+			t.Errorf("ganged %s, %q: %d actions and error %v", tt.ganged, tt.names, len(actions), err)
+		}
+		if err != nil && !strings.Contains(err.Error(), "R.A") {
+			t.Errorf("%v does not name the devices", err)
 		}
 	}
 }

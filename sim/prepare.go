@@ -159,30 +159,38 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 
 func (e *Engine) has(name string) bool {
 	for _, d := range e.devices {
-		if d.Name == name || d.Name+"."+d.Phase == name {
+		if d.title() == name || d.Name == name && e.alone(d.Device) {
 			return true
 		}
 	}
 	return false
 }
 
+// alone tells whether a device is all of its bank, so that the bank's name means it.
+func (e *Engine) alone(d results.Device) bool {
+	if d.Kind == results.CapacitorDevice {
+		return true
+	}
+	r := &e.net.Model.Regulators[d.Index]
+	return r.Ganged || len(r.Units) == 1
+}
+
 func (e *Engine) names() string {
 	var out []string
 	for _, d := range e.devices {
-		n := d.Name
-		if d.Phase != "" {
-			n += "." + d.Phase
-		}
-		out = append(out, n)
+		out = append(out, d.title())
 	}
 	return strings.Join(out, ", ")
 }
 
-func own(o Options, d results.Device) Controller {
-	if c, ok := o.Controls[d.Name+"."+d.Phase]; ok {
+func (e *Engine) own(o Options, d results.Device) Controller {
+	if c, ok := o.Controls[d.Name+"."+d.Phase]; ok && d.Phase != "" {
 		return c
 	}
-	return o.Controls[d.Name]
+	if e.alone(d) {
+		return o.Controls[d.Name]
+	}
+	return nil
 }
 
 // ns converts seconds to the nanoseconds of event time.
@@ -251,7 +259,7 @@ func (e *Engine) regulator(i int, o Options) {
 			d.tap.to = at[unit.Pair[1]]
 		}
 		d.tap.leaving = e.leaving(i, unit.Phase)
-		d.Controller = own(o, d.Device)
+		d.Controller = e.own(o, d.Device)
 		if d.Controller == nil {
 			d.Controller = &tapControl{sheet, devices.TapState{Position: e.state.Taps[first+u]}}
 		}
@@ -297,7 +305,7 @@ func (e *Engine) capacitor(i int, o Options) {
 			TimeOn: ns(s.TimeOn), TimeOff: ns(s.TimeOff), Weekdays: s.Weekdays, Zone: e.Study.Settings.Period.Zone,
 			Delay: ns(s.Delay), Lockout: ns(s.Lockout), DailyLimit: s.DailyLimit, Rating: e.watchedRating(s.Watched)}
 	}
-	d.Controller = own(o, d.Device)
+	d.Controller = e.own(o, d.Device)
 	if d.Controller == nil {
 		d.Controller = &capacitorControl{sheet, devices.CapacitorState{Closed: c.Closed}}
 	}
