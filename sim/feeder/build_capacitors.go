@@ -34,6 +34,9 @@ func (b *builder) stand(node, phases, connection tables.Text, what string) (n in
 	}
 	for _, p := range ps {
 		if !has(b.model.Nodes[n].Phases, p) {
+			if b.torn {
+				return n, c, nil, nil, false // the row that is missing may bring the phase
+			}
 			b.faults.Add(phases.At, "%s: node %q has no phase %s; it has %s", what, node.Value, p, word(b.model.Nodes[n].Phases))
 			return n, c, nil, nil, false
 		}

@@ -68,6 +68,27 @@ func TestIslandsAndStrayPhases(t *testing.T) {
 	wantFault(t, with(small(), "feeder/loads.csv", "load,node,phases,real [kW]\nl,n3,A,5\n"), "feeder/loads.csv:2:3", `load "l": node "n3" has no phase A; it has B`)
 }
 
+// A section that is a fault itself leaves its nodes without phases; that is not told.
+func TestFaultOfASectionIsToldOnce(t *testing.T) {
+	for _, tt := range []struct{ old, new, want string }{
+		{"n1,n2,ABC", "n1,,ABC", "feeder/sections.csv:2:3: column to: the cell is blank"},
+		{"n1,n2,ABC", "n1,n2,ABX", `feeder/sections.csv:2:4: section "s1": phases "ABX": want some of A, B, C`},
+		{"5280", "52x", `feeder/sections.csv:2:5: column length [ft]: want a number, got "52x"`},
+		{"phases", "phase", `feeder/sections.csv:1:4: unknown column "phase"; did you mean "phases"?`},
+	} {
+		_, err := Open(with(small(), "feeder/sections.csv", strings.Replace(string(small()["feeder/sections.csv"].Data), tt.old, tt.new, 1)), "")
+		if err == nil || !strings.Contains(err.Error(), tt.want) {
+			t.Errorf("want %s, got %v", tt.want, err)
+			continue
+		}
+		for _, line := range strings.Split(err.Error(), "\n") {
+			if !strings.HasPrefix(line, "feeder/sections.csv") {
+				t.Errorf("%s: it is told again: %s", tt.want, line)
+			}
+		}
+	}
+}
+
 func TestLowSideOfAUnitAcrossAPair(t *testing.T) {
 	table := "transformer,from,to,phases,rating [kVA],high [kV],low [kV],connection\nsub,grid,bus,ABC,10000,69,12.47,Dyn1\npole,n2,house,AB,25,12.47,0.24,1ph\n"
 	load := func(phases, connection string) string {
