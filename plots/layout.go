@@ -7,10 +7,9 @@ import (
 
 // layout is where the nodes stand in a plane; the unit is km.
 type layout struct {
-	at    map[string][2]float64
-	tree  bool // no coordinates: x is the distance along the feeder, y only spreads the branches
-	notes int  // nodes without coordinates of their own, put beside their neighbour
-	km    bool // lengths in x mean something
+	at   map[string][2]float64
+	tree bool // no coordinates: x is the distance along the feeder, y only spreads the branches
+	km   bool // lengths in x mean something
 }
 
 // place lays the feeder out by its coordinates, or as a tree where there are none.
@@ -51,7 +50,6 @@ func (s *survey) place() layout {
 			for _, k := range w.near[i] {
 				if xy, ok := l.at[w.names[k]]; ok {
 					l.at[w.names[i]] = xy
-					l.notes++
 					again = true
 					break
 				}

@@ -1,6 +1,7 @@
 package plots
 
 import (
+	"image/color"
 	"math"
 
 	"gonum.org/v1/plot/text"
@@ -115,12 +116,15 @@ const covered = 300
 func labelBox(at vg.Point, width vg.Length, boxes []vg.Rectangle, crowd []vg.Point, in vg.Rectangle) (box vg.Rectangle, side text.XAlignment, free bool) {
 	const h = vg.Length(11)
 	best, bestAlign, least := vg.Rectangle{}, text.XLeft, math.Inf(1)
-	for _, o := range [...]struct{ dx, dy vg.Length }{{8, 0}, {-8, 0}, {6, 10}, {-6, 10}, {6, -10}, {-6, -10}, {6, 20}, {-6, 20}, {6, -20}, {-6, -20}} {
+	for _, o := range [...]struct{ dx, dy vg.Length }{{8, 0}, {-8, 0}, {6, 10}, {-6, 10}, {6, -10}, {-6, -10}, {0, 13}, {0, -13}, {6, 20}, {-6, 20}, {6, -20}, {-6, -20}, {0, 24}, {0, -24}} {
 		r := vg.Rectangle{Min: vg.Point{X: at.X + o.dx, Y: at.Y + o.dy - h/2}}
 		ax := text.XLeft
-		if o.dx < 0 {
+		switch {
+		case o.dx < 0:
 			r.Min.X -= width
 			ax = text.XRight
+		case o.dx == 0:
+			r.Min.X -= width / 2
 		}
 		r.Max = vg.Point{X: r.Min.X + width, Y: r.Min.Y + h}
 		cost := math.Abs(float64(o.dy)) / 6
@@ -170,9 +174,7 @@ func (p *page) deviceMark(kind string, x, y vg.Length) {
 }
 
 // polygon is a regular one of the given number of corners.
-func (p *page) polygon(x, y vg.Length, r float64, corners int, turn float64, fill interface {
-	RGBA() (r, g, b, a uint32)
-}, rim draw.LineStyle) {
+func (p *page) polygon(x, y vg.Length, r float64, corners int, turn float64, fill color.Color, rim draw.LineStyle) {
 	pts := make([]vg.Point, 0, corners+1)
 	for i := range corners {
 		a := turn + 2*math.Pi*float64(i)/float64(corners)

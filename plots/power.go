@@ -3,6 +3,7 @@ package plots
 import (
 	"fmt"
 	"math"
+	"strings"
 
 	"gonum.org/v1/plot/text"
 	"gonum.org/v1/plot/vg"
@@ -89,7 +90,7 @@ func (s *survey) powerPanel(p *page, r vg.Rectangle, name string, ticks int, edg
 		}
 	}
 	divide, k, m := 1.0, "kW", "MW"
-	if name[0] == 'R' && name[2] == 'a' && name[3] == 'c' {
+	if strings.HasPrefix(name, "Reactive") {
 		k, m = "kvar", "Mvar"
 	}
 	unit := k
