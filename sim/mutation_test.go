@@ -308,8 +308,8 @@ func mentions(text, name string) bool {
 	if strings.Contains(text, strconv.Quote(name)) {
 		return true
 	}
-	if len(name) < 2 {
-		return false
+	if len(name) < 2 { // only in a list
+		return regexp.MustCompile(`(: |, | and )` + regexp.QuoteMeta(name) + `(,|;| and |$)`).MatchString(text)
 	}
 	return regexp.MustCompile(`(^|[^\w.])` + regexp.QuoteMeta(name) + `($|[^\w])`).MatchString(text)
 }
@@ -338,14 +338,14 @@ func (m mutation) judge(out outcome, base map[string]complex128) string {
 // of its row.
 func (m mutation) named(faults tables.Faults) string {
 	_, numeric := strconv.ParseFloat(m.old, 64)
-	place := fmt.Sprintf("%s:%d:", m.table.file, m.line())
+	place := regexp.MustCompile(fmt.Sprintf(`%s:%d\b`, regexp.QuoteMeta(m.table.file), m.line()))
 	here, column, related := false, false, false
 	for _, f := range faults {
 		if f.Pos.File == m.table.file && f.Pos.Line == m.line() {
 			here = true
 			column = column || f.Pos.Column == m.col+1
 		}
-		related = related || strings.Contains(f.Text, place) || mentions(f.Text, m.old) || mentions(f.Text, m.new) || mentions(f.Text, m.key())
+		related = related || place.MatchString(f.Text) || mentions(f.Text, m.old) || mentions(f.Text, m.new) || mentions(f.Text, m.key())
 	}
 	if numeric == nil && m.row > 0 && (m.kind == "text" || m.kind == "NaN") && !column {
 		return "a number was replaced by a word, and no fault names the cell:\n" + faults.Error()
@@ -361,22 +361,18 @@ func (m mutation) named(faults tables.Faults) string {
 }
 
 // follows tells of consequences that are reported where they are seen and not where they
-// come from: what hangs on a misnamed end is cut off from the source, what hangs on a
-// phase that was taken away lacks it at the same node, and a construction cannot be
-// computed from its spacing.
+// come from: what hangs on a misnamed end is cut off from the source (of a long list
+// the first names are told), and what hangs on a phase that was taken away lacks it at
+// the same node.
 func (m mutation) follows(faults tables.Faults) bool {
 	for _, f := range faults {
 		switch m.name() {
-		case "source", "sections", "switches", "transformers", "regulators":
-			if strings.HasPrefix(f.Text, "no path leads from a source to: ") && slices.Contains([]string{"node", "from", "to"}, m.column()) {
+		case "sections", "switches", "transformers", "regulators":
+			if strings.HasPrefix(f.Text, "no path leads from a source to: ") && strings.Contains(f.Text, " more") && slices.Contains([]string{"node", "from", "to"}, m.column()) {
 				return true
 			}
 			ends := m.table.rows[m.row][1:3]
 			if m.column() == "phases" && strings.Contains(f.Text, "but no path leads from there to phase") && (mentions(f.Text, ends[0]) || mentions(f.Text, ends[1])) {
-				return true
-			}
-		case "spacings", "conductors":
-			if f.Pos.File == "feeder/constructions.csv" {
 				return true
 			}
 		}

@@ -225,7 +225,7 @@ func (b *builder) spacingNames() []string {
 // computed reports what package conductor finds impossible, at the row.
 func (b *builder) computed(r *constructionRow, m conductor.Matrices, err error) conductor.Matrices {
 	if err != nil {
-		b.faults.Add(r.Row.At, "construction %q: %v", r.Name.Value, joined(err))
+		b.faults.Add(r.Row.At, "construction %q on spacing %q: %v", r.Name.Value, r.Spacing.Value, joined(err))
 	}
 	return m
 }

@@ -121,8 +121,14 @@ func (b *builder) connected() bool {
 			members[g] = append(members[g], i)
 		}
 	}
+	var served []int
+	for i := range n {
+		if fed[group.of(i)] {
+			served = append(served, i)
+		}
+	}
 	for _, g := range order {
-		b.island(members[g])
+		b.island(members[g], served)
 	}
 	if len(order) > 0 {
 		return false
@@ -131,7 +137,9 @@ func (b *builder) connected() bool {
 	return b.strayPhases(reached)
 }
 
-func (b *builder) island(nodes []int) {
+// island reports nodes that no source reaches. Where it is most of the feeder, the slip
+// is more likely in the few names that are served: they are told too.
+func (b *builder) island(nodes, served []int) {
 	at := b.model.Nodes[nodes[0]].At
 	var names []string
 	for _, i := range nodes {
@@ -155,6 +163,13 @@ func (b *builder) island(nodes []int) {
 			hint = fmt.Sprintf("; %s is open", l)
 			break
 		}
+	}
+	if len(served) > 0 && len(served) < len(nodes) && len(served) <= 5 {
+		var few []string
+		for _, i := range served {
+			few = append(few, b.model.Nodes[i].Name)
+		}
+		hint += fmt.Sprintf("; a source (%s) reaches only: %s", b.model.Sources[0].At, strings.Join(few, ", "))
 	}
 	b.faults.Add(at, "no path leads from a source to: %s%s%s", strings.Join(names, ", "), more, hint)
 }

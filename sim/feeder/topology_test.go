@@ -57,6 +57,8 @@ func TestIslandsAndStrayPhases(t *testing.T) {
 	wantFault(t, with(small(), "feeder/sections.csv", sections+"s8,x1,x2,ABC,100,trunk\ns9,x2,x3,A,100,trunk\n"), "feeder/sections.csv:4:2", "no path leads from a source to: x1, x2, x3")
 	wantFault(t, with(small(), "feeder/sections.csv", sections+"s9,x1,x2,A,100,trunk\n", "feeder/switches.csv", "switch,from,to,phases,state\ntie,n2,x1,ABC,open\n"),
 		"feeder/sections.csv:4", `no path leads from a source to: x1, x2; switch "tie" is open`)
+	// A misspelt source cuts off everything: the slip is among the few names it reaches.
+	wantFault(t, with(small(), "feeder/source.csv", "node,nominal [kV]\ngird,69\n"), "feeder/", "no path leads from a source to: bus, grid, house, n1, n2, n3; a source (feeder/source.csv:2) reaches only: gird")
 	// n3 hangs on phase B alone; a lateral behind it asks for C. It is told once.
 	fsys := with(small(), "feeder/sections.csv", sections+"s3,n3,n4,BC,100,trunk\ns4,n4,n5,C,100,trunk\n")
 	wantFault(t, fsys, "feeder/sections.csv:4", `section "s3" has phase C at node "n3", but no path leads from there to phase C of a source; a source reaches B there`)
