@@ -141,7 +141,7 @@ func branches(net *network.Network, node int, c feeder.Connection, phases []feed
 		return out
 	}
 	for _, p := range phases {
-		out = append(out, powerflow.Injection{From: at[p], To: network.Ground, Nominal: ll / sqrt3})
+		out = append(out, powerflow.Injection{From: at[p], To: network.Ground, Nominal: net.Unknowns[at[p]].Nominal})
 	}
 	return out
 }

@@ -4,6 +4,7 @@ import (
 	"math"
 	"math/cmplx"
 
+	"yearflow/sim/feeder"
 	"yearflow/sim/network"
 	"yearflow/sim/results"
 )
@@ -31,8 +32,8 @@ func (e *Engine) Voltages() []VoltageRow {
 // FlowRow is what one element carries at its from end, and what it loses.
 type FlowRow struct {
 	Kind, Name, From, To string
-	Amperes              [3]float64 // by phase; NaN where it has none
-	KW, KVAR             float64    // into its from end
+	Amperes              [feeder.PhaseCount]float64 // by phase; NaN where it has none
+	KW, KVAR             float64                    // into its from end
 	LossKW               float64
 	Taps                 []int // of a regulator
 }

@@ -150,8 +150,11 @@ func (c *console) printInstant(out io.Writer, e *sim.Engine, in *sim.Instant, vo
 	nodes.write(out)
 	fmt.Fprintln(out)
 	flows := sheet{left: 4}
-	flows.add("element", "kind", "from", "to", "A [A]", "B [A]", "C [A]", "kW", "kvar", "loss [kW]", "taps")
+	flows.add("element", "kind", "from", "to", "A or 1 [A]", "B or 2 [A]", "C [A]", "kW", "kvar", "loss [kW]", "taps")
 	for _, f := range e.Flows() {
+		if math.IsNaN(f.Amperes[0]) && math.IsNaN(f.Amperes[1]) && math.IsNaN(f.Amperes[2]) {
+			f.Amperes[0], f.Amperes[1] = f.Amperes[3], f.Amperes[4] // legs
+		}
 		taps := strings.Trim(fmt.Sprint(f.Taps), "[]")
 		flows.add(f.Name, f.Kind, f.From, f.To, cell(f.Amperes[0], 4), cell(f.Amperes[1], 4), cell(f.Amperes[2], 4), cell(f.KW, 4), cell(f.KVAR, 4), cell(f.LossKW, 4), taps)
 	}

@@ -29,6 +29,9 @@ func (b *builder) stand(node, phases, connection tables.Text, what string) (n in
 		b.faults.Add(phases.At, "%s: %v", what, err)
 		return n, c, nil, nil, false
 	}
+	if c == Wye && len(ps) == 2 && ps[0].Leg() {
+		c, pairs = Delta, []Pair{{Leg1, Leg2}} // across both legs
+	}
 	if !ok || len(b.model.Nodes[n].Phases) == 0 {
 		return n, c, nil, nil, false
 	}
@@ -69,6 +72,10 @@ func (b *builder) capacitors() {
 		what := "capacitor " + strconv.Quote(r.Name.Value)
 		n, c, ps, pairs, ok := b.stand(r.Node, r.Phases, r.Connection, what)
 		if !ok {
+			continue
+		}
+		if len(ofPairs(pairs)) > 0 && ofPairs(pairs)[0].Leg() || len(ps) > 0 && ps[0].Leg() {
+			b.faults.Add(r.Phases.At, "%s: a capacitor stands on phases, not on the legs of a secondary", what)
 			continue
 		}
 		k := Capacitor{Name: r.Name.Value, At: r.Row.At, Node: n, Phases: ps, Connection: c, Pairs: pairs, KVAR: r.Size.Value,

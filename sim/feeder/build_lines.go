@@ -144,7 +144,7 @@ func (b *builder) constructions() {
 		case "concentric neutral", "tape shield":
 			b.cable(r, &c, lib)
 		case "triplex":
-			b.faults.Add(r.Kind.At, "construction %q: triplex is not yet supported: centre-tapped services come with a later version", r.Name.Value)
+			b.triplex(r, &c, lib)
 		case "matrix":
 			c.Matrices = b.matrix(r, matrix[r.Name.Value])
 			used[r.Name.Value] = true

@@ -50,6 +50,10 @@ func (b *builder) regulator(r *regulatorRow, rows []*regulatorSettingsRow) {
 	what := "regulator " + strconv.Quote(r.Name.Value)
 	from, to, ok := b.ends(r.From, r.To, what)
 	ps, okPhases := b.phasesOf(r.Phases, what)
+	if okPhases && ps[0].Leg() {
+		b.faults.Add(r.Phases.At, "%s: a regulator stands on phases, not on the legs of a secondary", what)
+		okPhases = false
+	}
 	if !ok || !okPhases {
 		b.torn = true
 		return

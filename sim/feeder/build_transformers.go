@@ -29,8 +29,12 @@ func (b *builder) transformer(r *transformerRow) {
 		b.faults.Add(r.Connection.At, "%s: %v", what, err)
 		return
 	}
-	if r.MidTap.Value || r.HighEnds.Given || r.LowEnds.Given {
-		b.faults.Add(r.Row.At, "%s: terminals and mid-tap belong to connection unit, which %s", what, later)
+	if group != "unit" && (r.MidTap.Value || r.HighEnds.Given || r.LowEnds.Given) {
+		b.faults.Add(r.Row.At, "%s: terminals and mid-tap belong to connection unit, not to %s", what, group)
+	}
+	if okPhases && ps[0].Leg() {
+		b.faults.Add(r.Phases.At, "%s: phases %s are the legs of a secondary; phases names the high side", what, r.Phases.Value)
+		return
 	}
 	if !ok || !okPhases {
 		return
@@ -57,6 +61,18 @@ func (b *builder) transformer(r *transformerRow) {
 		}
 		t.Phases, l.fromPhases, l.toPhases = ps, ps, append([]Phase(nil), ps...)
 		l.borrow = len(ps) == 2
+	case "center-tap":
+		if len(ps) == 3 {
+			b.faults.Add(r.Phases.At, "%s: a centre-tapped transformer stands on one phase, or on a pair such as AB", what)
+			return
+		}
+		t.Phases, t.HighEnds, t.LowEnds, t.MidTap = ps, ps, []Phase{Leg1, Leg2}, true
+		l.fromPhases, l.toPhases = ps, t.LowEnds
+	case "unit":
+		if !b.unit(r, &t, ps, what) {
+			return
+		}
+		l.fromPhases, l.toPhases = t.HighEnds, t.LowEnds
 	case "open-wye/open-delta":
 		high := ordered([]Phase{pairs[0][0], pairs[1][0]})
 		if len(high) != 2 {

@@ -11,8 +11,8 @@ import (
 func (b *builder) idealLoops() {
 	m := b.model
 	stiff := len(m.Nodes)
-	group := newGroups(3 * (len(m.Nodes) + 1))
-	id := func(node int, p Phase) int { return node*3 + int(p) }
+	group := newGroups(PhaseCount * (len(m.Nodes) + 1))
+	id := func(node int, p Phase) int { return node*PhaseCount + int(p) }
 	held := map[int]bool{}
 	for i := range m.Sources {
 		s := &m.Sources[i]
@@ -28,7 +28,7 @@ func (b *builder) idealLoops() {
 			group.join(id(s.Node, p), id(stiff, p))
 		}
 	}
-	var ideal [3][]*link // by phase: those that close no loop
+	var ideal [PhaseCount][]*link // by phase: those that close no loop
 	regulators := map[string]*Regulator{}
 	for i := range m.Regulators {
 		regulators[m.Regulators[i].Name] = &m.Regulators[i]
@@ -98,7 +98,7 @@ func (t *Transformer) clock(low *Node) int {
 			return 1
 		}
 		return 0
-	case "open-delta/open-delta":
+	case "open-delta/open-delta", "center-tap", "unit":
 		return 0
 	case "open-wye/open-delta":
 		if p := t.Pairs[0]; (p[0]+1)%3 == p[1] {
@@ -121,6 +121,9 @@ func (b *builder) phaseShifts() {
 	at := map[int][]step{}
 	for i := range m.Transformers {
 		t := &m.Transformers[i]
+		if t.Connection == "unit" {
+			continue // a bank of units has the shift that its terminals say
+		}
 		from, to, h := m.Nodes[t.From].Part, m.Nodes[t.To].Part, t.clock(&m.Nodes[t.To])
 		at[from] = append(at[from], step{to, h, i})
 		at[to] = append(at[to], step{from, 12 - h, i})

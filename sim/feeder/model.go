@@ -7,23 +7,33 @@ import (
 	"yearflow/sim/tables"
 )
 
-// Phase is one of the phases of a node: A, B and C are 0, 1 and 2.
+// Phase is one of the phases of a node: A, B and C are 0, 1 and 2; the legs of a
+// centre-tapped secondary come after them.
 type Phase uint8
 
-// The phases of a three-phase feeder.
+// The phases of a three-phase feeder, and the legs 1 and 2 of a centre-tapped
+// secondary, each half of the winding against the grounded tap.
 const (
 	A Phase = iota
 	B
 	C
+	Leg1
+	Leg2
+
+	// PhaseCount is the number of them.
+	PhaseCount = 5
 )
 
-// String returns the letter of the phase.
+// String returns the letter of the phase, or the number of the leg.
 func (p Phase) String() string {
-	if p > C {
+	if p >= PhaseCount {
 		return "?"
 	}
-	return "ABC"[p : p+1]
+	return "ABC12"[p : p+1]
 }
+
+// Leg tells whether p is a leg of a centre-tapped secondary.
+func (p Phase) Leg() bool { return p == Leg1 || p == Leg2 }
 
 // Pair is two phases, in order: AB is the voltage of A against B.
 type Pair [2]Phase
@@ -96,8 +106,8 @@ type Node struct {
 	LonLat   bool
 	Area     string
 	// Customers by phase: from loads, those of a three-phase load at all of its phases.
-	Customers [3]float64
-	HasLoad   [3]bool // a load stands on this phase (or on a pair with it)
+	Customers [PhaseCount]float64
+	HasLoad   [PhaseCount]bool // a load stands on this phase (or on a pair with it)
 }
 
 // Source is a stiff or a Thevenin source.
@@ -158,11 +168,16 @@ type Transformer struct {
 	HighKV     float64
 	LowKV      float64
 	TapKV      float64 // high-side voltage of the tap in use
-	Connection string  // canonical: "YNyn0", "Dyn1", ..., "1ph", "open-wye/open-delta", "open-delta/open-delta"
+	Connection string  // canonical: "YNyn0", "Dyn1", ..., "1ph", "center-tap", "unit", "open-wye/open-delta", "open-delta/open-delta"
 	Pairs      []Pair  // of the open banks: the pairs that have a unit
-	R, X       float64 // p.u. on the bank's rating
-	NoLoadLoss float64 // W, bank total
-	Exciting   float64 // p.u. of the bank's rating, magnitude, includes the loss part
+	// HighEnds and LowEnds are the terminals of a unit or a centre-tapped transformer:
+	// one phase against neutral, or two. MidTap: the middle of the low winding is
+	// grounded, and LowEnds are its two ends.
+	HighEnds, LowEnds []Phase
+	MidTap            bool
+	R, X              float64 // p.u. on the bank's rating
+	NoLoadLoss        float64 // W, bank total
+	Exciting          float64 // p.u. of the bank's rating, magnitude, includes the loss part
 }
 
 // RegulatorConnection tells how the units of a regulator bank stand.

@@ -22,7 +22,20 @@ func (t *Transformer) sideNominal(low bool, node *Node) float64 {
 	if low {
 		rating = t.LowKV
 	}
-	if t.Connection != "1ph" {
+	ends := t.HighEnds
+	if low {
+		ends = t.LowEnds
+	}
+	switch t.Connection {
+	case "1ph":
+	case "center-tap", "unit":
+		// A winding to neutral is rated line to neutral; of one with a grounded middle
+		// the full winding counts.
+		if len(ends) == 1 {
+			return rating * math.Sqrt(3)
+		}
+		return rating
+	default:
 		return rating
 	}
 	// A single-phase winding to ground is rated line to neutral.

@@ -114,17 +114,17 @@ func TestOpenSmall(t *testing.T) {
 	for i, want := range []struct {
 		name, phases string
 		kV           float64
-		customers    [3]float64
+		customers    [PhaseCount]float64
 		part         int
 	}{
-		{"bus", "ABC", 12.47, [3]float64{}, 0},
-		{"grid", "ABC", 69, [3]float64{}, 1},
+		{"bus", "ABC", 12.47, [PhaseCount]float64{}, 0},
+		{"grid", "ABC", 69, [PhaseCount]float64{}, 1},
 		// 0.24 kV to ground on one phase is √3·0.24 kV line-to-line.
-		{"house", "B", 0.24 * math.Sqrt(3), [3]float64{0, 3, 0}, 2},
-		{"n1", "ABC", 12.47, [3]float64{}, 0},
+		{"house", "B", 0.24 * math.Sqrt(3), [PhaseCount]float64{0, 3, 0}, 2},
+		{"n1", "ABC", 12.47, [PhaseCount]float64{}, 0},
 		// The three-phase load's 200 at each phase, the one between A and B at both.
-		{"n2", "ABC", 12.47, [3]float64{201, 201, 200}, 0},
-		{"n3", "B", 12.47, [3]float64{}, 0},
+		{"n2", "ABC", 12.47, [PhaseCount]float64{201, 201, 200}, 0},
+		{"n3", "B", 12.47, [PhaseCount]float64{}, 0},
 	} {
 		n := m.Nodes[i]
 		if n.Name != want.name || word(n.Phases) != want.phases || math.Abs(n.Nominal-want.kV) > 1e-12 || n.Customers != want.customers || n.Part != want.part || !n.Grounded {

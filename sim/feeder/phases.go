@@ -17,9 +17,9 @@ func parsePhases(s string) ([]Phase, error) {
 		case 'A', 'B', 'C':
 			p = Phase(r - 'A')
 		case '1', '2':
-			return nil, fmt.Errorf("phases %q: the legs of a centre-tapped secondary: %s", s, later)
+			p = Leg1 + Phase(r-'1')
 		default:
-			return nil, fmt.Errorf("phases %q: want some of A, B, C", s)
+			return nil, fmt.Errorf("phases %q: want some of A, B, C, or the legs 1, 2 of a centre-tapped secondary", s)
 		}
 		for _, q := range out {
 			if q == p {
@@ -31,19 +31,27 @@ func parsePhases(s string) ([]Phase, error) {
 	if len(out) == 0 {
 		return nil, fmt.Errorf("no phases; want some of A, B, C")
 	}
+	for _, q := range out {
+		if q.Leg() != out[0].Leg() {
+			return nil, fmt.Errorf("phases %q: phases and legs of a centre-tapped secondary do not go together", s)
+		}
+	}
 	return out, nil
 }
 
 // ordered returns the phases in the order A, B, C.
 func ordered(ps []Phase) []Phase {
-	var set [3]bool
+	var set phaseSet
 	for _, p := range ps {
 		set[p] = true
 	}
 	return listed(set)
 }
 
-func listed(set [3]bool) []Phase {
+// phaseSet marks phases.
+type phaseSet [PhaseCount]bool
+
+func listed(set phaseSet) []Phase {
 	var out []Phase
 	for p, has := range set {
 		if has {
@@ -73,13 +81,17 @@ func parsePairs(s string) ([]Pair, error) {
 		return []Pair{{ps[0], ps[1]}}, nil
 	case 3:
 		return []Pair{{A, B}, {B, C}, {C, A}}, nil
+	case 1:
+		if ps[0].Leg() {
+			return nil, fmt.Errorf("phases %q: one leg has nothing to be in delta with; 12 stands across both", s)
+		}
 	}
 	return nil, fmt.Errorf("phases %q: a delta connection stands on a pair such as AB, or on ABC", s)
 }
 
 // ofPairs returns the phases that pairs touch, in the order A, B, C.
 func ofPairs(pairs []Pair) []Phase {
-	var set [3]bool
+	var set phaseSet
 	for _, p := range pairs {
 		set[p[0]], set[p[1]] = true, true
 	}

@@ -30,9 +30,9 @@ func (b *builder) join(l link) { b.links = append(b.links, l) }
 
 // phases gives each node the union of the phases of what meets it.
 func (b *builder) phases() {
-	set := make([][3]bool, len(b.model.Nodes))
+	set := make([]phaseSet, len(b.model.Nodes))
 	for _, s := range b.model.Sources {
-		set[s.Node] = [3]bool{true, true, true}
+		set[s.Node] = phaseSet{true, true, true}
 	}
 	for i := range b.links {
 		l := &b.links[i]
@@ -60,7 +60,7 @@ func (b *builder) phases() {
 // borrow settles the low side of a single-phase transformer on a pair: across the
 // pair where both phases go on from there or something stands across them, else from
 // the first phase to ground.
-func (b *builder) borrow(l *link, set [][3]bool) {
+func (b *builder) borrow(l *link, set []phaseSet) {
 	wanted := set[l.to]
 	name := b.model.Nodes[l.to].Name
 	want := func(node tables.Text, phases tables.Text) {
@@ -175,10 +175,10 @@ func (b *builder) island(nodes, served []int) {
 }
 
 // reach marks the phases of nodes that a source feeds.
-func (b *builder) reach() [][3]bool {
-	reached := make([][3]bool, len(b.model.Nodes))
+func (b *builder) reach() []phaseSet {
+	reached := make([]phaseSet, len(b.model.Nodes))
 	for _, s := range b.model.Sources {
-		reached[s.Node] = [3]bool{true, true, true}
+		reached[s.Node] = phaseSet{true, true, true}
 	}
 	at := make([][]int, len(b.model.Nodes))
 	for i := range b.links {
@@ -220,9 +220,9 @@ func (b *builder) reach() [][3]bool {
 
 // strayPhases reports phases that appear downstream and not upstream: one fault for
 // each stretch, at the element nearest to where the phase is missing.
-func (b *builder) strayPhases(reached [][3]bool) bool {
-	id := func(node int, p Phase) int { return node*3 + int(p) }
-	group := newGroups(3 * len(b.model.Nodes))
+func (b *builder) strayPhases(reached []phaseSet) bool {
+	id := func(node int, p Phase) int { return node*PhaseCount + int(p) }
+	group := newGroups(PhaseCount * len(b.model.Nodes))
 	for i := range b.links {
 		l := &b.links[i]
 		if l.open {

@@ -27,8 +27,10 @@ func parseConnection(s string) (canonical string, pairs []Pair, err error) {
 	switch t {
 	case "1ph":
 		return "1ph", nil, nil
-	case "center-tap", "centre-tap", "unit":
-		return "", nil, fmt.Errorf("connection %q %s; for now give the primary's equivalent as 1ph or as a vector group", s, later)
+	case "center-tap", "centre-tap":
+		return "center-tap", nil, nil
+	case "unit":
+		return "unit", nil, nil
 	case "wye/wye", "grounded wye/wye", "wye/grounded wye":
 		t = map[string]string{"wye/wye": "yy0", "grounded wye/wye": "yny0", "wye/grounded wye": "yyn0"}[t]
 	case "grounded wye/grounded wye":
@@ -49,7 +51,7 @@ func parseConnection(s string) (canonical string, pairs []Pair, err error) {
 
 // wordsOfConnection are what a fault offers.
 func wordsOfConnection() []string {
-	return []string{"YNyn0", "YNy0", "Dyn1", "Dyn11", "Dy1", "Dd0", "YNd1", "YNd11", "Yd1", "Yd11", "1ph",
+	return []string{"YNyn0", "YNy0", "Dyn1", "Dyn11", "Dy1", "Dd0", "YNd1", "YNd11", "Yd1", "Yd11", "1ph", "center-tap", "unit",
 		"grounded wye / grounded wye", "delta / grounded wye", "delta / wye", "grounded wye / delta", "wye / delta", "delta / delta",
 		"open-wye/open-delta AB-BC", "open-delta/open-delta AB-BC"}
 }
@@ -104,6 +106,8 @@ func (t *Transformer) grounds(low *Node) (from, to bool) {
 			return true, true
 		}
 		return false, !has(low.Phases, t.Phases[1])
+	case "center-tap", "unit":
+		return len(t.HighEnds) == 1, t.MidTap || len(t.LowEnds) == 1
 	case "open-wye/open-delta":
 		return true, false
 	case "open-delta/open-delta":

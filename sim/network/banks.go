@@ -26,6 +26,10 @@ type winding struct {
 // single windings). Star points that are not grounded are inner points.
 func (n *Network) transformer(i int) error {
 	t := &n.Model.Transformers[i]
+	if t.MidTap {
+		n.midTapped(i)
+		return nil
+	}
 	ws, inner, err := n.windings(t)
 	if err != nil {
 		return err
@@ -100,6 +104,15 @@ func (n *Network) windings(t *feeder.Transformer) (ws []winding, inner []int32, 
 			return []winding{w}, nil, nil
 		}
 		return nil, nil, fmt.Errorf("transformer %q: a 1ph unit stands on one phase or on a pair", t.Name)
+	case "unit":
+		w := winding{hi[t.HighEnds[0]], Ground, lo[t.LowEnds[0]], Ground, high, low, tap}
+		if len(t.HighEnds) == 2 {
+			w.q = hi[t.HighEnds[1]]
+		}
+		if len(t.LowEnds) == 2 {
+			w.s = lo[t.LowEnds[1]]
+		}
+		return []winding{w}, nil, nil
 	case "open-wye/open-delta":
 		for _, p := range t.Pairs {
 			ws = append(ws, winding{hi[p[0]], Ground, lo[p[0]], lo[p[1]], high / sqrt3, low, tap / sqrt3})

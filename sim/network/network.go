@@ -92,7 +92,7 @@ type Fixed struct {
 type Network struct {
 	Model     *feeder.Model
 	Unknowns  []Unknown
-	At        [][3]int32 // node, phase → unknown; Ground where the node lacks the phase
+	At        [][feeder.PhaseCount]int32 // node, phase → unknown; Ground where the node lacks the phase
 	Elements  []Element
 	Couplings []Coupling
 	Fixed     []Fixed
@@ -112,12 +112,12 @@ func (n *Network) ElementsOf(k Kind, index int) []int { return n.of[key{k, index
 
 // Build makes the network of a checked feeder. An error is a tables.Faults.
 func Build(m *feeder.Model) (*Network, error) {
-	n := &Network{Model: m, At: make([][3]int32, len(m.Nodes)), of: map[key][]int{}}
+	n := &Network{Model: m, At: make([][feeder.PhaseCount]int32, len(m.Nodes)), of: map[key][]int{}}
 	var faults tables.Faults
 	for i := range m.Nodes {
-		n.At[i] = [3]int32{Ground, Ground, Ground}
+		n.At[i] = [feeder.PhaseCount]int32{Ground, Ground, Ground, Ground, Ground}
 		for _, p := range m.Nodes[i].Phases {
-			n.At[i][p] = n.add(Unknown{i, p, m.Nodes[i].Nominal * 1000 / sqrt3, m.Nodes[i].Name + "." + p.String()})
+			n.At[i][p] = n.add(Unknown{i, p, toGround(m.Nodes[i].Nominal, p), m.Nodes[i].Name + "." + p.String()})
 		}
 	}
 	// Everything is stamped in the order of names, so that the order of rows moves
@@ -148,6 +148,15 @@ func Build(m *feeder.Model) (*Network, error) {
 		n.Offsets = append(n.Offsets, n.Offsets[len(n.Offsets)-1]+len(e.Terminals))
 	}
 	return n, faults.Err()
+}
+
+// toGround is the nominal voltage of a phase to ground, V: a leg of a centre-tapped
+// secondary has half the full winding's.
+func toGround(kV float64, p feeder.Phase) float64 {
+	if p.Leg() {
+		return kV * 1000 / 2
+	}
+	return kV * 1000 / sqrt3
 }
 
 func byName(count int, name func(int) string) []int {

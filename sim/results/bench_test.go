@@ -19,7 +19,7 @@ func long(t testing.TB, nodes int, end time.Time, step time.Duration) *tiny {
 	m := x.plan.Model
 	from := 1
 	for k := range nodes {
-		m.Nodes = append(m.Nodes, feeder.Node{Name: fmt.Sprintf("z%03d", k), Phases: abc, Nominal: 12.47, Grounded: true, Customers: [3]float64{3, 3, 3}, HasLoad: [3]bool{true, true, true}})
+		m.Nodes = append(m.Nodes, feeder.Node{Name: fmt.Sprintf("z%03d", k), Phases: abc, Nominal: 12.47, Grounded: true, Customers: [feeder.PhaseCount]float64{3, 3, 3}, HasLoad: [feeder.PhaseCount]bool{true, true, true}})
 		to := len(m.Nodes) - 1
 		m.Sections = append(m.Sections, m.Sections[0])
 		s := &m.Sections[len(m.Sections)-1]

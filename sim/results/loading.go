@@ -54,7 +54,7 @@ func (m *Meter) sectionLoading(i int) {
 	}
 	for _, e := range m.net.ElementsOf(network.Section, i) {
 		el := &m.net.Elements[e]
-		for _, p := range [...]feeder.Phase{feeder.A, feeder.B, feeder.C} {
+		for _, p := range [...]feeder.Phase{feeder.A, feeder.B, feeder.C, feeder.Leg1, feeder.Leg2} {
 			for k := range el.From {
 				if m.net.Unknowns[el.Terminals[k]].Phase == p {
 					row.phase = p.String()
@@ -70,7 +70,7 @@ func (m *Meter) sectionLoading(i int) {
 // one coupling for each, the phase's terminal at the from side first.
 func (m *Meter) couplingLoading(kind network.Kind, index int, row loadingRow, r *feeder.Regulator) {
 	row.kind, row.reg = kind, r
-	for _, p := range [...]feeder.Phase{feeder.A, feeder.B, feeder.C} {
+	for _, p := range [...]feeder.Phase{feeder.A, feeder.B, feeder.C, feeder.Leg1, feeder.Leg2} {
 		for c := range m.net.Couplings {
 			co := &m.net.Couplings[c]
 			if co.Kind != kind || co.Index != index || m.net.Unknowns[co.Terminals[0]].Phase != p {

@@ -42,9 +42,9 @@ type Meter struct {
 	parts    []part // elements that lose power
 	caps     []part
 	sources  []sourcePhase
-	three    [][3]int32 // unknowns of the three-phase nodes
-	threeAt  []int      // their nodes
-	tapsFrom []int      // of a regulator's units in State.Taps
+	three    [][feeder.PhaseCount]int32 // unknowns of the three-phase nodes
+	threeAt  []int                      // their nodes
+	tapsFrom []int                      // of a regulator's units in State.Taps
 }
 
 // part is an element that is summed into a row.

@@ -61,7 +61,7 @@ func standsOn(phases []feeder.Phase, pairs []feeder.Pair) []feeder.Phase {
 	if len(phases) > 0 {
 		return phases
 	}
-	var on [3]bool
+	var on [feeder.PhaseCount]bool
 	for _, p := range pairs {
 		on[p[0]], on[p[1]] = true, true
 	}
@@ -170,7 +170,7 @@ func (f *outFile) coordinate(x float64) {
 
 // letters writes phases in the order A, B, C.
 func letters(phases []feeder.Phase) string {
-	var on [3]bool
+	var on [feeder.PhaseCount]bool
 	for _, p := range phases {
 		on[p] = true
 	}
