@@ -173,7 +173,7 @@ func TestLoadAmounts(t *testing.T) {
 		{"n2,A,wye,1,,,,,pwer,", "2:10", `unknown zip "pwer"; did you mean "power"?`},
 		{"n2,A,delta,1,,,,,,", "2:3", "a delta connection stands on a pair such as AB, or on ABC"},
 		{"n2,AA,wye,1,,,,,,", "2:3", "A stands twice"},
-		{"n2,12,wye,1,,,,,,", "2:3", "comes with a later version"},
+		{"n2,12,wye,1,,,,,,", "2:3", "has no phase 1"},
 		{"n2,AN,wye,1,,,,,,", "2:3", "want some of A, B, C"},
 		{"n9,A,wye,1,,,,,,", "2:2", `unknown node "n9"; did you mean "n1"?`},
 		{"n2,A,wye,-1,,,,,,", "2:5", "must not be negative, got -1"},

@@ -62,7 +62,7 @@ func TestConstructionFaults(t *testing.T) {
 		{"overhead,crossarm,wire,,", "2", "neutral conductor is blank; this kind needs it"},
 		{"overhead,,wire,4/0 own,", "2", "spacing is blank; this kind needs it"},
 		{"overhead,crossarm,wire,4/0 own,0.3", "2:6", "kind overhead does not read r1"},
-		{"triplex,crossarm,wire,4/0 own,", "2:2", "triplex is not yet supported"},
+		{"triplex,crossarm,wire,4/0 own,", "2:3", "a triplex is bundled"},
 		{"sequence,,,,0.3", "2", "x1 is blank"},
 		{"matrix,,,,", "2", "there are no rows of it in impedances.csv"},
 		{"concentric neutral,crossarm,cabel,4/0 own,", "2:4", `unknown phase conductor "cabel"`},

@@ -264,7 +264,7 @@ func TestConnections(t *testing.T) {
 		{"1PH", "1ph", ""}, {"open-wye/open-delta AB-BC", "open-wye/open-delta AB-BC", ""}, {"open-delta/open-delta ab-cb", "open-delta/open-delta AB-CB", ""},
 		{"Yyn0", "", "the zero sequence of a wye-wye bank"}, {"Yy0", "", "is refused"}, {"wye / wye", "", "is refused"},
 		{"Dyn0", "", "these windings have odd clock numbers"}, {"Dd1", "", "these windings have even clock numbers"}, {"Dyn13", "", "from 0 to 11"},
-		{"center-tap", "", "comes with a later version"}, {"unit", "", "comes with a later version"},
+		{"center-tap", "center-tap", ""}, {"unit", "unit", ""},
 		{"Dyn1x", "", `did you mean "Dyn1"?`}, {"delta / groundd wye", "", `did you mean "delta / grounded wye"?`}, {"zigzag", "", "unknown connection"},
 		{"open-wye/open-delta", "", "want the two pairs"}, {"open-delta/open-delta AB-AB", "", "do not reach all three phases"}, {"Dyn01", "", "unknown connection"},
 	} {

@@ -51,7 +51,7 @@ func TestSteepInvertersOnAWeakFeeder(t *testing.T) {
 	const kva = 25e3
 	for i := 1; i <= 200; i++ {
 		g := powerflow.Group{Law: steep{kva}}
-		for _, u := range n.At[i] {
+		for _, u := range n.At[i][:3] {
 			g.Members = append(g.Members, int32(len(js)))
 			js = append(js, powerflow.Injection{From: u, To: network.Ground, Nominal: 12470 / math.Sqrt(3), PC: 1, QC: 1, Generator: true, Size: kva / 3, Group: int32(len(groups) + 1)})
 			in.Power = append(in.Power, complex(-0.9*kva, 0))

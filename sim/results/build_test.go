@@ -52,9 +52,9 @@ func tinyModel() *feeder.Model {
 	}
 	low, n1, n2, n3, shop, src := 0, 1, 2, 3, 4, 5
 	m.Nodes[n1].X, m.Nodes[n1].Y = 1200, -35.5
-	m.Nodes[low].HasLoad, m.Nodes[low].Customers = [feeder.PhaseCount]bool{true, true, true}, [3]float64{12, 12, 12}
+	m.Nodes[low].HasLoad, m.Nodes[low].Customers = [feeder.PhaseCount]bool{true, true, true}, [feeder.PhaseCount]float64{12, 12, 12}
 	m.Nodes[n3].HasLoad[0], m.Nodes[n3].Customers[0] = true, 7
-	m.Nodes[shop].HasLoad, m.Nodes[shop].Customers = [feeder.PhaseCount]bool{true, true, false}, [3]float64{1, 1, 0}
+	m.Nodes[shop].HasLoad, m.Nodes[shop].Customers = [feeder.PhaseCount]bool{true, true, false}, [feeder.PhaseCount]float64{1, 1, 0}
 	m.Sources = []feeder.Source{{Node: src, Nominal: 12.47, Voltage: 1}}
 	m.Constructions = []feeder.Construction{{Name: "pole", Kind: "matrix", Rating: 340, Matrices: lineMatrices()}}
 	m.Sections = []feeder.Section{
