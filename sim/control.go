@@ -13,6 +13,9 @@ type Reading struct {
 	// Volts is the regulated voltage of a tap changer's unit, V (a pair's for delta
 	// connections), Amperes the current that leaves the bank on its first phase, A.
 	Volts, Amperes complex128
+	// SourceVolts is the same voltage at the bank's source side, and SourceAmperes the
+	// current that leaves there, towards the source, on the same phase.
+	SourceVolts, SourceAmperes complex128
 	// V120 is a capacitor's voltage on the 120 V base.
 	V120 float64
 	// KW, KVAR and Current (A) are those of the section that a capacitor watches.

@@ -126,6 +126,15 @@ func (e *Engine) drawnAt(parts []part) (sum complex128) {
 	return sum
 }
 
+// into returns the current that enters an element at its from end, A.
+func (e *Engine) into(w *watchedPhase) complex128 {
+	current := e.drawnAt(w.parts)
+	for _, f := range w.flows {
+		current += e.state.Flow[f]
+	}
+	return current
+}
+
 func (e *Engine) between(from, to int32) complex128 {
 	v := e.state.V[from]
 	if to != network.Ground {
@@ -141,16 +150,15 @@ func (e *Engine) measure(d *device, wall devices.Time) {
 	if t := d.tap; t != nil {
 		r.Volts = e.between(t.from, t.to)
 		r.Amperes = -e.drawnAt(t.leaving)
+		r.SourceVolts = e.between(t.sourceFrom, t.sourceTo)
+		r.SourceAmperes = -e.into(&t.source)
 		return
 	}
 	c := d.cap
 	r.V120 = cmplx.Abs(e.between(c.from, c.to)) / c.base
 	for i := range c.watched {
 		w := &c.watched[i]
-		current := e.drawnAt(w.parts)
-		for _, f := range w.flows {
-			current += e.state.Flow[f]
-		}
+		current := e.into(w)
 		s := e.state.V[w.unknown] * cmplx.Conj(current)
 		r.KW += real(s) / 1000
 		r.KVAR += imag(s) / 1000

@@ -17,6 +17,7 @@ import (
 // faster kernel must give what it gives.
 type Solver interface {
 	// SetDevices takes the ratio of every coupling and the state of every capacitor.
+	// Its error says that the equations are singular there; Solve then finds nothing.
 	SetDevices(ratio []float64, closed []bool) error
 	// Solve starts from start, or from the no-load voltages where it is nil, and
 	// reports whether there is a solution.
@@ -77,6 +78,9 @@ type device struct {
 type tapMeter struct {
 	from, to int32 // regulated voltage; to may be Ground
 	leaving  []part
+
+	sourceFrom, sourceTo int32 // the same voltage at the source side
+	source               watchedPhase
 }
 
 // part is a share of a coupling's own current.
@@ -245,27 +249,46 @@ func (e *Engine) regulator(i int, o Options) {
 		}
 		sheet := devices.TapChanger{PT: r.PT, CT: r.CT, Range: r.Range, Steps: r.Steps, TypeB: r.TypeB, Highest: r.Steps, Lowest: -r.Steps,
 			Held: true, LimitHigh: math.NaN(), LimitLow: math.NaN()}
+		var reverse *devices.ReversePower
 		if s := unit.Settings; s != nil {
 			sheet.Set, sheet.Bandwidth, sheet.Delay, sheet.TapTime, sheet.Integrate = s.Set, s.Bandwidth, ns(s.Delay), ns(s.TapTime), s.Integrate
 			sheet.R, sheet.X, sheet.Rotation = s.R, s.X, rotation(r.Connection, unit.Pair, s)
 			sheet.LimitHigh, sheet.LimitLow, sheet.LimitMargin = s.LimitHigh, s.LimitLow, s.LimitMargin
 			sheet.Held, sheet.Highest, sheet.Lowest = s.Held, s.HighestTap, s.LowestTap
 		}
+		if s := unit.Settings; s != nil && s.Reverse != feeder.ReverseNone {
+			reverse = reversePower(sheet, s)
+		}
 		d := &device{Device: results.Device{Kind: results.TapDevice, Name: r.Name, Phase: unit.Name(r.Connection), Index: i, Unit: u,
 			Units: moves, Lowest: sheet.Lowest, Highest: sheet.Highest}}
-		at := e.net.At[r.To]
-		d.tap = &tapMeter{from: at[unit.Phase], to: network.Ground}
-		if r.Connection != feeder.RegulatorWye {
-			d.tap.to = at[unit.Pair[1]]
-		}
-		d.tap.leaving = e.leaving(i, unit.Phase)
+		d.tap = e.tapMeter(i, u)
 		d.Controller = e.own(o, d.Device)
-		if d.Controller == nil {
-			d.Controller = &tapControl{sheet, devices.TapState{Position: e.state.Taps[first+u]}}
+		position := devices.TapState{Position: e.state.Taps[first+u]}
+		switch {
+		case d.Controller != nil:
+		case reverse != nil:
+			d.Controller = &reverseControl{*reverse, devices.ReverseState{TapState: position}}
+		default:
+			d.Controller = &tapControl{sheet, position}
 		}
 		e.devices = append(e.devices, d)
 		e.Plan.Devices = append(e.Plan.Devices, d.Device)
 	}
+}
+
+// tapMeter finds what a unit's control measures, on either side of the bank.
+func (e *Engine) tapMeter(regulator, unit int) *tapMeter {
+	r := &e.net.Model.Regulators[regulator]
+	u := &r.Units[unit]
+	from, to := &e.net.At[r.From], &e.net.At[r.To]
+	t := &tapMeter{from: to[u.Phase], to: network.Ground, sourceFrom: from[u.Phase], sourceTo: network.Ground, leaving: e.leaving(regulator, u.Phase)}
+	if r.Connection != feeder.RegulatorWye {
+		t.to, t.sourceTo = to[u.Pair[1]], from[u.Pair[1]]
+	}
+	for _, w := range e.watch(&feeder.Watched{Kind: "regulator", Index: regulator}, &u.Phase) {
+		t.source = w
+	}
+	return t
 }
 
 // leaving lists the couplings of a bank that feed the load-side line of a phase.
@@ -327,6 +350,8 @@ func (e *Engine) Reset() {
 		switch c := d.Controller.(type) {
 		case *tapControl:
 			c.state = devices.TapState{Position: initialTap(&m.Regulators[d.Index], d.Unit)}
+		case *reverseControl:
+			c.state = devices.ReverseState{TapState: devices.TapState{Position: initialTap(&m.Regulators[d.Index], d.Unit)}}
 		case *capacitorControl:
 			c.state = devices.CapacitorState{Closed: m.Capacitors[d.Index].Closed}
 		}

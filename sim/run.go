@@ -373,12 +373,12 @@ func newCoarse(e *Engine) *coarse {
 
 func (c *coarse) see(e *Engine) {
 	for i, d := range e.devices {
-		t, ok := d.Controller.(*tapControl)
-		if !ok || t.sheet.Held {
+		sheet, tap := d.tapSheet()
+		if sheet == nil || sheet.Held {
 			continue
 		}
 		// At the present tap: what the inputs alone do.
-		v := t.sheet.Measure(d.reading.Volts, d.reading.Amperes).Relay / t.sheet.Ratio(t.state.Position)
+		v := sheet.Measure(d.reading.Volts, d.reading.Amperes).Relay / sheet.Ratio(tap)
 		if c.last[i] == c.last[i] {
 			c.sum[i] += math.Abs(v - c.last[i])
 			c.count[i]++
@@ -389,7 +389,7 @@ func (c *coarse) see(e *Engine) {
 
 func (c *coarse) names(e *Engine) (out []string) {
 	for i, d := range e.devices {
-		if t, ok := d.Controller.(*tapControl); ok && c.count[i] > 0 && c.sum[i]/float64(c.count[i]) > t.sheet.Bandwidth {
+		if sheet, _ := d.tapSheet(); sheet != nil && c.count[i] > 0 && c.sum[i]/float64(c.count[i]) > sheet.Bandwidth {
 			out = append(out, d.title())
 		}
 	}

@@ -149,8 +149,9 @@ func (b *builder) tapSetting(s *regulatorSettingsRow, g *Regulator, what string)
 	if s.Lowest.Given {
 		out.LowestTap = s.Lowest.Value
 	}
-	if s.Reverse.Value != "none" {
-		b.faults.Add(s.Reverse.At, "%s: reverse %q %s; none is taken", what, s.Reverse.Value, later)
+	b.reverseSettings(s, out, what)
+	if !g.read(s.Row.At) {
+		b.assumeReverse(s, out.Reverse)
 	}
 	if out.Delay < 1 {
 		b.faults.Add(s.Delay.At, "%s: delay is at least 1 s, got %s s", what, amount(out.Delay))

@@ -7,6 +7,6 @@
 // were met on the way, Study.Implausible is what a second pair of eyes would ask about.
 //
 // What is read and not modelled yet is refused with its place: centre-tapped services,
-// banks of unequal units, regulators with a reverse mode, batteries, chargers, inverter
+// banks of unequal units, batteries, chargers, inverter
 // functions, output from weather, loads by connected kVA and measurements.
 package feeder

@@ -243,6 +243,11 @@ type TapSettings struct {
 	Held                  bool
 	Tap                   int
 	HighestTap, LowestTap int
+
+	Reverse          ReverseMode
+	ReverseThreshold float64 // p.u. of the primary rating of the current transformer
+	// The reverse settings, in V and s as the forward ones, which fill their blanks.
+	ReverseSet, ReverseBandwidth, ReverseDelay, ReverseR, ReverseX float64
 }
 
 // Capacitor is a bank with its control.
