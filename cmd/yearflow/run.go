@@ -119,7 +119,7 @@ func replaceable(dir string) error {
 			return nil
 		}
 	}
-	return wrongf("--out %s: the folder is not empty and holds no results (no run.json), and results replace a folder: name a new one, such as %s", dir, filepath.Join(dir, "results"))
+	return wrongf("%s is not empty and holds no results (no run.json), and results replace the folder: name another with --out, such as %s", dir, filepath.Join(dir, "results"))
 }
 
 // machineOr marks an error of the file system as the machine's; any other stays what
