@@ -1,0 +1,94 @@
+package profiles
+
+import "math"
+
+// addRow takes a row and its stamp. Rows that were left out become missing values;
+// what is no whole number of steps after the row before is a fault.
+func (r *weatherReader) addRow(t int64, row []float64) {
+	at := rowTime{t, r.lines.number}
+	r.count++
+	r.before, r.last = r.last, at
+	if r.step == 0 {
+		r.first = append(r.first, at)
+		r.early = append(r.early, append([]float64(nil), row...))
+		if len(r.first) == stepRows {
+			r.placeEarly()
+		}
+		return
+	}
+	r.placeRow(at, row)
+}
+
+// placeEarly finds the step and places the rows that were kept.
+func (r *weatherReader) placeEarly() {
+	r.step = commonStep(r.first)
+	r.checked.t = noTime
+	for i, at := range r.first {
+		r.placeRow(at, r.early[i])
+	}
+	r.early = nil
+}
+
+func (r *weatherReader) placeRow(at rowTime, row []float64) {
+	if len(r.line) == 0 {
+		r.start = at.t
+	} else {
+		ahead := at.t - r.checked.t
+		if ahead <= 0 || ahead%r.step != 0 || ahead > longestGap+r.step {
+			r.irregular(at)
+			if ahead > 0 {
+				r.checked = at // one fault for one jump
+			}
+			return
+		}
+		for n := ahead/r.step - 1; n > 0; n-- {
+			r.putRow(nil, 0)
+		}
+	}
+	r.checked = at
+	r.putRow(row, at.line)
+}
+
+// putRow appends an interval; a nil row is a missing one.
+func (r *weatherReader) putRow(row []float64, line int) {
+	for c := range r.values {
+		v := math.NaN()
+		if row != nil {
+			v = row[c]
+		}
+		r.values[c] = append(r.values[c], v)
+	}
+	r.line = append(r.line, line)
+}
+
+// endRows closes the reading of rows.
+func (r *weatherReader) endRows() {
+	switch {
+	case r.count == 0 && len(r.faults) == 0:
+		r.fault(0, "there are no rows below the header")
+		return
+	case r.count < 2:
+		if len(r.faults) == 0 {
+			r.fault(0, "there is only one row; want at least two, since their distance is the step")
+		}
+		return
+	case r.step == 0:
+		r.placeEarly()
+	}
+	if r.step > longestWeatherStep {
+		r.faultAt(r.first[0].line, r.time+1, "the step is %s; want at most an hour, in which the sun moves by 15 degrees", stepText(r.step))
+	}
+	switch r.options.Stamped {
+	case "end":
+		r.start -= r.step
+	case "instant":
+		r.start -= r.step / 2
+	}
+	if r.options.Site != nil && r.place[0].at < 0 {
+		r.site = *r.options.Site
+		if problem := r.site.problem(); problem != "" {
+			r.fault(0, "%s", problem)
+		}
+	}
+	r.offset = meridianOffset(r.site)
+}
