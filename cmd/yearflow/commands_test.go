@@ -101,7 +101,7 @@ func TestEveryCommandExplainsItself(t *testing.T) {
 	out, _ := must(t, exitDone)
 	contains(t, out, "yearflow run", "yearflow demo my-feeder", "yearflow check my-feeder", "licensed engineer")
 	out, _ = must(t, exitDone, "help")
-	contains(t, out, "trace", "lines", "licensed engineer")
+	contains(t, out, "trace", "lines", "licensed engineer", "--version")
 	out, _ = must(t, exitDone, "--version")
 	contains(t, out, version)
 }

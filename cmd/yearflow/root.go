@@ -152,6 +152,7 @@ func helpCommand(c *console, root *cobra.Command) *cobra.Command {
 				return wrongf("no command named %q (\"yearflow help\" lists them)", strings.Join(args, " "))
 			}
 			cmd.InitDefaultHelpFlag()
+			cmd.InitDefaultVersionFlag()
 			return cmd.Help()
 		},
 	}
