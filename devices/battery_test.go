@@ -14,7 +14,9 @@ const (
 )
 
 // pack returns a battery of 100 kWh and 50 kW whose ways are 0.9 each.
-func pack() Battery { return Battery{Energy: 100, Power: 50, RoundTrip: 0.81, Reserve: 0.2, Initial: 0.5} }
+func pack() Battery {
+	return Battery{Energy: 100, Power: 50, RoundTrip: 0.81, Reserve: 0.2, Initial: 0.5}
+}
 
 // A day with a pencil: from 50 kWh with a reserve of 20 kWh. Discharging 36 kW takes
 // 40 kW out of the store, 30 kWh are gone after 45 min: 27 kWh delivered, 3 lost. Charging

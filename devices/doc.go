@@ -1,5 +1,6 @@
 // Package devices is the logic of the controls on a distribution feeder, and
-// nothing else: tap changers, switched capacitors, and the watch for hunting.
+// nothing else: tap changers, switched capacitors, and the watch for hunting; the
+// functions of inverters, batteries and chargers.
 //
 // A control is a state machine. Its settings sheet is a constant value, its state
 // is a plain value that can be compared with ==, and it knows no network: it sees a
@@ -13,6 +14,12 @@
 //
 // and observes again after every action of any device. [Control] names this shape;
 // a control of the user's own that has it is driven the same way.
+//
+// Inverters, batteries and chargers do not ask for actions, they have a power. It comes
+// from [Inverter.Power], [Battery.Request] and [Charger.Wants], is held over an interval
+// that ends with the next event ([Inverter.NextMove], [Battery.Until],
+// [Charger.NextEvent], [Battery.NextSwitch]), and what the interval did to the state is
+// told by Advance.
 //
 // Everything is deterministic, free of allocation, and safe to call from several
 // goroutines, since nothing but the returned state changes.

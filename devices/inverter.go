@@ -95,9 +95,12 @@ type Inverter struct {
 	Category Category
 
 	// Injection and Absorption are the reactive capability, shares of Rating; 0: what
-	// Table 7 asks for. It shrinks in proportion below 20 % of rated power. AtNight: it
-	// is there at any active power; otherwise an inverter that could not deliver 5 % of
-	// its rated power gives no reactive power.
+	// Table 7 asks for. It shrinks in proportion below 20 % of rated power, and is nothing
+	// below 5 % or Minimum. What counts is the power that is available: an inverter that is
+	// curtailed while the sun shines keeps its capability, which is more than Table 7 asks
+	// for (common practice), and a curve that bent back where the ceiling falls would leave
+	// a feeder with several voltages to choose from. AtNight: all of it is there at any
+	// active power; a battery that regulates while it rests needs it.
 	Injection, Absorption float64
 	AtNight               bool
 
@@ -126,7 +129,7 @@ type Output struct {
 //
 //	P0 = min(available, Rated, Limit·Rated, ceiling(v))
 //	Q0 = the function's, at v or at P0, within −Absorption…Injection of the rating,
-//	     times min(1, P0 / 0.2 Rated)
+//	     times min(1, available / 0.2 Rated)
 //	reactive priority: Q = Q0, P = min(P0, √(Rating² − Q²))
 //	active priority:   P = P0, |Q| ≤ √(Rating² − P²)
 //
@@ -140,11 +143,10 @@ func (f *Inverter) Power(available, v float64) Output {
 	if sign > 0 {
 		p = lesser(p, f.ceiling(volts))
 	}
-	return f.within(available, sign, could, p, f.asked(sign, p, volts))
+	return f.within(available, sign, p, f.asked(sign, p, volts))
 }
 
-// could returns which way active power goes, and how much of it before any function
-// that looks at the voltage, kW.
+// could returns which way active power goes, and how much of it before the ceiling, kW.
 func (f *Inverter) could(available float64) (sign, kW float64) {
 	if available < 0 {
 		return -1, min(-available, f.rated())
@@ -227,10 +229,10 @@ func (f *Inverter) onCircle(sign, p float64) float64 {
 
 // within returns the output for an amount p of active power and reactive power q, kW and
 // kvar, under the reactive capability and the rating.
-func (f *Inverter) within(available, sign, could float64, p, q sloped) Output {
+func (f *Inverter) within(available, sign float64, p, q sloped) Output {
 	inject, absorb := f.capability()
-	room := f.room(could, p)
-	q = clamp(q, room.times(absorb*f.Rating), room.times(inject*f.Rating))
+	room := f.room(available) * f.Rating
+	q = clamp(q, constant(absorb*room), constant(inject*room))
 	if f.Priority == ActivePriority {
 		rest := arc(f.Rating, p)
 		q = clamp(q, rest, rest)
@@ -245,17 +247,17 @@ func (f *Inverter) within(available, sign, could float64, p, q sloped) Output {
 	return o
 }
 
-// room returns the share of the reactive capability at an amount p of active power, kW.
-// What decides on none at all is what the inverter could deliver, so that a ceiling that
-// takes power away makes nothing jump.
-func (f *Inverter) room(could float64, p sloped) sloped {
+// room returns the share of the reactive capability that available active power, kW,
+// leaves.
+func (f *Inverter) room(available float64) float64 {
+	p := math.Abs(available) / f.rated()
 	switch {
 	case f.AtNight:
-		return constant(1)
-	case could < max(noneBelow, f.Minimum)*f.rated():
-		return constant(0)
+		return 1
+	case p < max(noneBelow, f.Minimum):
+		return 0
 	}
-	return lesser(constant(1), p.times(1/(wholeFrom*f.rated())))
+	return min(1, p/wholeFrom)
 }
 
 // capability returns the reactive capability at rated power, shares of the rating.

@@ -94,7 +94,7 @@ func (f *Inverter) Held(available float64, s InverterState) Output {
 	if sign > 0 {
 		p.at = min(p.at, s.Ceiling)
 	}
-	return f.within(available, sign, could, p, constant(s.Reactive))
+	return f.within(available, sign, p, constant(s.Reactive))
 }
 
 func (f *Inverter) lags() (p, q Lag) {
