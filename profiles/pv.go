@@ -5,7 +5,8 @@ import (
 	"math"
 )
 
-// Array is a solar generator: modules on one plane, and their inverter.
+// Array is a solar generator: modules on one plane, and their inverter. Begin with
+// DefaultArray: a zero means zero.
 type Array struct {
 	DCKW               float64 // of the modules at 1000 W/m² and 25 °C
 	Tilt               float64 // from the horizontal, degrees, 0 to 90
@@ -83,6 +84,15 @@ func (a Array) DC(light, cell float64) float64 {
 // °C, wind in m/s at 10 m.
 type WeatherPoint struct{ GHI, DNI, DHI, Temperature, Wind float64 }
 
+// light returns the irradiance on the modules in W/m². With the sun on the horizon its
+// bright surroundings are a small number over another: there the sky is taken to be even.
+func (a Array) light(sun SunPosition, ghi, dni, dhi float64) float64 {
+	if sun.Zenith > lowSun {
+		return a.Plane().Isotropic(sun, ghi, dni, dhi).Total()
+	}
+	return a.Plane().HayDavies(sun, ghi, dni, dhi).Total()
+}
+
 // Output returns the mean power in kW that the array feeds into the feeder over the
 // interval of a weather point and its daylight, and how much more it would give if the
 // rating of its inverter were no limit. The light is put on the plane by HayDavies, the
@@ -102,7 +112,7 @@ func (a Array) Output(w WeatherPoint, d Daylight) (ac, clipped float64) {
 		most := d.Extraterrestrial*cos + 20
 		dhi, ghi = min(dhi, most), min(ghi, most)
 	}
-	light := a.Plane().HayDavies(d.SunPosition, ghi, dni, dhi).Total()
+	light := a.light(d.SunPosition, ghi, dni, dhi)
 	dc := a.DC(light, Faiman(light, w.Temperature, w.Wind*a.WindFactor)) * (1 - a.Losses/100)
 	available := dc * a.InverterEfficiency / 100
 	ac = available

@@ -48,6 +48,24 @@ func TestOutputByPencil(t *testing.T) {
 	}
 }
 
+// With the sun on the horizon no glow of the sky outshines the sky that was measured.
+func TestOutputAtSunrise(t *testing.T) {
+	a := Array{DCKW: 10, Tilt: 60, Azimuth: 90, InverterEfficiency: 100}
+	for zenith := 87.01; zenith < 90; zenith += 0.1 {
+		d := Daylight{SunPosition{Zenith: zenith, Azimuth: 90, Extraterrestrial: 1361}, 0.1}
+		ac, _ := a.Output(WeatherPoint{3, 20, 3, 25, 0}, d)
+		// Not more than all of the direct light and all of the diffuse, for the mean hour.
+		if most := 10 * (20 + 3) / 1000.0; ac <= 0 || ac > most {
+			t.Errorf("zenith %.2f: %v kW, at most %v", zenith, ac, most)
+		}
+		// A noisy instrument in the minute of sunrise: never more than outside the atmosphere.
+		d.Fraction = 0.001
+		if ac, _ = a.Output(WeatherPoint{40, 400, 40, 25, 0}, d); ac > 0.001*10*1.5 {
+			t.Errorf("zenith %.2f: %v kW in four seconds", zenith, ac)
+		}
+	}
+}
+
 func TestArrayCheck(t *testing.T) {
 	good := DefaultArray(Site{Latitude: 40})
 	good.DCKW, good.RatingKVA = 10, 8

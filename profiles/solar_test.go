@@ -178,6 +178,23 @@ func TestSolarThroughSampler(t *testing.T) {
 	}
 }
 
+func TestClearSkyIsAnnounced(t *testing.T) {
+	ax := yearAxis(t, 2025, zone(t, "America/Denver"))
+	w := ClearSkyWeather(denverSite, ax, 15)
+	if len(w.Assumed) != 1 || !strings.Contains(w.Assumed[0], "no weather is given: a clear sky on every day") {
+		t.Errorf("assumed %q", w.Assumed)
+	}
+	for k := range w.Len() {
+		p := w.Point(k)
+		from, to := w.Interval(k)
+		d := DaylightOver(from, to, denverSite)
+		if d.Fraction == 0 && (p.GHI != 0 || p.DNI != 0 || p.DHI != 0) || p.Temperature != 15 {
+			t.Fatalf("%s: %+v", Format(from, nil), p)
+		}
+		near(t, "closure", p.DNI*math.Cos(d.Zenith*radians)+p.DHI, p.GHI, 1e-9)
+	}
+}
+
 func TestSolarCoverage(t *testing.T) {
 	start := instant(t, "2025-06-01T00:00:00Z")
 	week := mustOpenWeather(t, plainHeader+weatherRows(start, 168, hour, 0, denverSite, nil), WeatherOptions{Site: &denverSite})

@@ -28,6 +28,7 @@ type weatherReader struct {
 	start    int64
 	unused   []string
 	early    [][]float64 // rows until the step is known
+	refused  bool        // no more rows are placed
 	years    [2]int      // of a typical year, first and last
 	values   [weatherColumns][]float64
 	line     []int // of each interval, 0 where the row is missing

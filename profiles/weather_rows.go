@@ -23,6 +23,10 @@ func (r *weatherReader) addRow(t int64, row []float64) {
 func (r *weatherReader) placeEarly() {
 	r.step = commonStep(r.first)
 	r.checked.t = noTime
+	if r.step < second || r.step > longestWeatherStep {
+		r.faultAt(r.first[0].line, r.time+1, "the step is %s; want a second to an hour, in which the sun moves by 15 degrees", stepText(r.step))
+		r.refused = true
+	}
 	for i, at := range r.first {
 		r.placeRow(at, r.early[i])
 	}
@@ -30,6 +34,9 @@ func (r *weatherReader) placeEarly() {
 }
 
 func (r *weatherReader) placeRow(at rowTime, row []float64) {
+	if r.refused {
+		return
+	}
 	if len(r.line) == 0 {
 		r.start = at.t
 	} else {
@@ -41,7 +48,13 @@ func (r *weatherReader) placeRow(at rowTime, row []float64) {
 			}
 			return
 		}
-		for n := ahead/r.step - 1; n > 0; n-- {
+		absent := int(ahead/r.step - 1)
+		if len(r.line)+absent > 4*r.count+int(longestGap/r.step) {
+			r.faultAt(at.line, r.time+1, "most rows are missing: the step is %s and up to here there are %d rows for %d intervals", stepText(r.step), r.count, len(r.line)+absent+1)
+			r.refused = true
+			return
+		}
+		for range absent {
 			r.putRow(nil, 0)
 		}
 	}
@@ -74,9 +87,6 @@ func (r *weatherReader) endRows() {
 		return
 	case r.step == 0:
 		r.placeEarly()
-	}
-	if r.step > longestWeatherStep {
-		r.faultAt(r.first[0].line, r.time+1, "the step is %s; want at most an hour, in which the sun moves by 15 degrees", stepText(r.step))
 	}
 	switch r.options.Stamped {
 	case "end":

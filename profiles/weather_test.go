@@ -160,6 +160,8 @@ func TestWeatherFaults(t *testing.T) {
 		{plainHeader + rows + "2025-06-01T18:20Z,850,25,4\n2025-06-01T19:00Z,850,25,4\n2025-06-01T20:00Z,850,25,4\n", site, "w.csv:4:1", []string{"not regular"}},
 		{plainHeader + rows + "2026-06-01T19:00Z,850,25,4\n2026-06-01T20:00Z,850,25,4\n", site, "w.csv:4:1", []string{"a gap"}},
 		{plainHeader + "2025-06-01T12:00Z,800,20,2\n2025-06-01T18:00Z,850,25,4\n", site, "w.csv:2:1", []string{"the step is 6 h"}},
+		{plainHeader + "2025-06-01T12:00:00.1Z,800,20,2\n2025-06-01T12:00:00.2Z,850,25,4\n", site, "w.csv:2:1", []string{"the step is 100ms"}},
+		{plainHeader + "2025-06-01T12:00:00Z,1,1,1\n2025-06-01T12:00:01Z,1,1,1\n2025-06-01T22:00Z,1,1,1\n2025-06-02T10:00Z,1,1,1\n2025-06-03T00:00Z,1,1,1\n", site, "w.csv:6:1", []string{"most rows are missing"}},
 		{plainHeader + rows + "2025-06-01T19:00Z,x,25,4\n", site, "w.csv:4:2", []string{"ghi: want a number"}},
 		{plainHeader + rows + "2025-06-01T19:00Z,-200,25,4\n", site, "w.csv:4:2", []string{"is not negative"}},
 		{plainHeader + rows + "2025-06-01T19:00Z,5000,25,4\n", site, "w.csv:4:2", []string{"check the unit"}},
