@@ -4,6 +4,7 @@ import (
 	"errors"
 	"fmt"
 	"io"
+	"slices"
 
 	"github.com/spf13/cobra"
 
@@ -51,7 +52,8 @@ func (c *console) check(args []string, caseName, csvFile, jsonFile string) error
 	}
 	if e != nil {
 		c.describe(out, e)
-		odd := e.Warnings
+		odd := append(append([]tables.Fault(nil), e.Warnings...), e.ReverseRisks()...)
+		tables.Faults(odd).Sort()
 		printFaults(out, "Odd, but possible", odd)
 		add("warning", odd)
 		var assumed []tables.Fault
@@ -61,7 +63,9 @@ func (c *console) check(args []string, caseName, csvFile, jsonFile string) error
 		printFaults(out, "Assumed for blank cells", assumed)
 		add("assumed", assumed)
 		if caseName == "" {
-			all = append(all, c.checkCases(out, st, e.Study.Cases)...)
+			wrong, more := c.checkCases(out, st, e.Study.Cases, odd)
+			add("warning", more)
+			all = append(all, wrong...)
 			add("error", all)
 		}
 	}
@@ -86,18 +90,25 @@ func place(n int) string {
 	return fmt.Sprint(n)
 }
 
-// checkCases lays every case over the study and collects what is wrong with it.
-func (c *console) checkCases(out io.Writer, st *opened, cases []string) (all tables.Faults) {
+// checkCases lays every case over the study and collects what is wrong with it, and
+// the risks of its reverse modes that the study itself does not have.
+func (c *console) checkCases(out io.Writer, st *opened, cases []string, told []tables.Fault) (all tables.Faults, odd []tables.Fault) {
 	if len(cases) == 0 {
-		return nil
+		return nil, nil
 	}
 	fmt.Fprintln(out, "Cases")
 	for _, name := range cases {
-		_, err := st.prepare(name)
+		e, err := st.prepare(name)
 		var faults tables.Faults
 		switch {
 		case err == nil:
 			fmt.Fprintf(out, "  %s: no errors\n", name)
+			for _, f := range e.ReverseRisks() {
+				if !slices.Contains(told, f) {
+					fmt.Fprintf(out, "    %s\n", f.Error())
+					odd = append(odd, f)
+				}
+			}
 		case errors.As(err, &faults):
 			fmt.Fprintf(out, "  %s: %s\n", name, count(len(faults), "error"))
 			all = append(all, faults...)
@@ -106,7 +117,7 @@ func (c *console) checkCases(out io.Writer, st *opened, cases []string) (all tab
 		}
 	}
 	fmt.Fprintln(out)
-	return all
+	return all, odd
 }
 
 func printFaults(out io.Writer, title string, faults []tables.Fault) {
