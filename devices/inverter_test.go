@@ -201,6 +201,9 @@ func TestAllowedRanges(t *testing.T) {
 		{"Q4", CategoryB, VoltageReactive, vq(3), -0.44, 0, t8},
 		{"Q4", CategoryA, VoltageReactive, vq(3), -0.25, 0, t8},
 		{"open loop response time", CategoryB, VoltageReactive, response, 1, 90, t8},
+		{"open loop response time", CategoryB, ActiveReactive, response, 0, 10, "5.3.4"}, // 0 is the default, 10 s
+		{"open loop response time", CategoryB, ConstantPowerFactor, response, 0, 10, "5.3.2"},
+		{"open loop response time", CategoryB, ConstantReactive, response, 0, 10, "5.3.5"},
 		{"P1", CategoryB, ActiveReactive, wp(0), 0, 0.4, t9},
 		{"P2", CategoryB, ActiveReactive, wp(1), 0.4, 0.8, t9},
 		{"P3", CategoryB, ActiveReactive, wp(2), 0.6, 1, t9},
