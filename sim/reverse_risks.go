@@ -44,7 +44,7 @@ func (e *Engine) ReverseRisks() []tables.Fault {
 	for i, r := range risks {
 		if r.worst > 0 && !worseInRow(risks, i) {
 			start, _ := e.in.axis.Bounds(r.step)
-			out.Add(r.settings.At, "%s", r.text(profiles.Format(start, e.in.axis.Zone)))
+			out.Add(r.settings.ReverseAt, "%s", r.text(profiles.Format(start, e.in.axis.Zone)))
 		}
 	}
 	out.Sort()

@@ -23,7 +23,7 @@ func TestReverseRisks(t *testing.T) {
 			}
 			continue
 		}
-		if len(got) != 1 || got[0].Pos.String() != "feeder/regulator-settings.csv:2" || !strings.Contains(got[0].Text, want) ||
+		if len(got) != 1 || got[0].Pos.String() != "feeder/regulator-settings.csv:2:6" || !strings.Contains(got[0].Text, want) ||
 			!strings.Contains(got[0].Text, `regulator "R" A: reverse is `+mode) ||
 			!strings.Contains(got[0].Text, "at 2025-03-03T01:00:00+00:00 generation behind it in its phase is 360 kW, load 144 kW (the least of the period: 144 kW)") {
 			t.Errorf("%s: %v, want %q", mode, got, want)

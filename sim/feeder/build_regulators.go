@@ -150,9 +150,7 @@ func (b *builder) tapSetting(s *regulatorSettingsRow, g *Regulator, what string)
 		out.LowestTap = s.Lowest.Value
 	}
 	b.reverseSettings(s, out, what)
-	if !g.read(s.Row.At) {
-		b.assumeReverse(s, out.Reverse)
-	}
+	b.assumeReverse(s, out.Reverse)
 	if out.Delay < 1 {
 		b.faults.Add(s.Delay.At, "%s: delay is at least 1 s, got %s s", what, amount(out.Delay))
 	}

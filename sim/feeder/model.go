@@ -245,7 +245,8 @@ type TapSettings struct {
 	HighestTap, LowestTap int
 
 	Reverse          ReverseMode
-	ReverseThreshold float64 // p.u. of the primary rating of the current transformer
+	ReverseAt        tables.Pos // of the mode
+	ReverseThreshold float64    // p.u. of the primary rating of the current transformer
 	// The reverse settings, in V and s as the forward ones, which fill their blanks.
 	ReverseSet, ReverseBandwidth, ReverseDelay, ReverseR, ReverseX float64
 }

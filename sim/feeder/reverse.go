@@ -52,6 +52,7 @@ func (b *builder) reverseSettings(s *regulatorSettingsRow, out *TapSettings, wha
 			out.Reverse = ReverseMode(m)
 		}
 	}
+	out.ReverseAt = s.Reverse.At
 	columns := []reverseColumn{
 		{"reverse set", s.ReverseSet, out.Set, &out.ReverseSet},
 		{"reverse bandwidth", s.ReverseBandwidth, out.Bandwidth, &out.ReverseBandwidth},
@@ -108,16 +109,6 @@ func (b *builder) assumeReverse(s *regulatorSettingsRow, mode ReverseMode) {
 			b.assumeMany(s.Row.At, "regulator-settings: "+c.what, "that of the forward sheet")
 		}
 	}
-}
-
-// read tells whether a row that stands for all units has been read for one of them.
-func (g *Regulator) read(row tables.Pos) bool {
-	for i := range g.Units {
-		if t := g.Units[i].Settings; t != nil && t.At == row {
-			return true
-		}
-	}
-	return false
 }
 
 // idle tells of a reverse setting in a row that names no mode.

@@ -51,13 +51,13 @@ func TestReverseSettings(t *testing.T) {
 	if len(listed) != 6 {
 		t.Errorf("listed: %v", listed)
 	}
-	// A row for all is told once.
+	// A row for all stands for three.
 	s = opened(t, with(small(), reverseRows("reg,all,122,2,30,,,follow,2,124,2,1,,0\n")...), "")
 	n := 0
 	for _, a := range s.Model.Assumed {
 		if strings.Contains(a.What, "reverse ldc") {
 			n++
-			if a.What != "regulator-settings: reverse ldc r [V] (blank in 1 row)" {
+			if a.What != "regulator-settings: reverse ldc r [V] (blank in 3 rows)" {
 				t.Errorf("assumed: %v", a)
 			}
 		}
