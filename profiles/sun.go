@@ -132,10 +132,27 @@ type Daylight struct {
 // some hours. Hourly data are means over the hour, so the sun is taken in the middle of
 // it, or of its sunlit part in the hours of sunrise and sunset.
 func DaylightOver(from, to int64, s Site) Daylight {
+	return daylightBetween(from, to, sunIsUp(from, s), sunIsUp(to, s), s)
+}
+
+// daylights returns the daylight of n intervals in a row.
+func daylights(start, step int64, n int, s Site) []Daylight {
+	list := make([]Daylight, n)
+	first := sunIsUp(start, s)
+	for k := range list {
+		from := start + int64(k)*step
+		last := sunIsUp(from+step, s)
+		list[k] = daylightBetween(from, from+step, first, last, s)
+		first = last
+	}
+	return list
+}
+
+// daylightBetween is DaylightOver where it is known whether the sun is up at the ends.
+func daylightBetween(from, to int64, first, last bool, s Site) Daylight {
 	middle := from + (to-from)/2
 	m := Sun(middle, s)
 	up := m.Zenith < 90
-	first, last := sunIsUp(from, s), sunIsUp(to, s)
 	switch {
 	case up && first && last:
 		return Daylight{m, 1}

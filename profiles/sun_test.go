@@ -75,7 +75,7 @@ func TestSunAgainstReference(t *testing.T) {
 			t.Fatalf("not numbers: %q", row)
 		}
 		sun := Sun(instant(t, row[0]+":00:00Z"), referenceSites[site])
-		d := apart(90-sun.TrueZenith, sun.Azimuth, elevation, azimuth)
+		d := angleBetween(90-sun.TrueZenith, sun.Azimuth, elevation, azimuth)
 		if d > 0.02 {
 			t.Errorf("%s at site %d: got elevation %.3f, azimuth %.3f; want %.3f, %.3f (%.3f° apart)",
 				row[0], site, 90-sun.TrueZenith, sun.Azimuth, elevation, azimuth, d)
@@ -85,8 +85,8 @@ func TestSunAgainstReference(t *testing.T) {
 	t.Logf("%d positions: worst %.4f°, mean %.4f°", len(rows)-1, worst, sum/float64(len(rows)-1))
 }
 
-// apart returns the angle between two directions in degrees.
-func apart(elevation1, azimuth1, elevation2, azimuth2 float64) float64 {
+// angleBetween returns the angle between two directions in degrees.
+func angleBetween(elevation1, azimuth1, elevation2, azimuth2 float64) float64 {
 	e1, e2 := elevation1*radians, elevation2*radians
 	d := (azimuth1 - azimuth2) * radians
 	h := math.Pow(math.Sin((e1-e2)/2), 2) + math.Cos(e1)*math.Cos(e2)*math.Pow(math.Sin(d/2), 2)

@@ -52,7 +52,7 @@ func (r *weatherReader) readTMY3() {
 	if len(r.faults) > 0 {
 		return
 	}
-	r.typical, r.step = true, hour
+	r.typical, r.tmy3, r.step = true, true, hour
 	r.start = dayNumber(nominalYear, 1, 1)*day - r.offset
 	r.line = make([]int, yearHours)
 	for c := range r.values {
@@ -169,10 +169,7 @@ func (r *weatherReader) readTMY3Row(line []byte, date, clock int) {
 		return
 	}
 	r.line[k] = r.lines.number
-	if r.years[0] == 0 {
-		r.years = [2]int{year, year}
-	}
-	r.years = [2]int{min(r.years[0], year), max(r.years[1], year)}
+	r.seeYear(year)
 	for c := range r.values {
 		r.values[c][k] = r.weatherCell(cells, r.column[c], c)
 	}
@@ -199,8 +196,8 @@ func (r *weatherReader) toIntervals(values []float64) {
 	}
 }
 
-// tmy3Assumed says what a typical year is.
-func (r *weatherReader) tmy3Assumed() string {
+// typicalAssumed says what a typical year is.
+func (r *weatherReader) typicalAssumed() string {
 	s := fmt.Sprintf("a typical year of months from %d to %d, laid over the period by month, day and hour of standard time; 29 February reads 28 February", r.years[0], r.years[1])
 	if r.leapRows > 0 {
 		s += fmt.Sprintf(" (%d rows of 29 February are left out)", r.leapRows)

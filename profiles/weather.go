@@ -63,7 +63,9 @@ const longestWeatherStep = hour
 // Wilcox and W. Marion, Users manual for TMY3 data sets, NREL/TP-581-43156, 2008),
 // which is known by its two header lines. Needed are the time and ghi, or dni with
 // dhi. Cells that are blank or hold −9900, −999, 9999 and the like are missing, as are
-// rows that were left out; gaps up to a day are estimated and counted in Assumed.
+// rows that were left out; gaps up to a day are estimated and counted in Assumed. A file
+// whose months come from different years, as those of a typical year do, is told by its
+// dates: month, day and hour go on where the year jumps.
 // Everything wrong with the file comes back together as tables.Faults; it
 // includes weather that cannot be that of the site: light at night, more light than
 // the sun gives.
@@ -86,7 +88,8 @@ func (w *Weather) Len() int { return len(w.points) }
 // Point returns the weather of interval k.
 func (w *Weather) Point(k int) WeatherPoint { return w.points[k] }
 
-// Interval returns interval k; that of a typical year is told in the year 2001.
+// Interval returns interval k; that of a typical year is told in one year, 2001 for TMY3,
+// else that of its first month.
 func (w *Weather) Interval(k int) (from, to int64) {
 	from = w.start + int64(k)*w.step
 	return from, from + w.step
@@ -142,9 +145,8 @@ func (w *Weather) Over(a Axis) (*Sunlight, error) {
 		return nil, fmt.Errorf("the period is empty: it ends at %s and starts at %s", Format(a.End, a.Zone), Format(a.Start, a.Zone))
 	}
 	l := &Sunlight{
-		grid:     grid{start: first, stamp: first, step: w.step, n: n, zone: a.Zone},
-		points:   make([]WeatherPoint, n),
-		daylight: make([]Daylight, n),
+		grid:   grid{start: first, stamp: first, step: w.step, n: n, zone: a.Zone},
+		points: make([]WeatherPoint, n),
 	}
 	for i := range n {
 		t := first + int64(i)*w.step
@@ -155,8 +157,8 @@ func (w *Weather) Over(a Axis) (*Sunlight, error) {
 				Format(t, a.Zone), w.File, Format(start, a.Zone), Format(end, a.Zone))
 		}
 		l.points[i] = w.points[k]
-		l.daylight[i] = DaylightOver(t, t+w.step, w.Site)
 	}
+	l.daylight = daylights(first, w.step, n, w.Site)
 	return l, nil
 }
 

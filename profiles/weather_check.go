@@ -115,7 +115,7 @@ func (r *weatherReader) checkClosure() {
 
 func (r *weatherReader) stamped() string {
 	switch {
-	case r.typical:
+	case r.tmy3:
 		return "end"
 	case r.options.Stamped == "":
 		return "start"
@@ -264,7 +264,7 @@ func (r *weatherReader) stampText(later int64) string {
 	}
 	s := fmt.Sprintf("it fits when its stamps are taken to be %s too %s: check the zone", stepText(wrong), way)
 	switch {
-	case r.typical:
+	case r.tmy3:
 		return s + " (the hours from UTC on the first line)"
 	case later == -r.step && r.stamped() == "start":
 		return s + ", or are the stamps the end of their intervals (stamped = \"end\")?"

@@ -9,13 +9,9 @@ import (
 // Weather; nil where there is a fault.
 func (r *weatherReader) finish() *Weather {
 	n := len(r.line)
-	r.daylight = make([]Daylight, n)
-	for k := range r.daylight {
-		from := r.start + int64(k)*r.step
-		r.daylight[k] = DaylightOver(from, from+r.step, r.site)
-	}
+	r.daylight = daylights(r.start, r.step, n, r.site)
 	if r.typical {
-		r.assumed = append(r.assumed, r.tmy3Assumed())
+		r.assumed = append(r.assumed, r.typicalAssumed())
 	}
 	if len(r.unused) > 0 {
 		r.assumed = append(r.assumed, fmt.Sprintf("columns that are not used: %s", joined(r.unused)))

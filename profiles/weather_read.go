@@ -23,7 +23,9 @@ type weatherReader struct {
 	site     Site
 	sited    bool
 	station  string
-	typical  bool
+	typical  bool // its months come from several years
+	tmy3     bool
+	moved    int64 // from a row's own time to its place in the typical year
 	offset   int64
 	start    int64
 	unused   []string

@@ -37,15 +37,20 @@ func (r *weatherReader) placeRow(at rowTime, row []float64) {
 	if r.refused {
 		return
 	}
+	r.seeYear(yearOf(at.t))
 	if len(r.line) == 0 {
 		r.start = at.t
 	} else {
+		if at.t = r.joinYears(at.t); at.t == noTime {
+			return
+		}
 		ahead := at.t - r.checked.t
 		if ahead <= 0 || ahead%r.step != 0 || ahead > longestGap+r.step {
-			r.irregular(at)
-			if ahead > 0 {
-				r.checked = at // one fault for one jump
-			}
+			// Told in the row's own year; the next row is held against this one, so that
+			// one jump is one fault.
+			r.checked.t -= r.moved
+			r.irregular(rowTime{at.t - r.moved, at.line})
+			r.checked = at
 			return
 		}
 		absent := int(ahead/r.step - 1)
@@ -60,6 +65,51 @@ func (r *weatherReader) placeRow(at rowTime, row []float64) {
 	}
 	r.checked = at
 	r.putRow(row, at.line)
+}
+
+// joinYears returns where a row belongs in the year of the rows before: its own time,
+// until month, day and hour go on while the year jumps. Typical years are put together so,
+// month by month; a year that jumps within a month is a slip. A 29 February that the year
+// does not have is noTime.
+func (r *weatherReader) joinYears(t int64) int64 {
+	const widestOffset = 15 * hour // of a clock from UTC
+	ahead := t + r.moved - r.checked.t
+	onward := ahead > 0 && ahead <= longestGap+r.step
+	if onward && r.moved == 0 {
+		return t
+	}
+	_, before, _ := civilDate(floorDiv(t-widestOffset, day))
+	_, after, _ := civilDate(floorDiv(t+widestOffset, day))
+	if !onward && before == after {
+		return t + r.moved
+	}
+	_, month, dom := civilDate(floorDiv(t, day))
+	for _, year := range [...]int{yearOf(r.checked.t), yearOf(r.checked.t) + 1} {
+		if dom > monthDays(year, month) && r.moved != 0 {
+			r.leapRows++
+			return noTime
+		}
+		image := dayNumber(year, month, min(dom, monthDays(year, month)))*day + floorMod(t, day)
+		if ahead := image - r.checked.t; ahead > 0 && ahead <= longestGap+r.step && ahead%r.step == 0 {
+			r.moved = image - t
+			r.typical = true
+			return image
+		}
+	}
+	return t + r.moved
+}
+
+func yearOf(t int64) int {
+	year, _, _ := civilDate(floorDiv(t, day))
+	return year
+}
+
+// seeYear keeps the first and the last year that is met.
+func (r *weatherReader) seeYear(year int) {
+	if r.years[0] == 0 {
+		r.years = [2]int{year, year}
+	}
+	r.years = [2]int{min(r.years[0], year), max(r.years[1], year)}
 }
 
 // putRow appends an interval; a nil row is a missing one.

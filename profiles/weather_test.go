@@ -158,7 +158,7 @@ func TestWeatherFaults(t *testing.T) {
 		{plainHeader + rows + "2025-06-01T18:00Z,850,25,4\n", site, "w.csv:4:1", []string{"stands twice"}},
 		{plainHeader + rows + "2025-06-01T17:00Z,850,25,4\n", site, "w.csv:4:1", []string{"goes back"}},
 		{plainHeader + rows + "2025-06-01T18:20Z,850,25,4\n2025-06-01T19:00Z,850,25,4\n2025-06-01T20:00Z,850,25,4\n", site, "w.csv:4:1", []string{"not regular"}},
-		{plainHeader + rows + "2026-06-01T19:00Z,850,25,4\n2026-06-01T20:00Z,850,25,4\n", site, "w.csv:4:1", []string{"a gap"}},
+		{plainHeader + rows + "2026-06-20T19:00Z,850,25,4\n2026-06-20T20:00Z,850,25,4\n", site, "w.csv:4:1", []string{"a gap"}},
 		{plainHeader + "2025-06-01T12:00Z,800,20,2\n2025-06-01T18:00Z,850,25,4\n", site, "w.csv:2:1", []string{"the step is 6 h"}},
 		{plainHeader + "2025-06-01T12:00:00.1Z,800,20,2\n2025-06-01T12:00:00.2Z,850,25,4\n", site, "w.csv:2:1", []string{"the step is 100ms"}},
 		{plainHeader + "2025-06-01T12:00:00Z,1,1,1\n2025-06-01T12:00:01Z,1,1,1\n2025-06-01T22:00Z,1,1,1\n2025-06-02T10:00Z,1,1,1\n2025-06-03T00:00Z,1,1,1\n", site, "w.csv:6:1", []string{"most rows are missing"}},
@@ -229,6 +229,36 @@ func TestWeatherOddValues(t *testing.T) {
 	if len(w.Warnings) != 1 || !strings.Contains(w.Warnings[0].Text, "differs from dni·cos z + dhi") {
 		t.Errorf("closure: %v", w.Warnings)
 	}
+}
+
+// A typical year in a table of its own: each month of another year, all of them hourly on
+// standard time, is one year; a slip within a month is not.
+func TestWeatherOfSeveralYears(t *testing.T) {
+	var b strings.Builder
+	b.WriteString(plainHeader)
+	var want []float64
+	for m := 1; m <= 12; m++ {
+		year := []int{2003, 1998, 2010, 1996, 1999, 2007, 2001, 1995, 2002, 2009, 1997, 2005}[m-1]
+		for i := range monthDays(2003, m) * 24 {
+			from := dayNumber(year, m, 1)*day + int64(i)*hour + 7*hour
+			g := lightAt(from, from+hour, denverSite)
+			want = append(want, g)
+			fmt.Fprintf(&b, "%s,%.6f,10,2\n", at(from-7*hour, time.UTC).Format("2006-01-02T15:04-07:00")[:16]+"-07:00", g)
+		}
+	}
+	w := mustOpenWeather(t, b.String(), WeatherOptions{Site: &denverSite})
+	if !w.Typical || w.Len() != 8760 || len(w.Warnings) != 0 || !strings.Contains(strings.Join(w.Assumed, ""), "months from 1995 to 2010") {
+		t.Fatalf("typical %v, %d hours, %v, %q", w.Typical, w.Len(), w.Warnings, w.Assumed)
+	}
+	for k := range want {
+		near(t, fmt.Sprint("hour ", k), w.Point(k).GHI, want[k], 1e-5)
+	}
+	l, err := w.Over(yearAxis(t, 2025, zone(t, "America/Denver")))
+	if err != nil || len(l.points) != 8760 || l.points[4000] != w.points[4000] {
+		t.Errorf("over 2025: %v", err)
+	}
+	slip := strings.Replace(b.String(), "2007-06-11T12:00", "2008-06-11T12:00", 1)
+	wantWeatherFault(t, slip, WeatherOptions{Site: &denverSite}, "w.csv:3878:1", "a gap", "2007-06-11T19:00")
 }
 
 // A file on the clock of Denver over both odd days is the same instants.
