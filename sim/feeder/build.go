@@ -90,7 +90,10 @@ func (b *builder) build() *Model {
 	}
 	b.capacitors()
 	b.loads()
+	b.functions()
 	b.generators()
+	b.batteries()
+	b.chargers()
 	if len(*b.faults) == before && !b.torn {
 		b.floating()
 	}

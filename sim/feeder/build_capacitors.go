@@ -167,7 +167,7 @@ func (b *builder) capacitorSettings(s *capacitorSettingsRow, k *Capacitor, what 
 	phases := b.model.Nodes[k.Node].Phases
 	where := fmt.Sprintf("node %q", b.model.Nodes[k.Node].Name)
 	if watched {
-		out.Watched = b.watched(s, what)
+		out.Watched = b.watched(s.Watched, s.Row.At, what, "control "+s.Control.Value)
 		if out.Watched == nil {
 			return out
 		}
@@ -201,7 +201,7 @@ func (b *builder) controlPhase(c tables.Text, phases []Phase, where, what string
 
 func (b *builder) clock(c tables.Text, row tables.Pos, what, name string) float64 {
 	if !c.Given {
-		b.faults.Add(row, "%s: control time needs %s as hh:mm", what, name)
+		b.faults.Add(row, "%s: %s is blank: want hh:mm", what, name)
 		return math.NaN()
 	}
 	h, m, ok := strings.Cut(c.Value, ":")
@@ -215,9 +215,9 @@ func (b *builder) clock(c tables.Text, row tables.Pos, what, name string) float6
 }
 
 // watched finds the element that a control measures.
-func (b *builder) watched(s *capacitorSettingsRow, what string) *Watched {
-	if !s.Watched.Given {
-		b.faults.Add(s.Row.At, "%s: control %s needs a watched section (or a switch, transformer or regulator)", what, s.Control.Value)
+func (b *builder) watched(c tables.Text, row tables.Pos, what, why string) *Watched {
+	if !c.Given {
+		b.faults.Add(row, "%s: %s needs a watched section (or a switch, transformer or regulator)", what, why)
 		return nil
 	}
 	var found []Watched
@@ -225,7 +225,7 @@ func (b *builder) watched(s *capacitorSettingsRow, what string) *Watched {
 	look := func(kind string, n int, name func(int) string) {
 		for i := range n {
 			names = append(names, name(i))
-			if name(i) == s.Watched.Value {
+			if name(i) == c.Value {
 				found = append(found, Watched{kind, i})
 			}
 		}
@@ -237,12 +237,12 @@ func (b *builder) watched(s *capacitorSettingsRow, what string) *Watched {
 	look("regulator", len(m.Regulators), func(i int) string { return m.Regulators[i].Name })
 	switch len(found) {
 	case 0:
-		b.faults.Add(s.Watched.At, "%s: there is no section, switch, transformer or regulator %q%s", what, s.Watched.Value, tables.Hint(s.Watched.Value, names))
+		b.faults.Add(c.At, "%s: there is no section, switch, transformer or regulator %q%s", what, c.Value, tables.Hint(c.Value, names))
 		return nil
 	case 1:
 		return &found[0]
 	}
-	b.faults.Add(s.Watched.At, "%s: %q is both a %s and a %s; give one of them another name", what, s.Watched.Value, found[0].Kind, found[1].Kind)
+	b.faults.Add(c.At, "%s: %q is both a %s and a %s; give one of them another name", what, c.Value, found[0].Kind, found[1].Kind)
 	return nil
 }
 

@@ -201,22 +201,18 @@ func (b *builder) generators() {
 func (b *builder) generator(r *generatorRow) {
 	what := "generator " + strconv.Quote(r.Name.Value)
 	n, c, ps, pairs, ok := b.stand(r.Node, r.Phases, r.Connection, what)
-	for _, x := range []struct {
-		name  string
-		given bool
-		at    tables.Pos
-	}{{"function", r.Function.Given, r.Function.At}, {"dc", r.DC.Given, r.DC.At}, {"tilt", r.Tilt.Given, r.Tilt.At}, {"azimuth", r.Azimuth.Given, r.Azimuth.At},
-		{"losses", r.Losses.Given, r.Losses.At}, {"temperature coefficient", r.Coefficient.Given, r.Coefficient.At}, {"inverter efficiency", r.Efficiency.Given, r.Efficiency.At}} {
-		if x.given {
-			b.faults.Add(x.at, "%s: %s %s; give a profile or real [kW]", what, x.name, later)
-			ok = false
-		}
-	}
 	if r.Row.Bad {
 		return
 	}
-	if !r.Real.Given && !r.Profile.Given {
-		b.faults.Add(r.Row.At, "%s: how much does it give? give real [kW] or a profile", what)
+	solar, okSolar := b.solar(r, what)
+	function, okFunction := b.functionOf(r.Function, what)
+	ok = ok && okSolar && okFunction
+	if !r.Real.Given && !r.Profile.Given && solar == nil {
+		b.faults.Add(r.Row.At, "%s: how much does it give? give real [kW], a profile, or for solar dc [kW]", what)
+		ok = false
+	}
+	if function >= 0 && r.Factor.Given {
+		b.faults.Add(r.Factor.At, "%s: power factor and function %q are two sources of its reactive power; leave one blank", what, r.Function.Value)
 		ok = false
 	}
 	if f := r.Factor.Value; f == 0 || math.Abs(f) > 1 {
@@ -230,5 +226,5 @@ func (b *builder) generator(r *generatorRow) {
 		return
 	}
 	b.model.Generators = append(b.model.Generators, Generator{Name: r.Name.Value, At: r.Row.At, Node: n, Connection: c, Phases: ps, Pairs: pairs,
-		Kind: r.Kind.Value, KVA: r.Rating.Value, KW: r.Real.Value, PF: r.Factor.Value, Profile: r.Profile.Value})
+		Kind: r.Kind.Value, KVA: r.Rating.Value, KW: r.Real.Value, PF: r.Factor.Value, Profile: r.Profile.Value, Function: function, Solar: solar})
 }

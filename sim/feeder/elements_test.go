@@ -123,7 +123,7 @@ func TestCapacitorControls(t *testing.T) {
 		{"power factor on,power factor off,watched section", "power factor,1.2,-0.99,s1", "2:3", "between -1 and 1 and not 0"},
 		{"temperature on [degC],temperature off [degC]", "temperature,30,25", "2", "needs the profile"},
 		{"time on,time off", "time,24:00,5:00", "2:3", `time on "24:00": want hh:mm`},
-		{"time on,time off", "time,5:00,", "2", "control time needs time off"},
+		{"time on,time off", "time,5:00,", "2", "time off is blank"},
 		{"time on,time off", "time,5:00,05:00", "2:4", "are the same"},
 		{"time on,time off,voltage on [V],voltage off [V]", "time,5:00,6:00,127,117", "2:5", "on must be the lower"},
 	} {

@@ -29,6 +29,9 @@ type feederTables struct {
 	energies          []energyRow
 	zips              []zipRow
 	generators        []generatorRow
+	functions         []functionRow
+	batteries         []batteryRow
+	chargers          []chargerRow
 
 	folder  string
 	assumed []Assumption
@@ -40,8 +43,9 @@ type feederTables struct {
 // second list are not read yet.
 func tableNames() (read, notYet []string) {
 	return []string{"source", "nodes", "sections", "switches", "constructions", "impedances", "spacings", "conductors", "cables",
-			"transformers", "regulators", "regulator-settings", "capacitors", "capacitor-settings", "loads", "energies", "zip", "generators"},
-		[]string{"batteries", "chargers", "inverter-functions", "measurements"}
+			"transformers", "regulators", "regulator-settings", "capacitors", "capacitor-settings", "loads", "energies", "zip", "generators",
+			"inverter-functions", "batteries", "chargers"},
+		[]string{"measurements"}
 }
 
 // tableReader reads the tables of one study and its case.
@@ -81,6 +85,9 @@ func (s *Study) readTables(folder string, faults *tables.Faults) *feederTables {
 	t.energies = readTable[energyRow](r, "energies", nil)
 	t.zips = readTable[zipRow](r, "zip", nil)
 	t.generators = readTable[generatorRow](r, "generators", nil)
+	t.functions = readTable[functionRow](r, "inverter-functions", nil)
+	t.batteries = readTable[batteryRow](r, "batteries", nil)
+	t.chargers = readTable[chargerRow](r, "chargers", nil)
 	_, notYet := tableNames()
 	for _, name := range notYet {
 		for _, f := range []string{folder, r.cases} {

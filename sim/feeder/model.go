@@ -73,6 +73,9 @@ type Model struct {
 	Capacitors    []Capacitor
 	Loads         []Load
 	Generators    []Generator
+	Functions     []InverterFunction
+	Batteries     []Battery
+	Chargers      []Charger
 	Assumed       []Assumption
 
 	index map[string]int
@@ -343,6 +346,8 @@ type Generator struct {
 	KW         float64 // constant output where no profile is given; NaN none
 	PF         float64 // signed: positive delivers reactive power
 	Profile    string
+	Function   int    // into Model.Functions; −1: constant power factor PF
+	Solar      *Solar // output from weather; nil: from the profile
 }
 
 // Unknown tells whether a number of the model was left blank.

@@ -84,6 +84,12 @@ func (b *builder) borrow(l *link, set []phaseSet) {
 	for i := range b.t.generators {
 		want(b.t.generators[i].Node, b.t.generators[i].Phases)
 	}
+	for i := range b.t.batteries {
+		want(b.t.batteries[i].Node, b.t.batteries[i].Phases)
+	}
+	for i := range b.t.chargers {
+		want(b.t.chargers[i].Node, b.t.chargers[i].Phases)
+	}
 	p, q := l.toPhases[0], l.toPhases[1]
 	if !wanted[q] {
 		l.toPhases = []Phase{p}
@@ -371,6 +377,16 @@ func (b *builder) floating() {
 	for i := range m.Generators {
 		if m.Generators[i].Connection == Wye {
 			tell(m.Generators[i].At, m.Generators[i].Node, "generator %q", m.Generators[i].Name)
+		}
+	}
+	for i := range m.Batteries {
+		if m.Batteries[i].Connection == Wye {
+			tell(m.Batteries[i].At, m.Batteries[i].Node, "battery %q", m.Batteries[i].Name)
+		}
+	}
+	for i := range m.Chargers {
+		if m.Chargers[i].Connection == Wye {
+			tell(m.Chargers[i].At, m.Chargers[i].Node, "charger %q", m.Chargers[i].Name)
 		}
 	}
 	for i := range m.Regulators {
