@@ -315,6 +315,9 @@ func (e *Engine) traceRow(h hop, near, far int) TraceRow {
 	for _, p := range m.Nodes[far].Phases {
 		i, carried := enter[e.net.At[near][p]]
 		v, _ := e.v120(far, p)
+		if !carried {
+			i = -enter[e.net.At[far][p]] // a leg, or a phase that begins here: what comes out
+		}
 		tp := TracePhase{Phase: p, V120: v, Current: i, Change: math.NaN()}
 		if before, ok := e.v120(near, p); ok {
 			tp.Change = v - before

@@ -26,9 +26,23 @@ type inputs struct {
 	driver     []driver     // by injection
 	loadOf     []int        // by injection: load, or −1
 	generator  []int        // by injection: generator, or −1
-	energy     [][]float64  // by load with an energy: kW by month of the axis; nil else
-	months     []string
-	monthOf    func(step int) int
+	batteryOf  []int        // by injection: battery, or −1
+	chargerOf  []int        // by injection: charger, or −1
+
+	// Inverters with functions: their groups and laws, and which group each
+	// generator and battery has (−1: none).
+	groups           []powerflow.Group
+	laws             []*inverterLaw
+	groupOfGenerator []int
+	groupOfBattery   []int
+	batteryBranches  [][]int
+	batterySeries    []int
+	batteryScale     []float64
+	chargerBranches  [][]int
+
+	energy  [][]float64 // by load with an energy: kW by month of the axis; nil else
+	months  []string
+	monthOf func(step int) int
 
 	fixed   []fixedVoltage
 	outside []int // by capacitor: series of the temperature, or −1
@@ -90,6 +104,12 @@ func newInputs(st *feeder.Study, net *network.Network) (*inputs, error) {
 	for i := range m.Generators {
 		in.generate(i, &m.Generators[i], net, find, use, &faults, st.Settings.ScaleGeneration)
 	}
+	for i := range m.Batteries {
+		in.battery(i, &m.Batteries[i], net, find, use)
+	}
+	for i := range m.Chargers {
+		in.charge(i, &m.Chargers[i], net)
+	}
 	in.outside = make([]int, len(m.Capacitors))
 	for i := range m.Capacitors {
 		in.outside[i] = -1
@@ -147,6 +167,8 @@ func branches(net *network.Network, node int, c feeder.Connection, phases []feed
 }
 
 func (in *inputs) add(j powerflow.Injection, d driver, share complex128, load, generator int) {
+	in.batteryOf = append(in.batteryOf, -1)
+	in.chargerOf = append(in.chargerOf, -1)
 	in.injections = append(in.injections, j)
 	in.driver = append(in.driver, d)
 	in.share = append(in.share, share)
@@ -224,11 +246,79 @@ func (in *inputs) generate(i int, g *feeder.Generator, net *network.Network, fin
 		}
 	}
 	share := complex(k*real, k*real*tan)
+	group := -1
+	if g.Function >= 0 {
+		// The law reads what the whole could deliver from its first member.
+		group = in.group()
+		share = complex(k*float64(len(js))*real, 0)
+	}
+	in.groupOfGenerator = append(in.groupOfGenerator, group)
 	for _, j := range js {
 		j.PC, j.QC, j.Generator = 1, 1, true
 		j.Size = g.KVA * 1000 / float64(len(js))
+		in.member(&j, group)
 		in.add(j, d, share, -1, i)
 	}
+}
+
+// group begins the group of an inverter.
+func (in *inputs) group() int {
+	law := &inverterLaw{}
+	in.laws = append(in.laws, law)
+	in.groups = append(in.groups, powerflow.Group{Law: law})
+	return len(in.groups) - 1
+}
+
+// member makes the injection that is added next one of a group's.
+func (in *inputs) member(j *powerflow.Injection, group int) {
+	if group < 0 {
+		return
+	}
+	j.Group = int32(group + 1)
+	in.groups[group].Members = append(in.groups[group].Members, int32(len(in.injections)))
+}
+
+// battery adds a storage unit; its power is set at every instant.
+func (in *inputs) battery(i int, b *feeder.Battery, net *network.Network, find finder, use func(*profiles.Series) int) {
+	js := branches(net, b.Node, b.Connection, b.Phases, b.Pairs)
+	group := -1
+	if b.Function >= 0 {
+		group = in.group()
+	}
+	in.groupOfBattery = append(in.groupOfBattery, group)
+	series, scale := -1, 1.0
+	if s := find(b.Profile, b.At, "pu", "kW"); s != nil {
+		series = use(s)
+		if s.Unit == "pu" {
+			scale = b.KW
+		}
+	}
+	in.batterySeries = append(in.batterySeries, series)
+	in.batteryScale = append(in.batteryScale, scale)
+	var branches []int
+	for _, j := range js {
+		j.PC, j.QC, j.Generator = 1, 1, true
+		j.Size = b.KVA * 1000 / float64(len(js))
+		in.member(&j, group)
+		branches = append(branches, len(in.injections))
+		in.add(j, driver{-1, -1, -1}, 0, -1, -1)
+		in.batteryOf[len(in.batteryOf)-1] = i
+	}
+	in.batteryBranches = append(in.batteryBranches, branches)
+}
+
+// charge adds a charging point, a load of constant power that is set at every instant.
+func (in *inputs) charge(i int, c *feeder.Charger, net *network.Network) {
+	js := branches(net, c.Node, c.Connection, c.Phases, c.Pairs)
+	var branches []int
+	for _, j := range js {
+		j.PC, j.QC = 1, 1
+		j.Size = c.KW * 1000 / float64(len(js))
+		branches = append(branches, len(in.injections))
+		in.add(j, driver{-1, -1, -1}, 0, -1, -1)
+		in.chargerOf[len(in.chargerOf)-1] = i
+	}
+	in.chargerBranches = append(in.chargerBranches, branches)
 }
 
 // months lists the months that the axis touches and tells that of each step.

@@ -42,6 +42,7 @@ func (e *Engine) solve(tol powerflow.Tolerance) (bool, error) {
 			e.state.Generation[g] -= s
 		}
 	}
+	e.plantPowers()
 	e.sources()
 	return true, nil
 }
@@ -112,6 +113,8 @@ func (e *Engine) Solve(step int, p Positions) (*Instant, error) {
 	e.Reset()
 	start, _ := e.in.axis.Bounds(step)
 	out := &Instant{Start: start}
+	e.plants.reset(start)
+	e.steady = true
 	switch {
 	case p.Taps != nil:
 		copy(e.state.Taps, p.Taps)
@@ -124,7 +127,7 @@ func (e *Engine) Solve(step int, p Positions) (*Instant, error) {
 	}
 	e.anchored = false
 	e.in.at(step, &e.input)
-	ok, err := e.solveExact()
+	ok, err := e.solveExact(start)
 	if err != nil {
 		return nil, err
 	}

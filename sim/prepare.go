@@ -46,6 +46,8 @@ type Engine struct {
 	flow    *powerflow.Solver
 	in      *inputs
 	devices []*device
+	plants  plants
+	steady  bool  // lags are left out: at start-up, and of a single instant
 	unitAt  []int // by Model.Regulators: position of its first unit in State.Taps
 
 	// The state of the run, and the places that one instant is worked out in.
@@ -116,7 +118,7 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 	if err != nil {
 		return nil, err
 	}
-	flow, err := powerflow.New(net, in.injections)
+	flow, err := powerflow.New(net, in.injections, in.groups...)
 	if err != nil {
 		var faults tables.Faults
 		faults.Add(m.Sources[0].At, "%v", err)
@@ -134,7 +136,9 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 		Flow: make([]complex128, net.Offsets[len(net.Elements)]), Coupling: make([]complex128, len(net.Couplings)),
 		Source: make([][3]complex128, len(m.Sources)),
 		Load:   make([]complex128, len(m.Loads)), Generation: make([]complex128, len(m.Generators)),
-		Closed: make([]bool, len(m.Capacitors)),
+		Closed:  make([]bool, len(m.Capacitors)),
+		Storage: make([]complex128, len(m.Batteries)), Charging: make([]complex128, len(m.Chargers)),
+		Stored: make([]float64, len(m.Batteries)), Curtailed: make([]float64, len(m.Generators)),
 	}
 	e.solution = flow.NewSolution()
 	e.state.V = e.solution.V
@@ -143,6 +147,9 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 	e.ratio = make([]float64, len(net.Couplings))
 	e.source = make([]complex128, len(net.Fixed))
 	e.drawn = make([]complex128, len(in.injections))
+	if err := e.preparePlants(in); err != nil {
+		return nil, err
+	}
 	for i := range m.Regulators {
 		e.regulator(i, o)
 	}

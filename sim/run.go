@@ -34,6 +34,8 @@ const startUp = 24 * 3600 * devices.Second
 func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outcome, error) {
 	e.Reset()
 	out := &results.Outcome{Paths: map[string]int{}}
+	e.plants.reset(e.in.axis.Start)
+	e.steady = true
 	if !e.Study.Settings.Run.Given {
 		moving, _, err := e.settle(0)
 		if err != nil {
@@ -43,9 +45,12 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 	}
 	clear(e.paths)
 	e.anchored = false
+	e.plants.reset(e.in.axis.Start)
+	e.steady = false
 	out.Taps = append(out.Taps, e.state.Taps...)
 	out.Closed = append(out.Closed, e.state.Closed...)
-	r := &runner{Engine: e, recorders: recorders, out: out}
+	r := &runner{Engine: e, recorders: recorders, out: out,
+		generated: make([]float64, len(e.net.Model.Generators)), curtailed: make([]float64, len(e.net.Model.Generators))}
 	r.coarse = newCoarse(e)
 	n := e.in.axis.Steps()
 	for step := range n {
@@ -60,6 +65,7 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 		out.Paths[p.String()] = k
 	}
 	out.CoarseAt = r.coarse.names(e)
+	out.Plants = r.totals()
 	return out, nil
 }
 
@@ -78,7 +84,7 @@ func (e *Engine) settle(step int) (moving []string, actions int, err error) {
 	e.in.at(step, &e.input)
 	now, at := start, 0
 	for {
-		ok, err := e.solveExact()
+		ok, err := e.solveExact(start)
 		if err != nil {
 			return nil, actions, err
 		}
@@ -176,10 +182,22 @@ func (e *Engine) nearEdge() bool {
 }
 
 // solveExact solves at the contract's tolerance and marks the solution as not yet
-// exact.
-func (e *Engine) solveExact() (bool, error) {
+// exact. Batteries that follow a flow are moved until they rest, at the inputs as they
+// are; one that swings is taken as it is after dispatchRounds.
+func (e *Engine) solveExact(now devices.Time) (bool, error) {
 	e.exact = false
-	return e.solve(powerflow.Contract)
+	e.setPlants(now)
+	for range dispatchRounds {
+		ok, err := e.solve(powerflow.Contract)
+		if !ok || err != nil {
+			return ok, err
+		}
+		if !e.follow(now) {
+			break
+		}
+	}
+	e.solvedPlants()
+	return true, nil
 }
 
 func (e *Engine) due() devices.Time {
@@ -201,6 +219,8 @@ type runner struct {
 	acted     bool // since the last solution
 	action    results.Action
 	record    results.Step
+
+	generated, curtailed []float64 // kWh by generator
 }
 
 // step runs the events of one step.
@@ -219,7 +239,7 @@ func (r *runner) step(step int) error {
 	fresh, seen := true, false
 	for {
 		if fresh {
-			ok, err := e.solveExact()
+			ok, err := e.solveExact(now)
 			if err != nil {
 				return err
 			}
@@ -249,11 +269,14 @@ func (r *runner) step(step int) error {
 			fresh = true
 			continue
 		}
-		next := min(due, turn, end)
+		next := min(due, turn, end, e.nextPlant(now))
 		if err := r.interval(now, next); err != nil {
 			return err
 		}
 		at = 0
+		if e.advancePlants(now, next, r) {
+			fresh = true
+		}
 		if now = next; now >= end {
 			break
 		}

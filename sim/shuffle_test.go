@@ -67,7 +67,7 @@ func cells(t *testing.T, name string, data []byte) [][]string {
 			}
 			all[k] = moved
 		}
-	case "operations.csv", "losses.csv", "loading.csv", "duty.csv", "network.csv", "places.csv":
+	case "operations.csv", "losses.csv", "loading.csv", "duty.csv", "network.csv", "places.csv", "plants.csv":
 		slices.SortStableFunc(all[1:], func(a, b []string) int { return slices.Compare(a[:min(4, len(a))], b[:min(4, len(b))]) })
 	}
 	return all

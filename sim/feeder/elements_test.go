@@ -189,11 +189,23 @@ func TestLoadAmounts(t *testing.T) {
 	}
 }
 
-func TestRefusedUntilLater(t *testing.T) {
-	wantFault(t, with(small(), "feeder/generators.csv", "generator,node,phases,kind,rating [kVA],dc [kW]\ng,n2,ABC,solar,5,6\n"), "feeder/generators.csv:2:6", "dc comes with a later version")
-	wantFault(t, with(small(), "feeder/generators.csv", "generator,node,phases,kind,rating [kVA],real [kW],function\ng,n2,ABC,solar,5,5,vv\n"), "feeder/generators.csv:2:7", "function comes with a later version")
-	wantFault(t, with(small(), "feeder/generators.csv", "generator,node,phases,kind,rating [kVA]\ng,n2,ABC,solar,5\n"), "feeder/generators.csv:2", "give real [kW] or a profile")
-	for _, n := range []string{"batteries", "chargers", "inverter-functions", "measurements"} {
+func TestPlantFaults(t *testing.T) {
+	g := "generator,node,phases,kind,rating [kVA],profile,dc [kW],function\n"
+	wantFault(t, with(small(), "feeder/generators.csv", "generator,node,phases,kind,rating [kVA],dc [kW]\ng,n2,ABC,wind,5,6\n"), "feeder/generators.csv:2:6", "belongs to kind solar")
+	wantFault(t, with(small(), "feeder/generators.csv", g+"g,n2,ABC,solar,5,sun,6,\n"), "feeder/generators.csv:2", "given twice")
+	wantFault(t, with(small(), "feeder/generators.csv", "generator,node,phases,kind,rating [kVA],real [kW],function\ng,n2,ABC,solar,5,5,vv\n"), "feeder/generators.csv:2:7", `no function "vv"`)
+	wantFault(t, with(small(), "feeder/generators.csv", "generator,node,phases,kind,rating [kVA]\ng,n2,ABC,solar,5\n"), "feeder/generators.csv:2", "give real [kW], a profile")
+	b := "battery,node,phases,energy [kWh],power [kW],dispatch,target [kW],watched section,reserve [%]\n"
+	wantFault(t, with(small(), "feeder/batteries.csv", b+"b,n2,ABC,40,10,peak shaving,,s1,\n"), "feeder/batteries.csv:2", "needs target")
+	wantFault(t, with(small(), "feeder/batteries.csv", b+"b,n2,ABC,40,10,self-consumption,,,\n"), "feeder/batteries.csv:2", "needs a watched section")
+	wantFault(t, with(small(), "feeder/batteries.csv", b+"b,n2,ABC,40,10,schedule,,,120\n"), "feeder/batteries.csv:2:9", "at most 100 %")
+	c := "charger,node,phases,power [kW],arrival,departure,energy [kWh],charging,from,to\n"
+	wantFault(t, with(small(), "feeder/chargers.csv", c+"c,n2,A,7,18:00,25:00,20,unmanaged,,\n"), "feeder/chargers.csv:2:6", "want hh:mm")
+	wantFault(t, with(small(), "feeder/chargers.csv", c+"c,n2,A,7,18:00,7:00,20,unmanaged,1:00,5:00\n"), "feeder/chargers.csv:2", "it is unmanaged")
+	f := "function,reactive,v1 [pu],reactive power [%]\n"
+	wantFault(t, with(small(), "feeder/inverter-functions.csv", f+"f,constant reactive power,,\n"), "feeder/inverter-functions.csv:2", "reactive power is blank")
+	wantFault(t, with(small(), "feeder/inverter-functions.csv", f+"f,constant power factor,0.9,\n"), "feeder/inverter-functions.csv:2:3", "belongs to voltage-reactive power")
+	for _, n := range []string{"measurements"} {
 		wantFault(t, with(small(), "feeder/"+n+".csv", "a,b\n1,2\n"), "feeder/"+n+".csv:2", "comes with a later version")
 		opened(t, with(small(), "feeder/"+n+".csv", "a,b\n"), "")
 	}

@@ -221,6 +221,16 @@ func (m *Meter) readPowers(s *State, r *Reading) {
 	for _, va := range s.Generation {
 		r.Generation += va
 	}
+	for _, va := range s.Storage {
+		if real(va) >= 0 {
+			r.Generation += va
+		} else {
+			r.Load -= va
+		}
+	}
+	for _, va := range s.Charging {
+		r.Load += va
+	}
 }
 
 // power returns Σ V·conj(I) over an element's terminals, VA.

@@ -79,8 +79,13 @@ type State struct {
 	Source [][3]complex128
 	// Load and Generation are VA, by Model.Loads and Model.Generators.
 	Load, Generation []complex128
-	Taps             []int  // by regulator unit
-	Closed           []bool // by Model.Capacitors
+	// Storage is what batteries deliver (negative where they charge) and Charging what
+	// chargers draw, VA; Stored is what batteries hold, kWh, and Curtailed what
+	// generators' functions take from their available power, kW.
+	Storage, Charging []complex128
+	Stored, Curtailed []float64
+	Taps              []int  // by regulator unit
+	Closed            []bool // by Model.Capacitors
 }
 
 // DeviceState is what duty.csv counts about one of Plan.Devices over an interval.
@@ -134,9 +139,18 @@ type Outcome struct {
 	Paths map[string]int
 	// Hunting counts the instants at which a device was found hunting.
 	Hunting []HuntingEvent
+	// Plants is what every generator, battery and charger did.
+	Plants []PlantRow
 	// CoarseAt names regulators at which the mean change of the measured voltage from
 	// step to step exceeds the bandwidth.
 	CoarseAt []string
+}
+
+// PlantRow is what a generator, a battery or a charger did over the period, kWh at
+// its terminals. Of a battery, drawn = delivered + losses + change of what it stores.
+type PlantRow struct {
+	Name, Kind                                            string
+	Delivered, Drawn, Curtailed, Losses, Change, Unserved float64
 }
 
 // HuntingEvent is an instant at which a device began to hunt.

@@ -72,6 +72,9 @@ func (w *Writer) writeRow() error {
 	if err == nil {
 		err = w.writeDevices()
 	}
+	if err == nil && w.storage != nil {
+		err = w.writeStorage()
+	}
 	w.row.steps = 0
 	return err
 }

@@ -30,6 +30,7 @@ type Writer struct {
 	closed bool
 
 	steps, voltages, flows, devices, operations *outFile
+	storage                                     *outFile // nil without batteries
 	hashes                                      map[string]string
 
 	places []int // of voltages.csv, into Meter.Points
@@ -45,6 +46,7 @@ type Writer struct {
 	trouble []troubleOut   // the first steps that are not OK, at most troubleKept
 	balance balanceCheck
 	flowNow []flowReading
+	stored  storageReading
 }
 
 // balanceCheck is how well the balance of power closed over all solved intervals.
@@ -175,7 +177,11 @@ func (w *Writer) open() (err error) {
 		{&w.flows, "flows.csv", w.flowsHeader()},
 		{&w.devices, "devices.csv", w.devicesHeader()},
 		{&w.operations, "operations.csv", operationsHeader[:]},
+		{&w.storage, "storage.csv", w.storageHeader()},
 	} {
+		if len(x.header) == 0 {
+			continue // nothing of the kind in the model
+		}
 		if *x.file, err = createFile(w.folder.temp, x.name); err != nil {
 			return err
 		}
@@ -263,6 +269,7 @@ func (w *Writer) Step(s *Step) error {
 		for i, e := range w.ends {
 			w.flowNow[i].read(e, s.Last)
 		}
+		w.stored.read(s.Last)
 	}
 	w.row.add(s, &w.pend)
 	if s.Status == OK {
@@ -300,7 +307,11 @@ func (w *Writer) Abort() error {
 }
 
 func (w *Writer) logs() []*outFile {
-	return []*outFile{w.steps, w.voltages, w.flows, w.devices, w.operations}
+	logs := []*outFile{w.steps, w.voltages, w.flows, w.devices, w.operations}
+	if w.storage != nil {
+		logs = append(logs, w.storage)
+	}
+	return logs
 }
 
 // Finish writes the remaining files, syncs everything and puts the folder in its
@@ -346,6 +357,7 @@ func (w *Writer) finish(o *Outcome, run RunInfo) error {
 		{"summary.csv", w.writeSummary},
 		{"places.csv", w.writePlaces},
 		{"network.csv", w.writeNetwork},
+		{"plants.csv", func(f *outFile) error { return writePlants(f, o.Plants) }},
 	} {
 		f, err := createFile(w.folder.temp, t.name)
 		if err != nil {

@@ -32,7 +32,8 @@ var contract = map[string]string{
 	"summary.csv":    "quantity,value,unit",
 	"places.csv":     "node,x,y,longlat,distance [km],nominal [kV],phases,judged",
 	"network.csv":    "element,kind,from,to,phases,length [km]",
-	"monthly.csv":    "", // columns are ours but for the first
+	"plants.csv":     "plant,kind,delivered [kWh],drawn [kWh],curtailed [kWh],losses [kWh],change of store [kWh],unserved [kWh]", // ours
+	"monthly.csv":    "",                                                                                                         // columns are ours but for the first
 	"run.json":       "",
 	"timing.json":    "",
 }
