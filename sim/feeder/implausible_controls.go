@@ -52,6 +52,9 @@ func (c *checker) tapSettings(g *Regulator, s *TapSettings, name string) {
 	if !Unknown(s.LimitLow) {
 		c.outside(s.At, s.LimitLow, 100, 120, name+": limit low", " V", "112 to 117 V")
 	}
+	if s.Reverse != ReverseNone {
+		c.reverse(s, name)
+	}
 }
 
 func (c *checker) capacitors() {

@@ -104,3 +104,21 @@ func TestReverseSettingsWithoutUse(t *testing.T) {
 		t.Errorf("an unknown mode is %q", got)
 	}
 }
+
+func TestImplausibleReverseSettings(t *testing.T) {
+	for row, want := range map[string]string{
+		"follow,20,,,,,":       "reverse threshold is 20 %; usual: 1 to 5 %",
+		"stay,,1.02,,,,":       "reverse set is 1.02 V; usual: 118 to 126 V",
+		"stay,,,20,,,":         "reverse bandwidth is 20 V",
+		"reverse only,,,,30,,": "reverse delay is 1800 s",
+		"follow,,,,,40,":       "reverse ldc r is 40 V",
+		"follow,,,,,,-40":      "reverse ldc x is 40 V",
+		"follow,2,121,2,1,3,4": "",
+		"idle,2,,,,,":          "",
+	} {
+		got := opened(t, with(small(), reverseRows("reg,all,122,2,30,,,"+row+"\n")...), "").Implausible()
+		if want == "" && len(got) > 0 || want != "" && (len(got) != 1 || !strings.Contains(got[0].Text, want)) {
+			t.Errorf("%s: %v, want %q", row, got, want)
+		}
+	}
+}
