@@ -39,6 +39,7 @@ type inputs struct {
 	batterySeries    []int
 	batteryScale     []float64
 	chargerBranches  [][]int
+	sunlit           *profiles.Series // of the generator being added, from weather
 
 	energy  [][]float64 // by load with an energy: kW by month of the axis; nil else
 	months  []string
@@ -101,7 +102,12 @@ func newInputs(st *feeder.Study, net *network.Network) (*inputs, error) {
 	for i := range m.Loads {
 		in.load(i, &m.Loads[i], net, find, use, &faults, st.Settings.ScaleLoad)
 	}
+	sky := newSky(st, in.axis, &faults, &in.odd)
 	for i := range m.Generators {
+		in.sunlit = nil
+		if m.Generators[i].Solar != nil && sky != nil {
+			in.sunlit = sky.series(&m.Generators[i], &faults)
+		}
 		in.generate(i, &m.Generators[i], net, find, use, &faults, st.Settings.ScaleGeneration)
 	}
 	for i := range m.Batteries {
@@ -233,6 +239,10 @@ func (in *inputs) generate(i int, g *feeder.Generator, net *network.Network, fin
 	s := find(g.Profile, g.At, "pu", "kW")
 	real := g.KW
 	switch {
+	case g.Solar != nil:
+		if in.sunlit != nil {
+			d.real, real = use(in.sunlit), 1
+		}
 	case s != nil && s.Unit == "kW":
 		d.real, real = use(s), 1
 		if s.Kvar != nil {

@@ -3,6 +3,7 @@ package sim
 import (
 	"math"
 	"math/cmplx"
+	"slices"
 
 	"yearflow/sim/feeder"
 	"yearflow/sim/network"
@@ -107,5 +108,11 @@ func (e *Engine) entering(h hop, u int32) (sum complex128, ok bool) {
 // Meter reads powers and losses of instants of this engine.
 func (e *Engine) Meter() *results.Meter { return results.NewMeter(e.net) }
 
-// ProfileFiles are the profile files that the study was read from, sorted.
-func (e *Engine) ProfileFiles() []string { return e.in.set.Files() }
+// ProfileFiles are the profile and weather files that the study was read from.
+func (e *Engine) ProfileFiles() []string {
+	files := slices.Clone(e.in.set.Files())
+	if w := e.Study.Settings.Weather.File; w != "" && firstSolar(e.net.Model) != nil {
+		files = append(files, w)
+	}
+	return files
+}

@@ -247,6 +247,7 @@ func (r *settingsReader) settings() Settings {
 	s.Run = r.run(s.Period)
 	s.Limits = r.limits()
 	s.Prices = r.prices()
+	s.Weather = r.weather(s.Period)
 	s.ScaleLoad = r.scale("scale.load", r.d.Scale.Load)
 	s.ScaleGeneration = r.scale("scale.generation", r.d.Scale.Generation)
 	return s
@@ -297,4 +298,26 @@ func (r *settingsReader) run(p Period) RunSettings {
 		}
 	}
 	return s
+}
+
+// weather reads where the weather of solar generators comes from.
+func (r *settingsReader) weather(p Period) Weather {
+	d := r.d.Weather
+	w := Weather{At: r.at.of("weather"), Zone: p.Zone, Stamped: r.word("weather.stamped", d.Stamped, "start", "end", "instant"),
+		Latitude: r.number("weather.latitude", d.Latitude, math.NaN()), Longitude: r.number("weather.longitude", d.Longitude, math.NaN()),
+		Elevation: r.number("weather.elevation", d.Elevation, math.NaN())}
+	w.File, _ = r.text("weather.file", d.File)
+	if z := r.zone("weather.zone", d.Zone); z != nil {
+		w.Zone = z
+	}
+	if math.Abs(w.Latitude) > 90 {
+		r.fault("weather.latitude", "want degrees north, -90 to 90, got %v", shown(d.Latitude))
+	}
+	if math.Abs(w.Longitude) > 180 {
+		r.fault("weather.longitude", "want degrees east, -180 to 180, got %v", shown(d.Longitude))
+	}
+	if (d.Latitude == nil) != (d.Longitude == nil) {
+		r.fault("weather", "latitude and longitude go together")
+	}
+	return w
 }

@@ -26,6 +26,7 @@ type document struct {
 	Run       runDocument       `toml:"run"`
 	Limits    limitsDocument    `toml:"limits"`
 	Prices    pricesDocument    `toml:"prices"`
+	Weather   weatherDocument   `toml:"weather"`
 	Scale     scaleDocument     `toml:"scale"`
 	Compare   map[string]any    `toml:"compare"`
 	Tune      map[string]any    `toml:"tune"`
@@ -68,6 +69,15 @@ type pricesDocument struct {
 	Operation any `toml:"operation"`
 	Rate      any `toml:"rate"`
 	Years     any `toml:"years"`
+}
+
+type weatherDocument struct {
+	File      any `toml:"file"`
+	Stamped   any `toml:"stamped"`
+	Zone      any `toml:"zone"`
+	Latitude  any `toml:"latitude"`
+	Longitude any `toml:"longitude"`
+	Elevation any `toml:"elevation"`
 }
 
 type scaleDocument struct {

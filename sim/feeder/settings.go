@@ -16,6 +16,7 @@ type Settings struct {
 	Run       RunSettings
 	Limits    Limits
 	Prices    Prices
+	Weather   Weather
 	// ScaleLoad and ScaleGeneration multiply every load and generator ([scale] of a
 	// case); 1 where nothing is said.
 	ScaleLoad, ScaleGeneration float64
@@ -68,4 +69,13 @@ type Prices struct {
 	Peak          string  // profile whose peak is charged; blank: the feeder's own
 	Operation     float64 // per action
 	Rate, Years   float64
+}
+
+// Weather is [weather] of study.toml; NaN where nothing is said.
+type Weather struct {
+	At                             tables.Pos
+	File                           string // below the study's folder; blank: a clear sky
+	Stamped                        string // start, end or instant
+	Zone                           *time.Location
+	Latitude, Longitude, Elevation float64 // deg north, deg east, m
 }
