@@ -115,11 +115,17 @@ func (w *mender) checkZeros(m *Meter) {
 }
 
 // checkStuck judges runs of one value other than zero: six hours and six values long,
-// and four times as long as the meter's longest run on nine days of ten. The first
-// value of a run stands.
+// and more than four times as long as the meter's longest run on nine of ten days with
+// demand. Where that is six hours or more the meter is often flat, a pump or a lamp, and
+// is not judged. The first value of a run stands.
 func (w *mender) checkStuck() {
 	to := &w.real
-	longest := make([]float64, len(to.cal.days))
+	longest := make([]int, len(to.cal.days)) // 0: no demand, all day
+	for k, v := range to.old {
+		if v != 0 && to.why[k] == good {
+			longest[to.cal.dayOf[k]] = 1
+		}
+	}
 	type run struct{ from, end int }
 	var runs []run
 	least := max(6, int(stuckRun/to.cal.step))
@@ -133,7 +139,7 @@ func (w *mender) checkStuck() {
 		for k := from; k < end; {
 			d := to.cal.dayOf[k]
 			stop := min(end, to.cal.days[d].end)
-			longest[d] = max(longest[d], float64(stop-k))
+			longest[d] = max(longest[d], stop-k)
 			k = stop
 		}
 	})
@@ -141,9 +147,14 @@ func (w *mender) checkStuck() {
 		return
 	}
 	slices.Sort(longest)
+	idle, _ := slices.BinarySearch(longest, 1)
+	longest = longest[idle:]
 	usual := longest[len(longest)*9/10]
+	if usual >= int(stuckRun/to.cal.step) {
+		return
+	}
 	for _, r := range runs {
-		if float64(r.end-r.from) > 4*usual {
+		if r.end-r.from > 4*usual {
 			for k := r.from + 1; k < r.end; k++ {
 				to.why[k] = stuck
 			}
