@@ -53,6 +53,7 @@ func (c *console) check(args []string, caseName, csvFile, jsonFile string) error
 	if e != nil {
 		c.describe(out, e)
 		odd := append(append([]tables.Fault(nil), e.Warnings...), e.ReverseRisks()...)
+		odd = append(odd, e.Study.Implausible()...)
 		tables.Faults(odd).Sort()
 		printFaults(out, "Odd, but possible", odd)
 		add("warning", odd)
