@@ -45,7 +45,7 @@ func Open(fsys fs.FS, caseName string) (*Study, error) {
 	}
 	s := &Study{FS: fsys, Case: caseName}
 	var faults tables.Faults
-	s.Cases = caseNames(fsys)
+	s.Cases = caseNames(fsys, &faults)
 	d, at, whole := s.documents(&faults)
 	s.at = at
 	r := &settingsReader{d: d, at: at, faults: &faults}
@@ -98,14 +98,20 @@ func limited(faults tables.Faults) error {
 	return faults.Err()
 }
 
-func caseNames(fsys fs.FS) []string {
+// caseNames are the folders below cases. One called Base would never be read and its results would stand in the
+// study's own place (Base too, where a file system takes capitals for small letters).
+func caseNames(fsys fs.FS, faults *tables.Faults) []string {
 	entries, err := fs.ReadDir(fsys, "cases")
 	if err != nil {
 		return nil
 	}
 	var out []string
 	for _, e := range entries {
-		if e.IsDir() && !strings.HasPrefix(e.Name(), ".") {
+		switch {
+		case !e.IsDir() || strings.HasPrefix(e.Name(), "."):
+		case strings.EqualFold(e.Name(), Base):
+			faults.Add(tables.Pos{File: "cases/" + e.Name()}, "no case can be called %q: %q is the study without a case; rename the folder", e.Name(), Base)
+		default:
 			out = append(out, e.Name())
 		}
 	}
