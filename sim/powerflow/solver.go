@@ -359,7 +359,13 @@ func (s *Solver) fixedPoint(in *Input, tol Tolerance, out *Solution) bool {
 		}
 		s.old, s.inject = s.inject, s.old
 		s.currents(s.inject, out.V, in)
-		if change < tol.Change || change < 1e-10 && change > 0.5*last {
+		// What is left of the way when each step is rate times the one before; below half
+		// it is less than the last step.
+		left := change
+		if rate := change / last; rate > 0.5 && rate < 1 {
+			left = change * rate / (1 - rate)
+		}
+		if left < tol.Change || change < 1e-10 && change > 0.5*last {
 			// The second: no digit is left to gain.
 			if s.matched(out.V, tol) {
 				return true
