@@ -348,6 +348,18 @@ func months(a profiles.Axis) ([]string, func(int) int) {
 	return names, func(step int) int { return sort.Search(len(starts), func(k int) bool { return starts[k] > step }) - 1 }
 }
 
+// monthHours is how long a month such as 2025-01 is on the clock of a zone.
+func monthHours(name string, zone *time.Location) float64 {
+	if zone == nil {
+		zone = time.UTC
+	}
+	from, err := time.ParseInLocation("2006-01", name, zone)
+	if err != nil {
+		return 0
+	}
+	return time.Date(from.Year(), from.Month()+1, 1, 0, 0, 0, 0, zone).Sub(from).Hours()
+}
+
 // energies finds the power at profile 1 of every load that is known by its energy:
 // kW = kWh / Σ profile·h, over its month or over the period.
 func (in *inputs) energies(m *feeder.Model) error {
@@ -381,6 +393,7 @@ func (in *inputs) energies(m *feeder.Model) error {
 			driverOf[l] = in.driver[k].real
 		}
 	}
+	toldPart := make([]bool, len(in.months))
 	for i := range m.Loads {
 		l := &m.Loads[i]
 		if len(l.EnergyKWh) == 0 {
@@ -395,18 +408,17 @@ func (in *inputs) energies(m *feeder.Model) error {
 		for k := range hours {
 			total += hours[k][s]
 		}
+		given := make([]bool, len(in.months))
 		for _, e := range l.EnergyKWh {
-			found := e.Month == ""
-			for k, name := range in.months {
+			for k, name := range in.months { // a month outside the period is not used
 				h := total
-				switch e.Month {
-				case "":
-				case name:
+				if e.Month != "" {
 					h = hours[k][s]
-					found = true
-				default:
+				}
+				if e.Month != "" && e.Month != name {
 					continue
 				}
+				given[k] = true
 				if h <= 0 && e.KWh != 0 {
 					faults.Add(l.At, "load %q: %g kWh cannot be spread over a profile that adds up to %g h", l.Name, e.KWh, h)
 					continue
@@ -415,7 +427,16 @@ func (in *inputs) energies(m *feeder.Model) error {
 					kw[k] = e.KWh / h
 				}
 			}
-			_ = found // a month outside the period is not used
+		}
+		for k, name := range in.months {
+			held, whole := hours[k][len(in.values)], monthHours(name, in.axis.Zone)
+			if l.EnergyKWh[0].Month != "" && given[k] && kw[k] > 0 && held < whole && !toldPart[k] {
+				toldPart[k] = true // once: it is so for all loads
+				in.odd.Add(l.At, "load %q: the period holds %g of the %g hours of %s, and its energy of energies.csv is spread over those alone", l.Name, held, whole, name)
+			}
+			if !given[k] {
+				faults.Add(l.At, "load %q: energies.csv has no energy for %s, a month of the period; give it, 0 where nothing is taken", l.Name, name)
+			}
 		}
 		in.energy[i] = kw
 	}
