@@ -33,16 +33,24 @@ type meterReader struct {
 	timeAt  int // column
 	meterAt int // column of the meter's name; −1 in a wide file
 
-	stores   []*store
-	index    map[string]int
-	follower []int // the meter that came after this one the last time
-	current  int
+	stores  []*store
+	index   map[string]int
+	hot     []hot // of each store
+	current int
 
 	text   []byte // of the last stamp
 	when   moment
 	before uint32 // the time of the row before, of a wide file
 	lost   int    // rows of the hour that spring skips
 	cells  [][]byte
+}
+
+// hot is what a row needs of its meter, in one line of the processor's cache.
+type hot struct {
+	rows []reading // of real power, not yet in the store
+	name string
+	prev uint32 // the time of its last reading, 0: none
+	next int32  // the meter that came after this one the last time, or −1
 }
 
 // moment is a stamp that is read: one instant, or two in a repeated hour.
@@ -64,6 +72,20 @@ func (c *counted) Read(p []byte) (int, error) {
 	return n, err
 }
 
+// unpack returns what a stream holds, unpacked where it is a gzip file.
+func unpack(r io.Reader) (io.Reader, error) {
+	magic := make([]byte, 2)
+	n, err := io.ReadFull(r, magic)
+	if err != nil && err != io.EOF && err != io.ErrUnexpectedEOF {
+		return nil, err
+	}
+	whole := io.MultiReader(bytes.NewReader(magic[:n]), r)
+	if string(magic[:n]) != "\x1f\x8b" {
+		return whole, nil
+	}
+	return gzip.NewReader(whole)
+}
+
 func readMeterFile(fsys fs.FS, file meterFile, number int32) (out meterContent) {
 	r := &meterReader{reader: reader{name: file.name, clock: newClock(file.block.Zone)}, file: file, number: number,
 		index: make(map[string]int), current: -1}
@@ -82,17 +104,16 @@ func readMeterFile(fsys fs.FS, file meterFile, number int32) (out meterContent) 
 		out.stat = statOf(f, st)
 	}
 	raw := &counted{f, sha256.New()}
-	r.lines = newLines(raw)
-	if bytes.HasPrefix(r.lines.peek(2), []byte("\x1f\x8b")) {
-		packed := io.MultiReader(bytes.NewReader(bytes.Clone(r.lines.peek(2))), raw) // peek gives all that is buffered
-		unpacked, err := gzip.NewReader(packed)
-		if err != nil {
-			out.faults.Add(at, "is a gzip file that cannot be unpacked: %v", err)
-			return out
-		}
-		r.lines = newLines(unpacked)
+	content, err := unpack(raw)
+	if err != nil {
+		out.faults.Add(at, "is a gzip file that cannot be unpacked: %v", err)
+		return out
 	}
+	ahead := newAhead(content)
+	r.lines = newLines(ahead)
 	r.readAll()
+	r.close()
+	ahead.stop()
 	switch {
 	case r.lines.err != nil:
 		r.faults.Add(at, "cannot be read: %v", reason(r.lines.err))
@@ -197,15 +218,15 @@ func (r *meterReader) readCells() {
 		r.fault(r.meterAt+1, "the meter's name is empty")
 		return
 	}
-	s := r.stores[r.find(name)]
-	sec, ok := r.choose(when, s.prev)
+	i := r.find(name)
+	sec, ok := r.choose(when, r.hot[i].prev)
 	if !ok {
 		return
 	}
-	s.prev = sec
+	r.hot[i].prev = sec
 	for k := range r.columns {
 		if c := &r.columns[k]; c.kind != notValue {
-			r.readValue(k, s, sec)
+			r.readValue(k, i, sec)
 		}
 	}
 }
@@ -218,13 +239,13 @@ func (r *meterReader) readWide(when moment) {
 	r.before = sec
 	for k := range r.columns {
 		if c := &r.columns[k]; c.kind != notValue {
-			r.readValue(k, r.stores[c.store], sec)
+			r.readValue(k, c.store, sec)
 		}
 	}
 }
 
-// readValue reads cell k.
-func (r *meterReader) readValue(k int, s *store, sec uint32) {
+// readValue reads cell k, of meter i.
+func (r *meterReader) readValue(k, i int, sec uint32) {
 	c := &r.columns[k]
 	cell := r.cells[k]
 	v, _, ok := shortDecimal(cell, 0, r.sep, r.marks.mark)
@@ -234,24 +255,36 @@ func (r *meterReader) readValue(k int, s *store, sec uint32) {
 		} else {
 			var problem string
 			if v, problem = r.marks.number(cell, r.lines.number); problem != "" {
-				r.fault(k+1, "meter %q: %s", s.name, problem)
+				r.fault(k+1, "meter %q: %s", r.hot[i].name, problem)
 				return
 			}
 		}
 	}
 	v *= c.factor
 	if math.Abs(v) > largestReading {
-		r.fault(k+1, "meter %q: %g is no reading of a meter", s.name, v)
+		r.fault(k+1, "meter %q: %g is no reading of a meter", r.hot[i].name, v)
 		return
 	}
-	ch := &s.real
+	one := reading{sec, uint32(r.lines.number), v}
 	if c.kind == reactiveValue {
-		ch = &s.reactive
+		ch := &r.stores[i].reactive
+		r.known(ch, k)
+		ch.add(r.number, one)
+		return
 	}
+	h := &r.hot[i]
+	if len(h.rows) == cap(h.rows) {
+		r.known(&r.stores[i].real, k)
+		h.rows = r.stores[i].real.take(r.number, h.rows)
+	}
+	h.rows = append(h.rows, one)
+}
+
+// known notes the unit and the place of a channel's first value.
+func (r *meterReader) known(ch *channel, k int) {
 	if !ch.seen {
-		ch.seen, ch.energy, ch.pos = true, c.energy, tables.Pos{File: r.name, Line: r.lines.number, Column: k + 1}
+		ch.seen, ch.energy, ch.pos = true, r.columns[k].energy, tables.Pos{File: r.name, Line: r.lines.number, Column: k + 1}
 	}
-	ch.add(r.number, reading{sec, uint32(r.lines.number), v})
 }
 
 // largestReading keeps sums and powers of what is read finite in float32: a million
@@ -274,16 +307,17 @@ func isMissing(cell []byte) bool {
 	return false
 }
 
-// find returns the store of a name. Files repeat the order of their meters, so the one
+// find returns the meter of a name. Files repeat the order of their meters, so the one
 // that followed last time is tried first.
 func (r *meterReader) find(name []byte) int {
 	if r.current >= 0 {
-		if string(name) == r.stores[r.current].name {
+		h := &r.hot[r.current]
+		if h.next >= 0 && string(name) == r.hot[h.next].name {
+			r.current = int(h.next)
 			return r.current
 		}
-		if next := r.follower[r.current]; next >= 0 && string(name) == r.stores[next].name {
-			r.current = next
-			return next
+		if string(name) == h.name {
+			return r.current
 		}
 	}
 	i, ok := r.index[string(name)]
@@ -291,7 +325,7 @@ func (r *meterReader) find(name []byte) int {
 		i = r.newStore(string(name))
 	}
 	if r.current >= 0 {
-		r.follower[r.current] = i
+		r.hot[r.current].next = int32(i)
 	}
 	r.current = i
 	return i
@@ -301,6 +335,16 @@ func (r *meterReader) newStore(name string) int {
 	i := len(r.stores)
 	r.index[name] = i
 	r.stores = append(r.stores, &store{name: name, block: r.file.block})
-	r.follower = append(r.follower, -1)
+	r.hot = append(r.hot, hot{name: name, next: -1})
 	return i
+}
+
+// close puts what is left to the stores.
+func (r *meterReader) close() {
+	for i := range r.hot {
+		if h := &r.hot[i]; len(h.rows) > 0 {
+			r.stores[i].real.take(r.number, h.rows)
+			h.rows = nil
+		}
+	}
 }

@@ -33,7 +33,6 @@ type channel struct {
 type store struct {
 	name           string
 	real, reactive channel
-	prev           uint32 // the time of its last reading, 0: none
 	block          *MeterBlock
 }
 
@@ -49,6 +48,14 @@ func (c *channel) add(file int32, r reading) {
 	}
 	last := &c.chunks[n-1]
 	last.rows = append(last.rows, r)
+}
+
+// take takes rows, which are full or the last, and returns room for more.
+func (c *channel) take(file int32, rows []reading) []reading {
+	if len(rows) > 0 {
+		c.chunks = append(c.chunks, chunk{file, rows})
+	}
+	return make([]reading, 0, min(max(16, 2*cap(rows)), 1024))
 }
 
 // merge joins the meters of all files, in their order.
