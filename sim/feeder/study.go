@@ -185,22 +185,45 @@ func (s *Study) checkPlaces(faults *tables.Faults) {
 		}
 	}
 	var elements []string
+	kinds := map[string][]string{}
+	add := func(name, kind string) {
+		elements = append(elements, name)
+		kinds[name] = append(kinds[name], kind)
+	}
 	for _, e := range m.Sections {
-		elements = append(elements, e.Name)
+		add(e.Name, "section")
 	}
 	for _, e := range m.Transformers {
-		elements = append(elements, e.Name)
+		add(e.Name, "transformer")
 	}
 	for _, e := range m.Regulators {
-		elements = append(elements, e.Name)
-	}
-	has := map[string]bool{}
-	for _, e := range elements {
-		has[e] = true
+		add(e.Name, "regulator")
 	}
 	for _, f := range s.Settings.Run.Flows {
-		if !has[f] {
+		switch k := kinds[f]; len(k) {
+		case 0:
 			faults.Add(s.at.of("run.flows"), "run.flows: there is no section, transformer or regulator %q%s", f, tables.Hint(f, elements))
+		case 1:
+		default:
+			faults.Add(s.at.of("run.flows"), "run.flows: %q is a %s; rename all but one, so that flows.csv can tell them apart", f, strings.Join(k, " and a "))
+		}
+	}
+	checkColumns(m, faults)
+}
+
+// checkColumns looks for two devices that would share a column of devices.csv.
+func checkColumns(m *Model, faults *tables.Faults) {
+	taps := map[string]string{}
+	for i := range m.Regulators {
+		r := &m.Regulators[i]
+		for _, u := range r.Units {
+			taps[r.Name+"."+u.Name(r.Connection)] = r.Name
+		}
+	}
+	for i := range m.Capacitors {
+		c := &m.Capacitors[i]
+		if r, ok := taps[c.Name]; ok {
+			faults.Add(c.At, "capacitor %q is called as the column of devices.csv with the taps of regulator %q; rename one of them", c.Name, r)
 		}
 	}
 }

@@ -131,6 +131,9 @@ func (c *column) cell(s string, conv conversion, decimalComma bool) (string, err
 		}
 		return "", fmt.Errorf("%q is not one of %s%s", clip(s), strings.Join(c.words, ", "), near(folded, c.words))
 	}
+	if strings.ContainsAny(s, "\r\n") { // the results have one line a row, and a message names one line
+		return "", fmt.Errorf("a line break stands in %q", clip(s))
+	}
 	if c.upper {
 		s = strings.ToUpper(s)
 	}
