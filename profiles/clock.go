@@ -118,6 +118,12 @@ func (c *clock) move(t int64) {
 	if !end.IsZero() && end.Unix() < math.MaxInt64/second {
 		c.to = end.UnixNano()
 	}
+	if c.to <= t {
+		// Beyond the table of a zone package time ends each year, by UTC, after 365
+		// days: on 31 December of a leap year the stretch that it gives is over already.
+		c.from = floorDiv(t, day) * day
+		c.to = c.from + day
+	}
 }
 
 // local returns the clock's reading at t, as nanoseconds since 1970 of a clock

@@ -180,3 +180,24 @@ func TestAppendTimeAllocates(t *testing.T) {
 		t.Error(got)
 	}
 }
+
+// TestClockLeapYearsBeyondTheTable: every clock time of the turn of a leap year long
+// after the table of a zone ends is one instant, and comes back.
+func TestClockLeapYearsBeyondTheTable(t *testing.T) {
+	for _, name := range []string{"America/Denver", "Europe/Zurich", "Australia/Sydney", "Pacific/Auckland"} {
+		z := zone(t, name)
+		for _, year := range []int{2040, 2064, 2104} {
+			c := newClock(z)
+			from := dayNumber(year, 12, 28) * day
+			for civil := from; civil < from+7*day; civil += 30 * minute {
+				first, last, n := c.instants(civil)
+				if n != 1 || first != last || c.local(first) != civil {
+					t.Fatalf("%s, %s: %d instants, %s and %s", name, civilText(civil), n, Format(first, z), Format(last, z))
+				}
+				if want := time.Date(year, 12, 28, 0, int((civil-from)/minute), 0, 0, z).UnixNano(); first != want {
+					t.Fatalf("%s, %s: %s, want %s", name, civilText(civil), Format(first, z), Format(want, z))
+				}
+			}
+		}
+	}
+}

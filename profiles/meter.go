@@ -29,8 +29,37 @@ type MeterBlock struct {
 	Net     bool           // the meters count what flows back as negative
 }
 
-// MeterRules are the numbers of validation, estimation and editing; the zero value
-// works. The rules themselves stand in the package documentation.
+// MeterRules are the numbers of validation, estimation and editing (VEE); the zero value
+// works. The rules are those of the trade, after the Uniform Business Practices for
+// metering of the Edison Electric Institute (2000; recalled from memory) and common
+// practice; in this order:
+//
+//   - Rows are put in order. A repeated row is dropped; of two values for one time the
+//     later row is kept, and told. Each meter has one step; a missing row or a blank
+//     cell between its first and its last value is a gap.
+//   - A register that falls has gone over its highest number, the next power of ten, if
+//     that makes a rise of at most twice the largest other one; else it was set back, and
+//     that interval is not known.
+//   - A negative value is a fault of reading where the meter does not count what flows
+//     back. More than one in a hundred is a fault of the file.
+//   - Zeros for an hour (and two values) to seven days are a fault of the meter where
+//     fewer than one in twenty of the like days has zero at those times, and zero is
+//     less than a fifth of the meter's values; longer ones are listed and stay.
+//   - One other value for six hours (and six values) is stuck where it lasts more than
+//     four times the meter's usual longest run of a day.
+//   - A spike is one of a day's two highest values, above 1.8 times the third, above
+//     the like days by SpikeFactor times their range (tenth to ninetieth percentile, an
+//     interval either side), and above the size of the service; where that is not known,
+//     above five times what the meter exceeds in one of two hundred intervals.
+//   - What is missing or found wrong is estimated: up to two hours by a straight line of
+//     power between its neighbours; longer by the mean of like days (working days,
+//     Saturdays, Sundays) at that time of day within four weeks; where there are none, by
+//     the meter's mean for that kind of day and time, which MeterSet.Shape can replace by
+//     a class's shape. Where a register knows a gap's energy the estimate is scaled to it.
+//   - Reactive power has its gaps closed in the same way and is not judged.
+//
+// Days are those of the customers' clock, so that the days of 23 and 25 hours are whole.
+// Holidays are not known: they count as the weekday that they are.
 type MeterRules struct {
 	// Zone is the customers' clock, by which days and weekdays are told. nil: the
 	// zone of the meter's block.

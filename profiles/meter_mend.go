@@ -97,11 +97,7 @@ func (w *mender) mend(s *store) (out mending) {
 	w.rows.order(&s.real)
 	w.rows.trim()
 	if len(w.rows.rows) == 0 {
-		at := s.real.pos
-		if !s.real.seen {
-			at = s.reactive.pos
-		}
-		w.warn(at, "has no value of real power; it is left out")
+		w.warn(s.real.pos, "has no value of real power; it is left out")
 		return out
 	}
 	step, at, problem := stepOf(w.rows.rows, w.where)

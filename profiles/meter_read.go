@@ -334,7 +334,9 @@ func (r *meterReader) find(name []byte) int {
 func (r *meterReader) newStore(name string) int {
 	i := len(r.stores)
 	r.index[name] = i
-	r.stores = append(r.stores, &store{name: name, block: r.file.block})
+	s := &store{name: name, block: r.file.block}
+	s.real.pos = tables.Pos{File: r.name, Line: r.lines.number}
+	r.stores = append(r.stores, s)
 	r.hot = append(r.hot, hot{name: name, next: -1})
 	return i
 }
