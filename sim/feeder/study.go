@@ -29,8 +29,9 @@ type Study struct {
 	// Compare, Tune and Hosting are those tables of study.toml as they are written.
 	Compare, Tune, Hosting map[string]any
 
-	at   places
-	uses []ProfileUse
+	at     places
+	uses   []ProfileUse
+	tables *feederTables // as read, for Differences
 }
 
 // maxFaults is how many faults of a study are listed; the others are counted.
@@ -48,7 +49,7 @@ func Open(fsys fs.FS, caseName string) (*Study, error) {
 	s.Cases = caseNames(fsys, &faults)
 	d, at, whole := s.documents(&faults)
 	s.at = at
-	r := &settingsReader{d: d, at: at, faults: &faults}
+	r := &settingsReader{d: d, caseName: caseName, at: at, faults: &faults}
 	if !whole {
 		r.faults = &tables.Faults{} // what such a file lacks is no fault of its own
 	}
@@ -63,12 +64,14 @@ func Open(fsys fs.FS, caseName string) (*Study, error) {
 		faults.Add(at.of("feeder"), "there is no folder %q with the tables of the feeder in the study's folder", folder)
 	} else {
 		t := s.readTables(folder, &faults)
+		s.tables = t
 		b := newBuilder(t, s.Settings.Frequency, &faults)
 		b.model.Assumed = append(b.model.Assumed, r.assumed...)
 		s.Model = b.build()
 		s.Warnings = b.warnings
 		s.uses = b.uses
 		s.checkPlaces(&faults)
+		s.checkAllocation(&faults)
 	}
 	sort.Strings(s.Files)
 	tables.Faults(s.Warnings).Sort()
@@ -247,6 +250,7 @@ const (
 	WantVoltage     = "voltage"             // p.u., or V line-to-line; a source
 	WantTemperature = "temperature"         // degC; a capacitor control
 	WantPrice       = "price"               // currency per energy
+	WantMeasured    = "measured"            // kW, with kvar if wanted, or A; an allocation
 )
 
 // ProfileUses lists the profiles that the study names, in the order of the tables.
@@ -258,5 +262,5 @@ func (s *Study) ProfileUses() []ProfileUse {
 	if p := s.Settings.Prices.Peak; p != "" {
 		out = append(out, ProfileUse{p, s.at.of("prices.peak"), WantPower})
 	}
-	return out
+	return append(out, s.allocationUses()...)
 }
