@@ -77,19 +77,23 @@ func (s *survey) mapFinding(worst map[string]worstVoltage) string {
 			}
 		}
 	}
+	who := " with customers"
+	if s.Run.Limits.All {
+		who = ""
+	}
 	if low+high == 0 {
 		if s.low < 0 {
 			return "No step was solved, so there are no voltages to show."
 		}
-		return "No place with customers leaves its range."
+		return "No place" + who + " leaves its range."
 	}
 	txt := ""
 	if low > 0 {
-		txt = fmt.Sprintf("At %s with customers the voltage falls below range, lowest at %s (%s)", count(low, "place", "places"), lowest, pu(worst[lowest].pu))
+		txt = fmt.Sprintf("At %s%s the voltage falls below range, lowest at %s (%s)", count(low, "place", "places"), who, lowest, pu(worst[lowest].pu))
 	}
 	if high > 0 {
 		if txt == "" {
-			txt = fmt.Sprintf("At %s with customers the voltage", count(high, "place", "places"))
+			txt = fmt.Sprintf("At %s%s the voltage", count(high, "place", "places"), who)
 		} else {
 			txt += fmt.Sprintf("; at %d it", high)
 		}
