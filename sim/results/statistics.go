@@ -68,8 +68,10 @@ func kWh(wns float64) float64 { return wns / 1000 / float64(hour) }
 // for which customers, are outside; all settled.
 type outsideTimes struct {
 	belowA, aboveA, belowB, aboveB int64 // ns with at least one judged point outside
-	customersBelow                 float64
-	customersAbove                 float64 // customer·ns
+	customersBelow                 float64 // customer·ns outside range A
+	customersAbove                 float64
+	customersBelowB                float64 // and outside range B
+	customersAboveB                float64
 }
 
 // bucket is what is summed for the whole period and for each month.
@@ -233,6 +235,8 @@ func (o *outsideTimes) add(x *outsideTimes) {
 	o.aboveB += x.aboveB
 	o.customersBelow += x.customersBelow
 	o.customersAbove += x.customersAbove
+	o.customersBelowB += x.customersBelowB
+	o.customersAboveB += x.customersAboveB
 }
 
 // serve books every customer once, at its worst phase.
@@ -240,7 +244,7 @@ func (s *statistics) serve(x *sample, ns int64, out *outsideTimes) {
 	j := s.judge
 	for i := range j.services {
 		v := &j.services[i]
-		below, above := false, false
+		below, above, belowB, aboveB := false, false, false, false
 		for _, k := range v.points {
 			c := &j.classes[j.of[k]]
 			pu := x.reading.PU[k]
@@ -249,12 +253,20 @@ func (s *statistics) serve(x *sample, ns int64, out *outsideTimes) {
 			}
 			below = below || pu < c.LowA-limitSlack
 			above = above || pu > c.HighA+limitSlack
+			belowB = belowB || pu < c.LowB-limitSlack
+			aboveB = aboveB || pu > c.HighB+limitSlack
 		}
 		if below {
 			out.customersBelow += v.customers * float64(ns)
 		}
 		if above {
 			out.customersAbove += v.customers * float64(ns)
+		}
+		if belowB {
+			out.customersBelowB += v.customers * float64(ns)
+		}
+		if aboveB {
+			out.customersAboveB += v.customers * float64(ns)
 		}
 		if below || above {
 			v.outside += ns

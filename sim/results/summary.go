@@ -186,6 +186,8 @@ func (s *summary) customers() {
 	s.figure("customers outside A for more than 5 % of the time", twentieth, "1")
 	s.figure("customer-hours below A", t.customersBelow/float64(hour), "h")
 	s.figure("customer-hours above A", t.customersAbove/float64(hour), "h")
+	s.figure("customer-hours below B", t.customersBelowB/float64(hour), "h")
+	s.figure("customer-hours above B", t.customersAboveB/float64(hour), "h")
 }
 
 func (s *summary) operations() {
