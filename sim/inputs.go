@@ -41,6 +41,8 @@ type inputs struct {
 	chargerBranches  [][]int
 	sunlit           *profiles.Series // of the generator being added, from weather
 
+	shared allocated // loads that a measured total is shared over
+
 	energy  [][]float64 // by load with an energy: kW by month of the axis; nil else
 	months  []string
 	monthOf func(step int) int
@@ -99,6 +101,7 @@ func newInputs(st *feeder.Study, net *network.Network) (*inputs, error) {
 	find := names.find
 	m := net.Model
 	in.months, in.monthOf = months(in.axis)
+	in.shared.begin(st, find, use, &faults)
 	for i := range m.Loads {
 		in.load(i, &m.Loads[i], net, find, use, &faults, st.Settings.ScaleLoad)
 	}
@@ -116,6 +119,7 @@ func newInputs(st *feeder.Study, net *network.Network) (*inputs, error) {
 	for i := range m.Chargers {
 		in.charge(i, &m.Chargers[i], net)
 	}
+	in.shared.close(st)
 	in.outside = make([]int, len(m.Capacitors))
 	for i := range m.Capacitors {
 		in.outside[i] = -1
@@ -188,7 +192,17 @@ func (in *inputs) load(i int, l *feeder.Load, net *network.Network, find finder,
 	d := driver{-1, -1, -1}
 	s := find(l.Profile, l.At, "pu", "kW")
 	share := complex(l.KW*k, l.KVAR*k)
+	shares := in.shared.takes(i, s)
 	switch {
+	case shares:
+		kW, byEnergy := in.shared.weight(i, l, s, faults)
+		share = complex(kW*k, kW*k*in.shared.tangent(l))
+		if byEnergy {
+			d.load = i
+		}
+		if s != nil {
+			d.real = use(s)
+		}
 	case s != nil && s.Unit == "kW":
 		if !feeder.Unknown(l.KW) && l.KW != 0 {
 			faults.Add(l.At, "load %q: its real power is given twice, %g kW here and by profile %q in [kW] (%s): leave one of them", l.Name, l.KW, l.Profile, s.Pos)
@@ -206,7 +220,9 @@ func (in *inputs) load(i int, l *feeder.Load, net *network.Network, find finder,
 			d.real = use(s)
 		}
 	case feeder.Unknown(l.KW):
-		if s != nil || l.Profile == "" {
+		if l.ConnectedKVA > 0 {
+			faults.Add(l.At, "%s", l.OnlyWeight(in.shared.spec))
+		} else if s != nil || l.Profile == "" {
 			faults.Add(l.At, "load %q: no amount: give real [kW], connected [kVA], energy [kWh] or a profile in [kW]", l.Name)
 		}
 	default:
@@ -222,6 +238,9 @@ func (in *inputs) load(i int, l *feeder.Load, net *network.Network, find finder,
 		z := l.ZIP
 		j.PZ, j.PI, j.PC, j.QZ, j.QI, j.QC = z.PZ, z.PI, z.PP, z.QZ, z.QI, z.QP
 		j.Size = size
+		if shares {
+			in.shared.injections = append(in.shared.injections, len(in.injections))
+		}
 		in.add(j, d, share, i, -1)
 	}
 }
@@ -257,10 +276,9 @@ func (in *inputs) generate(i int, g *feeder.Generator, net *network.Network, fin
 	}
 	share := complex(k*real, k*real*tan)
 	group := -1
-	if g.Function >= 0 {
-		// The law reads what the whole could deliver from its first member.
+	if g.Function >= 0 { // the function says what reactive power goes with it
 		group = in.group()
-		share = complex(k*float64(len(js))*real, 0)
+		share = complex(k*real, 0)
 	}
 	in.groupOfGenerator = append(in.groupOfGenerator, group)
 	for _, j := range js {

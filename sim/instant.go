@@ -102,6 +102,9 @@ type Positions struct {
 	// positions to hold, such as those of a results folder.
 	Taps   []int
 	Closed []bool
+	// Storage (by Model.Batteries), where not nil, is what batteries deliver, kW, whatever
+	// their dispatch says.
+	Storage []float64
 }
 
 // Solve solves the inputs of one step. Its State belongs to the engine and holds
@@ -115,6 +118,10 @@ func (e *Engine) Solve(step int, p Positions) (*Instant, error) {
 	out := &Instant{Start: start}
 	e.plants.reset(start)
 	e.steady = true
+	for i := range p.Storage {
+		b := e.plants.batteries[i]
+		b.asked, b.prescribed = p.Storage[i], true
+	}
 	switch {
 	case p.Taps != nil:
 		copy(e.state.Taps, p.Taps)

@@ -1,7 +1,6 @@
 package sim
 
 import (
-	"math"
 	"time"
 
 	"yearflow/devices"
@@ -82,7 +81,7 @@ func chargerSheet(c *feeder.Charger, s *feeder.Settings) devices.Charger {
 			out.Charging, out.From, out.To = devices.CheapHours, ns(c.From), ns(c.To)
 		}
 	}
-	h := devices.Habit{Arrive: ns(c.Arrival), Depart: ns(c.Depart), Weekdays: c.Weekdays, Energy: c.EnergyKWh, Power: math.Min(c.KW, math.Inf(1))}
-	out.Sessions = h.Sessions(nil, s.Period.Start, s.Period.End, s.Period.Zone)
+	h := devices.Habit{Arrive: ns(c.Arrival), Depart: ns(c.Depart), Weekdays: c.Weekdays, Energy: c.EnergyKWh, Power: c.KW}
+	out.Sessions = h.Sessions(nil, s.Period.Start-before, s.Period.End, s.Period.Zone)
 	return out
 }

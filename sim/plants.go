@@ -19,7 +19,6 @@ type plants struct {
 	batteries []*battery
 	chargers  []*charger
 	shares    []share // chargers by group
-	wants     []float64
 }
 
 // inverter is a generator or a battery with a function.
@@ -27,29 +26,25 @@ type inverter struct {
 	law       *inverterLaw
 	group     int // into the solver's groups
 	generator int // into Model.Generators; −1 for a battery
-	battery   int // into plants.batteries; −1 for a generator
 	lags      bool
 	started   bool
-	state     devices.InverterState
 	target    devices.InverterState
 }
 
 // inverterLaw is what an inverter draws: by its functions, or, while its lag is
 // followed, what it holds.
 type inverterLaw struct {
-	sheet devices.Inverter
-	held  bool
-	out   devices.Output
+	sheet   devices.Inverter
+	members float64 // branches that share the available power
+	held    bool
+	state   devices.InverterState // of the lags, while they are held
 }
 
 var _ powerflow.Law = (*inverterLaw)(nil)
 
-// Draws takes the available power as the real part of −s.
+// Draws takes a branch's share of the available power as the real part of −s.
 func (l *inverterLaw) Draws(s complex128, v float64) (power, slope complex128) {
-	o := l.out
-	if !l.held {
-		o = l.sheet.Power(-real(s)/1000, v)
-	}
+	o := l.output(-real(s)/1000*l.members, v)
 	power = complex(-o.P*1000, -o.Q*1000)
 	if !l.held {
 		slope = complex(-o.DP*1000, -o.DQ*1000)
@@ -57,41 +52,13 @@ func (l *inverterLaw) Draws(s complex128, v float64) (power, slope complex128) {
 	return power, slope
 }
 
-// battery is a storage unit in the run.
-type battery struct {
-	sheet     devices.Battery
-	state     devices.BatteryState
-	kW        float64 // delivered at present
-	profile   int     // series of its profile, −1 none
-	scale     float64 // kW per unit of the profile
-	branches  []int   // injections
-	watched   []watchedPhase
-	inverter  bool
-	exchanged devices.Exchange
+// output is what the inverter does with available kW at v p.u.
+func (l *inverterLaw) output(available, v float64) devices.Output {
+	if l.held {
+		return l.sheet.Held(available, l.state)
+	}
+	return l.sheet.Power(available, math.Max(v, powerflow.Corner))
 }
-
-// charger is a charging point in the run.
-type charger struct {
-	sheet    devices.Charger
-	state    devices.ChargerState
-	kW       float64 // drawn at present
-	tangent  float64 // kvar per kW
-	branches []int
-}
-
-// share is a group of chargers with a common limit.
-type share struct {
-	members []int
-	power   []float64 // kW, by member
-	limit   float64   // kW
-}
-
-// settled is the power, kW, below which a battery that follows a flow is not moved
-// again within one instant (the contract asks for 0.1 kW).
-const dispatchSettled = 0.02
-
-// dispatchRounds bounds the solutions of one instant that batteries ask for.
-const dispatchRounds = 50
 
 // preparePlants builds the plants of a model; in has their injections.
 func (e *Engine) preparePlants(in *inputs) error {
@@ -99,38 +66,39 @@ func (e *Engine) preparePlants(in *inputs) error {
 	var faults tables.Faults
 	p := &e.plants
 	step := e.Study.Settings.Period.Step
-	add := func(f int, rating float64, at tables.Pos, what string, group int) *inverter {
-		sheet := inverterSheet(&m.Functions[f], rating)
+	for i := range m.Functions { // shares of a rating all of them: any rating does
+		sheet := inverterSheet(&m.Functions[i], 1)
 		for _, err := range sheet.Check() {
-			faults.Add(m.Functions[f].At, "function %q, used by %s: %v", m.Functions[f].Name, what, err)
+			faults.Add(m.Functions[i].At, "function %q: %v", m.Functions[i].Name, err)
 		}
+	}
+	add := func(f int, rating float64, group int) *inverter {
+		sheet := inverterSheet(&m.Functions[f], rating)
 		law := in.laws[group]
-		law.sheet = sheet
-		v := &inverter{law: law, group: group, generator: -1, battery: -1, lags: sheet.Lags(step)}
+		law.sheet, law.members = sheet, float64(len(in.groups[group].Members))
+		v := &inverter{law: law, group: group, generator: -1, lags: sheet.Lags(step)}
 		p.inverters = append(p.inverters, v)
 		return v
 	}
 	for i := range m.Generators {
 		g := &m.Generators[i]
 		if g.Function >= 0 {
-			add(g.Function, g.KVA, g.At, "generator "+g.Name, in.groupOfGenerator[i]).generator = i
+			add(g.Function, g.KVA, in.groupOfGenerator[i]).generator = i
 		}
 	}
 	for i := range m.Batteries {
 		b := &m.Batteries[i]
-		x := &battery{profile: in.batterySeries[i], scale: in.batteryScale[i], branches: in.batteryBranches[i], inverter: b.Function >= 0}
+		x := &battery{index: i, profile: in.batterySeries[i], scale: in.batteryScale[i], branches: in.batteryBranches[i]}
 		x.sheet = batterySheet(b, e.Study.Settings.Period.Zone)
 		for _, err := range x.sheet.Check() {
 			faults.Add(b.At, "battery %q: %v", b.Name, err)
 		}
-		if b.Watched != nil {
-			x.watched = e.watch(b.Watched, nil)
-		}
 		if b.Function >= 0 {
-			add(b.Function, b.KVA, b.At, "battery "+b.Name, in.groupOfBattery[i]).battery = len(p.batteries)
+			x.inverter = add(b.Function, b.KVA, in.groupOfBattery[i])
 		}
 		p.batteries = append(p.batteries, x)
 	}
+	e.watchFlows()
 	groups := map[string]int{}
 	for i := range m.Chargers {
 		c := &m.Chargers[i]
@@ -156,135 +124,58 @@ func (e *Engine) preparePlants(in *inputs) error {
 		}
 		p.chargers = append(p.chargers, x)
 	}
-	p.wants = make([]float64, len(p.chargers))
 	return faults.Err()
 }
 
-// reset puts every plant back to its start.
+// reset puts every plant back to its start. Chargers have lived through the days
+// before it, so that a vehicle that came in the evening is charged by then.
 func (p *plants) reset(now devices.Time) {
 	for _, v := range p.inverters {
 		v.started, v.law.held = false, false
 	}
 	for _, b := range p.batteries {
-		b.state, b.kW, b.exchanged = b.sheet.Start(), 0, devices.Exchange{}
+		b.state, b.asked, b.kW, b.prescribed, b.exchanged = b.sheet.Start(), 0, 0, false, devices.Exchange{}
 	}
-	for _, c := range p.chargers {
-		c.state, c.kW = c.sheet.Start(now), 0
-	}
+	p.arrive(now)
 }
 
-// set puts the power of every plant into the solver's input, for an instant.
+// setPlants puts the power of every plant into the solver's input, for an instant.
 func (e *Engine) setPlants(now devices.Time) {
 	p := &e.plants
 	for _, b := range p.batteries {
-		if len(b.watched) == 0 {
-			r := devices.BatteryReading{}
-			if b.profile >= 0 {
-				r.Profile = e.in.values[b.profile] * b.scale
-			}
-			b.kW = b.sheet.Request(b.state, r, now)
-		} else {
-			b.kW = b.sheet.Allowed(b.state, b.kW)
-		}
-		e.putBattery(b)
+		e.ask(b, now)
 	}
-	for i, c := range p.chargers {
-		c.state = c.sheet.Observe(c.state, now)
-		p.wants[i] = c.sheet.Wants(c.state, now)
-		c.kW = p.wants[i]
-	}
-	for _, s := range p.shares {
-		for k, i := range s.members {
-			s.power[k] = p.wants[i]
-		}
-		devices.Share(s.power, s.power, s.limit)
-		for k, i := range s.members {
-			p.chargers[i].kW = s.power[k]
-		}
-	}
+	p.share(now)
 	for _, c := range p.chargers {
 		for _, k := range c.branches {
 			e.input.Power[k] = complex(c.kW, c.kW*c.tangent) * complex(1000/float64(len(c.branches)), 0)
-		}
-	}
-	for _, v := range p.inverters {
-		if v.law.held {
-			v.law.out = v.law.sheet.Held(e.available(v), v.state)
-		}
-	}
-}
-
-func (e *Engine) putBattery(b *battery) {
-	n := float64(len(b.branches))
-	for k, j := range b.branches {
-		e.input.Power[j] = complex(-b.kW*1000/n, 0)
-		if b.inverter {
-			// The law reads the first member's, which stands for the whole.
-			e.input.Power[j] = 0
-			if k == 0 {
-				e.input.Power[j] = complex(-b.kW*1000, 0)
-			}
 		}
 	}
 }
 
 // available is what an inverter could deliver, kW.
 func (e *Engine) available(v *inverter) float64 {
-	return -real(e.input.Power[e.in.groups[v.group].Members[0]]) / 1000
+	return -real(e.input.Power[e.in.groups[v.group].Members[0]]) / 1000 * v.law.members
 }
 
-// follow reads the flows that batteries follow and sets what they ask for; it reports
-// whether anything moved, so that the instant has to be solved again.
-func (e *Engine) follow(now devices.Time) bool {
-	moved := false
-	for _, b := range e.plants.batteries {
-		if len(b.watched) == 0 {
-			continue
-		}
-		kW := b.sheet.Request(b.state, devices.BatteryReading{Flow: e.flowKW(b.watched), Present: b.kW}, now)
-		if math.Abs(kW-b.kW) > dispatchSettled {
-			b.kW, moved = kW, true
-			e.putBattery(b)
-		}
-	}
-	return moved
-}
-
-// flowKW is the real power that enters watched phases.
-func (e *Engine) flowKW(ws []watchedPhase) (kW float64) {
-	for i := range ws {
-		w := &ws[i]
-		current := e.drawnAt(w.parts)
-		for _, f := range w.flows {
-			current += e.state.Flow[f]
-		}
-		kW += real(e.state.V[w.unknown]*cmplx.Conj(current)) / 1000
-	}
-	return kW
-}
-
-// solved takes what the solution at hand means for the plants: where lags go, and
-// what is curtailed.
+// solvedPlants takes what the solution at hand means for the plants: where lags go,
+// what is curtailed, and what batteries deliver.
 func (e *Engine) solvedPlants() {
 	for _, v := range e.plants.inverters {
 		mean := e.groupVoltage(v.group)
 		available := e.available(v)
 		if v.lags {
-			v.target = v.law.sheet.Target(available, mean)
+			v.target = v.law.sheet.Target(available, math.Max(mean, powerflow.Corner))
 			if !v.started && !e.steady {
-				v.state, v.started, v.law.held = v.target, true, true
-				v.law.out = v.law.sheet.Held(available, v.state)
+				v.law.state, v.started, v.law.held = v.target, true, true
 			}
 		}
-		o := v.law.out
-		if !v.law.held {
-			o = v.law.sheet.Power(available, math.Max(mean, powerflow.Corner))
-		}
 		if v.generator >= 0 {
-			e.state.Curtailed[v.generator] = o.Curtailed
+			e.state.Curtailed[v.generator] = v.law.output(available, mean).Curtailed
 		}
 	}
 	for i, b := range e.plants.batteries {
+		b.kW = e.delivered(b)
 		e.state.Stored[i] = b.state.Stored
 	}
 }
@@ -293,10 +184,15 @@ func (e *Engine) solvedPlants() {
 func (e *Engine) groupVoltage(g int) (mean float64) {
 	members := e.in.groups[g].Members
 	for _, k := range members {
-		j := &e.in.injections[k]
-		mean += cmplx.Abs(e.between(j.From, j.To)) / j.Nominal
+		mean += e.branchVoltage(int(k))
 	}
 	return mean / float64(len(members))
+}
+
+// branchVoltage is the voltage across an injection, p.u.
+func (e *Engine) branchVoltage(k int) float64 {
+	j := &e.in.injections[k]
+	return cmplx.Abs(e.between(j.From, j.To)) / j.Nominal
 }
 
 // nextPlant returns the next instant at which a plant changes its power.
@@ -304,7 +200,7 @@ func (e *Engine) nextPlant(now devices.Time) devices.Time {
 	next := devices.Never
 	for _, v := range e.plants.inverters {
 		if v.law.held {
-			next = min(next, v.law.sheet.NextMove(v.state, v.target, now))
+			next = min(next, v.law.sheet.NextMove(v.law.state, v.target, now))
 		}
 	}
 	for _, b := range e.plants.batteries {
@@ -313,61 +209,57 @@ func (e *Engine) nextPlant(now devices.Time) devices.Time {
 		}
 		next = min(next, b.sheet.NextSwitch(now))
 	}
-	for _, c := range e.plants.chargers {
-		if t := c.sheet.NextEvent(c.state, c.kW, now); t > now {
-			next = min(next, t)
-		}
-	}
-	return next
+	return min(next, e.plants.nextCharger(now))
 }
 
 // advancePlants lets an interval pass, and reports whether any plant's power changes
 // with its end.
-func (e *Engine) advancePlants(from, to devices.Time, r *runner) (changed bool) {
+func (e *Engine) advancePlants(from, to devices.Time) (changed bool) {
 	p := &e.plants
 	for _, v := range p.inverters {
 		if !v.law.held {
 			continue
 		}
-		next := v.law.sheet.Advance(v.state, v.target, to-from)
-		changed = changed || next != v.state
-		v.state = next
+		next := v.law.sheet.Advance(v.law.state, v.target, to-from)
+		changed = changed || next != v.law.state
+		v.law.state = next
 	}
-	for _, b := range p.batteries {
+	for i, b := range p.batteries {
 		var x devices.Exchange
 		b.state, x = b.sheet.Advance(b.state, b.kW, to-from)
 		b.exchanged.In += x.In
 		b.exchanged.Out += x.Out
 		b.exchanged.Loss += x.Loss
-		was := b.kW
-		if len(b.watched) == 0 {
-			reading := devices.BatteryReading{}
-			if b.profile >= 0 {
-				reading.Profile = e.in.values[b.profile] * b.scale
-			}
-			changed = changed || b.sheet.Request(b.state, reading, to) != was
-		} else {
-			changed = changed || b.sheet.Allowed(b.state, was) != was
-		}
+		e.state.Stored[i] = b.state.Stored
+		changed = changed || e.wanted(b, to) != b.asked
 	}
-	for _, c := range p.chargers {
-		var drawn float64
-		c.state, drawn = c.sheet.Advance(c.state, c.kW, to-from)
-		_ = drawn
-		s := c.sheet.Observe(c.state, to)
-		changed = changed || s != c.state || c.sheet.Wants(s, to) != c.kW
-	}
-	hours := float64(to-from) / 3.6e12
-	for i := range e.state.Curtailed {
-		r.curtailed[i] += e.state.Curtailed[i] * hours
-	}
-	for i := range e.state.Generation {
-		r.generated[i] += real(e.state.Generation[i]) / 1000 * hours
-	}
-	return changed
+	return p.charge(from, to) || changed
 }
 
-// totals returns what every plant did over the run.
+// tally adds what generators gave and did not give in an interval to the step's.
+func (r *runner) tally(from, to devices.Time) {
+	hours := float64(to-from) / 3.6e12
+	for i := range r.state.Generation {
+		r.stepGenerated[i] += real(r.state.Generation[i]) / 1000 * hours
+		r.stepCurtailed[i] += r.state.Curtailed[i] * hours
+	}
+}
+
+// book takes the step's tally into the run's: nothing of a step that is low or
+// unsolved.
+func (r *runner) book() {
+	for i := range r.stepGenerated {
+		if r.record.Status == results.OK {
+			r.generated[i] += r.stepGenerated[i]
+			r.curtailed[i] += r.stepCurtailed[i]
+		}
+	}
+	clear(r.stepGenerated)
+	clear(r.stepCurtailed)
+}
+
+// totals returns what every plant did over the run. Batteries and chargers go on in
+// low steps too, so that what they hold is accounted for.
 func (r *runner) totals() (out []results.PlantRow) {
 	m := r.net.Model
 	for i := range m.Generators {
@@ -384,7 +276,7 @@ func (r *runner) totals() (out []results.PlantRow) {
 	return out
 }
 
-// standing of plants for the meter.
+// plantPowers sums what batteries deliver and chargers draw, for the meter.
 func (e *Engine) plantPowers() {
 	clear(e.state.Storage)
 	clear(e.state.Charging)

@@ -125,8 +125,6 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 		return nil, faults.Err()
 	}
 	e := &Engine{Study: st, net: net, flow: flow, in: in, paths: map[powerflow.Path]int{}}
-	e.Warnings = append(append(e.Warnings, st.Warnings...), in.odd...)
-	tables.Faults(e.Warnings).Sort()
 	name := st.Case
 	if name == "" {
 		name = "base"
@@ -150,6 +148,8 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 	if err := e.preparePlants(in); err != nil {
 		return nil, err
 	}
+	e.Warnings = append(append(e.Warnings, st.Warnings...), in.odd...)
+	tables.Faults(e.Warnings).Sort()
 	for i := range m.Regulators {
 		e.regulator(i, o)
 	}

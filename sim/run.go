@@ -50,7 +50,8 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 	out.Taps = append(out.Taps, e.state.Taps...)
 	out.Closed = append(out.Closed, e.state.Closed...)
 	r := &runner{Engine: e, recorders: recorders, out: out,
-		generated: make([]float64, len(e.net.Model.Generators)), curtailed: make([]float64, len(e.net.Model.Generators))}
+		generated: make([]float64, len(e.state.Generation)), curtailed: make([]float64, len(e.state.Generation)),
+		stepGenerated: make([]float64, len(e.state.Generation)), stepCurtailed: make([]float64, len(e.state.Generation))}
 	r.coarse = newCoarse(e)
 	n := e.in.axis.Steps()
 	for step := range n {
@@ -187,12 +188,12 @@ func (e *Engine) nearEdge() bool {
 func (e *Engine) solveExact(now devices.Time) (bool, error) {
 	e.exact = false
 	e.setPlants(now)
-	for range dispatchRounds {
+	for round := 0; ; round++ {
 		ok, err := e.solve(powerflow.Contract)
 		if !ok || err != nil {
 			return ok, err
 		}
-		if !e.follow(now) {
+		if round == dispatchRounds || !e.follow(now) {
 			break
 		}
 	}
@@ -220,7 +221,8 @@ type runner struct {
 	action    results.Action
 	record    results.Step
 
-	generated, curtailed []float64 // kWh by generator
+	generated, curtailed         []float64 // kWh by generator
+	stepGenerated, stepCurtailed []float64 // the same of the step at hand
 }
 
 // step runs the events of one step.
@@ -274,9 +276,8 @@ func (r *runner) step(step int) error {
 			return err
 		}
 		at = 0
-		if e.advancePlants(now, next, r) {
-			fresh = true
-		}
+		r.tally(now, next)
+		fresh = e.advancePlants(now, next)
 		if now = next; now >= end {
 			break
 		}
@@ -307,6 +308,7 @@ func (e *Engine) nextSwitch(now devices.Time) devices.Time {
 }
 
 func (r *runner) close() error {
+	r.book()
 	for _, rec := range r.recorders {
 		if err := rec.Step(&r.record); err != nil {
 			return err
