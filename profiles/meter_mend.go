@@ -188,7 +188,7 @@ func (w *mender) tell(m *Meter) {
 	if c := w.rows.conflicts; len(c) > 0 {
 		first := c[0]
 		w.list("two values for one time, the later kept", int64(first.first.sec)*second, int64(c[len(c)-1].first.sec)*second, len(c), 0)
-		w.warn(w.where(first.second), "has %d times with two values, the first at %s: %g here and %g at %s; the later row is kept",
+		w.warn(w.where(first.second), "has %d times with two values, the first at %s: %.7g here and %.7g at %s; the later row is kept",
 			len(c), Format(int64(first.first.sec)*second, m.zone), first.second.v, first.first.v, w.where(first.first))
 	}
 }

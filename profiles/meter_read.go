@@ -45,12 +45,13 @@ type meterReader struct {
 	cells  [][]byte
 }
 
-// hot is what a row needs of its meter, in one line of the processor's cache.
+// hot is what a row needs of its meter, close together for the processor's cache.
 type hot struct {
-	rows []reading // of real power, not yet in the store
-	name string
-	prev uint32 // the time of its last reading, 0: none
-	next int32  // the meter that came after this one the last time, or −1
+	name     string
+	prev     uint32 // the time of its last reading, 0: none
+	next     int32  // the meter that came after this one the last time, or −1
+	real     chunk  // not yet in the store
+	reactive chunk
 }
 
 // moment is a stamp that is read: one instant, or two in a repeated hour.
@@ -265,19 +266,16 @@ func (r *meterReader) readValue(k, i int, sec uint32) {
 		r.fault(k+1, "meter %q: %g is no reading of a meter", r.hot[i].name, v)
 		return
 	}
-	one := reading{sec, uint32(r.lines.number), v}
+	h, ch := &r.hot[i].real, &r.stores[i].real
 	if c.kind == reactiveValue {
-		ch := &r.stores[i].reactive
+		h, ch = &r.hot[i].reactive, &r.stores[i].reactive
+	}
+	register := r.file.block.Values == "register"
+	if h.full() {
 		r.known(ch, k)
-		ch.add(r.number, one)
-		return
+		*h = ch.take(*h, register)
 	}
-	h := &r.hot[i]
-	if len(h.rows) == cap(h.rows) {
-		r.known(&r.stores[i].real, k)
-		h.rows = r.stores[i].real.take(r.number, h.rows)
-	}
-	h.rows = append(h.rows, one)
+	h.put(sec, r.lines.number, v, register)
 }
 
 // known notes the unit and the place of a channel's first value.
@@ -337,16 +335,16 @@ func (r *meterReader) newStore(name string) int {
 	s := &store{name: name, block: r.file.block}
 	s.real.pos = tables.Pos{File: r.name, Line: r.lines.number}
 	r.stores = append(r.stores, s)
-	r.hot = append(r.hot, hot{name: name, next: -1})
+	r.hot = append(r.hot, hot{name: name, next: -1, real: chunk{file: r.number}, reactive: chunk{file: r.number}})
 	return i
 }
 
 // close puts what is left to the stores.
 func (r *meterReader) close() {
 	for i := range r.hot {
-		if h := &r.hot[i]; len(h.rows) > 0 {
-			r.stores[i].real.take(r.number, h.rows)
-			h.rows = nil
-		}
+		h := &r.hot[i]
+		r.stores[i].real.take(h.real, false)
+		r.stores[i].reactive.take(h.reactive, false)
+		h.real, h.reactive = chunk{}, chunk{}
 	}
 }

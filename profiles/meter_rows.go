@@ -7,18 +7,31 @@ import (
 	"yearflow/sim/tables"
 )
 
-// reading is a value as it was read. sec counts from 1970 UTC, so that it goes to 2106;
-// a value that is missing is NaN.
+// reading is a value as it was read, in twelve bytes, since there are many. sec counts
+// from 1970 UTC, so that it goes to 2106; a value that is missing is NaN.
 type reading struct {
 	sec, line uint32
-	v         float64
+	v         float32
 }
 
-// chunk is a part of a meter's readings, all of one file.
+// chunk is a part of a meter's readings, all of one file. Registers are kept to 48
+// bits, as the sum of v and low, since what counts is their difference.
 type chunk struct {
 	file int32
 	rows []reading
+	low  []float32 // nil: not of registers
 }
+
+// put adds a reading; there is room.
+func (c *chunk) put(sec uint32, line int, v float64, register bool) {
+	high := float32(v)
+	c.rows = append(c.rows, reading{sec, uint32(line), high})
+	if register {
+		c.low = append(c.low, float32(v-float64(high)))
+	}
+}
+
+func (c *chunk) full() bool { return len(c.rows) == cap(c.rows) }
 
 // channel is the readings of a meter's real or reactive power, in pieces that are
 // never moved, in the order of files and rows.
@@ -36,26 +49,17 @@ type store struct {
 	block          *MeterBlock
 }
 
-func (c *channel) add(file int32, r reading) {
-	n := len(c.chunks)
-	if n == 0 || len(c.chunks[n-1].rows) == cap(c.chunks[n-1].rows) {
-		size := 16
-		if n > 0 {
-			size = min(2*cap(c.chunks[n-1].rows), 1024)
-		}
-		c.chunks = append(c.chunks, chunk{file, make([]reading, 0, size)})
-		n++
+// take takes a chunk, which is full or the last, and returns room for more.
+func (c *channel) take(one chunk, register bool) chunk {
+	if len(one.rows) > 0 {
+		c.chunks = append(c.chunks, one)
 	}
-	last := &c.chunks[n-1]
-	last.rows = append(last.rows, r)
-}
-
-// take takes rows, which are full or the last, and returns room for more.
-func (c *channel) take(file int32, rows []reading) []reading {
-	if len(rows) > 0 {
-		c.chunks = append(c.chunks, chunk{file, rows})
+	size := min(max(16, 2*cap(one.rows)), 1024)
+	next := chunk{file: one.file, rows: make([]reading, 0, size)}
+	if register {
+		next.low = make([]float32, 0, size)
 	}
-	return make([]reading, 0, min(max(16, 2*cap(rows)), 1024))
+	return next
 }
 
 // merge joins the meters of all files, in their order.
@@ -96,8 +100,9 @@ func (c *channel) join(other *channel, name string, faults *tables.Faults) {
 
 // placed is a reading on its way to its place, with its file.
 type placed struct {
-	reading
-	file int32
+	sec, line uint32
+	file      int32
+	v         float64
 }
 
 // ordered is a channel's readings in order of time, none twice.
@@ -116,7 +121,7 @@ func (o *ordered) order(c *channel) {
 	o.rows, o.untidy, o.repeated, o.conflicts = o.rows[:0], 0, 0, o.conflicts[:0]
 	last, tidy := uint32(0), true
 	for _, piece := range c.chunks {
-		for _, r := range piece.rows {
+		for i, r := range piece.rows {
 			if r.sec < last {
 				o.untidy++
 			}
@@ -124,7 +129,11 @@ func (o *ordered) order(c *channel) {
 				tidy = false
 			}
 			last = r.sec
-			o.rows = append(o.rows, placed{r, piece.file})
+			v := float64(r.v)
+			if piece.low != nil {
+				v += float64(piece.low[i])
+			}
+			o.rows = append(o.rows, placed{r.sec, r.line, piece.file, v})
 		}
 	}
 	if tidy {
