@@ -31,7 +31,18 @@ type localDay struct {
 }
 
 func newCalendar(start, step int64, n int, zone *time.Location) *calendar {
-	c := &calendar{start: start, step: step, n: n, zone: zone, dayOf: make([]int32, n), tod: make([]int16, n)}
+	c := &calendar{}
+	c.lay(start, step, n, zone)
+	return c
+}
+
+// lay makes c the calendar of other intervals, unless it is that already.
+func (c *calendar) lay(start, step int64, n int, zone *time.Location) {
+	if c.start == start && c.step == step && c.n == n && c.zone == zone {
+		return
+	}
+	c.start, c.step, c.n, c.zone = start, step, n, zone
+	c.dayOf, c.tod, c.days = room(c.dayOf, n), room(c.tod, n), c.days[:0]
 	clock := newClock(zone)
 	number := int64(-1 << 62)
 	for k := range n {
@@ -50,7 +61,6 @@ func newCalendar(start, step int64, n int, zone *time.Location) *calendar {
 	if last := len(c.days) - 1; last >= 0 {
 		c.days[last].end = n
 	}
-	return c
 }
 
 // kindOf tells a day by its number since 1970-01-01, a Thursday.

@@ -62,7 +62,7 @@ type mender struct {
 	other ordered // of reactive power
 	real  work
 	kvar  work
-	cal   *calendar
+	cal   calendar
 	pick  []float64
 	days  meanDays
 	out   *mending
@@ -113,11 +113,9 @@ func (w *mender) mend(s *store) (out mending) {
 			m.start -= m.step
 		}
 	}
-	if w.cal == nil || w.cal.start != m.start || w.cal.step != m.step || w.cal.n != n || w.cal.zone != m.zone {
-		w.cal = newCalendar(m.start, m.step, n, m.zone)
-	}
+	w.cal.lay(m.start, m.step, n, m.zone)
 	origin := w.rows.rows[0].sec
-	w.real.begin(w.cal, n)
+	w.real.begin(&w.cal, n)
 	w.place(&w.real, &w.rows, origin, step, register, s.real.energy)
 	m.Read = len(w.rows.rows)
 	w.tell(m)
@@ -227,7 +225,9 @@ func (w *mender) mendReal(m *Meter) {
 	}
 }
 
-// mendReactive closes the gaps of the companion; its values are not judged.
+// mendReactive closes the gaps of the companion; its values are not judged. One that is
+// known for less than half of the time is left out, so that the load's power factor
+// holds.
 func (w *mender) mendReactive(m *Meter, s *store, origin, step uint32, register bool) {
 	w.other.order(&s.reactive)
 	rows := w.other.rows
@@ -237,12 +237,21 @@ func (w *mender) mendReactive(m *Meter, s *store, origin, step uint32, register 
 			return
 		}
 	}
-	if len(rows) == 0 {
+	to := &w.kvar
+	to.begin(&w.cal, len(w.real.old))
+	w.place(to, &w.other, origin, step, register, s.reactive.energy)
+	known := 0
+	for _, why := range to.why {
+		if why == good {
+			known++
+		}
+	}
+	if 2*known < len(to.why) {
+		if known > 0 {
+			w.warn(s.reactive.pos, "has reactive values for %.0f %% of its time; they are not used", 100*float64(known)/float64(len(to.why)))
+		}
 		return
 	}
-	to := &w.kvar
-	to.begin(w.cal, len(w.real.old))
-	w.place(to, &w.other, origin, step, register, s.reactive.energy)
 	w.estimate(to)
 	m.kvar = to.narrowed()
 	w.listWork(m, to, "kvar ", float64(m.step)/float64(hour))

@@ -387,3 +387,23 @@ func TestMeterOddDayLikeness(t *testing.T) {
 		}
 	}
 }
+
+// TestMeterReactiveMostlyMissing: a companion that is hardly known is left out, so that
+// the load keeps its power factor; one that is nowhere known is so without a word.
+func TestMeterReactiveMostlyMissing(t *testing.T) {
+	for _, c := range []struct {
+		cells    [4]string
+		used     bool
+		warnings int
+	}{{[4]string{"1", "2", "", ""}, true, 0}, {[4]string{"1", "", "", ""}, false, 1}, {[4]string{}, false, 0}} {
+		text := "time,A [kW],A [kvar]\n"
+		for k, cell := range c.cells {
+			text += fmt.Sprintf("2025-01-01T%02d:00,%d.5,%s\n", k, k, cell)
+		}
+		s := mustMeters(t, MeterBlock{Layout: "wide"}, MeterRules{}, "m.csv", text)
+		m := mustMeter(t, s, "A")
+		if (m.Series().Kvar != nil) != c.used || len(s.Warnings) != c.warnings || m.Edited != 0 {
+			t.Errorf("%q: kvar %v, warnings %v", c.cells, m.Series().Kvar, s.Warnings)
+		}
+	}
+}
