@@ -114,9 +114,13 @@ func (e *Engine) Solve(step int, p Positions) (*Instant, error) {
 		return nil, fmt.Errorf("step %d is outside the period, which has %d steps", step, e.Steps())
 	}
 	e.Reset()
-	start, _ := e.in.axis.Bounds(step)
+	start, end := e.in.axis.Bounds(step)
 	out := &Instant{Start: start}
-	e.plants.reset(start)
+	now := start
+	if p.Taps != nil {
+		now = end - 1 // positions are logged at the end of a step: who has come by then is there
+	}
+	e.plants.reset(now)
 	e.steady = true
 	for i := range p.Storage {
 		b := e.plants.batteries[i]
@@ -134,7 +138,7 @@ func (e *Engine) Solve(step int, p Positions) (*Instant, error) {
 	}
 	e.anchored = false
 	e.in.at(step, &e.input)
-	ok, err := e.solveExact(start)
+	ok, err := e.solveExact(now)
 	if err != nil {
 		return nil, err
 	}

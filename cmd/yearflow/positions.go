@@ -79,14 +79,70 @@ func (c *console) logged(st *opened, e *sim.Engine, step int, dir string) (sim.P
 	return c.readPositions(e, step, filepath.Join(dir, "devices.csv"))
 }
 
-// readPositions finds the row of devices.csv that a step belongs to.
+// readPositions takes the positions of devices and the power of batteries from the
+// rows that a step belongs to.
 func (c *console) readPositions(e *sim.Engine, step int, file string) (sim.Positions, error) {
 	var none sim.Positions
+	m := e.Study.Model
+	value, err := rowAt(e, step, file)
+	if err != nil {
+		return none, err
+	}
+	out := sim.Positions{Taps: make([]int, len(e.Plan.TapNames)), Closed: make([]bool, len(m.Capacitors))}
+	for i, n := range e.Plan.TapNames {
+		if out.Taps[i], err = whole(value, n, file); err != nil {
+			return none, err
+		}
+	}
+	for i := range m.Capacitors {
+		v, err := whole(value, m.Capacitors[i].Name, file)
+		if err != nil {
+			return none, err
+		}
+		out.Closed[i] = v == 1
+	}
+	if len(m.Batteries) == 0 {
+		return out, nil
+	}
+	file = filepath.Join(filepath.Dir(file), "storage.csv")
+	if value, err = rowAt(e, step, file); err != nil {
+		return none, err
+	}
+	for i := range m.Batteries {
+		n := m.Batteries[i].Name + " [kW]"
+		cell, ok := value[n]
+		kW, err := strconv.ParseFloat(cell, 64)
+		if cell == "" { // the step has no solution
+			kW, err = 0, nil
+		}
+		if !ok || err != nil {
+			return none, wrongf("%s, column %s: want a number, got %q", file, n, cell)
+		}
+		out.Storage = append(out.Storage, kW)
+	}
+	return out, nil
+}
+
+// whole reads a whole number of a row.
+func whole(row map[string]string, column, file string) (int, error) {
+	cell, ok := row[column]
+	if !ok {
+		return 0, wrongf("%s has no column %s", file, column)
+	}
+	v, err := strconv.Atoi(cell)
+	if err != nil {
+		return 0, wrongf("%s, column %s: want a whole number, got %q", file, column, cell)
+	}
+	return v, nil
+}
+
+// rowAt finds the row of a log that a step belongs to, by the names of its columns.
+func rowAt(e *sim.Engine, step int, file string) (map[string]string, error) {
 	f, err := os.Open(file)
 	if errors.Is(err, fs.ErrNotExist) {
-		return none, wrongf("%s is missing: run again", file)
+		return nil, wrongf("%s is missing: run again", file)
 	} else if err != nil {
-		return none, machineError{err}
+		return nil, machineError{err}
 	}
 	defer f.Close()
 	p := e.Study.Settings.Period
@@ -94,7 +150,7 @@ func (c *console) readPositions(e *sim.Engine, step int, file string) (sim.Posit
 	r := csv.NewReader(f)
 	header, err := r.Read()
 	if err != nil {
-		return none, wrongf("%s: %v", file, err)
+		return nil, wrongf("%s: %v", file, err)
 	}
 	var last []string
 	for {
@@ -103,11 +159,11 @@ func (c *console) readPositions(e *sim.Engine, step int, file string) (sim.Posit
 			break
 		}
 		if err != nil {
-			return none, wrongf("%s: %v", file, err)
+			return nil, wrongf("%s: %v", file, err)
 		}
 		t, err := profiles.ParseTime(row[0], p.Zone)
 		if err != nil {
-			return none, wrongf("%s: %v", file, err)
+			return nil, wrongf("%s: %v", file, err)
 		}
 		if t > at {
 			break
@@ -115,30 +171,11 @@ func (c *console) readPositions(e *sim.Engine, step int, file string) (sim.Posit
 		last = row
 	}
 	if last == nil {
-		return none, wrongf("%s has no row for that step", file)
+		return nil, wrongf("%s has no row for that step", file)
 	}
-	value := map[string]int{}
+	value := map[string]string{}
 	for i, h := range header[1:] {
-		v, err := strconv.Atoi(last[i+1])
-		if err != nil {
-			return none, wrongf("%s, column %s: want a whole number, got %q", file, h, last[i+1])
-		}
-		value[h] = v
+		value[h] = last[i+1]
 	}
-	out := sim.Positions{Taps: make([]int, len(e.Plan.TapNames)), Closed: make([]bool, len(e.Study.Model.Capacitors))}
-	for i, n := range e.Plan.TapNames {
-		v, ok := value[n]
-		if !ok {
-			return none, wrongf("%s has no column %s", file, n)
-		}
-		out.Taps[i] = v
-	}
-	for i := range e.Study.Model.Capacitors {
-		v, ok := value[e.Study.Model.Capacitors[i].Name]
-		if !ok {
-			return none, wrongf("%s has no column %s", file, e.Study.Model.Capacitors[i].Name)
-		}
-		out.Closed[i] = v == 1
-	}
-	return out, nil
+	return value, nil
 }

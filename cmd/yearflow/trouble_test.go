@@ -143,6 +143,30 @@ func TestPositions(t *testing.T) {
 	contains(t, errs, "devices.csv is missing")
 }
 
+// An instant at logged positions holds what batteries delivered and who was charging at
+// the end of the row: to the digits that storage.csv has.
+func TestPositionsOfPlants(t *testing.T) {
+	smallStudy(t)
+	write(t, "feeder/batteries.csv", "battery,node,phases,energy [kWh],power [kW],dispatch,watched section,target [kW],recharge [kW]\n"+
+		"b,mill,ABC,1500,500,peak shaving,head,900,700\n")
+	write(t, "feeder/chargers.csv", "charger,node,phases,power [kW],arrival,departure,energy [kWh]\nc,lane,B,20,9:05,16:00,24\n")
+	must(t, exitDone, "run", "--no-figures")
+	row := "2025-07-01T10:00:00-05:00"
+	logged, _ := must(t, exitDone, "solve", "--at", "2025-07-01T10:00", "--positions", "results/base", "--csv", "-")
+	compareWithLog(t, logged, row)
+	settled, _ := must(t, exitDone, "solve", "--at", "2025-07-01T10:00", "--csv", "-")
+	if settled == logged {
+		t.Error("the battery that is half full and the one of the run make no difference: the study shows nothing")
+	}
+	logged, _ = must(t, exitDone, "trace", "--node", "lane", "--at", "2025-07-01T09:00")
+	contains(t, logged, "lane")
+	if err := os.Remove("results/base/storage.csv"); err != nil {
+		t.Fatal(err)
+	}
+	_, errs := must(t, exitInput, "solve", "--positions", "results/base")
+	contains(t, errs, "storage.csv is missing")
+}
+
 // compareWithLog wants the voltages that a run logged at a step from solve's table.
 func compareWithLog(t *testing.T, table, time string) {
 	t.Helper()
