@@ -150,7 +150,11 @@ func (c *checker) ampacities() {
 		}
 		for _, p := range phases {
 			behind := c.r.behind[e].power[p]
-			amps := math.Hypot(real(behind), imag(behind)) * math.Sqrt(3) / c.m.Nodes[node].Nominal
+			perKV := math.Sqrt(3) / c.m.Nodes[node].Nominal
+			if p.Leg() { // half of the full winding, which the nominal voltage is
+				perKV = 2 / c.m.Nodes[node].Nominal
+			}
+			amps := math.Hypot(real(behind), imag(behind)) * perKV
 			if amps > rating {
 				c.found.Add(at, "%s %q: the loads behind its phase %s draw %s A at profile 1, its rating is %s A; usual: less than the rating", e.kind, name, p, amount(amps), amount(rating))
 				return

@@ -127,3 +127,26 @@ func TestRadialThroughABank(t *testing.T) {
 		t.Errorf("reactance to the house %v ohm, want %v", r.x[house], want)
 	}
 }
+
+// What stands on the legs of a centre tap counts at the phase that feeds it, and a leg
+// carries its own power at half of the full winding's voltage.
+func TestLegsBehindATransformer(t *testing.T) {
+	fsys := with(small(), "feeder/transformers.csv", `transformer,from,to,phases,rating [kVA],high [kV],low [kV],connection,impedance [%],x/r,no-load loss [W],exciting current [%]
+sub,grid,bus,ABC,10000,69,12.47,Dyn1,8,15,9000,0.4
+pole,n3,tank,B,25,7.2,0.24,center-tap,2,1.5,55,0.5
+`)
+	fsys["feeder/constructions.csv"].Data = append(fsys["feeder/constructions.csv"].Data, "drop,sequence,0.5,0.2,0.5,0.2,0,0,100\n"...)
+	fsys["feeder/sections.csv"].Data = append(fsys["feeder/sections.csv"].Data, "service,tank,house,12,100,drop\n"...)
+	fsys = with(fsys, edit(t, "feeder/loads.csv", "house,B,wye,12,-0.98", "house,12,wye,12,1")...)
+	fsys["feeder/loads.csv"].Data = append(fsys["feeder/loads.csv"].Data, "lights,house,1,wye,7,1,,1\n"...)
+	s := opened(t, fsys, "")
+	r := newRadial(s.Model, 1)
+	if at := r.behind[edge{"transformer", 1}].power; math.Abs(real(at[B])-19) > 1e-9 || at[A] != 0 || at[Leg1] != 0 {
+		t.Errorf("at the pole stand %v kVA, want 19 on B", at)
+	}
+	// Half of 12 kW and 7 kW at 120 V: 108.33 A.
+	got := s.Implausible()
+	if len(got) != 1 || !strings.Contains(got[0].Text, "the loads behind its phase 1 draw 108.33 A") {
+		t.Errorf("got %v", got)
+	}
+}

@@ -10,15 +10,22 @@ type edge struct {
 
 // standing is what stands behind an element, by phase at its from side.
 type standing struct {
-	power   [3]complex128 // kVA
-	largest float64       // kVA of the largest load
-	name    string        // of that load
+	power   [PhaseCount]complex128 // kVA
+	largest float64                // kVA of the largest load
+	name    string                 // of that load
 }
 
 // kVA is the apparent power of all phases together.
 func (s standing) kVA() float64 {
-	sum := s.power[A] + s.power[B] + s.power[C]
+	sum := total(s.power)
 	return math.Hypot(real(sum), imag(sum))
+}
+
+func total(power [PhaseCount]complex128) (sum complex128) {
+	for _, s := range power {
+		sum += s
+	}
+	return sum
 }
 
 // radial is a feeder seen from its sources: the shortest way to each node, in
@@ -143,13 +150,14 @@ func (s *standing) add(o standing) {
 }
 
 // throughBank shares what a bank carries among the phases of its other side: that of
-// a three-phase bank equally, which is a first guess.
-func throughBank(t *Transformer, low [3]complex128) [3]complex128 {
+// a three-phase bank equally, which is a first guess; that of the legs of a centre tap is the
+// one phase's.
+func throughBank(t *Transformer, low [PhaseCount]complex128) [PhaseCount]complex128 {
 	if t.Connection == "YNyn0" {
 		return low
 	}
-	sum := low[A] + low[B] + low[C]
-	var out [3]complex128
+	sum := total(low)
+	var out [PhaseCount]complex128
 	for _, p := range t.Phases {
 		out[p] = sum / complex(float64(len(t.Phases)), 0)
 	}
