@@ -113,6 +113,9 @@ func (e *Engine) Solve(step int, p Positions) (*Instant, error) {
 	if step < 0 || step >= e.Steps() {
 		return nil, fmt.Errorf("step %d is outside the period, which has %d steps", step, e.Steps())
 	}
+	if err := e.baseAt(step); err != nil {
+		return nil, err
+	}
 	e.Reset()
 	start, end := e.in.axis.Bounds(step)
 	out := &Instant{Start: start}
@@ -137,8 +140,8 @@ func (e *Engine) Solve(step int, p Positions) (*Instant, error) {
 		}
 	}
 	e.anchored = false
-	e.in.at(step, &e.input)
-	ok, err := e.solveExact(now)
+	e.takeInputs(step)
+	ok, err := e.allocate(now)
 	if err != nil {
 		return nil, err
 	}

@@ -79,7 +79,7 @@ func (n *naming) prices(currency string) {
 	for i, u := range n.uses {
 		toml := strings.HasSuffix(u.Pos.File, ".toml")
 		switch {
-		case n.told[i] || !toml:
+		case n.told[i] || !toml || u.Want == feeder.WantMeasured:
 		case u.Want != feeder.WantPrice:
 			n.find(u.Name, u.Pos, "kW", "pu")
 		case currency == "":

@@ -32,6 +32,10 @@ type Options struct {
 	// unit, "LTC" or "LTC.A" for a ganged bank, "C2" for a capacitor.
 	Controls map[string]Controller
 	Demo     bool
+	// Base is an engine of the study as it stands, of the same period. Several cases of a
+	// study with an [allocation] share its walk through the period; where it is nil, a
+	// case that needs one makes its own.
+	Base *Engine
 }
 
 // Engine is a study ready to run. It is not safe for use by several goroutines at
@@ -47,8 +51,11 @@ type Engine struct {
 	in      *inputs
 	devices []*device
 	plants  plants
-	steady  bool  // lags are left out: at start-up, and of a single instant
-	unitAt  []int // by Model.Regulators: position of its first unit in State.Taps
+
+	allocation *allocation // nil: no measured total is shared over loads
+
+	steady bool  // lags are left out: at start-up, and of a single instant
+	unitAt []int // by Model.Regulators: position of its first unit in State.Taps
 
 	// The state of the run, and the places that one instant is worked out in.
 	state    results.State
@@ -150,6 +157,9 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 	}
 	e.Warnings = append(append(e.Warnings, st.Warnings...), in.odd...)
 	tables.Faults(e.Warnings).Sort()
+	if err := e.prepareAllocation(o); err != nil {
+		return nil, err
+	}
 	for i := range m.Regulators {
 		e.regulator(i, o)
 	}

@@ -32,6 +32,9 @@ const startUp = 24 * 3600 * devices.Second
 // begins settled, unless the study says "given". A cancelled context ends it between
 // two steps.
 func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outcome, error) {
+	if err := e.baseOver(ctx); err != nil {
+		return nil, err
+	}
 	e.Reset()
 	out := &results.Outcome{Paths: map[string]int{}}
 	e.plants.reset(e.in.axis.Start)
@@ -82,10 +85,11 @@ func (e *Engine) StepAt(t int64) (int, bool) { return e.in.axis.Index(t) }
 // solution the devices stay at the positions of the tables.
 func (e *Engine) settle(step int) (moving []string, actions int, err error) {
 	start, _ := e.in.axis.Bounds(step)
-	e.in.at(step, &e.input)
+	e.takeInputs(step)
 	now, at := start, 0
+	allocate, again := true, 0
 	for {
-		ok, err := e.solveExact(start)
+		ok, err := e.solveWith(allocate, start)
 		if err != nil {
 			return nil, actions, err
 		}
@@ -93,11 +97,20 @@ func (e *Engine) settle(step int) (moving []string, actions int, err error) {
 			e.Reset()
 			return nil, 0, nil
 		}
+		allocate = false
 		for {
 			if err := e.observe(now, start); err != nil {
 				return nil, actions, err
 			}
 			due := e.due()
+			if due == devices.Never && again < allocationAgain && actions > 0 && e.stale() {
+				again++
+				if ok, err := e.allocate(start); !ok || err != nil {
+					e.Reset()
+					return nil, 0, err
+				}
+				continue
+			}
 			if due == devices.Never || due >= start+startUp {
 				for _, d := range e.devices {
 					if d.Due() != devices.Never {
@@ -229,7 +242,7 @@ type runner struct {
 func (r *runner) step(step int) error {
 	e := r.Engine
 	start, end := e.in.axis.Bounds(step)
-	e.in.at(step, &e.input)
+	e.takeInputs(step)
 	// Start voltages are those after the last action, or of the first step of the day:
 	// a function of the inputs and the calendar.
 	if day := profiles.Day(start, e.in.axis.Zone); !r.started || day != r.day {
@@ -239,9 +252,10 @@ func (r *runner) step(step int) error {
 	r.record = results.Step{Start: start, End: end}
 	now, at := start, 0
 	fresh, seen := true, false
+	allocate, again, moved := true, 0, false
 	for {
 		if fresh {
-			ok, err := e.solveExact(now)
+			ok, err := e.solveWith(allocate, now)
 			if err != nil {
 				return err
 			}
@@ -252,6 +266,7 @@ func (r *runner) step(step int) error {
 				e.keep()
 			}
 			fresh, r.acted = false, false
+			allocate = false
 		}
 		if err := e.observe(now, now); err != nil {
 			return err
@@ -268,7 +283,12 @@ func (r *runner) step(step int) error {
 			if err := r.act(now); err != nil {
 				return err
 			}
-			fresh = true
+			fresh, moved = true, true
+			continue
+		}
+		if moved && due > end && again < allocationAgain && e.stale() {
+			allocate, fresh, moved = true, true, false
+			again++
 			continue
 		}
 		next := min(due, turn, end, e.nextPlant(now))
@@ -286,6 +306,7 @@ func (r *runner) step(step int) error {
 		r.record.Status, r.record.Where = results.Low, where
 	}
 	r.record.Last = &e.state
+	r.record.Allocation = e.allocationAtEnd()
 	r.record.Solver = e.solution.Path.String()
 	return r.close()
 }
@@ -326,6 +347,7 @@ func (r *runner) unsolved(now, end int64) error {
 	r.record.Where = r.net.Unknowns[r.solution.Worst].Name
 	r.record.Solver = powerflow.None.String()
 	r.record.Last = nil
+	r.record.Allocation = r.allocationUnsolved()
 	r.started, r.acted = false, false
 	return r.close()
 }

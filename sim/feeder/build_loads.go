@@ -115,13 +115,12 @@ func (b *builder) loadAmount(r *loadRow, l *Load, energies []*energyRow, what st
 	if len(energies) > 0 {
 		given = append(given, "energies.csv")
 	}
-	if len(given) > 1 {
+	if both := r.Connected.Given && !r.Real.Given && (r.Energy.Given != (len(energies) > 0)); len(given) > 1 && !both {
 		b.faults.Add(r.Row.At, "%s: %s and %s are two sources of one value; leave one", what, given[0], given[1])
 		return false
 	}
 	if r.Connected.Given {
-		b.faults.Add(r.Connected.At, "%s: connected [kVA]: sharing out a measured total %s; give real [kW] or energy [kWh]", what, later)
-		return false
+		l.ConnectedKVA = r.Connected.Value
 	}
 	tan, hasFactor, ok := b.tangent(r.Factor, what)
 	if !ok {
@@ -134,7 +133,7 @@ func (b *builder) loadAmount(r *loadRow, l *Load, energies []*energyRow, what st
 	if !hasFactor && !r.Reactive.Given {
 		b.assumeMany(r.Row.At, "loads: power factor", "1")
 	}
-	l.KVARPerKW = tan
+	l.KVARPerKW, l.FactorGiven = tan, hasFactor || r.Reactive.Given
 	want := WantMultiplier
 	switch {
 	case r.Real.Given:

@@ -13,10 +13,11 @@ import (
 
 // settingsReader turns a document into Settings; every fault has the line of its key.
 type settingsReader struct {
-	d       document
-	at      places
-	faults  *tables.Faults
-	assumed []Assumption
+	d        document
+	caseName string
+	at       places
+	faults   *tables.Faults
+	assumed  []Assumption
 }
 
 func (r *settingsReader) fault(key, format string, args ...any) {
@@ -248,6 +249,7 @@ func (r *settingsReader) settings() Settings {
 	s.Limits = r.limits()
 	s.Prices = r.prices()
 	s.Weather = r.weather(s.Period)
+	s.Allocation = r.allocation(r.caseName)
 	s.ScaleLoad = r.scale("scale.load", r.d.Scale.Load)
 	s.ScaleGeneration = r.scale("scale.generation", r.d.Scale.Generation)
 	return s

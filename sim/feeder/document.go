@@ -28,9 +28,12 @@ type document struct {
 	Prices    pricesDocument    `toml:"prices"`
 	Weather   weatherDocument   `toml:"weather"`
 	Scale     scaleDocument     `toml:"scale"`
-	Compare   map[string]any    `toml:"compare"`
-	Tune      map[string]any    `toml:"tune"`
-	Hosting   map[string]any    `toml:"hosting"`
+
+	Allocation allocationDocument `toml:"allocation"`
+
+	Compare map[string]any `toml:"compare"`
+	Tune    map[string]any `toml:"tune"`
+	Hosting map[string]any `toml:"hosting"`
 }
 
 type periodDocument struct {
@@ -78,6 +81,16 @@ type weatherDocument struct {
 	Latitude  any `toml:"latitude"`
 	Longitude any `toml:"longitude"`
 	Elevation any `toml:"elevation"`
+}
+
+type allocationDocument struct {
+	At          any `toml:"at"`
+	Real        any `toml:"real"`
+	Reactive    any `toml:"reactive"`
+	PowerFactor any `toml:"power_factor"`
+	Current     any `toml:"current"`
+	By          any `toml:"by"`
+	Utilization any `toml:"utilization"`
 }
 
 type scaleDocument struct {

@@ -163,7 +163,7 @@ func TestLoadAmounts(t *testing.T) {
 	}
 	for _, tt := range []struct{ row, at, want string }{
 		{"n2,A,wye,1,,5,,,,", "2", "real [kW] and energy [kWh] are two sources of one value"},
-		{"n2,A,wye,,10,,,,,", "2:6", "connected [kVA]: sharing out a measured total comes with a later version"},
+		{"n2,A,wye,,10,,,,,", "2", "connected [kVA] is a weight and no amount: [allocation] in study.toml names what was measured"},
 		{"n2,A,wye,,,,,,,", "2", "how much is it?"},
 		{"n2,A,wye,1,,,1,0.9,,", "2:9", "reactive [kvar] and power factor are two sources of one value"},
 		{"n2,A,wye,,,,1,,,p", "2:8", "reactive [kvar] goes with real [kW] only"},

@@ -325,6 +325,10 @@ type Load struct {
 	ZIP        ZIP
 	Profile    string
 	Customers  float64
+	// ConnectedKVA is a weight in sharing out a measured total; 0: not given.
+	ConnectedKVA float64
+	// FactorGiven tells that the row says its reactive power or its power factor.
+	FactorGiven bool
 }
 
 // MonthEnergy is the energy of a load in one month ("2025-01"), or in the period.

@@ -17,6 +17,8 @@ type Settings struct {
 	Limits    Limits
 	Prices    Prices
 	Weather   Weather
+	// Allocation is nil where no measured total is shared over loads.
+	Allocation *Allocation
 	// ScaleLoad and ScaleGeneration multiply every load and generator ([scale] of a
 	// case); 1 where nothing is said.
 	ScaleLoad, ScaleGeneration float64

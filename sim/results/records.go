@@ -64,6 +64,8 @@ type Plan struct {
 	// allowance of [limits]); nil where the allowance is zero.
 	LoadPeak []float64
 	Demo     bool
+	// Allocation tells that steps say how a measured total was shared over loads.
+	Allocation bool
 }
 
 // State is one solved instant. Slices must not be kept or changed.
@@ -126,6 +128,9 @@ type Step struct {
 	Last       *State // at the end of the step; nil where Unsolved
 	Actions    int
 	Solver     string // the path of the last solution: fixed point, newton
+	// Allocation tells how what was measured is met at the end of the step; nil where no
+	// measured total is shared over loads.
+	Allocation *AllocationStep
 }
 
 // Outcome closes a run.

@@ -81,6 +81,9 @@ func (w *Writer) writeSummary(f *outFile) error {
 	s.customers()
 	s.operations()
 	s.steps()
+	if s.w.allocation != nil {
+		s.allocation()
+	}
 	return s.err
 }
 

@@ -31,6 +31,8 @@ type Writer struct {
 
 	steps, voltages, flows, devices, operations *outFile
 	storage                                     *outFile // nil without batteries
+	allocation                                  *outFile // nil without one
+	shared                                      allocationCounts
 	hashes                                      map[string]string
 
 	places []int // of voltages.csv, into Meter.Points
@@ -178,6 +180,7 @@ func (w *Writer) open() (err error) {
 		{&w.devices, "devices.csv", w.devicesHeader()},
 		{&w.operations, "operations.csv", operationsHeader[:]},
 		{&w.storage, "storage.csv", w.storageHeader()},
+		{&w.allocation, "allocation.csv", w.allocationHeader()},
 	} {
 		if len(x.header) == 0 {
 			continue // nothing of the kind in the model
@@ -261,6 +264,11 @@ func (w *Writer) Step(s *Step) error {
 	if s.Status != OK && len(w.trouble) < troubleKept {
 		w.trouble = append(w.trouble, troubleOut{w.clock.text(s.Start), s.Status.String(), s.Where})
 	}
+	if s.Allocation != nil && w.allocation != nil {
+		if err := w.writeAllocation(s); err != nil {
+			return w.fail(err)
+		}
+	}
 	if s.Last != nil {
 		w.meter.Read(s.Last, w.now)
 		w.balance.take(w.now, s.Start)
@@ -310,6 +318,9 @@ func (w *Writer) logs() []*outFile {
 	logs := []*outFile{w.steps, w.voltages, w.flows, w.devices, w.operations}
 	if w.storage != nil {
 		logs = append(logs, w.storage)
+	}
+	if w.allocation != nil {
+		logs = append(logs, w.allocation)
 	}
 	return logs
 }
