@@ -314,9 +314,12 @@ func (s *Solver) Solve(in *Input, start []complex128, tol Tolerance, out *Soluti
 				return true
 			}
 		}
-		copy(out.V, s.noLoad)
-		if s.fixedPoint(in, tol, out) && s.bounded(out) {
-			return true
+		// Where a law's slope makes the iteration diverge it does so from anywhere.
+		if start == nil || len(s.Groups) == 0 {
+			copy(out.V, s.noLoad)
+			if s.fixedPoint(in, tol, out) && s.bounded(out) {
+				return true
+			}
 		}
 		copy(out.V, s.noLoad)
 		if s.newton.solve(in, tol, out) && s.bounded(out) {
@@ -344,7 +347,10 @@ func (s *Solver) fixedPoint(in *Input, tol Tolerance, out *Solution) bool {
 	out.Path = FixedPoint
 	s.currents(s.inject, out.V, in)
 	last := math.Inf(1)
-	slow := 0
+	slow, patience := 0, 12
+	if len(s.Groups) > 0 {
+		patience = 4
+	}
 	for range maxFixedPoint {
 		out.Iterations++
 		copy(s.x, s.pull)
@@ -372,7 +378,7 @@ func (s *Solver) fixedPoint(in *Input, tol Tolerance, out *Solution) bool {
 			}
 		}
 		if change > 0.9*last {
-			if slow++; slow > 12 {
+			if slow++; slow > patience {
 				return false
 			}
 		}
