@@ -37,16 +37,21 @@ func (p *progress) Action(*results.Action) error     { return nil }
 
 func (p *progress) Step(*results.Step) error {
 	p.done++
-	if p.done%64 != 0 && p.done != p.total {
-		return nil
+	if p.done%64 == 0 || p.done == p.total {
+		p.show()
 	}
+	return nil
+}
+
+// show tells how far it is, if it is time to.
+func (p *progress) show() {
 	now := time.Now()
 	every := 5 * time.Second
 	if p.terminal {
 		every = 200 * time.Millisecond
 	}
 	if now.Sub(p.shown) < every {
-		return nil
+		return
 	}
 	p.shown = now
 	share := float64(p.done) / float64(p.total)
@@ -57,7 +62,6 @@ func (p *progress) Step(*results.Step) error {
 	} else {
 		fmt.Fprintf(p.w, "step %d of %d (%.0f %%), about %v left\n", p.done, p.total, 100*share, left)
 	}
-	return nil
 }
 
 // end clears the bar.
