@@ -43,6 +43,8 @@ type inputs struct {
 
 	shared allocated // loads that a measured total is shared over
 
+	probeBranches [][]int // by Options.Probes
+
 	energy  [][]float64 // by load with an energy: kW by month of the axis; nil else
 	months  []string
 	monthOf func(step int) int

@@ -36,6 +36,8 @@ type Options struct {
 	// study with an [allocation] share its walk through the period; where it is nil, a
 	// case that needs one makes its own.
 	Base *Engine
+	// Probes are nodes (into Model.Nodes) at which Marginal asks for marginal losses.
+	Probes []int
 }
 
 // Engine is a study ready to run. It is not safe for use by several goroutines at
@@ -125,6 +127,7 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 	if err != nil {
 		return nil, err
 	}
+	in.probes(net, o.Probes)
 	flow, err := powerflow.New(net, in.injections, in.groups...)
 	if err != nil {
 		var faults tables.Faults
