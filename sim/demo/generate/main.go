@@ -9,7 +9,9 @@
 // not touched.
 //
 // The feeder is written down in streets.go (where lines and cables run) and
-// services.go (who is served, and what they take). The profiles follow from a
+// services.go (who is served, and what they take). The homes and small shops behind
+// single-phase transformers stand at the ends of triplex services, so that the voltage
+// judged is that at the meter; drops.go derives them. The profiles follow from a
 // weather of seeded chance (weather.go), the sun's path and the modules' tilt
 // (sun.go) and the habits of five classes of customer (habits.go). Everything is a
 // continuous function of time, so that the hours of the year and the minutes of the

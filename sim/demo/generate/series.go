@@ -18,9 +18,9 @@ type column struct {
 const zone = "America/Denver"
 
 // The week that is also given by the minute, in local time: showers and sun in turn, at the
-// end of April.
+// end of May, when the first warm afternoons close the switched capacitors.
 var (
-	minuteFrom = time.Date(2025, 4, 28, 0, 0, 0, 0, time.UTC)
+	minuteFrom = time.Date(2025, 5, 26, 0, 0, 0, 0, time.UTC)
 	minuteDays = 7
 )
 

@@ -1,17 +1,20 @@
 package main
 
-// A service is a bank of distribution transformers with the loads behind it. The
+// A bank is a row of distribution transformers with the loads behind it. The
 // low-voltage node has the primary node's name with "-s" or "-s2" after it. Several
-// units stand for the transformers of a street in parallel.
-type service struct {
+// units stand for the transformers of a street in parallel. Single-phase units are
+// centre-tapped, 120/240 V, and their loads stand at the ends of services: see
+// drops.go. Those of three-phase banks stand at the low-voltage node.
+type bank struct {
 	at     string // primary node
 	phases string
 	units  int
 	kva    float64 // of one unit (three-phase: of the bank)
 	age    age
 	loads  []load
-	low    float64 // kV; 0: 0.24
+	low    float64 // kV, of a three-phase bank
 	group  string  // connection of a three-phase bank
+	remark string  // beside the nameplate
 }
 
 // A load is what one class of customers takes at the height of its own profile.
@@ -55,18 +58,18 @@ var classes = [...]struct {
 	pumps:   {"pumps", 0.86, "power"},
 }
 
-// services lists the banks, street by street.
-var services = []service{
+// served lists the banks, street by street.
+var served = []bank{
 	{at: "aspen1", phases: "A", units: 3, kva: 50, age: old, loads: []load{{homes, 1, 88, 32}, {homes, 2, 57, 21}}},
 	{at: "aspen2", phases: "A", units: 3, kva: 37.5, age: old, loads: []load{{homes, 2, 64, 23}, {homes, 4, 48, 17}}},
 	{at: "aspen3", phases: "A", units: 3, kva: 37.5, loads: []load{{homes, 3, 68, 25}, {shops, 1, 16, 2}}},
 	{at: "birch1", phases: "B", units: 3, kva: 50, age: old, loads: []load{{homes, 1, 82, 30}, {homes, 5, 62, 23}}},
 	{at: "birch2", phases: "B", units: 4, kva: 37.5, age: old, loads: []load{{homes, 2, 78, 28}, {homes, 3, 60, 22}}},
-	{at: "cotton1", phases: "C", units: 3, kva: 37.5, loads: []load{{homes, 3, 51, 19}, {homes, 5, 31, 11}}},
-	{at: "cotton2", phases: "C", units: 3, kva: 37.5, age: old, loads: []load{{homes, 1, 43, 16}, {homes, 4, 37, 13}}},
-	{at: "cotton3", phases: "C", units: 2, kva: 37.5, age: unknown, loads: []load{{homes, 2, 54, 20}, {works, 2, 12, 1}}},
-	{at: "cotton4", phases: "C", units: 3, kva: 25, loads: []load{{homes, 5, 44, 16}, {homes, 3, 34, 12}}},
-	{at: "cotton5", phases: "C", units: 3, kva: 25, age: old, loads: []load{{homes, 4, 51, 19}, {homes, 1, 31, 11}}},
+	{at: "cotton1", phases: "C", units: 3, kva: 37.5, loads: []load{{homes, 3, 46, 17}, {homes, 5, 28, 10}}},
+	{at: "cotton2", phases: "C", units: 3, kva: 37.5, age: old, loads: []load{{homes, 1, 36, 13}, {homes, 4, 30, 11}}},
+	{at: "cotton3", phases: "C", units: 2, kva: 37.5, age: unknown, loads: []load{{homes, 2, 43, 16}, {works, 2, 12, 1}}},
+	{at: "cotton4", phases: "C", units: 3, kva: 25, loads: []load{{homes, 5, 40, 15}, {homes, 3, 31, 11}}},
+	{at: "cotton5", phases: "C", units: 3, kva: 25, age: old, loads: []load{{homes, 4, 46, 17}, {homes, 1, 28, 10}}},
 	{at: "elk1", phases: "B", units: 3, kva: 37.5, loads: []load{{homes, 5, 65, 24}, {homes, 2, 43, 16}}},
 	{at: "elk2", phases: "B", units: 3, kva: 37.5, age: old, loads: []load{{homes, 4, 71, 26}, {shops, 2, 18, 2}}},
 	{at: "fir1", phases: "A", units: 3, kva: 50, loads: []load{{homes, 3, 74, 27}, {homes, 1, 47, 17}}},
@@ -98,7 +101,7 @@ var services = []service{
 	{at: "foundry1", phases: "ABC", units: 2, kva: 150, low: 0.208, group: "YNyn0", loads: []load{{homes, 1, 170, 62}, {homes, 2, 128, 47}}},
 	{at: "foundry2", phases: "ABC", units: 1, kva: 300, age: old, low: 0.48, group: "Dyn1", loads: []load{{works, 1, 200, 1}, {works, 2, 50, 2}}},
 	{at: "orchard2", phases: "ABC", units: 1, kva: 225, low: 0.208, group: "YNyn0", loads: []load{{homes, 4, 135, 49}, {shops, 1, 46, 3}}},
-	{at: "orchard4", phases: "ABC", units: 1, kva: 225, age: old, low: 0.48, group: "Dd0", loads: []load{{pumps, 1, 200, 3}}},
+	{at: "orchard4", phases: "ABC", units: 1, kva: 225, age: old, low: 0.48, group: "Dd0", remark: "overloaded on purpose; check tells of it", loads: []load{{pumps, 1, 200, 3}}},
 	{at: "orchard6", phases: "ABC", units: 1, kva: 225, low: 0.48, group: "Dyn1", loads: []load{{pumps, 2, 175, 2}, {works, 2, 50, 1}}},
 	{at: "orchard8", phases: "ABC", units: 1, kva: 300, low: 0.48, group: "YNyn0", loads: []load{{pumps, 1, 120, 2}, {homes, 5, 85, 31}, {works, 3, 62, 1}}},
 	{at: "bench2", phases: "ABC", units: 1, kva: 150, low: 0.208, group: "YNyn0", loads: []load{{shops, 2, 78, 4}, {homes, 2, 43, 16}}},
@@ -135,5 +138,5 @@ var plants = []plant{
 	{"solar-mill", "mill3-s", "ABC", 250, 10, 170, 1.15, 0.02},
 	{"solar-main", "main5-s", "ABC", 110, 10, 200, 1.10, 0},
 	{"solar-bench", "bench4-s", "ABC", 150, 15, 190, 1.15, 0.12},
-	{"solar-gulch", "gulch3-s", "C", 140, 30, 210, 1.20, 0.14},
+	{"solar-gulch", "gulch3-s", "12", 140, 30, 210, 1.20, 0.14},
 }

@@ -119,7 +119,7 @@ var streets = []leg{
 	{"birch1", "birch2", "B", "one-2", 420, 170},
 	{"M07", "cotton1", "C", "one-2", 900, 330},
 	{"cotton1", "cotton2", "C", "one-2", 950, 335},
-	{"cotton2", "cotton3", "C", "one-4", 1000, 345},
+	{"cotton2", "cotton3", "C", "one-2", 1000, 345},
 	{"cotton3", "cotton4", "C", "one-4", 1100, 350},
 	{"cotton4", "cotton5", "C", "one-4", 1150, 330},
 	{"M12", "elk1", "B", "one-2", 620, 320},

@@ -47,6 +47,13 @@ func number(x float64, decimals int) string {
 // point is a place on the map, m.
 type point struct{ x, y float64 }
 
+// towards is the point that lies some metres away at a bearing, degrees clockwise
+// from north.
+func (p point) towards(bearing, metres float64) point {
+	sin, cos := math.Sincos(bearing * math.Pi / 180)
+	return point{p.x + metres*sin, p.y + metres*cos}
+}
+
 // places walks the streets and returns every primary node's place, and their names
 // in the order of the plan.
 func places() (map[string]point, []string, error) {
@@ -60,8 +67,7 @@ func places() (map[string]point, []string, error) {
 		if _, twice := at[l.to]; twice {
 			return nil, nil, fmt.Errorf("street plan: node %q is reached twice", l.to)
 		}
-		sin, cos := math.Sincos(l.bearing * math.Pi / 180)
-		at[l.to] = point{p.x + l.metres*sin, p.y + l.metres*cos}
+		at[l.to] = p.towards(l.bearing, l.metres)
 		order = append(order, l.to)
 	}
 	return at, order, nil
@@ -80,12 +86,12 @@ func areaOf(node string) string {
 	return name
 }
 
-// lowNodes names the low-voltage node of each service: the primary node's name and
+// lowNodes names the low-voltage node of each bank: the primary node's name and
 // "-s", then "-s2".
 func lowNodes() []string {
-	names := make([]string, len(services))
+	names := make([]string, len(served))
 	seen := map[string]int{}
-	for i, s := range services {
+	for i, s := range served {
 		names[i] = s.at + "-s"
 		if seen[s.at]++; seen[s.at] > 1 {
 			names[i] += strconv.Itoa(seen[s.at])
@@ -101,10 +107,10 @@ func feederTables() ([]file, error) {
 		return nil, err
 	}
 	low := lowNodes()
-	for i, s := range services {
+	for i, s := range served {
 		p, ok := at[s.at]
 		if !ok {
-			return nil, fmt.Errorf("services: there is no node %q", s.at)
+			return nil, fmt.Errorf("banks: there is no node %q", s.at)
 		}
 		// The second bank at a pole is drawn on the other side.
 		side := 40.0
@@ -114,23 +120,31 @@ func feederTables() ([]file, error) {
 		at[low[i]] = point{p.x + side, p.y - 30}
 		order = append(order, low[i])
 	}
+	drops := serviceList(low)
+	for _, s := range drops {
+		at[s.meter] = at[s.from].towards(s.bearing, s.metres)
+		order = append(order, s.meter)
+	}
 	nodes := newSheet("feeder/nodes.csv", "Places on the map. The streets are invented.\nWritten by sim/demo/generate.",
 		"node", "x [m]", "y [m]", "area")
 	for _, n := range order {
 		p := at[n]
 		nodes.row(n, number(p.x, 0), number(p.y, 0), areaOf(n))
 	}
-	return []file{nodes.file(), sectionTable(), transformerTable(low), loadTable(low), generatorTable()}, nil
+	return []file{nodes.file(), sectionTable(drops), transformerTable(low), loadTable(low, drops), generatorTable()}, nil
 }
 
-func sectionTable() file {
+func sectionTable(drops []service) file {
 	s := newSheet("feeder/sections.csv",
-		"phases lists the phases in the order of the construction's positions.\nWritten by sim/demo/generate.",
+		"phases lists the phases in the order of the construction's positions. The last rows are the services,\non legs 1 and 2 of a centre-tapped secondary.\nWritten by sim/demo/generate.",
 		"section", "from", "to", "phases", "length [m]", "construction")
 	for _, l := range streets {
 		if l.construction != "" {
 			s.row(l.from+"-"+l.to, l.from, l.to, l.phases, number(l.metres, 0), l.construction)
 		}
+	}
+	for _, d := range drops {
+		s.row(d.from+"-"+d.meter, d.from, d.meter, "12", number(d.metres, 0), d.construction)
 	}
 	return s.file()
 }
@@ -148,10 +162,10 @@ var singles = []unitData{
 	{50, 95, 510, 2.2, 0.7},
 }
 
-// banks are modern liquid-filled three-phase units, whose losses at half load make
+// threes are modern liquid-filled three-phase units, whose losses at half load make
 // the efficiency of the DOE rule of 2016, 45 % of them in the core (a usual
 // share); impedances follow IEEE C57.12.34 from 750 kVA, below it common practice.
-var banks = []unitData{
+var threes = []unitData{
 	{150, 290, 1380, 3.0, 0.6},
 	{225, 390, 1930, 3.3, 0.6},
 	{300, 500, 2410, 3.8, 0.5},
@@ -173,16 +187,19 @@ Written by sim/demo/generate.`,
 		"impedance [%]", "x/r", "load loss [W]", "no-load loss [W]", "exciting current [%]", "note")
 	s.row("T-sub", "sub-69", "sub-low", "ABC", "10000", "69", "12.47", "Dyn1",
 		"8", "18", "", "11000", "0.5", "10 MVA self-cooled; load tap changer: see regulators.csv")
-	for i, v := range services {
-		high, lowKV, group, data := 7.2, 0.24, "1ph", singles
+	for i, v := range served {
+		high, lowKV, group, data := 7.2, 0.24, "center-tap", singles
 		if len(v.phases) == 3 {
-			high, lowKV, group, data = 12.47, v.low, v.group, banks
+			high, lowKV, group, data = 12.47, v.low, v.group, threes
 		}
 		n := float64(v.units)
 		cells := []string{"T-" + strings.TrimSuffix(low[i], "-s"), v.at, low[i], v.phases,
 			number(n*v.kva, 1), number(high, 3), number(lowKV, 3), group}
 		d := nameplate(data, v.kva)
 		note := fmt.Sprintf("%d × %s kVA", v.units, number(v.kva, 1))
+		if v.remark != "" {
+			note += "; " + v.remark
+		}
 		switch v.age {
 		case old:
 			d.noLoad *= oldCore
@@ -213,27 +230,39 @@ func profileName(c class, variant int) string {
 	return classes[c].name + strconv.Itoa(variant)
 }
 
-func loadTable(low []string) file {
+func loadTable(low []string, drops []service) file {
 	s := newSheet("feeder/loads.csv", `real [kW] is at nominal voltage and at the height of the profile.
 The works at mill4, mill5 and main5 are metered at 12.47 kV.
+At a service the customers of a meter node take their 120 V loads from legs 1 and 2 and their 240 V loads across
+both (12), where they are counted.
 Written by sim/demo/generate.`,
 		"load", "node", "phases", "connection", "real [kW]", "power factor", "zip", "profile", "customers")
-	row := func(node, phases, connection string, l load) {
+	row := func(suffix, node, phases, connection string, kw float64, customers int, l load) {
 		c := classes[l.class]
-		s.row(node+"-"+profileName(l.class, l.variant), node, phases, connection, number(l.kw, 1), number(c.powerFactor, 3),
-			c.zip, profileName(l.class, l.variant), strconv.Itoa(l.customers))
+		s.row(node+"-"+profileName(l.class, l.variant)+suffix, node, phases, connection, number(kw, 2), number(c.powerFactor, 3),
+			c.zip, profileName(l.class, l.variant), strconv.Itoa(customers))
 	}
-	for i, v := range services {
+	for i := range drops {
+		d := &drops[i]
+		one, two, across := d.legKW()
+		row("-1", d.meter, "1", "wye", one, 0, d.load)
+		row("-2", d.meter, "2", "wye", two, 0, d.load)
+		row("-12", d.meter, "12", "wye", across, d.load.customers, d.load)
+	}
+	for i, v := range served {
+		if len(v.phases) == 1 {
+			continue
+		}
 		connection := "wye"
 		if strings.HasSuffix(v.group, "d0") {
 			connection = "delta"
 		}
 		for _, l := range v.loads {
-			row(low[i], v.phases, connection, l)
+			row("", low[i], v.phases, connection, l.kw, l.customers, l)
 		}
 	}
 	for _, d := range directs {
-		row(d.at, "ABC", "wye", d.load)
+		row("", d.at, "ABC", "wye", d.kw, d.customers, d.load)
 	}
 	return s.file()
 }
