@@ -7,10 +7,14 @@ import (
 	"math/rand/v2"
 	"os"
 	"path/filepath"
+	"slices"
 	"strconv"
 	"strings"
 	"testing"
 	"time"
+
+	"yearflow/sim/feeder"
+	"yearflow/sim/tables"
 )
 
 var regen = flag.Bool("regen", false, "rewrite the golden results; look at the difference before it is committed")
@@ -100,5 +104,35 @@ func sameCells(t *testing.T, name, got, want string) {
 				t.Errorf("%s:%d: cell %d is %q, want %q", name, i+1, k+1, p[k], q[k])
 			}
 		}
+	}
+}
+
+// What was assumed and what is odd stands in run.json, with its place.
+func TestRunRecordsWhatWasAssumedAndOdd(t *testing.T) {
+	start := time.Date(2025, 3, 8, 22, 0, 0, 0, denver(t))
+	x := newTiny(t, start, start.Add(time.Hour), time.Hour)
+	x.plan.Model.Assumed = []feeder.Assumption{{Pos: tables.Pos{File: "feeder/source.csv", Line: 3}, What: "source: voltage at", Value: "behind"}}
+	dir := filepath.Join(t.TempDir(), "base")
+	w, err := Create(dir, x.plan)
+	if err != nil {
+		t.Fatal(err)
+	}
+	odd := []tables.Fault{{Pos: tables.Pos{File: "profiles/loads.csv", Line: 7, Column: 2}, Text: "is flat for a week"}}
+	if err := w.Finish(&Outcome{}, RunInfo{Warnings: odd}); err != nil {
+		t.Fatal(err)
+	}
+	data, err := os.ReadFile(filepath.Join(dir, "run.json"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	var r struct{ Assumed, Warnings []noteOut }
+	if err := json.Unmarshal(data, &r); err != nil {
+		t.Fatal(err)
+	}
+	if want := []noteOut{{"feeder/source.csv", 3, 0, "source: voltage at = behind"}}; !slices.Equal(r.Assumed, want) {
+		t.Errorf("assumed is %v, want %v", r.Assumed, want)
+	}
+	if want := []noteOut{{"profiles/loads.csv", 7, 2, "is flat for a week"}}; !slices.Equal(r.Warnings, want) {
+		t.Errorf("warnings is %v, want %v", r.Warnings, want)
 	}
 }

@@ -4,17 +4,22 @@ import (
 	"encoding/json"
 	"fmt"
 	"math"
+
+	"yearflow/sim/tables"
 )
 
 // RunInfo is what the engine knows of a run beyond its results.
 type RunInfo struct {
 	Version string            // of the program
 	Inputs  map[string]string // SHA-256 in hexadecimal digits, by file, in the study's folder
+	// Warnings is what is odd about the inputs but no error; reports repeat it.
+	Warnings []tables.Fault
 	// Wall holds wall times for timing.json, the only file that differs between two
 	// runs of the same inputs.
 	Wall []WallTime
 	// Figures, where it is not nil, draws pictures from the files written so far into
 	// the folder dir and returns their names below it, and how long it took.
+	// The report, which is made of the same files, is one of them.
 	Figures func(dir string) ([]string, WallTime, error)
 }
 
@@ -54,6 +59,8 @@ type runOut struct {
 	Coarse      coarseOut         `json:"coarse_step"`
 	Hunting     []huntingOut      `json:"hunting"`
 	Trouble     []troubleOut      `json:"first_low_and_unsolved_steps"`
+	Assumed     []noteOut         `json:"assumed"`
+	Warnings    []noteOut         `json:"warnings"`
 	Inputs      map[string]string `json:"inputs_sha256"`
 	Results     map[string]string `json:"results_sha256"`
 }
@@ -131,6 +138,17 @@ type troubleOut struct {
 	Where  string `json:"where"`
 }
 
+// noteOut is what was assumed for a blank cell, or what is odd, at a place of the
+// input; line and column are left out where the whole file or line is meant.
+type noteOut struct {
+	File   string `json:"file"`
+	Line   int    `json:"line,omitempty"`
+	Column int    `json:"column,omitempty"`
+	Text   string `json:"text"`
+}
+
+func noteAt(p tables.Pos, text string) noteOut { return noteOut{p.File, p.Line, p.Column, text} }
+
 type huntingOut struct {
 	Time   string `json:"time"`
 	Device string `json:"device"`
@@ -151,7 +169,7 @@ func (w *Writer) writeRun(o *Outcome, run RunInfo) error {
 		StepsBy: w.solver, SolutionsBy: notNil(o.Paths),
 		Balance: balanceOut{Checked: w.balance.checked, Worst: w.balance.worst},
 		Coarse:  w.coarse(o),
-		Hunting: []huntingOut{}, Trouble: append([]troubleOut{}, w.trouble...), Inputs: notNil(run.Inputs), Results: w.hashes,
+		Assumed: []noteOut{}, Warnings: []noteOut{}, Hunting: []huntingOut{}, Trouble: append([]troubleOut{}, w.trouble...), Inputs: notNil(run.Inputs), Results: w.hashes,
 	}
 	if set.Run.Given {
 		r.Begins = "given"
@@ -165,6 +183,12 @@ func (w *Writer) writeRun(o *Outcome, run RunInfo) error {
 			p.Zone = b.Zone.String()
 		}
 		r.Profiles = append(r.Profiles, p)
+	}
+	for _, a := range w.plan.Model.Assumed {
+		r.Assumed = append(r.Assumed, noteAt(a.Pos, a.What+" = "+a.Value))
+	}
+	for _, f := range run.Warnings {
+		r.Warnings = append(r.Warnings, noteAt(f.Pos, f.Text))
 	}
 	for _, h := range o.Hunting {
 		r.Hunting = append(r.Hunting, huntingOut{w.clock.text(h.Time), deviceName(&w.plan.Devices[h.Device])})
