@@ -29,6 +29,7 @@ type Figure struct {
 	Title   string
 	Finding string // what it shows, one or two sentences computed from the data
 	Alt     string // for those who do not see it
+	PNG     []byte // what was written
 }
 
 // drawing is a figure before its page is written.
@@ -109,7 +110,8 @@ func DrawFolder(f *results.Folder, out func(name string) (io.WriteCloser, error)
 		return nil, fmt.Errorf("figures: %w", err)
 	}
 	for i := range figures {
-		if err := write(out, figures[i].Name, pictures[i].Bytes()); err != nil {
+		figures[i].PNG = pictures[i].Bytes()
+		if err := write(out, figures[i].Name, figures[i].PNG); err != nil {
 			return nil, fmt.Errorf("figure %s: %w", figures[i].Name, err)
 		}
 	}

@@ -23,6 +23,7 @@ type Document struct {
 	Subtitle string // the period, the step; "" for none
 	Case     string
 	Demo     bool    // an invented study: the head says so
+	Trace    string  // case and inputs, at the foot of every figure and page: Record.Trace
 	Lead     []Block // what stands before the list of contents: the first page
 	Sections []Section
 }
@@ -127,6 +128,7 @@ func (r Result) String() string {
 // run without figures still says what they would show.
 type Picture struct {
 	PNG     []byte
+	Title   string // below it; "" for none
 	Alt     string // for those who do not see it: what it shows, with the finding
 	Caption Text   // what it shows; Figure.Finding as Plain
 	File    string // its name below the results folder: "figures/losses.png"
@@ -160,11 +162,11 @@ func (d *Document) Write(w io.Writer) error {
 	v := documentView{Document: d, CSS: template.CSS(reportCSS)} // ours, not the user's
 	figure := 0
 	var err error
-	if v.Lead, err = viewBlocks(d.Lead, &figure); err != nil {
+	if v.Lead, err = d.view(d.Lead, &figure); err != nil {
 		return fmt.Errorf("%s: %w", d.Kind, err)
 	}
 	for i, s := range d.Sections {
-		blocks, err := viewBlocks(s.Blocks, &figure)
+		blocks, err := d.view(s.Blocks, &figure)
 		if err != nil {
 			return fmt.Errorf("%s, section %q: %w", d.Kind, s.Heading, err)
 		}
@@ -195,6 +197,7 @@ type sectionView struct {
 type blockView struct {
 	Name   string
 	Block  Block
+	Trace  string
 	From   string // the files that its numbers come from
 	Figure int    // of a picture: its number
 	Image  template.URL
@@ -209,6 +212,9 @@ type cellView struct {
 	First bool
 }
 
+// Tall tells a picture that is higher than wide: on paper it may take more of a page.
+func (b blockView) Tall() bool { return b.Height > b.Width }
+
 // Cells joins the values of a row with their columns.
 func (b blockView) Cells(row []Value) []cellView {
 	t := b.Block.(Table)
@@ -219,10 +225,10 @@ func (b blockView) Cells(row []Value) []cellView {
 	return cells
 }
 
-func viewBlocks(blocks []Block, figure *int) ([]blockView, error) {
+func (d *Document) view(blocks []Block, figure *int) ([]blockView, error) {
 	var out []blockView
 	for _, b := range blocks {
-		v := blockView{Name: b.blockName(), Block: b, From: strings.Join(sourcesOf(b), ", ")}
+		v := blockView{Name: b.blockName(), Block: b, Trace: d.Trace, From: strings.Join(sourcesOf(b), ", ")}
 		switch x := b.(type) {
 		case Table:
 			for i, r := range x.Rows {

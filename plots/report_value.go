@@ -106,6 +106,10 @@ func Rounded(cell, unit, source string, decimals int) Value {
 	if err != nil || math.IsNaN(x) || math.IsInf(x, 0) {
 		return v
 	}
+	if decimals < 0 && x != 0 && math.Abs(x) < 1e-4 && unit != "pu" {
+		v.Show = powerOfTen(x)
+		return v
+	}
 	if decimals < 0 {
 		decimals = decimalsOf(x, cell, unit)
 	}
@@ -118,13 +122,21 @@ func decimalsOf(x float64, cell, unit string) int {
 	if !strings.ContainsAny(cell, ".eE") {
 		return 0 // a count
 	}
-	if x == 0 {
+	if x == 0 || unit == "1" && x == math.Trunc(x) {
 		return 0
 	}
 	if unit == "pu" {
 		return 4
 	}
 	return max(0, min(6, 3-int(math.Floor(math.Log10(math.Abs(x))))))
+}
+
+// powerOfTen writes a tiny number with four digits and its power of ten.
+func powerOfTen(x float64) string {
+	mantissa, exponent, _ := strings.Cut(strconv.FormatFloat(x, 'e', 3, 64), "e")
+	n, _ := strconv.Atoi(exponent)
+	raised := strings.NewReplacer("-", "⁻", "0", "⁰", "1", "¹", "2", "²", "3", "³", "4", "⁴", "5", "⁵", "6", "⁶", "7", "⁷", "8", "⁸", "9", "⁹").Replace(strconv.Itoa(n))
+	return strings.Replace(mantissa, "-", "\u2212", 1) + "×10" + raised
 }
 
 // shownUnit is a unit of a results file as people write it.
