@@ -21,7 +21,7 @@ func (e *Engine) capacitorMeter(c *feeder.Capacitor) *capacitorMeter {
 	} else if len(c.Pairs) > 0 {
 		first = c.Pairs[0][0]
 	}
-	cm := &capacitorMeter{from: at[first], to: network.Ground, base: node.Nominal * 1000 / sqrt3 / 120}
+	cm := &capacitorMeter{from: at[first], to: network.Ground, base: e.net.Unknowns[at[first]].Nominal / 120}
 	pair := func(a, b feeder.Phase) {
 		cm.from, cm.to, cm.base = at[a], at[b], node.Nominal*1000/120
 	}
@@ -31,6 +31,7 @@ func (e *Engine) capacitorMeter(c *feeder.Capacitor) *capacitorMeter {
 		pair(s.Phase[0], s.Phase[1])
 	case s != nil && len(s.Phase) == 1:
 		cm.from = at[s.Phase[0]]
+		cm.base = e.net.Unknowns[cm.from].Nominal / 120
 	case !node.Grounded && len(c.Pairs) > 0:
 		pair(c.Pairs[0][0], c.Pairs[0][1])
 	}

@@ -1,6 +1,7 @@
 package sim_test
 
 import (
+	"maps"
 	"math"
 	"math/cmplx"
 	"testing"
@@ -9,6 +10,7 @@ import (
 	"yearflow/sim"
 	"yearflow/sim/feeder"
 	"yearflow/sim/network"
+	"yearflow/sim/results"
 )
 
 // service is a 50 kVA centre-tapped transformer (the worked example of W. H.
@@ -122,9 +124,71 @@ func TestFourWireDelta(t *testing.T) {
 	shop, _ := st.Model.NodeIndex("shop")
 	v := in.State.V
 	at := e.Plan.Network.At[shop]
+	// Everything reads 1 p.u. of what it is meant to be, and judged are the pairs.
+	points := results.Points(e.Plan.Network)
+	names := ""
+	for i := range points {
+		if p := &points[i]; p.Node == shop {
+			if pu := p.PU(v); math.Abs(pu-1) > 0.01 {
+				t.Errorf("%s: %.4f p.u.", p.Name, pu)
+			}
+			if p.Judged(false) {
+				names += p.Phase + " "
+			}
+		}
+	}
+	if names != "AB BC CA " {
+		t.Errorf("judged are %q, want the pairs that the load stands across", names)
+	}
 	for p, want := range map[feeder.Phase]float64{feeder.A: 120, feeder.B: 120, feeder.C: 207.8} {
 		if got := cmplx.Abs(v[at[p]]); math.Abs(got-want) > 0.5 {
 			t.Errorf("phase %s: %.2f V to ground, want %.1f V", p, got, want)
 		}
+	}
+}
+
+// On a four-wire delta lighting to ground on 120 V is judged as that, power in delta by
+// its pair, and the high leg never; nothing at all is outside the service range here.
+func TestFourWireDeltaJudged(t *testing.T) {
+	fs := service("")
+	fs["feeder/transformers.csv"] = text("transformer,from,to,phases,rating [kVA],high [kV],low [kV],connection,resistance [%],reactance [%],high terminals,low terminals,mid-tap grounded\n" +
+		"light,pole,shop,AB,50,12.47,0.24,unit,1.1,1.8,AB,ab,yes\npower,pole,shop,CA,25,12.47,0.24,unit,1.1,1.8,CA,ca,no\n")
+	delete(fs, "feeder/sections.csv")
+	fs["feeder/loads.csv"] = text("load,node,phases,connection,real [kW]\nlamps,shop,AB,wye,10\nmotor,shop,CA,delta,3\n")
+	fs["study.toml"] = text(string(fs["study.toml"].Data) + "[run]\nvoltages = [\"shop.CA\", \"shop.A\"]\n[limits]\njudge = \"all\"\n")
+	st, err := feeder.Open(fs, "")
+	if err != nil {
+		t.Fatal(err)
+	}
+	e, err := sim.Prepare(st, sim.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	in, err := e.Solve(0, sim.Positions{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	if p, q, scale := e.Meter().Balance(in.State); math.Abs(p)+math.Abs(q) > 1e-6*scale {
+		t.Errorf("imbalance %g W, %g var of %g VA", p, q, scale)
+	}
+	got := map[string]bool{}
+	for _, p := range results.Points(e.Plan.Network) {
+		if st.Model.Nodes[p.Node].Name != "shop" {
+			continue
+		}
+		got[p.Phase] = p.HasLoad
+		if pu := p.PU(in.State.V); pu < 114./120 || pu > 126./120 {
+			t.Errorf("%s stands at %.4f p.u.", p.Name, pu)
+		}
+		if p.Judged(true) != (p.Phase != "C") {
+			t.Errorf("%s: judged %v", p.Name, p.Judged(true))
+		}
+	}
+	if want := map[string]bool{"A": true, "B": true, "C": false, "CA": true}; !maps.Equal(got, want) {
+		t.Errorf("places with loads: %v, want %v", got, want)
+	}
+	// The lamps draw the whole of their power at 120 V: half on each phase.
+	if kw := real(in.State.Load[0]) / 1000; math.Abs(kw-10) > 1e-4 {
+		t.Errorf("lamps draw %.6f kW", kw)
 	}
 }

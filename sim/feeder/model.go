@@ -104,14 +104,33 @@ type Node struct {
 	// Grounded tells whether something in its galvanic part ties it to ground; the
 	// voltages of a part that nothing grounds are reported line-to-line.
 	Grounded bool
-	Part     int     // galvanic part: nodes joined by sections, switches and regulators
-	X, Y     float64 // plotting coordinates in m, or longitude and latitude in deg; NaN: unknown
-	LonLat   bool
-	Area     string
+	// MidTap, where not nil, are the two phases of the winding whose grounded middle
+	// grounds the part: a four-wire delta. The phase besides them is the high leg.
+	MidTap []Phase
+	Part   int     // galvanic part: nodes joined by sections, switches and regulators
+	X, Y   float64 // plotting coordinates in m, or longitude and latitude in deg; NaN: unknown
+	LonLat bool
+	Area   string
 	// Customers by phase: from loads, those of a three-phase load at all of its phases.
 	Customers [PhaseCount]float64
 	HasLoad   [PhaseCount]bool // a load stands on this phase (or on a pair with it)
 }
+
+// ToGround is the nominal voltage of a phase to ground, kV: that of a leg of a
+// centre-tapped secondary, and of the lighting phases of a four-wire delta, is half the
+// full winding's; the high leg of one stands at √3/2 of it, 208 of 240 V.
+func (n *Node) ToGround(p Phase) float64 {
+	switch {
+	case p.Leg() || has(n.MidTap, p):
+		return n.Nominal / 2
+	case n.HighLeg(p):
+		return n.Nominal * math.Sqrt(3) / 2
+	}
+	return n.Nominal / math.Sqrt(3)
+}
+
+// HighLeg tells whether a phase is the high leg of a four-wire delta.
+func (n *Node) HighLeg(p Phase) bool { return n.MidTap != nil && !has(n.MidTap, p) }
 
 // Source is a stiff or a Thevenin source.
 type Source struct {

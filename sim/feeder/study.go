@@ -182,6 +182,17 @@ func (s *Study) checkPlaces(faults *tables.Faults) {
 			}
 		}
 	}
+	for i := range m.Loads { // on a four-wire delta the pairs that loads stand across
+		for _, q := range m.Loads[i].Pairs {
+			if n := &m.Nodes[m.Loads[i].Node]; n.MidTap != nil {
+				for _, p := range []Pair{q, {q[1], q[0]}} {
+					if (p[0]+1)%3 == p[1] {
+						known[n.Name+"."+p.String()] = true
+					}
+				}
+			}
+		}
+	}
 	for _, p := range s.Settings.Run.Places {
 		if !known[p] {
 			faults.Add(s.at.of("run.voltages"), "run.voltages: there is no node.phase %q%s", p, tables.Hint(p, places))

@@ -2,6 +2,7 @@ package feeder
 
 import (
 	"fmt"
+	"math"
 	"sort"
 	"strings"
 
@@ -321,9 +322,33 @@ func (b *builder) parts() {
 			grounded[b.model.Nodes[t.To].Part] = true
 		}
 	}
+	tapped := b.midTaps(len(number))
 	for i := range b.model.Nodes {
 		b.model.Nodes[i].Grounded = grounded[b.model.Nodes[i].Part]
+		b.model.Nodes[i].MidTap = tapped[b.model.Nodes[i].Part]
 	}
+}
+
+// midTaps finds the phases of the winding with a grounded middle, by part.
+func (b *builder) midTaps(parts int) [][]Phase {
+	out := make([][]Phase, parts)
+	by := make([]string, parts)
+	for i := range b.model.Transformers {
+		t := &b.model.Transformers[i]
+		part := b.model.Nodes[t.To].Part
+		if t.Connection != "unit" {
+			continue
+		}
+		low := ordered(t.LowEnds)
+		switch {
+		case !t.MidTap:
+		case out[part] == nil:
+			out[part], by[part] = low, t.Name
+		case word(out[part]) != word(low):
+			b.faults.Add(t.At, "transformer %q grounds the middle of %s and transformer %q that of %s on one part of the feeder: their windings short each other; ground one", t.Name, word(low), by[part], word(out[part]))
+		}
+	}
+	return out
 }
 
 // groups joins numbers into sets; the name of a set is its smallest member.
@@ -363,8 +388,14 @@ func (b *builder) floating() {
 		}
 	}
 	for i := range m.Loads {
-		if m.Loads[i].Connection == Wye {
-			tell(m.Loads[i].At, m.Loads[i].Node, "load %q", m.Loads[i].Name)
+		l := &m.Loads[i]
+		if l.Connection == Wye {
+			tell(l.At, l.Node, "load %q", l.Name)
+		}
+		for _, p := range l.Phases {
+			if n := &m.Nodes[l.Node]; n.HighLeg(p) {
+				b.warnings.Add(l.At, "load %q stands between the high leg, %s, of a four-wire delta and ground, at %s V: hardly anything is made for that; usual: lighting on %s, power in delta", l.Name, p, amount(math.Round(1000*n.ToGround(p))), word(n.MidTap))
+			}
 		}
 	}
 	for i := range m.Capacitors {

@@ -117,7 +117,7 @@ func Build(m *feeder.Model) (*Network, error) {
 	for i := range m.Nodes {
 		n.At[i] = [feeder.PhaseCount]int32{Ground, Ground, Ground, Ground, Ground}
 		for _, p := range m.Nodes[i].Phases {
-			n.At[i][p] = n.add(Unknown{i, p, toGround(m.Nodes[i].Nominal, p), m.Nodes[i].Name + "." + p.String()})
+			n.At[i][p] = n.add(Unknown{i, p, 1000 * m.Nodes[i].ToGround(p), m.Nodes[i].Name + "." + p.String()})
 		}
 	}
 	// Everything is stamped in the order of names, so that the order of rows moves
@@ -148,15 +148,6 @@ func Build(m *feeder.Model) (*Network, error) {
 		n.Offsets = append(n.Offsets, n.Offsets[len(n.Offsets)-1]+len(e.Terminals))
 	}
 	return n, faults.Err()
-}
-
-// toGround is the nominal voltage of a phase to ground, V: a leg of a centre-tapped
-// secondary has half the full winding's.
-func toGround(kV float64, p feeder.Phase) float64 {
-	if p.Leg() {
-		return kV * 1000 / 2
-	}
-	return kV * 1000 / sqrt3
 }
 
 func byName(count int, name func(int) string) []int {

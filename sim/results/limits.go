@@ -78,7 +78,7 @@ func newJudge(p *Plan, points []Point) *judge {
 	}
 	for i := range points {
 		pt := &points[i]
-		j.judged[i] = set.All || pt.HasLoad
+		j.judged[i] = pt.Judged(set.All)
 		if set.Own {
 			continue
 		}

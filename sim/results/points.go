@@ -8,18 +8,24 @@ import (
 )
 
 // Point is a voltage that is reported: of a phase to ground, or, on a node that
-// nothing grounds, between two phases.
+// nothing grounds, between two phases. A node of a four-wire delta has both: its
+// phases, and the pairs that loads in delta stand across.
 type Point struct {
-	Node    int    // into Model.Nodes
-	Name    string // node.phase or node.pair
-	Phase   string
-	NomKV   float64 // nominal of the node, kV line-to-line
-	Base    float64 // V that are 1 p.u.
-	U, W    int32   // unknowns; W is network.Ground for a phase to ground
-	first   feeder.Phase
-	second  feeder.Phase
-	pair    bool
-	HasLoad bool // a load stands here
+	Node   int    // into Model.Nodes
+	Name   string // node.phase or node.pair
+	Phase  string
+	NomKV  float64 // nominal of the node, kV line-to-line
+	Base   float64 // V that are 1 p.u.
+	U, W   int32   // unknowns; W is network.Ground for a phase to ground
+	first  feeder.Phase
+	second feeder.Phase
+	pair   bool
+
+	midTapped bool // a phase beside which the pairs stand
+	HasLoad   bool // a load stands here
+	// HighLeg marks the high leg of a four-wire delta, which serves nobody by itself and
+	// is never judged.
+	HighLeg bool
 	// Customers are those whose loads stand here; a customer on three phases
 	// counts at each of them.
 	Customers float64
@@ -45,10 +51,14 @@ func Points(n *network.Network) []Point {
 			for _, p := range node.Phases {
 				u := n.At[i][p]
 				points = append(points, Point{Node: i, Phase: p.String(), NomKV: node.Nominal, Base: n.Unknowns[u].Nominal,
-					U: u, W: network.Ground, first: p, HasLoad: node.HasLoad[p], Customers: node.Customers[p]})
+					U: u, W: network.Ground, first: p, HasLoad: node.HasLoad[p], Customers: node.Customers[p], HighLeg: node.HighLeg(p)})
 			}
-		} else {
+		}
+		switch {
+		case !node.Grounded:
 			points = appendPairs(points, n, i)
+		case node.MidTap != nil:
+			points = appendMidTapped(points, n, i)
 		}
 	}
 	for i := range points {
@@ -79,6 +89,35 @@ func appendPairs(points []Point, n *network.Network, i int) []Point {
 	return points
 }
 
+// appendMidTapped appends the pairs of a four-wire delta's node that loads stand
+// across: a load in delta is served line-to-line, whatever the voltages to ground are.
+// What is left at the phases are the loads to ground.
+func appendMidTapped(points []Point, n *network.Network, i int) []Point {
+	for k := len(points) - 1; k >= 0 && points[k].Node == i; k-- {
+		p := &points[k]
+		p.midTapped, p.HasLoad, p.Customers = true, false, 0
+		for l := range n.Model.Loads {
+			if load := &n.Model.Loads[l]; p.feeds(load) {
+				p.HasLoad = true
+				p.Customers += load.Customers
+			}
+		}
+	}
+	first := len(points)
+	points = appendPairs(points, n, i)
+	kept := points[:first]
+	for _, p := range points[first:] {
+		if p.HasLoad {
+			kept = append(kept, p)
+		}
+	}
+	return kept
+}
+
+// Judged tells whether the point is held against the limits, where all are or only
+// those with a load.
+func (p *Point) Judged(all bool) bool { return !p.HighLeg && (all || p.HasLoad) }
+
 func loadAcross(l *feeder.Load, pair feeder.Pair) bool {
 	for _, q := range l.Pairs {
 		if q == pair || (q[0] == pair[1] && q[1] == pair[0]) {
@@ -103,7 +142,7 @@ func (p *Point) feeds(l *feeder.Load) bool {
 		}
 	}
 	for _, q := range l.Pairs {
-		if q[0] == p.first || q[1] == p.first {
+		if !p.midTapped && (q[0] == p.first || q[1] == p.first) {
 			return true
 		}
 	}
