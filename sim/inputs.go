@@ -40,6 +40,7 @@ type inputs struct {
 	batteryScale     []float64
 	chargerBranches  [][]int
 	sunlit           *profiles.Series // of the generator being added, from weather
+	meters           *metering
 
 	shared allocated // loads that a measured total is shared over
 
@@ -73,7 +74,7 @@ type fixedVoltage struct {
 // sqrt3 is √3.
 const sqrt3 = 1.7320508075688772935
 
-func newInputs(st *feeder.Study, net *network.Network) (*inputs, error) {
+func newInputs(st *feeder.Study, net *network.Network, cache string) (*inputs, error) {
 	var faults tables.Faults
 	blocks := make([]profiles.Block, len(st.Settings.Profiles))
 	for i, b := range st.Settings.Profiles {
@@ -104,6 +105,7 @@ func newInputs(st *feeder.Study, net *network.Network) (*inputs, error) {
 	m := net.Model
 	in.months, in.monthOf = months(in.axis)
 	in.shared.begin(st, find, use, &faults)
+	in.meters = newMetering(st, in.axis, cache, &faults, &in.odd)
 	for i := range m.Loads {
 		in.load(i, &m.Loads[i], net, find, use, &faults, st.Settings.ScaleLoad)
 	}
@@ -193,8 +195,13 @@ func (in *inputs) load(i int, l *feeder.Load, net *network.Network, find finder,
 	k := 1000 * scale / float64(len(js))
 	d := driver{-1, -1, -1}
 	s := find(l.Profile, l.At, "pu", "kW")
-	share := complex(l.KW*k, l.KVAR*k)
-	shares := in.shared.takes(i, s)
+	kW := l.KW
+	metered := in.meters.of(l, &in.odd)
+	if metered != nil {
+		s, kW = metered, math.NaN() // the meter counts, whatever the table says
+	}
+	share := complex(kW*k, l.KVAR*k)
+	shares := metered == nil && in.shared.takes(i, s)
 	switch {
 	case shares:
 		kW, byEnergy := in.shared.weight(i, l, s, faults)
@@ -206,7 +213,7 @@ func (in *inputs) load(i int, l *feeder.Load, net *network.Network, find finder,
 			d.real = use(s)
 		}
 	case s != nil && s.Unit == "kW":
-		if !feeder.Unknown(l.KW) && l.KW != 0 {
+		if !feeder.Unknown(kW) && kW != 0 {
 			faults.Add(l.At, "load %q: its real power is given twice, %g kW here and by profile %q in [kW] (%s): leave one of them", l.Name, l.KW, l.Profile, s.Pos)
 		}
 		d.real = use(s)

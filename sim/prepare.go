@@ -38,6 +38,9 @@ type Options struct {
 	Base *Engine
 	// Probes are nodes (into Model.Nodes) at which Marginal asks for marginal losses.
 	Probes []int
+	// Cache is a folder of the machine where what was read of meters is kept for the
+	// next run; blank: none.
+	Cache string
 }
 
 // Engine is a study ready to run. It is not safe for use by several goroutines at
@@ -123,7 +126,7 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 	if err != nil {
 		return nil, err
 	}
-	in, err := newInputs(st, net)
+	in, err := newInputs(st, net, o.Cache)
 	if err != nil {
 		return nil, err
 	}
@@ -140,6 +143,7 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 		name = "base"
 	}
 	e.Plan = &results.Plan{Model: m, Settings: &st.Settings, Network: net, Case: name, Demo: o.Demo}
+	e.Plan.Mended = in.meters.mended()
 	e.state = results.State{
 		Flow: make([]complex128, net.Offsets[len(net.Elements)]), Coupling: make([]complex128, len(net.Couplings)),
 		Source: make([][3]complex128, len(m.Sources)),

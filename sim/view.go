@@ -114,5 +114,8 @@ func (e *Engine) ProfileFiles() []string {
 	if w := e.Study.Settings.Weather.File; w != "" && firstSolar(e.net.Model) != nil {
 		files = append(files, w)
 	}
+	if e.in.meters != nil {
+		files = append(files, e.in.meters.set.Files()...)
+	}
 	return files
 }

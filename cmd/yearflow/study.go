@@ -70,7 +70,11 @@ func (o *opened) prepare(caseName string) (*sim.Engine, error) {
 	if err != nil {
 		return nil, inputError{err}
 	}
-	e, err := sim.Prepare(st, sim.Options{Demo: o.demo})
+	options := sim.Options{Demo: o.demo}
+	if !o.demo {
+		options.Cache = filepath.Join(o.dir, "results", ".meters")
+	}
+	e, err := sim.Prepare(st, options)
 	if err != nil {
 		return nil, inputError{err}
 	}

@@ -93,6 +93,7 @@ func (b *builder) build() *Model {
 	b.functions()
 	b.generators()
 	b.batteries()
+	b.ties()
 	b.chargers()
 	if len(*b.faults) == before && !b.torn {
 		b.floating()

@@ -144,6 +144,8 @@ func (b *builder) loadAmount(r *loadRow, l *Load, energies []*energyRow, what st
 				l.KVARPerKW = l.KVAR / l.KW
 			}
 		}
+	case len(given) == 0 && !r.Profile.Given && b.metered(l.Name):
+		// its meters say
 	case len(given) == 0 && !r.Profile.Given:
 		b.faults.Add(r.Row.At, "%s: how much is it? give real [kW], energy [kWh], or a profile in kW", what)
 		return false

@@ -250,6 +250,9 @@ func (r *settingsReader) settings() Settings {
 	s.Prices = r.prices()
 	s.Weather = r.weather(s.Period)
 	s.Allocation = r.allocation(r.caseName)
+	for i, d := range r.d.Meters {
+		s.Meters = append(s.Meters, r.meters(fmt.Sprintf("meters[%d]", i), d, s.Period.Zone))
+	}
 	s.ScaleLoad = r.scale("scale.load", r.d.Scale.Load)
 	s.ScaleGeneration = r.scale("scale.generation", r.d.Scale.Generation)
 	return s

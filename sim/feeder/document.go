@@ -27,6 +27,7 @@ type document struct {
 	Limits    limitsDocument    `toml:"limits"`
 	Prices    pricesDocument    `toml:"prices"`
 	Weather   weatherDocument   `toml:"weather"`
+	Meters    []meterDocument   `toml:"meters"`
 	Scale     scaleDocument     `toml:"scale"`
 
 	Allocation allocationDocument `toml:"allocation"`
@@ -72,6 +73,16 @@ type pricesDocument struct {
 	Operation any `toml:"operation"`
 	Rate      any `toml:"rate"`
 	Years     any `toml:"years"`
+}
+
+type meterDocument struct {
+	Files   any `toml:"files"`
+	Layout  any `toml:"layout"`
+	Values  any `toml:"values"`
+	Stamped any `toml:"stamped"`
+	Zone    any `toml:"zone"`
+	Unit    any `toml:"unit"`
+	Net     any `toml:"net"`
 }
 
 type weatherDocument struct {

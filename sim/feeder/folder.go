@@ -31,6 +31,7 @@ type feederTables struct {
 	generators        []generatorRow
 	functions         []functionRow
 	batteries         []batteryRow
+	meters            []meterRow
 	chargers          []chargerRow
 
 	folder  string
@@ -44,7 +45,7 @@ type feederTables struct {
 func tableNames() (read, notYet []string) {
 	return []string{"source", "nodes", "sections", "switches", "constructions", "impedances", "spacings", "conductors", "cables",
 			"transformers", "regulators", "regulator-settings", "capacitors", "capacitor-settings", "loads", "energies", "zip", "generators",
-			"inverter-functions", "batteries", "chargers"},
+			"inverter-functions", "batteries", "chargers", "meters"},
 		[]string{"measurements"}
 }
 
@@ -87,6 +88,7 @@ func (s *Study) readTables(folder string, faults *tables.Faults) *feederTables {
 	t.generators = readTable[generatorRow](r, "generators", nil)
 	t.functions = readTable[functionRow](r, "inverter-functions", nil)
 	t.batteries = readTable[batteryRow](r, "batteries", nil)
+	t.meters = readTable[meterRow](r, "meters", nil)
 	t.chargers = readTable[chargerRow](r, "chargers", nil)
 	_, notYet := tableNames()
 	for _, name := range notYet {

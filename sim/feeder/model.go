@@ -75,6 +75,7 @@ type Model struct {
 	Generators    []Generator
 	Functions     []InverterFunction
 	Batteries     []Battery
+	Meters        []MeterTie
 	Chargers      []Charger
 	Assumed       []Assumption
 

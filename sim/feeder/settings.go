@@ -19,6 +19,7 @@ type Settings struct {
 	Weather   Weather
 	// Allocation is nil where no measured total is shared over loads.
 	Allocation *Allocation
+	Meters     []MeterBlock
 	// ScaleLoad and ScaleGeneration multiply every load and generator ([scale] of a
 	// case); 1 where nothing is said.
 	ScaleLoad, ScaleGeneration float64

@@ -66,6 +66,16 @@ type Plan struct {
 	Demo     bool
 	// Allocation tells that steps say how a measured total was shared over loads.
 	Allocation bool
+	// Mended is what was edited in the meters' data, by meter and rule.
+	Mended []MendedRow
+}
+
+// MendedRow is what one rule did to one meter. Times are ns; Energy is kWh added.
+type MendedRow struct {
+	Meter, Rule string
+	From, To    int64
+	Count       int
+	Energy      float64
 }
 
 // State is one solved instant. Slices must not be kept or changed.

@@ -67,7 +67,7 @@ func kWh(wns float64) float64 { return wns / 1000 / float64(hour) }
 // outsideTimes counts the time for which some judged point, and the customer-hours
 // for which customers, are outside; all settled.
 type outsideTimes struct {
-	belowA, aboveA, belowB, aboveB int64 // ns with at least one judged point outside
+	belowA, aboveA, belowB, aboveB int64   // ns with at least one judged point outside
 	customersBelow                 float64 // customer·ns outside range A
 	customersAbove                 float64
 	customersBelowB                float64 // and outside range B

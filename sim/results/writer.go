@@ -369,7 +369,11 @@ func (w *Writer) finish(o *Outcome, run RunInfo) error {
 		{"places.csv", w.writePlaces},
 		{"network.csv", w.writeNetwork},
 		{"plants.csv", func(f *outFile) error { return writePlants(f, o.Plants) }},
+		{"mended.csv", w.writeMended},
 	} {
+		if t.name == "mended.csv" && len(w.plan.Mended) == 0 {
+			continue
+		}
 		f, err := createFile(w.folder.temp, t.name)
 		if err != nil {
 			return err
