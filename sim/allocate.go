@@ -18,16 +18,16 @@ import (
 // corrected by Newton's method on the few measured figures, and again. Losses,
 // capacitors, generation and metered loads are so in the comparison without being
 // named. The factors hold while the controls act, so that a control sees what its own
-// action does; once they are at rest, the factors are corrected again.
+// action does; once they are at rest, or a battery is full, the factors are corrected again.
 const (
 	// allocationClose is how near a measured figure is met, in shares of its peak;
 	// allocationMet is when a step counts as met (0.1 %).
-	allocationClose = 1e-5
+	allocationClose = 1e-4
 	allocationMet   = 1e-3
 	// allocationSolutions bounds the solutions of one correction, allocationAgain the
-	// corrections of one step after actions.
+	// corrections of one step after what moved in it.
 	allocationSolutions = 12
-	allocationAgain     = 3
+	allocationAgain     = 8
 	// coupled is the share of the largest below which a phase takes no part in a load
 	// (coupling of lines, not of windings).
 	coupled = 0.02
@@ -274,12 +274,16 @@ func leastSquares(m [3][3]complex128, b [3]complex128) (t [3]complex128) {
 // takeInputs sets the solver's input to that of a step, and the targets of the
 // allocation with it.
 func (e *Engine) takeInputs(step int) {
-	e.in.at(step, &e.input)
-	a := e.allocation
-	if a == nil {
-		return
+	e.inputOf(step, &e.input)
+}
+
+// inputOf is a step's input, where loads are shared out as far as that goes without a
+// solution: without losses.
+func (e *Engine) inputOf(step int, out *powerflow.Input) {
+	e.in.at(step, out)
+	if e.allocation != nil {
+		e.allocation.begin(e.in, step, out)
 	}
-	a.begin(e.in, step, &e.input)
 }
 
 // begin takes a step's weights and measured figures, and a first guess of the factors.
@@ -288,7 +292,7 @@ func (a *allocation) begin(in *inputs, step int, input *powerflow.Input) {
 		a.members[i].base = input.Power[a.members[i].injection]
 	}
 	a.met = false
-	if a.base != nil {
+	if a.base != nil && a.kept != nil {
 		copy(a.factors, a.kept[(step-a.first)*len(a.factors):])
 		a.apply(input)
 		return

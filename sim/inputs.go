@@ -505,11 +505,12 @@ func (in *inputs) at(step int, out *powerflow.Input) {
 }
 
 // peaks returns each load's own highest real power over the axis, kW at 1 p.u.
-func (in *inputs) peaks(loads int) []float64 {
+func (e *Engine) peaks(loads int) []float64 {
+	in := e.in
 	power := powerflow.Input{Source: make([]complex128, len(in.fixed)), Power: make([]complex128, len(in.injections))}
 	peak, now := make([]float64, loads), make([]float64, loads)
 	for step := range in.axis.Steps() {
-		in.at(step, &power)
+		e.inputOf(step, &power)
 		clear(now)
 		for k, l := range in.loadOf {
 			if l >= 0 {

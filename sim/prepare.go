@@ -179,7 +179,7 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 		}
 	}
 	if st.Settings.Limits.Allowance != 0 {
-		e.Plan.LoadPeak = in.peaks(len(m.Loads))
+		e.Plan.LoadPeak = e.peaks(len(m.Loads))
 	}
 	e.Reset()
 	return e, nil

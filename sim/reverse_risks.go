@@ -35,7 +35,7 @@ func (e *Engine) ReverseRisks() []tables.Fault {
 	}
 	power := powerflow.Input{Source: make([]complex128, len(e.in.fixed)), Power: make([]complex128, len(e.in.injections))}
 	for step := range e.in.axis.Steps() {
-		e.in.at(step, &power)
+		e.inputOf(step, &power)
 		for _, r := range risks {
 			r.see(step, &power, e.in)
 		}

@@ -298,6 +298,7 @@ func (r *runner) step(step int) error {
 		at = 0
 		r.tally(now, next)
 		fresh = e.advancePlants(now, next)
+		moved = moved || fresh
 		if now = next; now >= end {
 			break
 		}
