@@ -29,7 +29,7 @@ const root3 = 1.7320508075688772
 func number(x float64) string { return strconv.FormatFloat(x, 'e', 16, 64) }
 
 // node is the name of a place in the circuit.
-func (n *netlist) node(i int, p feeder.Phase) string { return fmt.Sprintf("n%d%s", i, "abc"[p:p+1]) }
+func (n *netlist) node(i int, p feeder.Phase) string { return fmt.Sprintf("n%d%s", i, "abc12"[p:p+1]) }
 
 // fresh returns a name that is used once.
 func (n *netlist) fresh(prefix string) string {
@@ -184,8 +184,14 @@ var unitsOf = map[string]string{
 
 func (n *netlist) transformer(t *testing.T, i int) {
 	b := &n.m.Transformers[i]
+	if b.MidTap {
+		n.midTapped(b)
+		return
+	}
 	units := unitsOf[b.Connection]
 	switch b.Connection {
+	case "unit":
+		units = terminalsOf(b.HighEnds) + "/" + strings.ToLower(terminalsOf(b.LowEnds))
 	case "1ph":
 		low := strings.ToLower(b.Phases[0].String())
 		units = b.Phases[0].String() + "N/" + low + "n"
@@ -227,7 +233,7 @@ func (n *netlist) transformer(t *testing.T, i int) {
 		// Line-to-line ratings of a three-phase bank are those of its delta windings;
 		// a star's are √3 less. A single unit's are its windings' own.
 		high, low, tap := b.HighKV*1000, b.LowKV*1000, b.TapKV*1000
-		if b.Connection != "1ph" {
+		if b.Connection != "1ph" && b.Connection != "unit" {
 			if strings.ContainsAny(u[:2], "NY") {
 				high, tap = high/root3, tap/root3
 			}
@@ -244,6 +250,37 @@ func (n *netlist) transformer(t *testing.T, i int) {
 		if y > g {
 			n.susceptance(place(u[0]), place(u[1]), -math.Sqrt(y*y-g*g))
 		}
+	}
+}
+
+// terminalsOf writes the ends of a winding, N for the neutral.
+func terminalsOf(ends []feeder.Phase) string {
+	s := ends[0].String()
+	if len(ends) == 2 {
+		return s + ends[1].String()
+	}
+	return s + "N"
+}
+
+// midTapped draws a transformer with a grounded middle of its low winding as the three
+// windings that it has: a primary behind its own impedance and two halves behind
+// theirs, interlaced (L. W. Hopkinson, 1976: 0.5 R + j0.8 X; R + j0.4 X each half).
+func (n *netlist) midTapped(b *feeder.Transformer) {
+	half, tap, va := b.LowKV*500, b.TapKV*1000, b.KVA*1000
+	p, q := n.node(b.From, b.HighEnds[0]), "0"
+	if len(b.HighEnds) == 2 {
+		q = n.node(b.From, b.HighEnds[1])
+	}
+	inner := n.fresh("m")
+	n.impedances([]string{p}, []string{inner}, func(int, int) complex128 { return complex(0.5*b.R*tap*tap/va, 0.8*b.X*tap*tap/va) })
+	z := complex(b.R*half*half/va, 0.4*b.X*half*half/va)
+	n.windings(inner, q, n.node(b.To, b.LowEnds[0]), "0", half/tap, z)
+	n.windings(inner, q, "0", n.node(b.To, b.LowEnds[1]), half/tap, z)
+	high := b.HighKV * 1000
+	g, y := b.NoLoadLoss/(high*high), b.Exciting*va/(high*high)
+	n.conductance(p, q, g)
+	if y > g {
+		n.susceptance(p, q, -math.Sqrt(y*y-g*g))
 	}
 }
 
@@ -305,7 +342,14 @@ func (n *netlist) load(l feeder.Load) {
 	}
 	for _, p := range l.Phases {
 		if l.Connection == feeder.Wye {
-			stand(n.node(l.Node, p), "0", kv/root3, float64(len(l.Phases)))
+			volts := kv / root3
+			switch tapped := n.m.Nodes[l.Node].MidTap; {
+			case p.Leg(), tapped != nil && (p == tapped[0] || p == tapped[1]):
+				volts = kv / 2
+			case tapped != nil:
+				volts = kv * root3 / 2
+			}
+			stand(n.node(l.Node, p), "0", volts, float64(len(l.Phases)))
 		}
 	}
 }

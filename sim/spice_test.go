@@ -90,11 +90,11 @@ func againstSpice(t *testing.T, e *sim.Engine, in *sim.Instant) (worst float64) 
 	places := results.Points(e.Plan.Network)
 	for _, p := range places {
 		node := m.Nodes[p.Node]
-		first := feeder.Phase(strings.IndexByte("ABC", p.Phase[0]))
+		first := feeder.Phase(strings.IndexByte("ABC12", p.Phase[0]))
 		got, w := in.State.V[p.U], want[n.node(p.Node, first)]
 		if p.W != network.Ground {
 			got -= in.State.V[p.W]
-			w -= want[n.node(p.Node, feeder.Phase(strings.IndexByte("ABC", p.Phase[1])))]
+			w -= want[n.node(p.Node, feeder.Phase(strings.IndexByte("ABC12", p.Phase[1])))]
 		}
 		if cmplx.Abs(w) < 0.05*p.Base {
 			t.Errorf("%s.%s: ngspice finds no voltage: %v", node.Name, p.Phase, w)
