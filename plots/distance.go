@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"sort"
+	"strings"
 
 	"gonum.org/v1/plot/text"
 	"gonum.org/v1/plot/vg"
@@ -157,6 +158,14 @@ func (s *survey) profileLines(n *panel, pr profile) {
 			joined[b.From+"."+ph], joined[b.To+"."+ph] = true, true
 			segments = append(segments, segment{ph, from.DistanceKM, v0, to.DistanceKM, v1, b.Kind == "transformer"})
 		}
+		// A centre-tapped transformer leads from a phase to the legs 1 and 2.
+		v0, ok0 := pr.voltage[b.From+"."+b.Phases]
+		for _, leg := range [...]string{"1", "2"} {
+			v1, ok1 := pr.voltage[b.To+"."+leg]
+			if b.Kind == "transformer" && ok0 && ok1 && !math.IsNaN(v0+v1+from.DistanceKM+to.DistanceKM) {
+				segments = append(segments, segment{b.Phases, from.DistanceKM, v0, to.DistanceKM, v1, true})
+			}
+		}
 	}
 	var names []string
 	for name := range pr.voltage {
@@ -249,11 +258,16 @@ func branchOrder(rows []results.BranchRow) []results.BranchRow {
 }
 
 // phaseKeys is a legend of phases; a pair shares the line of its first phase, and so
-// its entry.
+// its entry. The legs of services come last.
 func phaseKeys(phases []string, style func(string) draw.LineStyle) []key {
 	var keys []key
 	entry := map[byte]int{}
+	legs := false
 	for _, ph := range phases {
+		if isLeg(ph) {
+			legs = true
+			continue
+		}
 		if i, ok := entry[ph[0]]; ok {
 			keys[i].text += ", " + ph
 			continue
@@ -261,5 +275,11 @@ func phaseKeys(phases []string, style func(string) draw.LineStyle) []key {
 		entry[ph[0]] = len(keys)
 		keys = append(keys, key{line: style(ph), text: "phase " + ph})
 	}
+	if legs {
+		keys = append(keys, key{line: style("1"), text: "services"})
+	}
 	return keys
 }
+
+// isLeg tells whether a phase is a leg of a centre-tapped secondary, or both.
+func isLeg(phase string) bool { return strings.HasPrefix(phase, "1") || strings.HasPrefix(phase, "2") }

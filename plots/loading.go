@@ -39,7 +39,7 @@ func drawLoading(s *survey, st *style) (*page, Figure) {
 		fig.Finding = "No element has both a rating and a flow, so no loading can be shown."
 	default:
 		r := rows[0]
-		fig.Finding = fmt.Sprintf("%s is loaded most, to %s of its %s %s on %s; ", element(r), percent(r.Percent), number(r.Rating, 0), unit(r), s.span.on(r.PeakTime))
+		fig.Finding = fmt.Sprintf("%s is loaded most, to %s of its %s %s on %s; ", element(r), percent(r.Percent), rating(r.Rating), unit(r), s.span.on(r.PeakTime))
 		switch over {
 		case 0:
 			fig.Finding += "no element exceeds its rating."
@@ -65,7 +65,7 @@ func drawLoading(s *survey, st *style) (*page, Figure) {
 	notes := make([]string, len(shown))
 	for i, r := range shown {
 		left = max(left, name.Width(element(r)))
-		notes[i] = fmt.Sprintf("%s of %s %s", number(r.Peak, 0), number(r.Rating, 0), unit(r))
+		notes[i] = fmt.Sprintf("%s of %s %s", number(r.Peak, 0), rating(r.Rating), unit(r))
 		right = max(right, value.Width(notes[i]))
 	}
 	left = min(left, 130)
@@ -134,4 +134,12 @@ func (s *survey) loadingRows() (rows []results.LoadingRow, unrated int) {
 	}
 	sort.SliceStable(rows, func(i, j int) bool { return rows[i].Percent > rows[j].Percent })
 	return rows, unrated
+}
+
+// rating keeps the half of a 37.5 or 112.5 kVA unit.
+func rating(x float64) string {
+	if x == math.Trunc(x) {
+		return number(x, 0)
+	}
+	return number(x, 1)
 }

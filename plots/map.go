@@ -52,7 +52,8 @@ func drawMap(s *survey, st *style) (*page, Figure) {
 	n := mapPanel(p, l)
 	s.mapLines(n, l, worst)
 	s.mapNodes(n, l, worst)
-	kinds := s.mapDevices(n, l)
+	kinds, marks := s.mapDevices(n, l)
+	s.mapOutside(n, l, worst, marks)
 	s.mapLegend(n, l, worst, kinds)
 	return p, fig
 }
@@ -179,32 +180,43 @@ func between(worst map[string]worstVoltage, a, b string) float64 {
 	return wa.pu
 }
 
+// mapNodes draws a dot for each place.
 func (s *survey) mapNodes(n *panel, l layout, worst map[string]worstVoltage) {
+	names := sortedKeys(l.at)
+	if len(names) > 500 {
+		return
+	}
+	k := sides{s.limits}
+	for _, name := range names {
+		c := missing
+		if w, ok := worst[name]; ok {
+			c = k.color(w.pu)
+		}
+		n.dot(n.x(l.at[name][0]), n.y(l.at[name][1]), 1.7, c)
+	}
+}
+
+// mapOutside marks the places outside range A, beside the mark of a device that
+// would hide or be hidden.
+func (s *survey) mapOutside(n *panel, l layout, worst map[string]worstVoltage, marks []vg.Point) {
 	names := sortedKeys(l.at)
 	size := 4.4
 	if len(names) > 1500 {
 		size = 2.4
 	}
 	k := sides{s.limits}
-	for _, out := range [...]bool{false, true} {
-		for _, name := range names {
-			w, ok := worst[name]
-			outside := ok && w.judged && w.margin < -1e-9
-			if outside != out {
-				continue
-			}
-			x, y := n.x(l.at[name][0]), n.y(l.at[name][1])
-			switch {
-			case outside:
-				n.triangle(x, y, size, w.low, k.color(w.pu))
-			case len(names) <= 500:
-				c := missing
-				if ok {
-					c = k.color(w.pu)
-				}
-				n.dot(x, y, 1.7, c)
+	for _, name := range names {
+		w, ok := worst[name]
+		if !ok || !w.judged || w.margin >= -1e-9 {
+			continue
+		}
+		x, y := n.x(l.at[name][0]), n.y(l.at[name][1])
+		for _, m := range marks {
+			if math.Hypot(float64(x-m.X), float64(y-m.Y)) < 7 {
+				x, y = m.X-10, m.Y
 			}
 		}
+		n.triangle(x, y, size, w.low, k.color(w.pu))
 	}
 }
 

@@ -12,13 +12,14 @@ import (
 // mostLabels is how many devices of a map are named.
 const mostLabels = 24
 
-// mapDevices marks the devices and names them; it returns the kinds there are.
-func (s *survey) mapDevices(n *panel, l layout) (kinds []string) {
+// mapDevices marks the devices and names them; it returns the kinds there are and where
+// the marks stand.
+func (s *survey) mapDevices(n *panel, l layout) (kinds []string, spots []vg.Point) {
 	devices := s.devices(l)
 	if len(devices) > 400 {
 		devices = devices[:400]
 	}
-	spots := make([]vg.Point, len(devices))
+	spots = make([]vg.Point, len(devices))
 	var taken []vg.Point
 	for i, d := range devices {
 		home := vg.Point{X: n.x(d.x), Y: n.y(d.y)}
@@ -57,7 +58,7 @@ func (s *survey) mapDevices(n *panel, l layout) (kinds []string) {
 		}
 		n.haloed(t, x, (box.Min.Y+box.Max.Y)/2, ax, text.YCenter, name)
 	}
-	return kinds
+	return kinds, spots
 }
 
 // freeSpot is home, or the nearest place around it that no mark has taken.

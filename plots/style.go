@@ -23,6 +23,7 @@ var (
 	yellow    = color.NRGBA{0xf0, 0xe4, 0x42, 0xff}
 	blue      = color.NRGBA{0x00, 0x72, 0xb2, 0xff}
 	vermilion = color.NRGBA{0xd5, 0x5e, 0x00, 0xff}
+	purple    = color.NRGBA{0xcc, 0x79, 0xa7, 0xff}
 
 	white    = color.NRGBA{0xff, 0xff, 0xff, 0xff}
 	inkGrey  = color.NRGBA{0x4d, 0x4d, 0x4d, 0xff} // second rank text
@@ -73,16 +74,19 @@ func aligned(t text.Style, x text.XAlignment, y text.YAlignment) text.Style {
 	return t
 }
 
-// phaseStyle is the line of a phase (or of a pair, which takes that of its first).
+// phaseStyle is the line of a phase (or of a pair, which takes that of its first). The
+// legs of services, which run close together, share one.
 func phaseStyle(phase string) draw.LineStyle {
 	l := draw.LineStyle{Color: inkGrey, Width: vg.Points(dataWidth)}
 	if phase == "" {
 		return l
 	}
 	switch phase[0] {
-	case 'A', '1':
+	case '1', '2':
+		l.Color = purple
+	case 'A':
 		l.Color = blue
-	case 'B', '2':
+	case 'B':
 		l.Color, l.Dashes = vermilion, []vg.Length{vg.Points(6), vg.Points(2.5)}
 	case 'C':
 		l.Color, l.Dashes = green, []vg.Length{vg.Points(5), vg.Points(2), vg.Points(1.5), vg.Points(2)}

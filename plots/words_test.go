@@ -2,6 +2,7 @@ package plots
 
 import (
 	"io/fs"
+	"slices"
 	"strings"
 	"testing"
 	"time"
@@ -156,5 +157,20 @@ func TestWrapFits(t *testing.T) {
 	}
 	if got := wrap(tx, "short", 300, 3); len(got) != 1 || got[0] != "short" {
 		t.Errorf("%q", got)
+	}
+}
+
+// The legs of services share a line, and so an entry, which stands last; pairs stand
+// with their first phase.
+func TestPhaseKeys(t *testing.T) {
+	var got []string
+	for _, k := range phaseKeys([]string{"1", "2", "A", "B", "AB"}, phaseStyle) {
+		got = append(got, k.text)
+	}
+	if want := []string{"phase A, AB", "phase B", "services"}; !slices.Equal(got, want) {
+		t.Errorf("got %q, want %q", got, want)
+	}
+	if phaseStyle("1").Color == phaseStyle("A").Color || phaseStyle("2").Color == phaseStyle("B").Color {
+		t.Error("a leg looks like a phase")
 	}
 }
