@@ -56,12 +56,17 @@ func (a *allocated) begin(st *feeder.Study, find finder, use func(*profiles.Seri
 			a.mixed = a.mixed || l.ConnectedKVA > 0 && len(l.EnergyKWh) == 0
 		}
 	}
-	add := func(q quantity, m feeder.Measured, unit string, companion bool) (missing []string, some bool) {
+	found := map[string]*profiles.Series{} // a name that is wrong is told once
+	add := func(q quantity, m feeder.Measured, key, unit string, companion bool) (missing []string, some bool) {
 		one := func(name string, phase int) {
 			if name == "" {
 				return
 			}
-			s := find(name, st.Place("allocation."+map[string]string{"A": "current", "kW": "real"}[unit]), unit)
+			s, known := found[name]
+			if !known {
+				s = find(name, st.Place("allocation."+key), unit)
+				found[name] = s
+			}
 			switch {
 			case s == nil:
 			case !companion:
@@ -80,16 +85,16 @@ func (a *allocated) begin(st *feeder.Study, find finder, use func(*profiles.Seri
 		return missing, some
 	}
 	if !spec.Current.None() {
-		add(current, spec.Current, "A", false)
+		add(current, spec.Current, "current", "A", false)
 	} else {
-		add(realPower, spec.Real, "kW", false)
+		add(realPower, spec.Real, "real", "kW", false)
 	}
 	reactive, asked := spec.Real, false
 	if !spec.Reactive.None() {
 		reactive, asked = spec.Reactive, true
 	}
 	if feeder.Unknown(spec.Tangent) && spec.Current.None() {
-		missing, some := add(reactivePower, reactive, "kW", true)
+		missing, some := add(reactivePower, reactive, "reactive", "kW", true)
 		if len(missing) > 0 && (asked || some) {
 			faults.Add(st.Place("allocation.reactive"), "allocation: profile %q has no [kvar] column beside its [kW]: kvar are measured by a column `%s [kvar]` in the same file", missing[0], missing[0])
 		}

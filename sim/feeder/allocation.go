@@ -279,7 +279,7 @@ func (s *Study) element(name string, fault func(key, format string, args ...any)
 	look("regulator", len(m.Regulators), func(i int) string { return m.Regulators[i].Name })
 	switch {
 	case len(found) == 0:
-		fault("at", "there is no section, switch, transformer or regulator %q%s; or \"source\"", name, tables.Hint(name, names))
+		fault("at", "no section, switch, transformer or regulator is called %q, nor \"source\"%s", name, tables.Hint(name, names))
 		return nil
 	case len(found) > 1:
 		fault("at", "%q is both a %s and a %s; give one of them another name", name, found[0].Kind, found[1].Kind)
