@@ -39,9 +39,9 @@ type Settings struct {
 	Workers int
 	// Figures draws into a results folder, as results.RunInfo has it; nil for none.
 	Figures func(dir string) ([]string, results.WallTime, error)
-	// Watch returns a recorder that sees the steps of a case while it runs, on the
-	// goroutine of that case; nil for none.
-	Watch func(caseName string, steps int) sim.Recorder
+	// Watch returns recorders that see the steps of a case while it runs, on the
+	// goroutine of that case; nil for none. Of a case that is not run it is not asked.
+	Watch func(c *Case, e *sim.Engine) []sim.Recorder
 }
 
 // Case is one case of a study with what it gave.
@@ -171,13 +171,13 @@ func runCase(ctx context.Context, p Place, st *feeder.Study, s Settings) (*Case,
 	}
 	recorders := []sim.Recorder{w}
 	if s.Watch != nil {
-		recorders = append(recorders, s.Watch(st.Case, e.Steps()))
+		recorders = append(recorders, s.Watch(c, e)...)
 	}
 	outcome, err := e.Run(ctx, recorders...)
 	if err != nil {
 		return nil, errors.Join(err, w.Abort())
 	}
-	info := results.RunInfo{Version: p.Version, Inputs: c.Inputs, Figures: s.Figures, Wall: []results.WallTime{
+	info := results.RunInfo{Version: p.Version, Inputs: c.Inputs, Warnings: e.Warnings, Figures: s.Figures, Wall: []results.WallTime{
 		{Part: "reading", Seconds: read.Sub(began).Seconds()}, {Part: "run", Seconds: time.Since(read).Seconds()}}}
 	if err := w.Finish(outcome, info); err != nil {
 		return nil, err
