@@ -449,3 +449,19 @@ func TestPlantStepsDoNotAllocate(t *testing.T) {
 		t.Errorf("%v allocations in two days, %v in nine", a, b)
 	}
 }
+
+// A vehicle that needs more than its stay has room for is told of before the run.
+func TestChargerThatCannotBeDone(t *testing.T) {
+	e := ready(t, plantStudy("1h", 1, map[string]string{
+		"feeder/chargers.csv": "charger,node,phases,power [kW],arrival,departure,energy [kWh]\nc,end,A,10,18:00,7:00,200\n",
+	}))
+	said := ""
+	for _, w := range e.Warnings {
+		said += w.Error() + "\n"
+	}
+	for _, want := range []string{"feeder/chargers.csv:2:7", "200 kWh", "13 h", "130 kWh"} {
+		if !strings.Contains(said, want) {
+			t.Errorf("warnings lack %q: %s", want, said)
+		}
+	}
+}

@@ -1,8 +1,10 @@
 package feeder
 
 import (
+	"fmt"
 	"math"
 	"strconv"
+	"strings"
 
 	"yearflow/sim/tables"
 )
@@ -27,6 +29,9 @@ func (b *builder) functions() {
 		}
 		if f.Reactive != "constant power factor" {
 			unread(r.PowerFactor, "power factor", "constant power factor")
+		}
+		if x := f.PowerFactor; x == 0 || math.Abs(x) > 1 {
+			b.faults.Add(r.PowerFactor.At, "%s: a power factor is between -1 and 1 and not 0, got %s", what, amount(x))
 		}
 		if f.Reactive != "constant reactive power" {
 			unread(r.Constant, "reactive power", "constant reactive power")
@@ -139,6 +144,7 @@ func (b *builder) battery(r *batteryRow) {
 			b.faults.Add(share.c.At, "%s: %s is %s %%; it is at most 100 %%", what, share.name, amount(100*share.c.Value))
 		}
 	}
+	b.unreadByDispatch(r, what)
 	switch s.Dispatch {
 	case "peak shaving":
 		s.Watched = b.watched(r.Watched, r.Row.At, what, "peak shaving")
@@ -166,6 +172,38 @@ func (b *builder) battery(r *batteryRow) {
 	}
 }
 
+// unreadByDispatch reports cells that another dispatch would read.
+func (b *builder) unreadByDispatch(r *batteryRow, what string) {
+	tell := func(at tables.Pos, name string, of ...string) {
+		for _, d := range of {
+			if r.Dispatch.Value == d {
+				return
+			}
+		}
+		b.faults.Add(at, "%s: %s belongs to dispatch %s, not to %s; leave it blank", what, name, strings.Join(of, " and "), r.Dispatch.Value)
+	}
+	if r.Target.Given {
+		tell(r.Target.At, "target", "peak shaving")
+	}
+	if r.Recharge.Given {
+		tell(r.Recharge.At, "recharge", "peak shaving")
+	}
+	if r.Watched.Given {
+		tell(r.Watched.At, "watched section", "peak shaving", "self-consumption")
+	}
+	if r.Profile.Given {
+		tell(r.Profile.At, "profile", "profile")
+	}
+	for _, c := range []struct {
+		name string
+		cell tables.Text
+	}{{"charge from", r.ChargeFrom}, {"charge to", r.ChargeTo}, {"discharge from", r.DischargeFrom}, {"discharge to", r.DischargeTo}, {"days", r.Days}} {
+		if c.cell.Given {
+			tell(c.cell.At, c.name, "schedule")
+		}
+	}
+}
+
 func (b *builder) windows(r *batteryRow, s *Battery, what string) (out []DayWindow) {
 	for _, w := range []struct {
 		name     string
@@ -180,12 +218,45 @@ func (b *builder) windows(r *batteryRow, s *Battery, what string) (out []DayWind
 	if len(out) == 0 {
 		b.faults.Add(r.Row.At, "%s: dispatch schedule needs charge from, charge to, discharge from and discharge to, as hh:mm", what)
 	}
+	for _, w := range out {
+		if math.IsNaN(w.From + w.To) { // told already
+			return out
+		}
+		if w.From == w.To {
+			b.faults.Add(r.Row.At, "%s: a window from %s to %s holds nothing", what, hhmm(w.From), hhmm(w.To))
+			return out
+		}
+	}
+	if len(out) == 2 && (within(out[0], out[1].From) || within(out[1], out[0].From)) {
+		b.faults.Add(r.Row.At, "%s: its windows overlap: it charges from %s to %s and discharges from %s to %s", what, hhmm(out[0].From), hhmm(out[0].To), hhmm(out[1].From), hhmm(out[1].To))
+	}
 	return out
 }
 
+// within tells whether a time of day, s, lies in a window, which may wrap past midnight.
+func within(w DayWindow, at float64) bool {
+	if w.From < w.To {
+		return w.From <= at && at < w.To
+	}
+	return w.From <= at || at < w.To
+}
+
+// hhmm writes a time of day, s.
+func hhmm(s float64) string { return fmt.Sprintf("%d:%02d", int(s)/3600, int(s)/60%60) }
+
 func (b *builder) chargers() {
+	limited := map[string]bool{}
 	for i := range b.t.chargers {
 		b.charger(&b.t.chargers[i])
+		if r := &b.t.chargers[i]; r.GroupLimit.Given {
+			limited[r.Group.Value] = true
+		}
+	}
+	for i := range b.t.chargers {
+		if r := &b.t.chargers[i]; r.Group.Given && !limited[r.Group.Value] {
+			limited[r.Group.Value] = true // told once
+			b.faults.Add(r.Group.At, "charger %q: group %q has no limit to share; give group limit [kW], or leave group blank", r.Name.Value, r.Group.Value)
+		}
 	}
 }
 
@@ -210,6 +281,9 @@ func (b *builder) charger(r *chargerRow) {
 		b.faults.Add(r.Row.At, "%s: from and to are the hours of delayed charging; it is unmanaged", what)
 	case r.From.Given != r.To.Given:
 		b.faults.Add(r.Row.At, "%s: one of from and to is blank", what)
+	}
+	if stay := math.Mod(s.Depart-s.Arrival+86400, 86400); ok && s.Arrival != s.Depart && s.EnergyKWh > s.KW*stay/3600*(1+1e-9) {
+		b.warnings.Add(r.Energy.At, "%s: %s kWh do not go into a stay of %s h at %s kW, which takes %s kWh: the rest of each stay is left unserved", what, amount(s.EnergyKWh), amount(stay/3600), amount(s.KW), amount(s.KW*stay/3600))
 	}
 	if r.GroupLimit.Given && !r.Group.Given {
 		b.faults.Add(r.GroupLimit.At, "%s: group limit is given without a group", what)

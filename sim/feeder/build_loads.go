@@ -208,7 +208,7 @@ func (b *builder) generator(r *generatorRow) {
 	solar, okSolar := b.solar(r, what)
 	function, okFunction := b.functionOf(r.Function, what)
 	ok = ok && okSolar && okFunction
-	if !r.Real.Given && !r.Profile.Given && solar == nil {
+	if okSolar && !r.Real.Given && !r.Profile.Given && solar == nil {
 		b.faults.Add(r.Row.At, "%s: how much does it give? give real [kW], a profile, or for solar dc [kW]", what)
 		ok = false
 	}

@@ -67,7 +67,7 @@ type chargerRow struct {
 	Factor     tables.Number `csv:"power factor" default:"1"`
 	Arrival    tables.Text   `csv:"arrival" is:"required"`
 	Departure  tables.Text   `csv:"departure" is:"required"`
-	Energy     tables.Number `csv:"energy" unit:"kWh" is:"required,>=0"`
+	Energy     tables.Number `csv:"energy" unit:"kWh" is:"required,>0"`
 	Days       tables.Text   `csv:"days" words:"all|weekdays" default:"all"`
 	Charging   tables.Text   `csv:"charging" words:"unmanaged|delayed" default:"unmanaged"`
 	From       tables.Text   `csv:"from"`
