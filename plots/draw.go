@@ -36,24 +36,28 @@ type Figure struct {
 type drawing struct {
 	name  string
 	paint func(*survey, *style) (*page, Figure)
+	// has tells whether the run has what the figure shows; nil: every run has.
+	has func(*survey) bool
 }
 
 // drawings are all figures in the order of a report.
 var drawings = [...]drawing{
-	{"voltage-lowest-year", drawLowestYear},
-	{"voltage-highest-year", drawHighestYear},
-	{"voltage-distance", drawDistance},
-	{"voltage-envelope", drawEnvelope},
-	{"voltage-duration", drawDuration},
-	{"taps", drawTaps},
-	{"operations", drawOperations},
-	{"losses", drawLosses},
-	{"loading", drawLoading},
-	{"map", drawMap},
-	{"power", drawPower},
+	{name: "voltage-lowest-year", paint: drawLowestYear},
+	{name: "voltage-highest-year", paint: drawHighestYear},
+	{name: "voltage-distance", paint: drawDistance},
+	{name: "voltage-envelope", paint: drawEnvelope},
+	{name: "voltage-duration", paint: drawDuration},
+	{name: "taps", paint: drawTaps},
+	{name: "operations", paint: drawOperations},
+	{name: "losses", paint: drawLosses},
+	{name: "loading", paint: drawLoading},
+	{name: "map", paint: drawMap},
+	{name: "power", paint: drawPower},
+	{name: "measured", paint: drawMeasured, has: hasMeasured},
 }
 
-// Names returns the names of all figures, without .png, in the order of a report.
+// Names returns the names of all figures, without .png, in the order of a report; a run
+// without measurements has not the one of them.
 func Names() []string {
 	var names []string
 	for _, d := range drawings {
@@ -64,7 +68,7 @@ func Names() []string {
 
 // Draw draws the figures of the results folder dir, each as a PNG that is written to
 // what out returns for its name (and closed; out is called in order, never at once), and returns what they say in the order
-// of a report. It fails where the folder does not read (results.ReadFolder), on an
+// of a report; one of measurements only where the run had any. It fails where the folder does not read (results.ReadFolder), on an
 // unknown name, and where out or a writer fails.
 func Draw(dir fs.FS, out func(name string) (io.WriteCloser, error), o Options) ([]Figure, error) {
 	f, err := results.ReadFolder(dir)
@@ -93,6 +97,7 @@ func DrawFolder(f *results.Folder, out func(name string) (io.WriteCloser, error)
 	if err != nil {
 		return nil, err
 	}
+	chosen = there(s, chosen)
 	st := newStyle(o.DPI)
 	figures := make([]Figure, len(chosen))
 	pictures := make([]bytes.Buffer, len(chosen))
@@ -116,6 +121,17 @@ func DrawFolder(f *results.Folder, out func(name string) (io.WriteCloser, error)
 		}
 	}
 	return figures, nil
+}
+
+// there leaves out figures of what the run did not have, such as measurements.
+func there(s *survey, chosen []drawing) []drawing {
+	var out []drawing
+	for _, d := range chosen {
+		if d.has == nil || d.has(s) {
+			out = append(out, d)
+		}
+	}
+	return out
 }
 
 func write(out func(string) (io.WriteCloser, error), name string, data []byte) error {

@@ -30,6 +30,8 @@ type survey struct {
 	// atLow and atHigh are the rows of voltages.csv at the two worst instants.
 	atLow, atHigh map[string]float64
 	places        map[string]results.PlaceRow
+	// measured holds the measurements over time; empty where the run had none.
+	measured []results.MeasuredSeries
 }
 
 type phaseVoltages struct {
@@ -56,7 +58,9 @@ func newSurvey(f *results.Folder) (*survey, error) {
 	if err := s.readVoltages(all); err != nil {
 		return nil, err
 	}
-	return s, nil
+	var err error
+	s.measured, err = f.Series()
+	return s, err
 }
 
 // coverJudged tells whether voltages.csv has every judged place.

@@ -24,6 +24,7 @@ type invented struct {
 	devices      bool
 	unsolvedRows int
 	shuffle      uint64 // 0: rows in order
+	measured     int    // how many measurements the run had
 }
 
 func denver() *time.Location {
@@ -37,7 +38,7 @@ func denver() *time.Location {
 func year() invented {
 	z := denver()
 	return invented{start: time.Date(2025, 1, 1, 0, 0, 0, 0, z), end: time.Date(2026, 1, 1, 0, 0, 0, 0, z), step: time.Hour,
-		trunk: 24, coordinates: true, demo: true, voltages: true, devices: true}
+		trunk: 24, coordinates: true, demo: true, voltages: true, devices: true, measured: 7}
 }
 
 type fakeNode struct {
@@ -123,8 +124,8 @@ func (g invented) write() fstest.MapFS {
 		fmt.Fprintf(b, format, args...)
 	}
 	stamp := func(t time.Time) string { return t.Format("2006-01-02T15:04:05-07:00") }
-	w("run.json", `{"format":1,"version":"test","title":"Alder Bend 1203","case":"base","zone":"America/Denver","step_seconds":%d,"row_seconds":%[1]d,"start":"%[2]s","end":"%[3]s","demo":%[4]v,"limits":{"range":"ANSI C84.1","judge":"customers"}}`+"\n",
-		int(g.step/time.Second), stamp(g.start), stamp(g.end), g.demo)
+	w("run.json", `{"format":1,"version":"test","title":"Alder Bend 1203","case":"base","zone":"America/Denver","step_seconds":%d,"row_seconds":%[1]d,"start":"%[2]s","end":"%[3]s","demo":%[4]v,"limits":{"range":"ANSI C84.1","judge":"customers"},"results_sha256":{%[5]s}}`+"\n",
+		int(g.step/time.Second), stamp(g.start), stamp(g.end), g.demo, g.measuredFiles())
 	w("places.csv", "node,x,y,longlat,distance [km],nominal [kV],phases,judged\n")
 	for _, n := range nodes {
 		x, y, ll := "", "", ""
@@ -147,6 +148,7 @@ func (g invented) write() fstest.MapFS {
 		w("network.csv", "%s,%s,%s,%s,%s,%.4f\n", b.element, b.kind, b.from, b.to, b.phases, b.length)
 	}
 	g.series(w, nodes, branches, stamp)
+	g.measure(w, stamp)
 	w("monthly.csv", "month\n")
 	w("summary.csv", "quantity,value,unit\nsteps,1,1\n")
 	fsys := fstest.MapFS{}

@@ -39,6 +39,9 @@ func (s *Series) Span() (start, end int64) { return s.grid.start, s.grid.end() }
 // StepLength returns the file's step in nanoseconds.
 func (s *Series) StepLength() int64 { return s.grid.step }
 
+// Held tells whether a value stands over its interval; else straight lines join them.
+func (s *Series) Held() bool { return !s.grid.lines }
+
 // Range returns the smallest and the largest value.
 func (s *Series) Range() (lowest, highest float64) {
 	lowest, highest = s.values[0], s.values[0]

@@ -202,32 +202,8 @@ func (e *Engine) Trace(node string) ([]TraceRow, error) {
 	if !ok {
 		return nil, fmt.Errorf("no node named %q", node)
 	}
-	via := make([]int, len(m.Nodes)) // hop by which a node was reached
-	for i := range via {
-		via[i] = -2
-	}
 	hops := e.hops()
-	at := make([][]int, len(m.Nodes))
-	for k, h := range hops {
-		at[h.a] = append(at[h.a], k)
-		at[h.b] = append(at[h.b], k)
-	}
-	var queue []int
-	for _, s := range m.Sources {
-		via[s.Node] = -1
-		queue = append(queue, s.Node)
-	}
-	for len(queue) > 0 && via[target] == -2 {
-		n := queue[0]
-		queue = queue[1:]
-		for _, k := range at[n] {
-			far := hops[k].a + hops[k].b - n
-			if via[far] == -2 {
-				via[far] = k
-				queue = append(queue, far)
-			}
-		}
-	}
+	via := e.via(hops)
 	var rows []TraceRow
 	n := target
 	for via[n] >= 0 {
@@ -247,6 +223,38 @@ func (e *Engine) Trace(node string) ([]TraceRow, error) {
 		rows[i], rows[j] = rows[j], rows[i]
 	}
 	return rows, nil
+}
+
+// via returns, by node, the hop by which it is reached from the nearest source with the
+// fewest elements; −1 at a source, −2 where nothing leads to it.
+func (e *Engine) via(hops []hop) []int {
+	m := e.net.Model
+	via := make([]int, len(m.Nodes))
+	for i := range via {
+		via[i] = -2
+	}
+	at := make([][]int, len(m.Nodes))
+	for k, h := range hops {
+		at[h.a] = append(at[h.a], k)
+		at[h.b] = append(at[h.b], k)
+	}
+	var queue []int
+	for _, s := range m.Sources {
+		via[s.Node] = -1
+		queue = append(queue, s.Node)
+	}
+	for len(queue) > 0 {
+		n := queue[0]
+		queue = queue[1:]
+		for _, k := range at[n] {
+			far := hops[k].a + hops[k].b - n
+			if via[far] == -2 {
+				via[far] = k
+				queue = append(queue, far)
+			}
+		}
+	}
+	return via
 }
 
 func (e *Engine) hops() (out []hop) {

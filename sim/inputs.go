@@ -53,6 +53,7 @@ type inputs struct {
 	fixed   []fixedVoltage
 	outside []int // by capacitor: series of the temperature, or −1
 
+	comparison
 	odd tables.Faults // possible, but hardly meant
 }
 
@@ -135,6 +136,7 @@ func newInputs(st *feeder.Study, net *network.Network, cache string) (*inputs, e
 	for i := range m.Sources {
 		held[i] = find(m.Sources[i].Profile, m.Sources[i].At, "pu", "V")
 	}
+	in.findMeasured(m, find, &faults)
 	names.prices(st.Settings.Prices.Currency)
 	for _, f := range net.Fixed {
 		s := &m.Sources[f.Source]

@@ -131,6 +131,9 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 		return nil, err
 	}
 	in.probes(net, o.Probes)
+	if err := in.sampleMeasured(); err != nil {
+		return nil, err
+	}
 	flow, err := powerflow.New(net, in.injections, in.groups...)
 	if err != nil {
 		var faults tables.Faults
@@ -163,7 +166,6 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 		return nil, err
 	}
 	e.Warnings = append(append(e.Warnings, st.Warnings...), in.odd...)
-	tables.Faults(e.Warnings).Sort()
 	if err := e.prepareAllocation(o); err != nil {
 		return nil, err
 	}
@@ -182,6 +184,8 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 		e.Plan.LoadPeak = e.peaks(len(m.Loads))
 	}
 	e.Reset()
+	e.Warnings = append(e.Warnings, e.oddMeasured(e.meterPoints())...)
+	tables.Faults(e.Warnings).Sort()
 	return e, nil
 }
 

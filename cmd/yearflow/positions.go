@@ -49,34 +49,42 @@ func (c *console) positionsOf(st *opened, e *sim.Engine, step int, o *instantOpt
 // logged reads the positions at the end of a step from a results folder, which must
 // come from the inputs as they are now.
 func (c *console) logged(st *opened, e *sim.Engine, step int, dir string) (sim.Positions, error) {
-	var none sim.Positions
+	if err := st.sameInputs(e, dir); err != nil {
+		return sim.Positions{}, err
+	}
+	return c.readPositions(e, step, filepath.Join(dir, "devices.csv"))
+}
+
+// sameInputs fails where the results in a folder are not those of the study and the
+// case as they are now.
+func (o *opened) sameInputs(e *sim.Engine, dir string) error {
 	data, err := os.ReadFile(filepath.Join(dir, "run.json"))
 	if err != nil {
-		return none, wrongf("%s is no results folder: %v", dir, err)
+		return wrongf("%s is no results folder: %v", dir, err)
 	}
 	var run struct {
 		Case   string            `json:"case"`
 		Inputs map[string]string `json:"inputs_sha256"`
 	}
 	if err := json.Unmarshal(data, &run); err != nil {
-		return none, wrongf("%s: run.json cannot be read: %v", dir, err)
+		return wrongf("%s: run.json cannot be read: %v", dir, err)
 	}
 	if run.Case != e.Study.Case {
-		return none, wrongf("the results in %s are those of case %q, not of %q: name the case, or other results", dir, run.Case, e.Study.Case)
+		return wrongf("the results in %s are those of case %q, not of %q: name the case, or other results", dir, run.Case, e.Study.Case)
 	}
-	now, err := st.inputs(e)
+	now, err := o.inputs(e)
 	if err != nil {
-		return none, err
+		return err
 	}
 	for f, h := range now {
 		if run.Inputs[f] != h {
-			return none, wrongf("%s has changed since the results in %s were made: run again", f, dir)
+			return wrongf("%s has changed since the results in %s were made: run again", f, dir)
 		}
 	}
 	if len(run.Inputs) != len(now) {
-		return none, wrongf("the results in %s were made from other files than the study has now: run again", dir)
+		return wrongf("the results in %s were made from other files than the study has now: run again", dir)
 	}
-	return c.readPositions(e, step, filepath.Join(dir, "devices.csv"))
+	return nil
 }
 
 // readPositions takes the positions of devices and the power of batteries from the

@@ -83,8 +83,19 @@ func (c *console) run(ctx context.Context, args []string, o *runOptions) error {
 	}
 	bar := newProgress(c.errs, e.Steps())
 	counts := &tally{}
-	outcome, err := e.Run(ctx, w, counts, bar)
+	recorders := []sim.Recorder{w, counts, bar}
+	measured := e.Measured()
+	if measured != nil {
+		if measured.Log, err = w.MeasuredLog(); err != nil {
+			return errors.Join(machineOr(err), w.Abort())
+		}
+		recorders = append(recorders, measured)
+	}
+	outcome, err := e.Run(ctx, recorders...)
 	bar.end()
+	if err == nil && measured != nil {
+		err = w.Met(measured.Rows(), measured.PhaseSwaps())
+	}
 	if err != nil {
 		return errors.Join(machineOr(err), w.Abort())
 	}
@@ -193,6 +204,10 @@ func (c *console) tellRun(e *sim.Engine, outcome *results.Outcome, t *tally, dir
 		rows = append(rows, []string{r.Quantity, r.Value, r.Unit})
 	}
 	s.write(out)
+	fmt.Fprintf(out, "\n%s\n", folder.Met())
+	for i := range folder.Swaps {
+		fmt.Fprintf(c.errs, "warning: %s\n", folder.Swaps[i].Text())
+	}
 	for _, name := range outcome.StillMoving {
 		fmt.Fprintf(c.errs, "warning: at the start %s had not come to rest after 24 h of event time\n", name)
 	}

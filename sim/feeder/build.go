@@ -95,6 +95,7 @@ func (b *builder) build() *Model {
 	b.batteries()
 	b.ties()
 	b.chargers()
+	b.measurements()
 	if len(*b.faults) == before && !b.torn {
 		b.floating()
 	}

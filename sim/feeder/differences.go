@@ -37,7 +37,7 @@ func (d Difference) Title() string {
 func Differences(base, other *Study) []Difference {
 	out := settingsDifferences(&base.Settings, &other.Settings, other.Place)
 	a, b := reflect.ValueOf(base.tables).Elem(), reflect.ValueOf(other.tables).Elem()
-	read, _ := tableNames()
+	read := tableNames()
 	field := 0
 	for i := range a.NumField() {
 		if a.Field(i).Kind() != reflect.Slice || a.Field(i).Type().Elem().Kind() != reflect.Struct || a.Type().Field(i).Name == "assumed" {

@@ -8,5 +8,5 @@
 //
 // What is read and not modelled yet is refused with its place: centre-tapped services,
 // banks of unequal units, batteries, chargers, inverter
-// functions, output from weather, loads by connected kVA and measurements.
+// functions, output from weather and loads by connected kVA.
 package feeder

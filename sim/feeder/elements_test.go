@@ -205,10 +205,6 @@ func TestPlantFaults(t *testing.T) {
 	f := "function,reactive,v1 [pu],reactive power [%]\n"
 	wantFault(t, with(small(), "feeder/inverter-functions.csv", f+"f,constant reactive power,,\n"), "feeder/inverter-functions.csv:2", "reactive power is blank")
 	wantFault(t, with(small(), "feeder/inverter-functions.csv", f+"f,constant power factor,0.9,\n"), "feeder/inverter-functions.csv:2:3", "belongs to voltage-reactive power")
-	for _, n := range []string{"measurements"} {
-		wantFault(t, with(small(), "feeder/"+n+".csv", "a,b\n1,2\n"), "feeder/"+n+".csv:2", "comes with a later version")
-		opened(t, with(small(), "feeder/"+n+".csv", "a,b\n"), "")
-	}
 	wantFault(t, with(small(), "feeder/load.csv", "a,b\n"), "feeder/load.csv", "this table is not known; did you mean loads.csv?")
 	wantFault(t, with(small(), "cases/c/x.toml", "x", "feeder/Loads.CSV", "a"), "feeder/Loads.CSV", "did you mean loads.csv?")
 }

@@ -33,6 +33,7 @@ type feederTables struct {
 	batteries         []batteryRow
 	meters            []meterRow
 	chargers          []chargerRow
+	measurements      []measurementRow
 
 	folder  string
 	assumed []Assumption
@@ -40,13 +41,11 @@ type feederTables struct {
 	dropped map[string]bool            // tables that lost rows to faults
 }
 
-// tableNames are the tables that may stand in the folder of a feeder; those of the
-// second list are not read yet.
-func tableNames() (read, notYet []string) {
+// tableNames are the tables that may stand in the folder of a feeder.
+func tableNames() []string {
 	return []string{"source", "nodes", "sections", "switches", "constructions", "impedances", "spacings", "conductors", "cables",
-			"transformers", "regulators", "regulator-settings", "capacitors", "capacitor-settings", "loads", "energies", "zip", "generators",
-			"inverter-functions", "batteries", "chargers", "meters"},
-		[]string{"measurements"}
+		"transformers", "regulators", "regulator-settings", "capacitors", "capacitor-settings", "loads", "energies", "zip", "generators",
+		"inverter-functions", "batteries", "meters", "chargers", "measurements"}
 }
 
 // tableReader reads the tables of one study and its case.
@@ -90,18 +89,7 @@ func (s *Study) readTables(folder string, faults *tables.Faults) *feederTables {
 	t.batteries = readTable[batteryRow](r, "batteries", nil)
 	t.meters = readTable[meterRow](r, "meters", nil)
 	t.chargers = readTable[chargerRow](r, "chargers", nil)
-	_, notYet := tableNames()
-	for _, name := range notYet {
-		for _, f := range []string{folder, r.cases} {
-			if f == "" {
-				continue
-			}
-			file := path.Join(f, name+".csv")
-			if line, found := tables.FirstRow(s.FS, file, faults); found {
-				faults.Add(tables.Pos{File: file, Line: line}, "%s: this table %s; take its rows out", name, later)
-			}
-		}
-	}
+	t.measurements = readTable[measurementRow](r, "measurements", blankPhases)
 	for _, need := range []string{"source"} {
 		if _, err := fs.Stat(s.FS, path.Join(folder, need+".csv")); err != nil && len(t.sources) == 0 {
 			faults.Add(tables.Pos{File: path.Join(folder, need+".csv")}, "is missing; a feeder needs a source")
@@ -117,8 +105,7 @@ func (r *tableReader) strangers(folder string) {
 	if err != nil {
 		return
 	}
-	read, notYet := tableNames()
-	names := append(read, notYet...)
+	names := tableNames()
 	known := map[string]bool{}
 	for _, n := range names {
 		known[n+".csv"] = true

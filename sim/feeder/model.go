@@ -77,6 +77,7 @@ type Model struct {
 	Batteries     []Battery
 	Meters        []MeterTie
 	Chargers      []Charger
+	Measurements  []Measurement // measurements.csv
 	Assumed       []Assumption
 
 	index map[string]int

@@ -261,7 +261,7 @@ const (
 	WantVoltage     = "voltage"             // p.u., or V line-to-line; a source
 	WantTemperature = "temperature"         // degC; a capacitor control
 	WantPrice       = "price"               // currency per energy
-	WantMeasured    = "measured"            // kW, with kvar if wanted, or A; an allocation
+	WantMeasured    = "measured"            // kW, kvar, A, V or pu, as the quantity is; an allocation or a measurement
 )
 
 // ProfileUses lists the profiles that the study names, in the order of the tables.

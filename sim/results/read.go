@@ -29,9 +29,14 @@ type Folder struct {
 	// VoltageNames are the columns of voltages.csv (node.phase); nil where the run
 	// kept no voltages.
 	VoltageNames []string
+	// Measured and Swaps are how the model met its measurements; empty without any.
+	Measured []MeasuredRow
+	Swaps    []SwapRow
 
 	files  fs.FS
 	judged map[string][]string // phases by node
+	// hasSeries tells that measured-series.csv was written.
+	hasSeries bool
 }
 
 // NodeRow is a row of nodes.csv: the statistics of one node.phase. Voltages are p.u.
@@ -138,6 +143,7 @@ func ReadFolder(fsys fs.FS) (*Folder, error) {
 	f.Monthly = rd.sheet("monthly.csv")
 	f.Monthly.need("month")
 	f.readSummary(&rd)
+	f.readMeasured(&rd)
 	f.readVoltageHeader(&rd)
 	f.allThere(&faults)
 	if len(faults) == 0 {

@@ -84,6 +84,7 @@ func (w *Writer) writeSummary(f *outFile) error {
 	if s.w.allocation != nil {
 		s.allocation()
 	}
+	s.measured()
 	return s.err
 }
 

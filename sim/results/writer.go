@@ -49,6 +49,9 @@ type Writer struct {
 	balance balanceCheck
 	flowNow []flowReading
 	stored  storageReading
+
+	more []*outFile    // of measurements
+	met  []MeasuredRow // how the model met them
 }
 
 // balanceCheck is how well the balance of power closed over all solved intervals.
@@ -322,7 +325,7 @@ func (w *Writer) logs() []*outFile {
 	if w.allocation != nil {
 		logs = append(logs, w.allocation)
 	}
-	return logs
+	return append(logs, w.more...)
 }
 
 // Finish writes the remaining files, syncs everything and puts the folder in its

@@ -121,16 +121,3 @@ func TestDefaultsAreListedByColumn(t *testing.T) {
 		t.Errorf("got %+v, want %+v", got, want)
 	}
 }
-
-func TestFirstRow(t *testing.T) {
-	fsys := fstest.MapFS{"full.csv": {Data: []byte("# why\na,b\n\n1,2\n")}, "bare.csv": {Data: []byte("a,b\n")}}
-	var faults Faults
-	if line, found := FirstRow(fsys, "full.csv", &faults); line != 4 || !found {
-		t.Errorf("full.csv: line %d, found %v; want 4", line, found)
-	}
-	for _, n := range []string{"bare.csv", "none.csv"} {
-		if _, found := FirstRow(fsys, n, &faults); found {
-			t.Errorf("%s has a row", n)
-		}
-	}
-}

@@ -336,16 +336,3 @@ func (s *Sheet[T]) Defaults() []Default {
 	}
 	return out
 }
-
-// FirstRow returns the line of the first row of a table below its header, and false
-// where there is no such file or it has no rows.
-func FirstRow(fsys fs.FS, name string, faults *Faults) (line int, found bool) {
-	if _, err := fs.Stat(fsys, name); err != nil {
-		return 0, false
-	}
-	records, _ := scan(fsys, name, faults)
-	if len(records) < 2 {
-		return 0, false
-	}
-	return records[1].line, true
-}
