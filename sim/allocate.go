@@ -547,9 +547,9 @@ func (a *allocation) correct(e *Engine) (moved bool) {
 		}
 	}
 	for u := range a.factors {
-		if a.active[u] && a.change[u] != 0 {
+		if a.active[u] {
 			a.factors[u] += a.change[u]
-			moved = true
+			moved = moved || math.Abs(a.change[u]) > 1e-7*a.factors[u]
 		}
 	}
 	return moved

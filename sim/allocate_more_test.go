@@ -335,3 +335,73 @@ func TestAllocationOfTooMuch(t *testing.T) {
 		t.Errorf("listed: %+v", got.alloc)
 	}
 }
+
+// What loads across two phases cannot make up is listed as not met, after the best was
+// done: the total is met.
+func TestAllocationOfAPairAlone(t *testing.T) {
+	head := "time,head a [kW],head b [kW],head c [kW]\n"
+	for k := range 72 {
+		head += fmt.Sprintf("2025-03-%02dT%02d:00,300,100,5\n", 3+k/24, k%24)
+	}
+	f := town("load,node,phases,connection,connected [kVA]\npair,end,AB,delta,100\nsmall,mid,C,wye,10\n", byPhases, map[string]string{"profiles/head.csv": head})
+	delete(f, "feeder/transformers.csv")
+	got := meterRun(t, f, "")
+	if len(got.alloc) != 144 {
+		t.Fatalf("%d rows listed, want A and B of 72 steps", len(got.alloc))
+	}
+	for _, r := range got.alloc {
+		if r.Status != results.AllocationNotMet {
+			t.Fatalf("%+v", r)
+		}
+	}
+	s := got.ends[7]
+	if ab, c := real(s[0]+s[1])/1000, real(s[2])/1000; math.Abs(ab-400) > 4 || math.Abs(c-5) > 0.01 {
+		t.Errorf("A and B %.3f kW, C %.3f, measured 400 and 5", ab, c)
+	}
+}
+
+// Measured at a regulator in the middle: the loads before it stay what they are, those
+// behind it take what it carries.
+func TestAllocationAtARegulator(t *testing.T) {
+	head := "time,out [kW],out [kvar]\n"
+	for k := range 72 {
+		head += fmt.Sprintf("2025-03-%02dT%02d:00,%d,120\n", 3+k/24, k%24, 300+k)
+	}
+	f := withControllers("load,node,phases,real [kW],connected [kVA],profile\nbefore,reg,ABC,100,,day\na,mid,A,,100,day\nb,end,B,,100,day\nc,end,C,,120,day\n",
+		"flows = [\"R1\"]\n[allocation]\nat = \"R1\"\nreal = \"out\"\n", map[string]string{"profiles/head.csv": head})
+	for _, name := range []string{"feeder/transformers.csv", "feeder/generators.csv", "feeder/batteries.csv"} {
+		delete(f, name)
+	}
+	st, err := feeder.Open(f, "")
+	if err != nil {
+		t.Fatal(err)
+	}
+	e, err := sim.Prepare(st, sim.Options{})
+	if err != nil {
+		t.Fatal(err)
+	}
+	for _, step := range []int{0, 30, 71} {
+		in, err := e.Solve(step, sim.Positions{})
+		if err != nil || in.Status != results.OK {
+			t.Fatal(err, in)
+		}
+		found := false
+		for _, r := range e.Flows() {
+			if r.Name == "R1" {
+				found = true
+				if math.Abs(r.KW-float64(300+step)) > 0.05 || math.Abs(r.KVAR-120) > 0.05 {
+					t.Errorf("step %d: the regulator carries %.4f kW and %.4f kvar, measured %d and 120", step, r.KW, r.KVAR, 300+step)
+				}
+			}
+		}
+		if step == 0 && math.Abs(real(in.State.Load[0])/1000-55) > 1e-6 { // 0.55 of it at midnight
+			t.Errorf("the load before it takes %.6f kW", real(in.State.Load[0])/1000)
+		}
+		if !found {
+			t.Fatal("no flow of R1")
+		}
+		if r := real(in.State.Load[3]) / real(in.State.Load[1]); math.Abs(r-1.2) > 1e-9 {
+			t.Errorf("120 kVA take %.9f times what 100 kVA take", r)
+		}
+	}
+}

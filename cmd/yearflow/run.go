@@ -217,6 +217,7 @@ func (c *console) tellRun(e *sim.Engine, outcome *results.Outcome, t *tally, dir
 	if len(outcome.Hunting) > 0 {
 		fmt.Fprintf(c.errs, "warning: %s of hunting; see operations.csv and duty.csv\n", count(len(outcome.Hunting), "instant"))
 	}
+	c.tellAllocation(folder, dir)
 	if t.first != nil {
 		fmt.Fprintf(c.errs, "%s low, %s without a solution; the first at %s, %s (%s)\n", count(t.low, "step"), count(t.unsolved, "step"),
 			stamp(e, t.first.Start), t.first.Where, t.first.Status)

@@ -8,5 +8,5 @@
 //
 // What is read and not modelled yet is refused with its place: centre-tapped services,
 // banks of unequal units, batteries, chargers, inverter
-// functions, output from weather and loads by connected kVA.
+// functions and output from weather.
 package feeder
