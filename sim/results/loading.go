@@ -182,6 +182,11 @@ func (m *Meter) transformerFlow(i int) *endFlow {
 	return m.newEndFlow(t.Name, t.From, i, network.Transformer, network.TransformerNoLoad)
 }
 
+func (m *Meter) regulatorFlow(i int) *endFlow {
+	r := &m.net.Model.Regulators[i]
+	return m.newEndFlow(r.Name, r.From, i, network.Regulator, network.RegulatorNoLoad)
+}
+
 // flowOf finds the element of a name that flows can be logged of: a section, a
 // transformer, a regulator or a switch, in this order.
 func (m *Meter) flowOf(name string) (*endFlow, bool) {
@@ -198,7 +203,7 @@ func (m *Meter) flowOf(name string) (*endFlow, bool) {
 	}
 	for i := range model.Regulators {
 		if r := &model.Regulators[i]; r.Name == name {
-			return m.newEndFlow(name, r.From, i, network.Regulator, network.RegulatorNoLoad), true
+			return m.regulatorFlow(i), true
 		}
 	}
 	for i := range model.Switches {
