@@ -8,7 +8,6 @@ import (
 	"os"
 	"path/filepath"
 	"sync"
-	"time"
 
 	"github.com/spf13/cobra"
 
@@ -111,9 +110,7 @@ func (c *console) runCases(ctx context.Context, place study.Place, names []strin
 	}
 	bar := newSharedProgress(c.errs, len(studies)*studies[0].Settings.Period.Steps())
 	settings := study.Settings{Again: o.again, Watch: bar.watch}
-	if o.figures {
-		settings.Figures = func(dir string) ([]string, results.WallTime, error) { return figuresInto(dir) }
-	}
+	settings.Figures = func(dir string) ([]string, results.WallTime, error) { return picturesInto(dir, o.figures) }
 	cases, err := study.Run(ctx, place, studies, settings)
 	bar.end()
 	var faults tables.Faults
@@ -134,16 +131,6 @@ func (c *console) runCases(ctx context.Context, place study.Place, names []strin
 		fmt.Fprintf(c.errs, "case %s: %s, %s\n", x.Name, x.Dir, how)
 	}
 	return cases, left, nil
-}
-
-func figuresInto(dir string) ([]string, results.WallTime, error) {
-	start := time.Now()
-	figures, err := drawInto(dir)
-	var names []string
-	for _, f := range figures {
-		names = append(names, "figures/"+f.Name)
-	}
-	return names, results.WallTime{Part: "figures", Seconds: time.Since(start).Seconds()}, err
 }
 
 // drawDocument writes a document and its figures into the folder that its tables are in.
@@ -255,7 +242,9 @@ func newSharedProgress(w io.Writer, total int) *sharedProgress {
 	return &sharedProgress{bar: newProgress(w, total)}
 }
 
-func (p *sharedProgress) watch(string, int) sim.Recorder { return &progressShare{of: p} }
+func (p *sharedProgress) watch(*study.Case, *sim.Engine) []sim.Recorder {
+	return []sim.Recorder{&progressShare{of: p}}
+}
 
 func (p *sharedProgress) end() {
 	p.mu.Lock()

@@ -17,7 +17,7 @@ import (
 
 func reportCommand(c *console) *cobra.Command {
 	return &cobra.Command{
-		Use: "report RESULTS", Short: "draws the figures again from a results folder alone",
+		Use: "report RESULTS", Short: "draws the figures and the report again from a results folder alone",
 		Example: "  yearflow run\n  yearflow report results/base",
 		Args: func(_ *cobra.Command, args []string) error {
 			if len(args) != 1 {
@@ -29,7 +29,7 @@ func reportCommand(c *console) *cobra.Command {
 	}
 }
 
-// report draws beside the old figures and exchanges them when all are there.
+// report draws beside the old figures and report and exchanges them when all are there.
 func (c *console) report(dir string) error {
 	if info, err := os.Stat(dir); err != nil || !info.IsDir() {
 		return wrongf("there is no results folder %q", dir)
@@ -49,20 +49,28 @@ func (c *console) report(dir string) error {
 		return machineError{err}
 	}
 	defer os.RemoveAll(tmp)
-	figures, err := drawTo(dir, tmp)
+	figures, err := picture(os.DirFS(dir), tmp, true)
 	if err != nil {
 		return machineOr(err)
 	}
-	final := filepath.Join(dir, "figures")
-	if err := os.MkdirAll(final, 0o755); err != nil {
+	if err := os.MkdirAll(filepath.Join(dir, "figures"), 0o755); err != nil {
 		return machineError{err}
 	}
+	names := []string{reportFile}
 	for _, f := range figures {
-		if err := os.Rename(filepath.Join(tmp, f.Name), filepath.Join(final, f.Name)); err != nil {
+		names = append(names, "figures/"+f.Name)
+	}
+	for _, name := range names {
+		if err := os.Rename(filepath.Join(tmp, name), filepath.Join(dir, name)); err != nil {
 			return machineError{err}
 		}
 	}
+	// Drawn by another version, or after a run that drew none: they are other files now.
+	if err := results.Rehash(dir, names); err != nil {
+		return machineOr(err)
+	}
 	printFigures(c, figures)
+	c.printf("report: %s\n", filepath.Join(dir, reportFile))
 	return nil
 }
 

@@ -13,7 +13,6 @@ import (
 
 	"github.com/spf13/cobra"
 
-	"yearflow/plots"
 	"yearflow/sim"
 	"yearflow/sim/results"
 )
@@ -30,7 +29,7 @@ type runOptions struct {
 func runCommand(c *console) *cobra.Command {
 	var o runOptions
 	cmd := &cobra.Command{
-		Use: "run [STUDY] [--case NAME] [--out DIR]", Short: "the period: logs, statistics and figures",
+		Use: "run [STUDY] [--case NAME] [--out DIR]", Short: "the period: logs, statistics, figures and report",
 		Long: `Runs the study's period and writes a results folder: results/<case> in the study's
 folder, or --out. The folder is exchanged for the old one when everything is written,
 so it is whole or absent.
@@ -45,7 +44,7 @@ violated; 2 the input is wrong; 3 the machine failed.`,
 	f.StringVar(&o.caseName, "case", "", "the `NAME` of a case (default: the study as it stands)")
 	f.StringVar(&o.out, "out", "", "the results folder `DIR` (default: results/<case> in the study's folder)")
 	f.BoolVar(&o.strict, "strict", false, "exit status 1 where a voltage limit was violated")
-	f.BoolVar(&o.noFigures, "no-figures", false, "draw no figures (\"yearflow report\" draws them later)")
+	f.BoolVar(&o.noFigures, "no-figures", false, "draw no figures, and a report without them (\"yearflow report\" draws them later)")
 	f.StringVar(&o.csv, "csv", "", "write the summary to this `FILE` too; - for standard output")
 	f.StringVar(&o.json, "json", "", "write it to this `FILE` as JSON; - for standard output")
 	return cmd
@@ -102,17 +101,8 @@ func (c *console) run(ctx context.Context, args []string, o *runOptions) error {
 	ran := time.Now()
 	info := results.RunInfo{Version: version, Inputs: inputs, Wall: []results.WallTime{
 		{Part: "reading", Seconds: read.Sub(began).Seconds()}, {Part: "run", Seconds: ran.Sub(read).Seconds()}}}
-	if !o.noFigures {
-		info.Figures = func(dir string) ([]string, results.WallTime, error) {
-			start := time.Now()
-			figures, err := drawInto(dir)
-			var names []string
-			for _, f := range figures {
-				names = append(names, "figures/"+f.Name)
-			}
-			return names, results.WallTime{Part: "figures", Seconds: time.Since(start).Seconds()}, err
-		}
-	}
+	info.Warnings = e.Warnings
+	info.Figures = func(dir string) ([]string, results.WallTime, error) { return picturesInto(dir, !o.noFigures) }
 	if err := w.Finish(outcome, info); err != nil {
 		return machineOr(err)
 	}
@@ -143,22 +133,6 @@ func machineOr(err error) error {
 		return machineError{err}
 	}
 	return err
-}
-
-// drawInto draws all figures of a results folder into its figures folder.
-func drawInto(dir string) ([]plots.Figure, error) {
-	figures := filepath.Join(dir, "figures")
-	if err := os.MkdirAll(figures, 0o755); err != nil {
-		return nil, err
-	}
-	return drawTo(dir, figures)
-}
-
-// drawTo draws the figures of the results in dir into another folder.
-func drawTo(dir, figures string) ([]plots.Figure, error) {
-	return plots.Draw(os.DirFS(dir), func(name string) (io.WriteCloser, error) {
-		return os.Create(filepath.Join(figures, name))
-	}, plots.Options{})
 }
 
 // tally counts steps that are not ok.
@@ -250,13 +224,13 @@ func unitForPeople(unit string) string {
 	return ""
 }
 
-// tellNext says where the figures are and how to follow the worst voltage down.
+// tellNext says where the report and the figures are and how to follow the worst voltage down.
 func (c *console) tellNext(out io.Writer, folder *results.Folder, dir string, o *runOptions) {
 	said := map[string]string{}
 	for _, r := range folder.Summary {
 		said[r.Quantity] = r.Value
 	}
-	fmt.Fprintln(out)
+	fmt.Fprintf(out, "\nReport: %s. ", filepath.Join(dir, reportFile))
 	if !o.noFigures {
 		fmt.Fprintf(out, "Figures: %s. ", filepath.Join(dir, "figures"))
 	}

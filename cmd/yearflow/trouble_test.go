@@ -4,6 +4,7 @@ import (
 	"bytes"
 	"context"
 	"crypto/sha256"
+	"encoding/hex"
 	"errors"
 	"fmt"
 	"io/fs"
@@ -239,12 +240,28 @@ func TestReport(t *testing.T) {
 	if _, err := os.Stat("results/base/figures"); err == nil {
 		t.Error("there are figures in spite of --no-figures")
 	}
+	contains(t, read(t, "results/base/report.html"), "This report has no figures", "never met a measurement")
 	if err := os.Rename("results/base", "elsewhere"); err != nil {
 		t.Fatal(err)
 	}
 	out, _ := must(t, exitDone, "report", "elsewhere")
 	contains(t, out, "figures/map.png: ")
 	first := read(t, "elsewhere/figures/losses.png")
+	page, record := read(t, "elsewhere/report.html"), read(t, "elsewhere/run.json")
+	contains(t, page, "data:image/png;base64,", "Losses by kind and")
+	sum := sha256.Sum256([]byte(page))
+	contains(t, record, `"report.html": "`+hex.EncodeToString(sum[:])+`"`, `"figures/losses.png": "`)
+	must(t, exitDone, "report", "elsewhere")
+	if read(t, "elsewhere/report.html") != page || read(t, "elsewhere/run.json") != record {
+		t.Error("a second report is another one")
+	}
+	must(t, exitDone, "run")
+	if read(t, "results/base/report.html") != page || read(t, "results/base/run.json") != record {
+		t.Error("the report of run with figures is another than that of report")
+	}
+	if err := os.RemoveAll("elsewhere/figures"); err != nil {
+		t.Fatal(err)
+	}
 	must(t, exitDone, "report", "elsewhere")
 	if read(t, "elsewhere/figures/losses.png") != first {
 		t.Error("a second report draws another picture")

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"io/fs"
 	"math"
+	"strings"
 	"time"
 
 	"yearflow/sim/tables"
@@ -156,13 +157,16 @@ func ReadFolder(fsys fs.FS) (*Folder, error) {
 }
 
 // allThere checks that every file of the run is in the folder, also those that are
-// not read here.
+// not read here. Figures and the report are drawn from the others and may be gone.
 func (f *Folder) allThere(faults *tables.Faults) {
 	named := make(map[string]bool, len(*faults))
 	for _, x := range *faults {
 		named[x.Pos.File] = true
 	}
 	for _, file := range f.Run.Files {
+		if strings.HasPrefix(file, "figures/") || strings.HasSuffix(file, ".html") {
+			continue
+		}
 		if _, err := fs.Stat(f.files, file); err != nil && !named[file] {
 			*faults = append(*faults, missingFile(file, err))
 		}
