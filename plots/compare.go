@@ -7,6 +7,7 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"time"
 
 	"yearflow/sim/results"
 )
@@ -91,8 +92,20 @@ func (s *severalRuns) picture(p *page, f Figure) (Block, error) {
 	return Picture{PNG: data, Title: f.Title, Alt: f.Alt, Caption: Plain(f.Finding), File: "figures/" + f.Name, Inside: true}, nil
 }
 
+// period says in words when and in which steps the runs were.
+func (s *severalRuns) period() string {
+	start, err1 := time.Parse(time.RFC3339, s.record.Start)
+	end, err2 := time.Parse(time.RFC3339, s.record.End)
+	zone, err3 := time.LoadLocation(s.record.Zone)
+	if err1 != nil || err2 != nil || err3 != nil {
+		return s.record.Period
+	}
+	of := span{start: start.In(zone), end: end.In(zone)}
+	return of.spoken() + " · steps of " + stepWords(time.Duration(s.record.Step*float64(time.Second))) + " · " + s.record.Zone
+}
+
 func (s *severalRuns) foot() foot {
-	f := foot{lines: [2]string{s.record.Title, s.record.Period}}
+	f := foot{lines: [2]string{s.record.Title, s.period()}}
 	if s.record.Demo {
 		f.tag = "invented demonstration study"
 	}
@@ -123,7 +136,7 @@ func CompareDocument(dir string) (*Document, error) {
 		return nil, fmt.Errorf("compare.csv has no case: the folder is of another version; run compare again")
 	}
 	c.names = c.compare.Header[3:]
-	d := &Document{Kind: "Settings evaluation", Title: s.record.Title, Subtitle: s.record.Period, Demo: s.record.Demo,
+	d := &Document{Kind: "Settings evaluation", Title: s.record.Title, Subtitle: s.period(), Demo: s.record.Demo,
 		Case: "base and " + count(len(c.names)-1, "case", "cases")}
 	if d.Lead, err = c.lead(); err != nil {
 		return nil, err
@@ -250,7 +263,7 @@ func (c *compareDocument) againstSection() Section {
 		case buys+costs == 0:
 			s.Blocks = append(s.Blocks, Paragraph{Plain("Case " + n + " differs from the base in none of these.")})
 		default:
-			s.Blocks = append(s.Blocks, Paragraph{Plain(fmt.Sprintf("Case %s is better than the base in %s and worse in %s.", n, count(buys, "quantity", "quantities"), count(costs, "quantity", "quantities")))})
+			s.Blocks = append(s.Blocks, Paragraph{Plain(fmt.Sprintf("Case %s is better than the base in %s and worse in %s.", n, quantities(buys), quantities(costs)))})
 		}
 		s.Blocks = append(s.Blocks, t)
 	}
@@ -258,6 +271,13 @@ func (c *compareDocument) againstSection() Section {
 		s.Blocks = append(s.Blocks, Paragraph{Plain("There is no case.")})
 	}
 	return s
+}
+
+func quantities(n int) string {
+	if n == 0 {
+		return "no quantity"
+	}
+	return count(n, "quantity", "quantities")
 }
 
 func (c *compareDocument) settingsSection() Section {
@@ -326,6 +346,9 @@ func (c *compareDocument) groupSection(group, heading string) Section {
 
 func (c *compareDocument) sheetSections() []Section {
 	var out []Section
+	if len(c.names) > 1 && len(c.sheets.Rows) == 0 {
+		return []Section{{Heading: "Settings sheets", Blocks: []Block{Paragraph{Plain("No undominated case changes the control of a regulator or a capacitor, so there is no sheet to enter.")}}}}
+	}
 	for i := range c.sheets.Rows {
 		name, file := c.sheets.Cell(i, "case"), c.sheets.Cell(i, "file")
 		l := c.ledger(file, 3)

@@ -29,7 +29,7 @@ func (c *compareDocument) bars(st *style) (*page, Figure) {
 		}
 		for _, n := range c.names {
 			b.values = append(b.values, c.number(q, n))
-			b.shown = append(b.shown, c.at(q, n).Show)
+			b.shown = append(b.shown, c.at(q, n).Show+changeWords(b.values))
 		}
 		panels = append(panels, b)
 	}
@@ -39,6 +39,24 @@ func (c *compareDocument) bars(st *style) (*page, Figure) {
 	f := Figure{Name: "compare.png", Title: "What the cases change", Finding: c.barsFinding(panels)}
 	f.Alt = "Bars of " + fmt.Sprint(len(panels)) + " quantities for the base and each case. " + f.Finding
 	return st.barPage(f, c.foot(), c.names, panels), f
+}
+
+// changeWords is how the last value differs from the first, ", +1.2 %"; nothing where it
+// does not.
+func changeWords(v []float64) string {
+	base, now := v[0], v[len(v)-1]
+	if base == 0 || base == now || math.IsNaN(base+now) {
+		return ""
+	}
+	return ", " + signedPercent(100*(now-base)/math.Abs(base))
+}
+
+// signedPercent is a change in per cent with its sign.
+func signedPercent(p float64) string {
+	if p < 0 {
+		return "−" + percent(-p)
+	}
+	return "+" + percent(p)
 }
 
 // barsFinding names the case that changes each quantity most.
@@ -55,11 +73,7 @@ func (c *compareDocument) barsFinding(panels []barPanel) string {
 			continue
 		}
 		name, _, _ := strings.Cut(b.title, " [")
-		sign := "+"
-		if most < 0 {
-			sign = "−"
-		}
-		parts = append(parts, fmt.Sprintf("%s %s%s (%s)", name, sign, percent(100*math.Abs(most)/math.Abs(b.values[0])), c.names[best]))
+		parts = append(parts, fmt.Sprintf("%s %s (%s)", name, signedPercent(100*most/math.Abs(b.values[0])), c.names[best]))
 	}
 	if len(parts) == 0 {
 		return "No case changes any of these quantities."

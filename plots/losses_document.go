@@ -31,7 +31,7 @@ func LossesDocument(dir string) (*Document, error) {
 	if s.err != nil {
 		return nil, s.err
 	}
-	d := &Document{Kind: "Annual loss estimate", Title: s.record.Title, Subtitle: s.record.Period, Demo: s.record.Demo, Case: "base"}
+	d := &Document{Kind: "Annual loss estimate", Title: s.record.Title, Subtitle: s.period(), Demo: s.record.Demo, Case: "base"}
 	if c := s.said("case"); c != "" {
 		d.Case = "base and " + c
 	}
@@ -80,7 +80,7 @@ func (l *lossesDocument) lead() ([]Block, error) {
 	if row := l.worth.Row("cost of losses a year"); row >= 0 {
 		text, values := "That costs {} a year", []Value{l.worth.Value(row, "value")}
 		if pw := l.worth.Row("present worth of the losses"); pw >= 0 {
-			text += "; its present worth over {} years at {} a year is {}"
+			text += "; its present worth over {} at {} a year is {}"
 			values = append(values, l.worth.Value(l.worth.Row("years"), "value"), l.worth.Value(l.worth.Row("rate a year"), "value"), l.worth.Value(pw, "value"))
 		}
 		out = append(out, Finding{Text: Say(text+".", values...)})

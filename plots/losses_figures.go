@@ -44,7 +44,7 @@ func (l *lossesDocument) monthFigure(st *style) (*page, Figure) {
 			percent(numberIn(l.month.Cell(most, "share of energy supplied [%]"))))
 	}
 	f.Alt = "Stacked bars of the energy lost in each month, by kind of loss. " + f.Finding
-	p := st.newPage(250, f.Title, f.Finding, l.foot())
+	p := st.newPage(250+keyLine, f.Title, f.Finding, l.foot())
 	divide, unit := 1.0, "kWh"
 	if top >= 5000 {
 		divide, unit = 1000, "MWh"
@@ -53,7 +53,7 @@ func (l *lossesDocument) monthFigure(st *style) (*page, Figure) {
 		top = 1
 	}
 	_, hi := roundRange(0, top/divide, 5)
-	a := p.panel(vg.Rectangle{Min: vg.Point{X: p.body.Min.X + 44, Y: p.body.Min.Y + 42}, Max: vg.Point{X: p.body.Max.X - 8, Y: p.body.Max.Y - 23}}, 0, float64(max(1, n)), 0, hi)
+	a := p.panel(vg.Rectangle{Min: vg.Point{X: p.body.Min.X + 44, Y: p.body.Min.Y + 42 + keyLine}, Max: vg.Point{X: p.body.Max.X - 8, Y: p.body.Max.Y - 23}}, 0, float64(max(1, n)), 0, hi)
 	a.yAxis(linear(0, hi, 5), "Energy lost ["+unit+"]")
 	w := min(0.72, 60/float64(a.width())*float64(max(1, n)))
 	var ticks []tick

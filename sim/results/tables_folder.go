@@ -36,6 +36,9 @@ type TablesRecord struct {
 	Demo    bool           `json:"demo"`
 	Zone    string         `json:"zone"`
 	Period  string         `json:"period"`
+	Start   string         `json:"start"`
+	End     string         `json:"end"`
+	Step    float64        `json:"step_seconds"`
 	Cases   []TablesCase   `json:"cases"`
 	Said    map[string]any `json:"said"` // what the document needs besides its tables
 	// Files are the SHA-256 of the others, by name.

@@ -89,7 +89,7 @@ func Choose(p Place, names []string) (studies []*feeder.Study, left []LeftOut, e
 		case err != nil:
 			why = "its input is wrong: " + firstLine(err)
 		case !st.Settings.Period.Same(base.Settings.Period):
-			why = fmt.Sprintf("its period or step is another: %s, not %s", st.Settings.Period, base.Settings.Period)
+			why = fmt.Sprintf("its period or step is another: %s, that of the base %s", spoken(st), spoken(base))
 		}
 		if why == "" {
 			studies = append(studies, st)
@@ -101,6 +101,17 @@ func Choose(p Place, names []string) (studies []*feeder.Study, left []LeftOut, e
 		left = append(left, LeftOut{name, why})
 	}
 	return studies, left, nil
+}
+
+// spoken is a study's period in a sentence.
+func spoken(st *feeder.Study) string {
+	p := st.Settings.Period
+	day := func(ns int64) string {
+		return strings.TrimSuffix(time.Unix(0, ns).In(p.Zone).Format("2006-01-02 15:04"), " 00:00")
+	}
+	step := time.Duration(p.Step).String()
+	step = strings.TrimSuffix(strings.TrimSuffix(step, "0s"), "0m")
+	return fmt.Sprintf("%s to %s in steps of %s", day(p.Start), day(p.End), step)
 }
 
 func firstLine(err error) string {

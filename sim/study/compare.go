@@ -6,6 +6,7 @@ import (
 	"path/filepath"
 	"slices"
 	"strings"
+	"time"
 
 	"yearflow/sim/feeder"
 	"yearflow/sim/results"
@@ -17,8 +18,6 @@ import (
 type Comparison struct {
 	Title      string
 	Currency   string
-	Period     string
-	Zone       string
 	Cases      []*Case
 	LeftOut    []LeftOut
 	Weights    []Weight
@@ -71,10 +70,7 @@ func defaultLife() Life { return Life{TapChanger: 200_000, LoadTapChanger: 50_00
 func Compare(cases []*Case, left []LeftOut) (*Comparison, error) {
 	base := cases[0].Study
 	set := &base.Settings
-	c := &Comparison{Title: base.Title, Currency: set.Prices.Currency, Period: set.Period.String(), Cases: cases, LeftOut: left, Life: defaultLife()}
-	if set.Period.Zone != nil {
-		c.Zone = set.Period.Zone.String()
-	}
+	c := &Comparison{Title: base.Title, Currency: set.Prices.Currency, Cases: cases, LeftOut: left, Life: defaultLife()}
 	var faults tables.Faults
 	c.life(base, &faults)
 	c.Unpriced = unpriced(&set.Prices)
@@ -316,11 +312,10 @@ type NamedTable struct {
 // Write writes the folder of the comparison: its tables, what draw adds to them
 // (compare.html, figures), and compare.json. draw may be nil.
 func (c *Comparison) Write(dir string, p Place, draw func(dir string) error) error {
-	return writeTables(dir, "compare", c.Tables(), results.TablesRecord{Version: p.Version, Title: c.Title, Demo: p.Demo, Zone: c.Zone,
-		Period: c.Period, Cases: record(c.Cases), Said: map[string]any{
-			"currency": c.Currency, "unpriced": strings.Join(c.Unpriced, ", "), "life": lifeSource,
-			"limits": limitsText(&c.Cases[0].Study.Settings.Limits),
-		}}, draw)
+	return writeTables(dir, "compare", c.Tables(), p, c.Cases, map[string]any{
+		"currency": c.Currency, "unpriced": strings.Join(c.Unpriced, ", "), "life": lifeSource,
+		"limits": limitsText(&c.Cases[0].Study.Settings.Limits),
+	}, draw)
 }
 
 func limitsText(l *feeder.Limits) string {
@@ -335,8 +330,22 @@ func limitsText(l *feeder.Limits) string {
 	return fmt.Sprintf("%s; %s; allowance from primary to meter %g V", of, judged, l.Allowance)
 }
 
+// tablesRecord says what a document of cases, the base first, was made from.
+func tablesRecord(p Place, cases []*Case, said map[string]any) results.TablesRecord {
+	st := cases[0].Study
+	period := st.Settings.Period
+	return results.TablesRecord{Version: p.Version, Title: st.Title, Demo: p.Demo, Zone: period.Zone.String(), Period: period.String(),
+		Start: stampOf(st, period.Start), End: stampOf(st, period.End), Step: float64(period.Step) / 1e9, Cases: record(cases), Said: said}
+}
+
+// stampOf writes an instant in the study's zone.
+func stampOf(st *feeder.Study, ns int64) string {
+	return time.Unix(0, ns).In(st.Settings.Period.Zone).Format(time.RFC3339)
+}
+
 // writeTables writes a folder of tables whole or not at all.
-func writeTables(dir, kind string, files []NamedTable, r results.TablesRecord, draw func(dir string) error) error {
+func writeTables(dir, kind string, files []NamedTable, p Place, cases []*Case, said map[string]any, draw func(dir string) error) error {
+	r := tablesRecord(p, cases, said)
 	f, err := results.CreateTables(dir, kind)
 	if err != nil {
 		return err

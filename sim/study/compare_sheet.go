@@ -3,6 +3,7 @@ package study
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strconv"
 	"strings"
 
@@ -274,6 +275,12 @@ func (c *Comparison) cautions() {
 		if k > 0 && !c.differs(k) {
 			add(x.Name, "This case changes nothing: no cell of its tables and no key differs from the base.")
 		}
+		if t := c.serves(k); t != "" {
+			add(x.Name, "The case changes what the feeder serves or how it is built (%s): what it buys and costs is not due to settings alone.", t)
+		}
+		if k > 0 && c.differs(k) && !slices.ContainsFunc(c.Sheets, func(s Sheet) bool { return s.Case == x.Name }) {
+			add(x.Name, "No settings sheet: the case is dominated or not ranked, or changes no control of a regulator or capacitor; all that it changes stands in settings.csv.")
+		}
 		low, unsolved := x.number("low steps"), x.number("unsolved steps")
 		if low+unsolved > 0 {
 			add(x.Name, "%g low and %g unsolved steps: nothing of them is in any sum, so that its energies and hours are of a shorter time.", low, unsolved)
@@ -291,6 +298,25 @@ func (c *Comparison) cautions() {
 			add(x.Name, "%s", w.Error())
 		}
 	}
+}
+
+// serves lists the tables that a case changes and that are no settings of controls.
+func (c *Comparison) serves(k int) string {
+	var out []string
+	for _, s := range c.Settings {
+		switch s.Table {
+		case "regulator-settings", "capacitor-settings", "inverter-functions":
+			continue
+		}
+		name := s.Table
+		if name == "study.toml" {
+			name = s.Key + " of study.toml"
+		}
+		if s.Cells[k] != s.Cells[0] && !slices.Contains(out, name) {
+			out = append(out, name)
+		}
+	}
+	return strings.Join(out, ", ")
 }
 
 // differs tells whether a case differs from the base in any cell.

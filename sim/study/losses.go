@@ -7,7 +7,6 @@ import (
 	"math"
 	"slices"
 	"strings"
-	"time"
 
 	"yearflow/sim"
 	"yearflow/sim/feeder"
@@ -26,11 +25,11 @@ type LossSettings struct {
 
 // LossEstimate is the annual loss estimate of a study.
 type LossEstimate struct {
-	Title, Currency, Period, Zone string
-	Cases                         []*Case // the base, and the case where one is named
-	Marginal                      *Marginal
-	Cautions                      []Caution
-	Unpriced                      []string
+	Title, Currency string
+	Cases           []*Case // the base, and the case where one is named
+	Marginal        *Marginal
+	Cautions        []Caution
+	Unpriced        []string
 
 	meters []*lossMeter // by Cases
 	prices *feeder.Prices
@@ -65,7 +64,7 @@ func Losses(ctx context.Context, p Place, s LossSettings) (*LossEstimate, error)
 		return nil, err
 	}
 	set := &studies[0].Settings
-	l.prices, l.Currency, l.Period, l.Zone = &set.Prices, set.Prices.Currency, set.Period.String(), set.Period.Zone.String()
+	l.prices, l.Currency = &set.Prices, set.Prices.Currency
 	l.Unpriced = unpriced(&set.Prices)
 	l.years = periodYears(set.Period)
 	l.scale = 1 / l.years
@@ -155,7 +154,7 @@ func (l *LossEstimate) stamp(ns int64) string {
 	if ns == 0 {
 		return ""
 	}
-	return time.Unix(0, ns).In(l.Cases[0].Study.Settings.Period.Zone).Format(time.RFC3339)
+	return stampOf(l.Cases[0].Study, ns)
 }
 
 func (l *LossEstimate) byMonth() NamedTable {
@@ -306,8 +305,7 @@ func (l *LossEstimate) Write(dir string, p Place, draw func(dir string) error) e
 	if l.Marginal != nil {
 		said["marginal"] = l.Marginal.how()
 	}
-	return writeTables(dir, "losses", l.Tables(), results.TablesRecord{Version: p.Version, Title: l.Title, Demo: p.Demo, Zone: l.Zone,
-		Period: l.Period, Cases: record(l.Cases), Said: said}, draw)
+	return writeTables(dir, "losses", l.Tables(), p, l.Cases, said, draw)
 }
 
 // cautions gathers what a reader must know of the estimate.
