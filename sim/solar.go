@@ -13,6 +13,17 @@ import (
 type sky struct {
 	weather *profiles.Weather
 	light   *profiles.Sunlight
+	model   *feeder.Model
+}
+
+// assume tells an assumption once, at the first generator that it is made for.
+func (s *sky) assume(at tables.Pos, what, value string) {
+	for i := range s.model.Assumed {
+		if s.model.Assumed[i].What == what {
+			return
+		}
+	}
+	s.model.Assumed = append(s.model.Assumed, feeder.Assumption{Pos: at, What: what, Value: value})
 }
 
 // newSky reads the study's weather where a generator needs it. Without a file the
@@ -24,7 +35,7 @@ func newSky(st *feeder.Study, axis profiles.Axis, faults *tables.Faults, odd *ta
 	}
 	w := st.Settings.Weather
 	site, known := siteOf(st)
-	s := &sky{}
+	s := &sky{model: st.Model}
 	if w.File == "" {
 		if !known {
 			faults.Add(*at, "output from weather needs a site: give latitude and longitude in [weather] of study.toml, or longitude and latitude in nodes.csv")
@@ -102,6 +113,16 @@ func (s *sky) series(g *feeder.Generator, faults *tables.Faults) *profiles.Serie
 	a.Losses = 100 * or(g.Solar.Losses, a.Losses/100)
 	a.TempCoefficient = or(g.Solar.Coefficient, a.TempCoefficient)
 	a.InverterEfficiency = 100 * or(g.Solar.Efficiency, a.InverterEfficiency/100)
+	for _, blank := range []struct {
+		what  string
+		given float64
+		value float64
+	}{{"tilt [deg]", g.Solar.Tilt, a.Tilt}, {"azimuth [deg]", g.Solar.Azimuth, a.Azimuth}, {"losses [%]", g.Solar.Losses, a.Losses},
+		{"temperature coefficient [%/degC]", g.Solar.Coefficient, a.TempCoefficient}, {"inverter efficiency [%]", g.Solar.Efficiency, a.InverterEfficiency}} {
+		if feeder.Unknown(blank.given) {
+			s.assume(g.At, "solar generators: "+blank.what, fmt.Sprintf("%.6g (common practice)", blank.value))
+		}
+	}
 	bad := false
 	for _, f := range a.Check() {
 		faults.Add(g.At, "generator %q: %s: %s", g.Name, f.Field, f.Text)

@@ -94,3 +94,22 @@ func TestSolarFromWeatherFile(t *testing.T) {
 		t.Errorf("the weather is not among the inputs: %v", files)
 	}
 }
+
+// What is assumed of an array is told once, at the first generator.
+func TestSolarAssumptions(t *testing.T) {
+	f := sunny("[weather]\nlatitude = -40\nlongitude = 0\n", nil)
+	f["feeder/generators.csv"] = text("generator,node,phases,kind,rating [kVA],dc [kW]\ng,end,ABC,solar,400,500\nh,end,ABC,solar,400,500\n")
+	e := ready(t, f)
+	told := map[string]string{}
+	for _, a := range e.Study.Model.Assumed {
+		if _, twice := told[a.What]; twice {
+			t.Errorf("%q is told twice", a.What)
+		}
+		told[a.What] = a.Value
+	}
+	for what, want := range map[string]string{"tilt [deg]": "20 ", "azimuth [deg]": "0 ", "losses [%]": "14 ", "inverter efficiency [%]": "96 "} {
+		if got := told["solar generators: "+what]; !strings.HasPrefix(got, want) {
+			t.Errorf("%s: %q, want %q", what, got, want)
+		}
+	}
+}

@@ -48,12 +48,42 @@ func (b *builder) functions() {
 				unread(c, []string{"p1", "p2", "p3"}[k], "active power-reactive power")
 			}
 		}
+		b.assumeCurves(r, &f)
 		if !f.VoltWatt {
 			for k, c := range []tables.Number{r.WattV1, r.WattV2, r.WattP2, r.WattTime} {
 				unread(c, []string{"active v1", "active v2", "active p2", "active response time"}[k], "voltage-active power, which is off")
 			}
 		}
 		b.model.Functions = append(b.model.Functions, f)
+	}
+}
+
+// assumeCurves tells which points and times are the defaults of the standard.
+func (b *builder) assumeCurves(r *functionRow, f *InverterFunction) {
+	missing := func(xs ...[]float64) bool {
+		for _, x := range xs {
+			for _, v := range x {
+				if Unknown(v) {
+					return true
+				}
+			}
+		}
+		return false
+	}
+	tell := func(what, table string) {
+		b.assumeMany(r.Row.At, "inverter-functions: "+what, "those of category "+r.Category.Value+" (IEEE Std 1547-2018, "+table+")")
+	}
+	if f.Reactive == "voltage-reactive power" && missing(f.V[:], f.Q[:]) {
+		tell("points of voltage-reactive power", "Table 8")
+	}
+	if f.Reactive == "active power-reactive power" && missing(f.P[:], f.Q[:3]) {
+		tell("points of active power-reactive power", "Table 9")
+	}
+	if f.VoltWatt && missing(f.VoltWattV[:], []float64{f.VoltWattP2}) {
+		tell("points of voltage-active power", "Table 10")
+	}
+	if !r.Response.Given && f.Reactive == "voltage-reactive power" {
+		tell("open loop response time of voltage-reactive power", "Table 8: A 10 s, B 5 s")
 	}
 }
 
