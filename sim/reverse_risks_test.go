@@ -71,4 +71,12 @@ func TestReverseRisksByPhase(t *testing.T) {
 	if len(got) != 1 || !strings.Contains(got[0].Text, `regulator "R" C:`) || !strings.Contains(got[0].Text, "is 30 kW, load 9 kW") {
 		t.Errorf("got %v", got)
 	}
+	// An inverter with a function, whose phases act as one, counts once.
+	smart := f("60", "g,Y,ABC,solar,100,90\n")
+	smart["feeder/generators.csv"] = text(strings.Replace(strings.Replace(string(smart["feeder/generators.csv"].Data), "real [kW]\n", "real [kW],function\n", 1), "100,90\n", "100,90,vv\n", 1))
+	smart["feeder/inverter-functions.csv"] = text("function,reactive\nvv,voltage-reactive power\n")
+	got = prepare(t, smart, "", sim.Options{}).ReverseRisks()
+	if len(got) != 1 || !strings.Contains(got[0].Text, "is 30 kW, load 9 kW") {
+		t.Errorf("with a function: got %v", got)
+	}
 }
