@@ -231,6 +231,9 @@ func (d *Document) view(blocks []Block, figure *int) ([]blockView, error) {
 		v := blockView{Name: b.blockName(), Block: b, Trace: d.Trace, From: strings.Join(sourcesOf(b), ", ")}
 		switch x := b.(type) {
 		case Table:
+			if len(x.Rows) == 0 {
+				continue // a head without rows says nothing
+			}
 			for i, r := range x.Rows {
 				if len(r) != len(x.Columns) {
 					return nil, fmt.Errorf("table %q: row %d has %d values for %d columns", x.Caption, i+1, len(r), len(x.Columns))

@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"io/fs"
 	"slices"
+	"strconv"
 	"strings"
 
 	"yearflow/sim/tables"
@@ -94,6 +95,26 @@ func (l *Ledger) Name(row int, column string) Value {
 	}
 	cell := l.Rows[row][c]
 	return Value{Show: cell, Exact: cell, Source: SourceOf(l.File, l.Header[c], l.Rows[row][:l.Keys]...)}
+}
+
+// Time returns a cell that is a time, also where it is a key.
+func (l *Ledger) Time(row int, column string) Value {
+	v := l.Name(row, column)
+	if v.Source == "" {
+		return v
+	}
+	return Number(v.Exact, "time", v.Source)
+}
+
+// sum adds up a column of numbers; its source names the row "*".
+func (l *Ledger) sum(column string) string {
+	total := 0.0
+	for i := range l.Rows {
+		if x, err := strconv.ParseFloat(l.Cell(i, column), 64); err == nil {
+			total += x
+		}
+	}
+	return strconv.FormatFloat(total, 'f', -1, 64)
 }
 
 // Table makes a table of chosen columns and rows (nil: all of either); words names the

@@ -220,7 +220,7 @@ func (r *Record) DataSection() Section {
 	odd, mended := r.split(r.Warnings)
 	mended = append(slices.Clone(filled), mended...)
 	if len(mended) == 0 {
-		s.Blocks = append(s.Blocks, Paragraph{Plain("The run recorded no value of a profile, meter or weather file that it filled in, mended or doubted.")})
+		s.Blocks = append(s.Blocks, Paragraph{Plain("The run warned of no value of a profile or weather file that it filled in, mended or doubted.")})
 	} else {
 		s.Blocks = append(s.Blocks, notes(fmt.Sprintf("Profiles, meters and weather: filled in, mended or doubted (%d)", len(mended)), "What", mended))
 	}

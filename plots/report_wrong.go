@@ -2,6 +2,7 @@ package plots
 
 import (
 	"math"
+	"strconv"
 
 	"yearflow/sim/results"
 )
@@ -249,6 +250,29 @@ func (r *runReport) trustSection() Section {
 		first := rec.Hunting[0]
 		s.Blocks = append(s.Blocks, Finding{Bad: true, Text: Plain(count(len(rec.Hunting), "instant", "instants") + " at which a device was found hunting; the first " + first.Device + ", " + Number(first.Time, "time", "").Show + ".")})
 	}
+	return s
+}
+
+// dataSection adds to what the record says of the inputs what was mended in meters.
+func (r *runReport) dataSection() Section {
+	if r.mended == nil || len(r.mended.Rows) == 0 {
+		return r.record.DataSection()
+	}
+	most := r.order(r.mended, func(i int) float64 {
+		n, err := strconv.ParseFloat(r.mended.Cell(i, "values"), 64)
+		if err != nil {
+			return 0
+		}
+		return n
+	}, 2*listed)
+	t := r.mended.Table("Meters: what the rules of validation and editing did", existing(r.mended, "meter", "rule", "from", "to", "values", "energy added"), most, "from", "to")
+	for i, row := range most {
+		t.Rows[i][2], t.Rows[i][3] = r.mended.Time(row, "from"), r.mended.Time(row, "to")
+	}
+	total := SourceOf("mended.csv", "values", "*")
+	t.Note = Say(shown(len(most), len(r.mended.Rows), "mended.csv")+" Values edited or doubted in all: {}.", Number(r.mended.sum("values"), "1", total))
+	s := r.record.DataSection()
+	s.Blocks = append([]Block{t}, s.Blocks...)
 	return s
 }
 

@@ -1,0 +1,122 @@
+//go:build browser
+
+package plots
+
+import (
+	"bytes"
+	"fmt"
+	"os"
+	"os/exec"
+	"path/filepath"
+	"strings"
+	"testing"
+	"time"
+)
+
+// These tests want Chromium and poppler (apt-get install chromium poppler-utils):
+//
+//	go test -tags browser ./plots -run Browser
+//
+// With -look DIR they keep what they drew, to be looked at.
+
+// chromium runs a headless browser on a page and returns what it said on its standard
+// error.
+func chromium(t *testing.T, page string, args ...string) (out, said string) {
+	t.Helper()
+	args = append([]string{"--headless=new", "--no-sandbox", "--disable-gpu", "--hide-scrollbars", "--user-data-dir=" + t.TempDir(), "--enable-logging=stderr", "--v=0"}, args...)
+	cmd := exec.Command("chromium", append(args, "file://"+page)...)
+	cmd.WaitDelay = time.Minute
+	var stdout, stderr bytes.Buffer
+	cmd.Stdout, cmd.Stderr = &stdout, &stderr
+	if err := cmd.Run(); err != nil {
+		t.Fatalf("chromium %v: %v\n%s", args, err, stderr.String())
+	}
+	return stdout.String(), stderr.String()
+}
+
+// writePage writes a page; script, which no report has, asks the browser about it.
+func writePage(t *testing.T, dir, name, page, script string) string {
+	t.Helper()
+	path := filepath.Join(dir, name)
+	if script != "" {
+		page = strings.Replace(page, "</body>", "<script>"+script+"</script></body>", 1)
+	}
+	if err := os.WriteFile(path, []byte(page), 0o644); err != nil {
+		t.Fatal(err)
+	}
+	return path
+}
+
+func browserFolder(t *testing.T) string {
+	t.Helper()
+	if *look == "" {
+		return t.TempDir()
+	}
+	dir, err := filepath.Abs(filepath.Join(*look, "report"))
+	if err != nil {
+		t.Fatal(err)
+	}
+	if err := os.MkdirAll(dir, 0o755); err != nil {
+		t.Fatal(err)
+	}
+	return dir
+}
+
+// The report opens without an error on the console, and nothing but a table's own
+// scrolling is wider than the window.
+func TestBrowserOpensTheReport(t *testing.T) {
+	dir := browserFolder(t)
+	page := reportFrom(t, small().write(), true)
+	plain := writePage(t, dir, "report.html", page, "")
+	// The window of a browser may not be narrower than some 500 pixels: a frame is.
+	const ask = `const f = document.getElementsByTagName("iframe"); const d = [];
+for (const x of f) { const r = x.contentDocument.documentElement; d.push(x.width + ":" + r.scrollWidth + ":" + [...x.contentDocument.images].filter(i => !i.complete || !i.naturalWidth).length); }
+document.title = "asked"; document.body.textContent = d.join(" ");`
+	frames := `<!DOCTYPE html><html lang="en"><body><iframe width="390" height="800" src="report.html"></iframe><iframe width="768" height="800" src="report.html"></iframe><iframe width="1280" height="800" src="report.html"></iframe></body></html>`
+	asking := writePage(t, dir, "frames.html", frames, `onload = () => {`+ask+`}`)
+	out, said := chromium(t, asking, "--allow-file-access-from-files", "--virtual-time-budget=8000", "--dump-dom")
+	for _, width := range []int{390, 768, 1280} {
+		if want := fmt.Sprintf("%d:%[1]d:0", width); !strings.Contains(out, want) {
+			t.Errorf("the page of %d pixels is wider, or a picture is missing: want %s in %s", width, want, out)
+		}
+	}
+	for _, width := range []int{390, 1280} {
+		shot := filepath.Join(dir, fmt.Sprintf("%d.png", width))
+		_, more := chromium(t, plain, fmt.Sprintf("--window-size=%d,9000", width), "--screenshot="+shot)
+		said += more
+		if info, err := os.Stat(shot); err != nil || info.Size() < 10_000 {
+			t.Errorf("no screenshot of %d pixels: %v", width, err)
+		}
+	}
+	if strings.Contains(said, "CONSOLE") {
+		t.Errorf("the console says:\n%s", said)
+	}
+}
+
+// On paper no page is empty, and every page names the case.
+func TestBrowserPrintsTheReport(t *testing.T) {
+	dir := browserFolder(t)
+	page := reportFrom(t, small().write(), true)
+	for name, size := range map[string]string{"a4": "A4", "letter": "Letter"} {
+		// The paper of a headless printer is Letter unless the page says otherwise.
+		path := writePage(t, dir, name+".html", strings.Replace(page, "</style>", "@page { size: "+size+"; }</style>", 1), "")
+		pdf := filepath.Join(dir, name+".pdf")
+		chromium(t, path, "--no-pdf-header-footer", "--print-to-pdf="+pdf)
+		text, err := exec.Command("pdftotext", "-layout", pdf, "-").Output()
+		if err != nil {
+			t.Fatalf("pdftotext: %v", err)
+		}
+		pages := strings.Split(strings.TrimSuffix(string(text), "\f"), "\f")
+		if len(pages) < 5 || len(pages) > 40 {
+			t.Errorf("%s: %d pages", size, len(pages))
+		}
+		for i, p := range pages {
+			if !strings.Contains(p, "case base") || !strings.Contains(strings.ReplaceAll(p, " / ", "/"), fmt.Sprintf("%d/%d", i+1, len(pages))) {
+				t.Errorf("%s: page %d has no foot", size, i+1)
+			}
+		}
+		if !strings.Contains(pages[0], "What is not studied") {
+			t.Errorf("%s: the first page does not say what is not studied", size)
+		}
+	}
+}
