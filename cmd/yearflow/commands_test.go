@@ -212,7 +212,7 @@ func TestCheck(t *testing.T) {
 	must(t, exitInput, "check", "--case", "wrong")
 	edit(t, "study.toml", `files = ["profiles/*.csv"]`, `files = ["profiles/*.csv", "weather/*.csv"]`)
 	out, _ = must(t, exitDone, "check", "--case", "late")
-	contains(t, out, "Odd, but possible (1)", `study.toml:9:3: files "weather/*.csv": no file matches`)
+	contains(t, out, "Odd, but possible (2)", `transformer "T1" of 50 kVA feeds load "houses" of 69.588 kVA`, `study.toml:9:3: files "weather/*.csv": no file matches`)
 	edit(t, "feeder/loads.csv", "works,mill", "works,mil")
 	edit(t, "feeder/sections.csv", "length [ft]", "length")
 	out, errs = must(t, exitInput, "check")
