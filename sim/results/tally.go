@@ -209,3 +209,12 @@ func (m *Meter) Regulators() []Entering {
 
 // KW is the real power at an instant.
 func (e Entering) KW(s *State) float64 { return real(e.flow.power(s)) / 1000 }
+
+// LoadingName names a row of loading.csv: element.phase, of a bank the element.
+func (m *Meter) LoadingName(row int) string {
+	r := &m.loading[row]
+	if r.phase == "" {
+		return r.element
+	}
+	return r.element + "." + r.phase
+}
