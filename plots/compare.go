@@ -358,28 +358,55 @@ func (c *compareDocument) sheetSections() []Section {
 			lead = "The best-ranked case by the weights above. "
 		}
 		s.Blocks = append(s.Blocks, Paragraph{Plain(lead + "Lines marked CHANGE differ from the present sheet; the others are to be found as they stand. File: " + file + ".")})
-		var devices [][2]string
+		var devices []string
 		for _, r := range l.Rows {
-			if d := [2]string{r[0], r[1]}; !slices.Contains(devices, d) {
-				devices = append(devices, d)
+			if !slices.Contains(devices, r[0]) {
+				devices = append(devices, r[0])
 			}
 		}
 		for _, d := range devices {
-			caption := d[0]
-			if d[1] != "" {
-				caption += ", phase " + d[1]
-			}
-			t := Table{Caption: caption, Columns: []Column{{Head: "Setting", Words: true}, {Head: "Unit", Words: true}, {Head: "Present", Words: true}, {Head: "New", Words: true}, {Head: "", Words: true}, {Head: "As left", Words: true}}}
-			for k, r := range l.Rows {
-				if r[0] == d[0] && r[1] == d[1] {
-					t.Rows = append(t.Rows, []Value{Word(r[2]), Word(r[3]), l.Name(k, "present"), l.Name(k, "new"), Word(l.Cell(k, "change")), Word("")})
-				}
-			}
-			s.Blocks = append(s.Blocks, t)
+			s.Blocks = append(s.Blocks, deviceSheet(l, d))
 		}
 		out = append(out, s)
 	}
 	return out
+}
+
+// deviceSheet is the sheet of one device: its phases side by side, present and new.
+func deviceSheet(l *Ledger, device string) Table {
+	var phases, settings []string
+	for _, r := range l.Rows {
+		if r[0] != device {
+			continue
+		}
+		if !slices.Contains(phases, r[1]) {
+			phases = append(phases, r[1])
+		}
+		if !slices.Contains(settings, r[2]) {
+			settings = append(settings, r[2])
+		}
+	}
+	t := Table{Caption: device, Columns: []Column{{Head: "Setting", Words: true}, {Head: "Unit", Words: true}}}
+	for _, p := range phases {
+		t.Columns = append(t.Columns, Column{Head: strings.TrimSpace(p + " present"), Words: true}, Column{Head: strings.TrimSpace(p + " new"), Words: true})
+	}
+	t.Columns = append(t.Columns, Column{Words: true}, Column{Head: "As left", Words: true})
+	for _, name := range settings {
+		row, change, unit := []Value{Word(name)}, "", ""
+		var cells []Value
+		for _, p := range phases {
+			k := l.Row(device, p, name)
+			cells = append(cells, l.Name(k, "present"), l.Name(k, "new"))
+			if l.Cell(k, "change") != "" {
+				change = l.Cell(k, "change")
+			}
+			if k >= 0 {
+				unit = l.Cell(k, "unit")
+			}
+		}
+		t.Rows = append(t.Rows, append(append(append(row, Word(unit)), cells...), Word(change), Word("")))
+	}
+	return t
 }
 
 func (c *compareDocument) cautionSection() Section {

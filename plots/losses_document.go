@@ -135,7 +135,7 @@ func (l *lossesDocument) where() (Section, error) {
 }
 
 func (l *lossesDocument) factorSection() Section {
-	t := l.factor.Table("Loss factor and equivalent hours", []string{"losses", "method", "energy [kWh]", "peak [kW]", "load factor", "loss factor", "equivalent hours [h]", "off by [%]", "source"}, nil, "source")
+	t := l.factor.Table("Loss factor and equivalent hours", []string{"losses", "method", "energy [kWh]", "peak [kW]", "load factor", "loss factor", "equivalent hours [h]", "off by [%]"}, nil)
 	t.Note = Plain("Load factor: mean over peak of the source's real power. The formulas are for losses that go with the square of the load, so they stand beside the losses without no-load losses; generation on the feeder and taps take from them what they have.")
 	s := Section{Heading: "Loss factor, exact and by the usual formulas"}
 	best, worst := -1, -1
@@ -156,6 +156,13 @@ func (l *lossesDocument) factorSection() Section {
 			l.factor.Name(worst, "method"), l.factor.Value(worst, "off by [%]"))})
 	}
 	s.Blocks = append(s.Blocks, t)
+	var sources []Text
+	for i := range l.factor.Rows {
+		if l.factor.Cell(i, "off by [%]") != "" || i == 0 {
+			sources = append(sources, Plain(l.factor.Cell(i, "method")+": "+l.factor.Cell(i, "source")+"."))
+		}
+	}
+	s.Blocks = append(s.Blocks, List{Items: sources})
 	return s
 }
 
@@ -186,7 +193,18 @@ func (l *lossesDocument) marginalSection() Section {
 	if len(rows) < n {
 		caption = fmt.Sprintf("Marginal losses by place: the %d highest and the 5 lowest of %d", shownElements, n)
 	}
-	t := l.marginal.Table(caption, l.marginal.Header, slices.Clip(rows), "phases")
+	money := l.money(l.marginal)
+	var losses []string
+	for _, h := range l.marginal.Header {
+		if !slices.Contains(money, h) {
+			losses = append(losses, h)
+		}
+	}
+	s.Blocks = append(s.Blocks, l.marginal.Table(caption, losses, slices.Clip(rows), "phases"))
+	if len(money) == 0 {
+		return s
+	}
+	t := l.marginal.Table("Value of a kW saved all year at the same places", append([]string{"node"}, money...), slices.Clip(rows))
 	t.Note = Plain("The value of a kW saved all year: its energy and the losses that it saves, at the price of the step; its demand and the losses at the charged peak of each month. All places: marginal.csv.")
 	s.Blocks = append(s.Blocks, t)
 	return s
