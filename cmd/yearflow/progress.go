@@ -17,6 +17,7 @@ import (
 type progress struct {
 	w        io.Writer
 	terminal bool
+	what     string // is counted
 	total    int
 	done     int
 	began    time.Time
@@ -24,7 +25,7 @@ type progress struct {
 }
 
 func newProgress(w io.Writer, total int) *progress {
-	p := &progress{w: w, total: total, began: time.Now()}
+	p := &progress{w: w, what: "step", total: total, began: time.Now()}
 	if f, ok := w.(*os.File); ok {
 		p.terminal = term.IsTerminal(int(f.Fd()))
 	}
@@ -60,7 +61,7 @@ func (p *progress) show() {
 		n := int(30 * share)
 		fmt.Fprintf(p.w, "\r[%s%s] %3.0f %%, %v left  ", strings.Repeat("=", n), strings.Repeat(" ", 30-n), 100*share, left)
 	} else {
-		fmt.Fprintf(p.w, "step %d of %d (%.0f %%), about %v left\n", p.done, p.total, 100*share, left)
+		fmt.Fprintf(p.w, "%s %d of %d (%.0f %%), about %v left\n", p.what, p.done, p.total, 100*share, left)
 	}
 }
 
