@@ -139,7 +139,7 @@ func newRoot(c *console) *cobra.Command {
 	root.CompletionOptions.HiddenDefaultCmd = true
 	root.SetFlagErrorFunc(flagHint)
 	root.SetHelpCommand(helpCommand(c, root))
-	root.AddCommand(demoCommand(c), checkCommand(c), solveCommand(c), traceCommand(c), runCommand(c), compareCommand(c), lossesCommand(c), tuneCommand(c), linesCommand(c), reportCommand(c))
+	root.AddCommand(demoCommand(c), checkCommand(c), solveCommand(c), traceCommand(c), runCommand(c), compareCommand(c), tuneCommand(c), lossesCommand(c), impactCommand(c), hostingCommand(c), linesCommand(c), reportCommand(c))
 	return root
 }
 
