@@ -290,7 +290,13 @@ func (c *compareDocument) settingsSection() Section {
 	for _, n := range c.names {
 		t.Columns = append(t.Columns, Column{Head: n, Words: true})
 	}
+	added := 0
 	for i, r := range c.settings.Rows {
+		// The cells of a row that is only there in a case follow its "(row)".
+		if i > 0 && r[2] != "(row)" && c.settings.Rows[i-1][1] == r[1] && c.settings.Rows[i-1][0] == r[0] && r[4] == "" && c.newRow(r[0], r[1]) {
+			added++
+			continue
+		}
 		column := r[2]
 		if r[3] != "" {
 			column += " [" + r[3] + "]"
@@ -306,8 +312,17 @@ func (c *compareDocument) settingsSection() Section {
 		t.Rows = append(t.Rows, row)
 	}
 	t.Note = Plain("A dot stands for the base's value; (row) for a row that is only there in one of them.")
+	if added > 0 {
+		t.Note = append(t.Note, Word(" The "+count(added, "cell", "cells")+" of new rows: settings.csv."))
+	}
 	s.Blocks = []Block{t}
 	return s
+}
+
+// newRow tells whether a row of a table is in a case alone.
+func (c *compareDocument) newRow(table, key string) bool {
+	i := c.settings.Row(table, key, "(row)")
+	return i >= 0 && c.settings.Rows[i][4] == ""
 }
 
 func (c *compareDocument) groupSection(group, heading string) Section {
