@@ -58,7 +58,12 @@ func (c *impactDocument) cell(row int, column string) Value {
 
 // unitCell is a cell of a table whose rows say their unit.
 func unitCell(l *Ledger, row int, column string) Value {
-	return Rounded(l.Cell(row, column), l.Cell(row, "unit"), SourceOf(l.File, column, l.Rows[row][:l.Keys]...), -1)
+	cell, unit, source := l.Cell(row, column), l.Cell(row, "unit"), SourceOf(l.File, column, l.Rows[row][:l.Keys]...)
+	v := Rounded(cell, unit, source, -1)
+	if least, ok := strings.CutPrefix(cell, "at least "); ok {
+		v.Show = "at least " + Rounded(least, unit, source, -1).Show
+	}
+	return v
 }
 
 // resultOf is the result that a word of a table stands for.
@@ -171,7 +176,9 @@ func (c *impactDocument) criteriaSection() Section {
 		case "rapid voltage change":
 			v.Note = Plain(upper(c.said("rvc")) + ".")
 		}
-		t.Note = Plain(upper(c.said("zero")) + ".")
+		if g == groups[0] {
+			t.Note = Plain(upper(c.said("zero")) + ".")
+		}
 		if len(v.Rows) > 0 {
 			s.Blocks = append(s.Blocks, v)
 		}

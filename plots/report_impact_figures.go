@@ -73,9 +73,12 @@ func (c *impactDocument) limitFigure(st *style) (*page, Figure) {
 		}
 		n.bar(n.x(0), y+1, n.x(math.Min(math.Max(b.base, 0), hi)), y+8, axisGrey)
 		n.bar(n.x(0), y-8, n.x(math.Min(b.with, hi)), y-1, tone)
-		n.label(small, n.x(math.Min(math.Max(b.with, b.base), hi))+4, y-1, text.XLeft, text.YCenter, percent(b.with))
 	}
 	n.c.StrokeLine2(draw.LineStyle{Color: black, Width: vg.Points(1.4), Dashes: []vg.Length{4, 2}}, n.x(100), n.rect.Min.Y, n.x(100), n.rect.Max.Y)
+	for i, b := range bars {
+		y := n.rect.Max.Y - vg.Length(i)*row - row/2
+		n.haloed(small, n.x(math.Min(math.Max(b.with, b.base), hi))+5, y-1, text.XLeft, text.YCenter, percent(b.with))
+	}
 	n.keys([]key{{fill: axisGrey, text: "base"}, {fill: blue, text: "with the units"}, {fill: vermilion, text: "with the units, beyond the limit"}, {line: draw.LineStyle{Color: black, Width: vg.Points(1.4), Dashes: []vg.Length{4, 2}}, text: "limit"}}, n.rect.Min.X-room, n.rect.Min.Y-31)
 	return p, f
 }
@@ -93,7 +96,7 @@ func (c *impactDocument) remedyFigure(st *style) (*page, Figure) {
 	}
 	var panels []barPanel
 	for _, q := range []string{"customer-hours above A", "customer-hours below A", "sudden loss of units of the case, above 600 V", "operations", "losses energy", "generation energy"} {
-		b := barPanel{title: q}
+		b := barPanel{title: strings.Replace(q, "sudden loss of units of the case, above 600 V", "sudden loss, above 600 V", 1)}
 		for _, name := range append([]string{""}, names...) {
 			v, shown := nan, "–"
 			for k, r := range c.mitigations.Rows {

@@ -50,6 +50,40 @@ func (e *Engine) SettleFrom(step int, p Positions) (*Instant, error) {
 	return out, nil
 }
 
+// Held solves the inputs of one step with the devices at p.Taps and p.Closed, as Solve
+// does, from the voltages of a solution close by, start: one of the same feeder with other
+// units. Its State belongs to the engine and holds until the next call.
+func (e *Engine) Held(step int, p Positions, start []complex128) (*Instant, error) {
+	if len(start) != len(e.anchor) || e.allocation != nil || p.Taps == nil {
+		return e.Solve(step, p)
+	}
+	begin, end := e.in.axis.Bounds(step)
+	now := end - 1
+	e.plants.reset(now)
+	e.steady = true
+	for i := range p.Storage {
+		b := e.plants.batteries[i]
+		b.asked, b.prescribed = p.Storage[i], true
+	}
+	copy(e.state.Taps, p.Taps)
+	copy(e.state.Closed, p.Closed)
+	copy(e.anchor, start)
+	e.anchored = true
+	e.takeInputs(step)
+	ok, err := e.allocate(now)
+	if err != nil {
+		return nil, err
+	}
+	if !ok { // a start may mislead; what counts is what the no-load voltages lead to
+		return e.Solve(step, p)
+	}
+	out := &Instant{Start: begin, State: &e.state, Path: e.solution.Path, Iterations: e.solution.Iterations, Change: e.solution.Change}
+	if out.Where = e.low(); out.Where != "" {
+		out.Status = results.Low
+	}
+	return out, nil
+}
+
 // stand puts the controls of settings sheets and the state to the given positions.
 func (e *Engine) stand(p Positions) {
 	copy(e.state.Taps, p.Taps)

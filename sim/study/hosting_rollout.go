@@ -341,7 +341,7 @@ func (d *deployer) lost(step int, s *results.State, adopters []int) (kind, where
 	for _, i := range adopters {
 		d.sizer.Set(d.first+i, 0)
 	}
-	in, err := d.engine.Solve(step, p)
+	in, err := d.engine.Held(step, p, slices.Clone(s.V))
 	for _, i := range adopters {
 		d.sizer.Set(d.first+i, 1)
 	}

@@ -394,9 +394,9 @@ func (im *impacting) heldMeasures(t *trial, held *jump) (out []measure) {
 	c := clock{t.engine.Study.Settings.Period.Zone}
 	const group = "voltage, devices held"
 	for _, k := range t.classes() {
-		hi := measure{group, "highest voltage at customers" + k.name + ", devices held", "pu", math.Inf(-1), k.limits.High, false, k.limits.Source, "", ""}
-		lo := measure{group, "lowest voltage at customers" + k.name + ", devices held", "pu", math.Inf(1), k.limits.Low, true, k.limits.Source, "", ""}
-		rise := measure{group, "largest rise by the units of the case" + k.name + ", devices held", "%", 0, riseLimitMV, false, riseSource, "", ""}
+		hi := measure{group, "highest voltage, devices held, at customers" + k.name, "pu", math.Inf(-1), k.limits.High, false, k.limits.Source, "", ""}
+		lo := measure{group, "lowest voltage, devices held, at customers" + k.name, "pu", math.Inf(1), k.limits.Low, true, k.limits.Source, "", ""}
+		rise := measure{group, "largest rise, devices held," + k.name, "%", 0, riseLimitMV, false, riseSource, "", ""}
 		if k.name == " up to 600 V" {
 			rise.limit = riseLimitLV
 		}

@@ -203,12 +203,11 @@ func (im *impacting) compareMitigations() {
 				continue
 			}
 			w := &im.Criteria[k]
-			if x.name == "operations" {
+			if x.name == "operations" { // its limit is that of a rise above the base's
 				x.limit, x.source = w.Limit, w.Source
 			}
-			c := criterion(measure{value: w.With, limit: nan}, x)
-			c.Base, c.BaseVerdict = w.With, w.Verdict
-			c.Limit, c.Source = x.limit, x.source
+			c := criterion(measure{value: nan, limit: nan}, x)
+			c.Base, c.BaseVerdict, c.Difference = w.With, w.Verdict, difference(w.With, c.With)
 			if math.IsNaN(c.Limit) && !told(c.Name) {
 				continue
 			}

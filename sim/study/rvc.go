@@ -98,7 +98,7 @@ func (j *jump) Step(s *results.Step) error {
 		if j.storage != nil {
 			p.Storage = j.storage(step, s.Last)
 		}
-		in, err := j.probe.Solve(step, p)
+		in, err := j.probe.Held(step, p, s.Last.V)
 		if err != nil {
 			return err
 		}
