@@ -98,8 +98,8 @@ func TestEveryCommandExplainsItself(t *testing.T) {
 			t.Errorf("%s: an option does not name its value:\n%s", c.Name(), c.LocalFlags().FlagUsages())
 		}
 	}
-	if n != 7 {
-		t.Errorf("%d commands, want 7", n)
+	if n != 12 {
+		t.Errorf("%d commands, want the 12 of the design", n)
 	}
 	out, _ := must(t, exitDone)
 	contains(t, out, "yearflow run", "yearflow demo my-feeder", "yearflow check my-feeder", "licensed engineer")
