@@ -30,7 +30,7 @@ func criterionColor(name string) color.NRGBA {
 func criterionKind(name string) string {
 	switch criterionColor(name) {
 	case green:
-		return "nothing breaks on the grid"
+		return "nothing up to the largest size"
 	case vermilion:
 		return "voltage"
 	case blue:
@@ -74,9 +74,9 @@ func (h *hostingDocument) placesFigure(st *style) (*page, Figure, error) {
 			most = k
 		}
 	}
-	f := Figure{Name: "hosting-places.png", Title: "What each place takes", Finding: fmt.Sprintf("What binds most often is %s, at %d of %s.", most, counts[most], count(n, "row", "rows"))}
+	f := Figure{Name: "hosting-places.png", Title: "What each place takes", Finding: fmt.Sprintf("What binds most often is %s, at %d of %s.", most, counts[most], count(n, "bar", "bars"))}
 	if most == criterionKind("") {
-		f.Finding = fmt.Sprintf("At %d of %s nothing breaks on the grid.", counts[most], count(n, "row", "rows"))
+		f.Finding = fmt.Sprintf("At %d of %s nothing breaks up to the largest size.", counts[most], count(n, "bar", "bars"))
 	}
 	f.Alt = "Bars of the largest size that keeps every criterion, by place in the order of distance, coloured by the criterion that the next size breaks. " + f.Finding
 	const row = vg.Length(19)
@@ -216,7 +216,12 @@ func (h *hostingDocument) drawHostingMap(s *survey, st *style) (*page, Figure, e
 		if xy, ok := l.at[h.places.Cell(i, "place")]; ok {
 			keeps := numberIn(h.places.Cell(i, "keeps"))
 			r := vg.Length(3.5 + 8.5*math.Sqrt(keeps/math.Max(top, 1)))
-			n.haloed(small, n.x(xy[0])+r+3, n.y(xy[1]), text.XLeft, text.YCenter, h.places.Cell(i, "place")+" "+number(keeps, 0))
+			words := h.places.Cell(i, "place") + " " + number(keeps, 0)
+			x, side := n.x(xy[0])+r+3, text.XLeft
+			if x+small.Width(words) > n.body.Max.X-118 { // the legend stands there
+				x, side = n.x(xy[0])-r-3, text.XRight
+			}
+			n.haloed(small, x, n.y(xy[1]), side, text.YCenter, words)
 		}
 	}
 	y := n.body.Max.Y - 14

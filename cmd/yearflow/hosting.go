@@ -36,7 +36,7 @@ hundred times, and the share of the orders that violate a limit is told by insta
   seed = 1
   runs = 200                  # of the roll-out
   "per customer" = 5          # kW that a customer adopts
-  levels = 10
+  levels = 20
 
 Exit status: 0 done; 1 steps of the base were low or unsolved; 2 the input is wrong; 3
 the machine failed.`,

@@ -62,7 +62,7 @@ func hostingLimits(hours float64) []hostingLimit {
 // the base.
 func readHosting(e *sim.Engine, peak float64) (*hostingSettings, error) {
 	st := e.Study
-	h := &hostingSettings{kind: "solar", factor: 1, function: -1, seed: 1, runs: 200, perCustomer: 5, levels: 10, limits: map[string]float64{}}
+	h := &hostingSettings{kind: "solar", factor: 1, function: -1, seed: 1, runs: 200, perCustomer: 5, levels: 20, limits: map[string]float64{}}
 	var faults tables.Faults
 	p := st.Settings.Period
 	for _, l := range hostingLimits(float64(p.End-p.Start) / 3.6e12) {

@@ -5,11 +5,13 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"path/filepath"
 	"reflect"
 	"strconv"
 	"strings"
 	"testing"
 
+	"yearflow/plots"
 	"yearflow/sim/study"
 	"yearflow/sim/tables"
 )
@@ -116,8 +118,8 @@ func TestHostingDoesNotDependOnWorkers(t *testing.T) {
 		t.Error("the tables differ")
 	}
 	r := one.Rollout
-	if r.Why != "" || len(r.Levels) != 10 || r.Levels[9].KW != 1050 || r.Sites != 2 {
-		t.Errorf("roll-out over %d sites to %g kW (%s), want 2 sites to 210 customers of 5 kW", r.Sites, r.Levels[9].KW, r.Why)
+	if r.Why != "" || len(r.Levels) != 20 || r.Levels[19].KW != 1050 || r.Sites != 2 {
+		t.Errorf("roll-out over %d sites to %g kW (%s), want 2 sites to 210 customers of 5 kW", r.Sites, r.Levels[len(r.Levels)-1].KW, r.Why)
 	}
 	for i, l := range r.Levels {
 		if i > 0 && l.Mean < r.Levels[i-1].Mean {
@@ -144,4 +146,29 @@ func TestHostingBadInput(t *testing.T) {
 			}
 		})
 	}
+}
+
+// Every number of both documents is that of the table that it names.
+func TestImpactAndHostingDocuments(t *testing.T) {
+	files := smallFeeder(smallHosting)
+	files["cases/g/generators.csv"] = "generator,node,phases,kind,rating [kVA],profile\nG,end,ABC,solar,1500,sun\n"
+	p := folder(t, nil, files)
+	im, err := impactOf(t, p, "g", 2)
+	if err != nil {
+		t.Fatal(err)
+	}
+	dir := filepath.Join(p.Results, "impact-g")
+	if err := im.Write(dir, p, document(t, "impact.html", func(d string) (*plots.Document, error) { return plots.ImpactDocument(d, p.Results) })); err != nil {
+		t.Fatal(err)
+	}
+	numbers(t, dir, "impact.html", 200)
+	h, err := host(t, p, 2)
+	if err != nil {
+		t.Fatal(err)
+	}
+	dir = filepath.Join(p.Results, "hosting")
+	if err := h.Write(dir, p, document(t, "hosting.html", func(d string) (*plots.Document, error) { return plots.HostingDocument(d, p.Results) })); err != nil {
+		t.Fatal(err)
+	}
+	numbers(t, dir, "hosting.html", 30)
 }
