@@ -91,11 +91,17 @@ func (h *hostingDocument) lead() []Block {
 
 func (h *hostingDocument) placesSection() Section {
 	s := Section{Heading: "What each place takes"}
-	t := h.places.Table("The largest size kept and the smallest that breaks a criterion, by place", []string{"place", "phases", "nominal", "distance", "keeps", "breaks at", "criterion", "value", "limit", "unit", "where", "all that break"}, nil, "phases", "criterion", "unit", "where", "all that break")
-	t.Note = Plain(upper(h.said("places")) + ". Sizes tried: " + h.said("grid") + ". Keeps 0: the smallest size breaks a criterion already. No size at which it breaks: none of the grid does.")
-	c := h.criteria.Table("Criteria with their limits; the hours are those more than the base has", []string{"criterion", "unit", "limit", "source"}, nil, "unit", "source")
-	c.Note = Plain("Voltage limits: " + h.said("limits") + ". Penetration is the rating of the new units alone, in kW.")
-	s.Blocks = []Block{t, c}
+	t := h.places.Table("The largest size kept and the smallest that breaks a criterion, by place", []string{"place", "distance", "keeps", "breaks at", "criterion", "value", "limit", "unit", "where"}, nil, "criterion", "unit", "where")
+	for i := range t.Rows {
+		t.Rows[i][2], t.Rows[i][3] = h.places.Rounded(i, "keeps", 0), h.places.Rounded(i, "breaks at", 0)
+	}
+	t.Note = Plain(upper(h.said("places")) + ". Sizes tried: " + h.said("grid") + ". Keeps 0: the smallest size breaks a criterion already. No size at which it breaks: none of the grid does. The criterion is the one that is exceeded most, relative to its limit.")
+	var c Facts
+	for i := range h.criteria.Rows {
+		limit := Rounded(h.criteria.Cell(i, "limit"), h.criteria.Cell(i, "unit"), SourceOf(h.criteria.File, "limit", h.criteria.Rows[i][0]), -1)
+		c.Rows = append(c.Rows, Fact{h.criteria.Cell(i, "criterion"), Say("at most {}: "+h.criteria.Cell(i, "source"), limit)})
+	}
+	s.Blocks = []Block{t, Heading("Criteria and limits"), c, Paragraph{Plain("Hours are those more than the base has. Voltage limits: " + h.said("limits") + ". Penetration is the rating of the new units alone, in kW.")}}
 	return s
 }
 

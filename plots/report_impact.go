@@ -238,9 +238,13 @@ func (c *impactDocument) changeSection() Section {
 }
 
 func (c *impactDocument) reverseSection() Section {
-	t := c.reverse.Table("Hours of reverse power at the source and at every regulator bank", []string{"place", "mode", "base [h]", "with DER [h]", "difference", "base most [kW]", "with DER most [kW]", "note"}, nil, "place", "mode", "note")
+	t := c.reverse.Table("Hours of reverse power at the source and at every regulator bank", []string{"place", "mode", "base [h]", "with DER [h]", "difference", "base most [kW]", "with DER most [kW]"}, nil, "place", "mode")
 	t.Note = Plain("Settled intervals; the sum of the phases at the source's side of the bank.")
-	return Section{Heading: "Reverse power", Blocks: []Block{t}}
+	var notes []Text
+	for i := range c.reverse.Rows {
+		notes = append(notes, Plain(upper(c.reverse.Cell(i, "place"))+": "+c.reverse.Cell(i, "note")+"."))
+	}
+	return Section{Heading: "Reverse power", Blocks: []Block{t, List{notes}}}
 }
 
 func (c *impactDocument) screenSection() Section {
@@ -249,11 +253,11 @@ func (c *impactDocument) screenSection() Section {
 		s.Blocks = []Block{Paragraph{Plain("No part of the feeder holds a unit of the case.")}}
 		return s
 	}
-	t := c.screens.Table("Ratings of all units behind a place against the load of the base there", []string{"screen", "section", "base [kW]", "with DER [kW]", "load", "when", "with DER [%]", "limit", "verdict", "margin"}, nil, "screen", "section", "when", "verdict")
+	t := c.screens.Table("Ratings of all units behind a place against the load of the base there", []string{"screen", "section", "with DER [kW]", "load", "when", "with DER [%]", "limit", "verdict"}, nil, "screen", "section", "when", "verdict")
 	for k := range t.Rows {
-		t.Rows[k][5] = Number(c.screens.Cell(k, "when"), "time", SourceOf(c.screens.File, "when", c.screens.Rows[k][:2]...))
+		t.Rows[k][4] = Number(c.screens.Cell(k, "when"), "time", SourceOf(c.screens.File, "when", c.screens.Rows[k][:2]...))
 	}
-	t.Note = Plain("A screen that is not passed asks for a study such as this one; it is no verdict on the voltage. The places are the whole feeder, regulator banks and closed switches: the tables know no reclosers, which bound a line section. Sources: " + c.screens.Cell(0, "source") + "; " + c.screens.Cell(len(c.screens.Rows)-1, "source") + ".")
+	t.Note = Plain("The rating of all units there is held against a share of the load; the minimum daytime load is that of 10:00 to 16:00, in which panels without tracking deliver. A screen that is not passed asks for a study such as this one; it is no verdict on the voltage. The places are the whole feeder, regulator banks and closed switches: the tables know no reclosers, which bound a line section. Sources: " + c.screens.Cell(0, "source") + "; " + c.screens.Cell(len(c.screens.Rows)-1, "source") + ".")
 	s.Blocks = []Block{t}
 	return s
 }
@@ -261,9 +265,17 @@ func (c *impactDocument) screenSection() Section {
 // mitigationSection compares the remedies.
 func (c *impactDocument) mitigationSection() (Section, error) {
 	s := Section{Heading: "Remedies, each run over the period by itself"}
-	t := c.list.Table("Remedies and how many criteria fail with them", []string{"mitigation", "what", "tried", "criteria failed", "mended", "newly failed"}, nil, "mitigation", "what", "tried")
+	t := c.list.Table("Remedies and how many criteria fail with them", []string{"mitigation", "criteria failed", "mended", "newly failed"}, nil, "mitigation")
+	var what Facts
+	for i := range c.list.Rows {
+		text := c.list.Cell(i, "what")
+		if tried := c.list.Cell(i, "tried"); tried != "yes" {
+			text += "; not tried: " + strings.TrimPrefix(tried, "no: ")
+		}
+		what.Rows = append(what.Rows, Fact{upper(c.list.Cell(i, "mitigation")), Plain(text)})
+	}
 	t.Note = Plain("Mended: fails without the remedy and passes with it. Newly failed: the other way round. Counted are the criteria of mitigations.csv, in which the return of units and other units' loss are left out.")
-	s.Blocks = append(s.Blocks, t)
+	s.Blocks = append(s.Blocks, what, t)
 	if p, f := c.remedyFigure(newStyle(200)); p != nil {
 		b, err := c.picture(p, f)
 		if err != nil {

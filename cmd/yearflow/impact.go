@@ -105,7 +105,7 @@ func (c *console) tellImpact(im *study.Impact, dir string, o *manyOptions) {
 	s.write(out)
 	fmt.Fprintln(out)
 	for _, r := range im.Screens {
-		fmt.Fprintf(out, "screen, %s: %s: %s %% of %s kW (limit %s %%): %s\n", r.Section, r.Screen, results.FigureText(r.WithShare), results.FigureText(r.Reference), results.FigureText(r.Limit), r.Verdict)
+		fmt.Fprintf(out, "screen, %s: rating against %s: %s %% of %s kW (limit %s %%): %s\n", r.Section, r.Screen, results.FigureText(r.WithShare), results.FigureText(r.Reference), results.FigureText(r.Limit), r.Verdict)
 	}
 	fmt.Fprintf(out, "\nThe document: %s\n", filepath.Join(dir, "impact.html"))
 }

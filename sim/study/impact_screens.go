@@ -184,9 +184,9 @@ func (w *sectionWatch) Step(s *results.Step) error {
 const (
 	peakScreen       = 15.0
 	minimumScreen    = 100.0
-	peakScreenText   = "aggregate rating against 15 % of the peak load"
-	daytimeText      = "aggregate rating against 100 % of the minimum daytime load (10:00 to 16:00)"
-	minimumText      = "aggregate rating against 100 % of the minimum load"
+	peakScreenText   = "15 % of the peak load"
+	daytimeText      = "100 % of the minimum daytime load"
+	minimumText      = "100 % of the minimum load"
 	peakScreenSource = "FERC small generator interconnection procedures, fast-track screen (recalled from memory)"
 	minimumSource    = "FERC small generator interconnection procedures, supplemental review (recalled from memory)"
 )
