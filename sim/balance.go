@@ -327,7 +327,11 @@ func (e *Engine) traceRow(h hop, near, far int) TraceRow {
 			i = -enter[e.net.At[far][p]] // a leg, or a phase that begins here: what comes out
 		}
 		tp := TracePhase{Phase: p, V120: v, Current: i, Change: math.NaN()}
-		if before, ok := e.v120(near, p); ok {
+		above := p
+		if h.kind == network.Transformer && p.Leg() {
+			above = m.Transformers[h.index].HighEnds[0] // a leg follows the phase that feeds it
+		}
+		if before, ok := e.v120(near, above); ok {
 			tp.Change = v - before
 			if !carried && h.kind == network.Section {
 				continue
