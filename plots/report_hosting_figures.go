@@ -218,7 +218,12 @@ func (h *hostingDocument) drawHostingMap(s *survey, st *style) (*page, Figure, e
 			r := vg.Length(3.5 + 8.5*math.Sqrt(keeps/math.Max(top, 1)))
 			words := h.places.Cell(i, "place") + " " + number(keeps, 0)
 			x, side := n.x(xy[0])+r+3, text.XLeft
-			if x+small.Width(words) > n.body.Max.X-118 { // the legend stands there
+			// At the height of the legend there is less room.
+			edge := n.body.Max.X
+			if n.y(xy[1]) > n.body.Max.Y-24-30*vg.Length(len(h.bindingKeys())) {
+				edge -= 118
+			}
+			if x+small.Width(words) > edge {
 				x, side = n.x(xy[0])-r-3, text.XRight
 			}
 			n.haloed(small, x, n.y(xy[1]), side, text.YCenter, words)
