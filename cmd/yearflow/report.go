@@ -17,8 +17,20 @@ import (
 
 func reportCommand(c *console) *cobra.Command {
 	return &cobra.Command{
-		Use: "report RESULTS", Short: "draws the figures and the report again from a results folder alone",
-		Example: "  yearflow run\n  yearflow report results/base",
+		Use: "report FOLDER", Short: "draws the figures and the report again, from the folder of a run or a document alone",
+		Long: `Draws the figures and the HTML report of a results folder again, from its tables alone:
+of a run (results/base), or of a document of ` + kindWords() + `
+(results/compare). What the folder is, its record says (run.json, compare.json, ...). The
+old report stays until the new one is whole. A table that is missing or has changed since it
+was written is told, and nothing is drawn.
+
+Figures of the years of single runs, in the documents of impact and hosting, come from the
+results folders of these runs, beside the document's; where they are not there, or not of the
+same inputs, the document does without them.
+
+Exit status: 0 done; 2 the folder is none, half of one, or of another version; 3 the machine
+failed.`,
+		Example: "  yearflow run\n  yearflow report results/base\n  yearflow report results/compare",
 		Args: func(_ *cobra.Command, args []string) error {
 			if len(args) != 1 {
 				return wrongf("report takes one results folder, such as results/base")
@@ -29,11 +41,24 @@ func reportCommand(c *console) *cobra.Command {
 	}
 }
 
-// report draws beside the old figures and report and exchanges them when all are there.
+// report finds out what a folder is and draws its report anew.
 func (c *console) report(dir string) error {
 	if info, err := os.Stat(dir); err != nil || !info.IsDir() {
 		return wrongf("there is no results folder %q", dir)
 	}
+	if _, err := os.Stat(filepath.Join(dir, runRecord)); err == nil {
+		return c.reportRun(dir)
+	}
+	for _, k := range documentKinds() {
+		if _, err := os.Stat(filepath.Join(dir, k.kind+".json")); err == nil {
+			return c.reportDocument(dir, k)
+		}
+	}
+	return noRecord(dir)
+}
+
+// reportRun draws beside the old figures and report and exchanges them when all are there.
+func (c *console) reportRun(dir string) error {
 	if _, err := results.ReadFolder(os.DirFS(dir)); err != nil {
 		var faults tables.Faults
 		if !errors.As(err, &faults) {

@@ -68,7 +68,7 @@ func exchangeFile(path string, data []byte) error {
 		err = e
 	}
 	if err != nil {
-		return fmt.Errorf("write run.json: %w", err)
+		return fmt.Errorf("write %s: %w", filepath.Base(path), err)
 	}
 	return os.Rename(f.Name(), path)
 }
