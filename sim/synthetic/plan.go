@@ -46,6 +46,9 @@ type plan struct {
 	spots []spot
 	kW    float64 // of all loads together
 	taken []bool  // buses that a service transformer already stands at
+	// on and off are the voltages, on the 120 V base, at which the capacitors close and
+	// open that follow it.
+	on, off [len(capacitorsAt)]float64
 }
 
 // trunkKM is six miles.
@@ -71,7 +74,8 @@ var (
 // newPlan draws a feeder.
 func newPlan(o Options) *plan {
 	r := rand.New(rand.NewPCG(o.Seed, 0x5eed))
-	p := &plan{kW: 12000, taken: make([]bool, o.Buses)}
+	p := &plan{kW: 12000, taken: make([]bool, o.Buses),
+		on: [4]float64{0, 118, 118, 0}, off: [4]float64{0, 124, 124, 0}}
 	three := o.Buses - o.TwoPhase - o.SinglePhase
 	low3, low2, low1 := three/10, o.TwoPhase/4, o.SinglePhase/5
 	deepest, trunk := depthOf(o.Buses), trunkOf(o.Buses)

@@ -3,8 +3,10 @@ package synthetic
 import (
 	"fmt"
 	"math"
+	"math/cmplx"
 
 	"yearflow/sim/feeder"
+	"yearflow/sim/powerflow"
 )
 
 // What the loads are scaled to: the lowest voltage at a part of nominal load.
@@ -38,7 +40,7 @@ func (p *plan) scale(o Options) error {
 		}
 		at := lowest(1)
 		if math.Abs(at-peakLowest) < tolerance {
-			return nil
+			return p.switching(c, out)
 		}
 		// The lowest voltage falls with the load about in a straight line, but for a
 		// tap's step: where the chord lands outside, or there is no solution, halves.
@@ -68,6 +70,38 @@ func (p *plan) scale(o Options) error {
 		p.kW *= factor
 	}
 	return fmt.Errorf("no load brings the lowest voltage to %g p.u.: another seed would do", peakLowest)
+}
+
+// The capacitors that follow the voltage close where it stands at the first part of
+// nominal load and open where it stands at the second.
+const (
+	closesAt = 0.75
+	opensAt  = 0.5
+	span     = 2.0 // V at least: more than 1.5 times the rise that a bank makes
+)
+
+// switching sets the voltages at which the capacitors switch, so that they have work to
+// do on a feeder of any size.
+func (p *plan) switching(c *Circuit, out *powerflow.Solution) error {
+	for k, level := range [2]float64{closesAt, opensAt} {
+		if !c.Settle(c.Level(level), out) {
+			return fmt.Errorf("no solution at %g of nominal load", level)
+		}
+		for i := range c.Net.Model.Capacitors {
+			x := &c.Net.Model.Capacitors[i]
+			if x.Control.Control != feeder.CapacitorVoltage {
+				continue
+			}
+			u := c.Net.At[x.Node][x.Control.Phase[0]]
+			v := 120 * cmplx.Abs(out.V[u]) / c.Net.Unknowns[u].Nominal
+			if k == 0 {
+				p.on[i] = v
+			} else {
+				p.off[i] = max(v, p.on[i]+span)
+			}
+		}
+	}
+	return nil
 }
 
 // singleKVA and threeKVA are the preferred sizes of distribution transformers, of one

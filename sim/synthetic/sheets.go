@@ -49,7 +49,7 @@ func (p *plan) files(o Options) fstest.MapFS {
 		"feeder/sections.csv":           p.sections(),
 		"feeder/transformers.csv":       p.transformers(),
 		"feeder/loads.csv":              p.loadTable(),
-		"feeder/capacitor-settings.csv": fixed(capacitorSettings),
+		"feeder/capacitor-settings.csv": p.capacitorSettings(),
 		"feeder/regulator-settings.csv": fixed(regulatorSettings),
 	}
 	out["feeder/regulators.csv"], out["feeder/capacitors.csv"] = p.devices()
@@ -128,12 +128,14 @@ R2,all,122,2,45,5
 R3,all,122,2,60,5
 `
 
-const capacitorSettings = `capacitor,control,phase,voltage on [V],voltage off [V],delay [s],lockout [s]
-C1,held,,,,,
-C2,voltage,B,118.5,122.5,90,300
-C3,voltage,A,117.5,122.5,120,300
-C4,held,,,,,
-`
+func (p *plan) capacitorSettings() *fstest.MapFile {
+	s := newSheet("capacitor,control,phase,voltage on [V],voltage off [V],delay [s],lockout [s]")
+	s.row("C1", "held", "", "", "", "", "")
+	s.row("C2", "voltage", "B", number(p.on[1], 1), number(p.off[1], 1), "90", "300")
+	s.row("C3", "voltage", "A", number(p.on[2], 1), number(p.off[2], 1), "120", "300")
+	s.row("C4", "held", "", "", "", "", "")
+	return s.file()
+}
 
 func (p *plan) sections() *fstest.MapFile {
 	s := newSheet("section,from,to,phases,length [m],construction")
