@@ -87,6 +87,7 @@ func (s *Solver) assemble() error {
 }
 
 func (s *Solver) refactor() error {
+	s.version++
 	s.noLoadValid = false
 	if k := s.red.update(s.ratio); k >= 0 {
 		s.singular = s.red.clusters[k].dep[0]

@@ -15,6 +15,7 @@ const (
 	None Path = iota
 	FixedPoint
 	Newton
+	InLanes // the fixed point, several instants at once
 )
 
 // String returns the name of the path in the words of run.json.
@@ -24,6 +25,8 @@ func (p Path) String() string {
 		return "fixed point"
 	case Newton:
 		return "newton"
+	case InLanes:
+		return "fixed point in lanes"
 	}
 	return "none"
 }
@@ -84,6 +87,7 @@ type Solver struct {
 	noLoad       []complex128
 	noLoadValid  bool
 	noLoadSource []complex128
+	version      int       // counts the device states that were factored
 	singular     int32     // unknown at which the equations of the devices' state are singular; −1: they are not
 	perUnit      []float64 // 1/V by unknown
 	newton       *newton

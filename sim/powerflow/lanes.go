@@ -1,0 +1,463 @@
+package powerflow
+
+import (
+	"math"
+	"math/cmplx"
+
+	"yearflow/sim/network"
+	"yearflow/sim/powerflow/vector"
+)
+
+// Lanes solves several instants of one device state at once, by the fixed point that
+// Solver iterates, with the factor of the same solver: the same equations for every
+// kind of element. An instant that contracts slowly, or at which a load falls below the
+// corner, is left to the solver.
+//
+// A lane depends on its own inputs and start alone, never on its neighbours or on
+// which of the kernels of package vector is at work. It is not safe for use by several
+// goroutines at once; several Lanes of one solver are, while its devices stand still.
+type Lanes struct {
+	Iterations [vector.Lanes]int
+	Change     [vector.Lanes]float64 // the largest of the last iteration, p.u.
+
+	s       *Solver
+	version int // of the solver's factor that the coefficients are of
+
+	// Values: the independent unknowns in elimination order, the dependent ones, then two
+	// of each fixed voltage. Of v the first of these two is the voltage that injections
+	// see, of x the second that of the equations; the first of x takes the current that
+	// is put into a fixed voltage.
+	v, x      []float64
+	slot      []int32 // by unknown, into v
+	free, all int     // independent ones, and those with the dependent ones
+	held      int     // the second value of the first fixed voltage
+	weight    []float64
+
+	pull, gather, expand, forward, backward vector.Rows
+	pulls                                   [][]fixedStamp
+	gathers, expands                        []int32 // coefficients
+	down, up                                []int32 // slots of the factor
+
+	loads  [4]*vector.Loads
+	power  [4][]float64
+	list   []int8  // by injection: its list, −1: it has no bearing on any unknown, −2: of a group
+	member []int32 // by injection: its place in the list
+	given  []complex128
+
+	least float64 // change that keeps every node's mismatch, where loads are at their largest
+}
+
+// sensitivity bounds how much of its power an injection's current moves by, as power,
+// for a voltage that moves by one: across a pair twice the move of each end, at 0.7 p.u.
+// of √3 times its nominal: 2/(0.7·√3), and some for what is above 1 p.u. That of an
+// inverter is the slope of its function besides.
+const (
+	sensitivity    = 2.5
+	groupSteepness = 100
+)
+
+// NewLanes prepares lanes of a solver. largest is the most that each injection draws,
+// VA, whatever the instant.
+func NewLanes(s *Solver, largest []float64) *Lanes {
+	l := &Lanes{s: s, version: -1, free: s.red.free}
+	l.place()
+	l.rows()
+	l.branches()
+	l.tolerate(largest)
+	return l
+}
+
+// place gives every unknown its value.
+func (l *Lanes) place() {
+	s := l.s
+	l.slot = make([]int32, len(s.Net.Unknowns))
+	l.all = l.free
+	for u, terms := range s.red.terms {
+		if !plainTerm(terms) {
+			l.slot[u] = int32(l.all)
+			l.all++
+		}
+	}
+	l.held = l.all + len(s.Net.Fixed)
+	l.weight = make([]float64, l.all)
+	for u, terms := range s.red.terms {
+		if plainTerm(terms) {
+			if c := terms[0].col; c >= 0 {
+				l.slot[u] = s.pat.place[c]
+			} else {
+				l.slot[u] = int32(l.all) + (-1 - c)
+				continue
+			}
+		}
+		l.weight[l.slot[u]] = s.perUnit[u] * s.perUnit[u]
+	}
+	n := l.held + len(s.Net.Fixed)
+	l.v, l.x = vector.Make(n), vector.Make(n)
+}
+
+// plainTerm tells whether an unknown is an independent or a fixed one.
+func plainTerm(t []term) bool { return len(t) == 1 && t[0].coef < 0 }
+
+// rows lists the sparse matrices of an iteration.
+func (l *Lanes) rows() {
+	s := l.s
+	fixedOf := map[int32][]fixedStamp{}
+	for _, st := range s.toFixed {
+		fixedOf[st.row] = append(fixedOf[st.row], st)
+	}
+	for row := range int32(l.free) {
+		st := fixedOf[row]
+		if len(st) == 0 {
+			continue
+		}
+		var src []int
+		for _, x := range st {
+			src = append(src, l.held+int(x.fixed))
+		}
+		l.pull.Row(int(row), src...)
+		l.pulls = append(l.pulls, st)
+	}
+	into := make([][]int, l.free)
+	coef := make([][]int32, l.free)
+	for u, terms := range s.red.terms {
+		if plainTerm(terms) {
+			continue
+		}
+		var src []int
+		for _, t := range terms {
+			from := l.held + int(-1-t.col)
+			if t.col >= 0 {
+				from = int(s.pat.place[t.col])
+				into[from] = append(into[from], int(l.slot[u]))
+				coef[from] = append(coef[from], t.coef)
+			}
+			src = append(src, from)
+			l.expands = append(l.expands, t.coef)
+		}
+		l.expand.Row(int(l.slot[u]), src...)
+	}
+	for row, src := range into {
+		if len(src) > 0 {
+			l.gather.Row(row, src...)
+			l.gathers = append(l.gathers, coef[row]...)
+		}
+	}
+	l.sweep()
+}
+
+// sweep lists the rows of the two substitutions. Both are worked off row by row, each
+// from what it depends on, level by level of the elimination tree: rows of one level
+// do not wait for each other.
+func (l *Lanes) sweep() {
+	p := l.s.pat
+	n := p.n
+	type entry struct{ row, slot int32 }
+	left := make([][]entry, n) // of each row
+	depth, height := make([]int, n), make([]int, n)
+	for k := range n {
+		for s := p.start[k]; s < p.start[k+1]; s++ {
+			r := p.row[s-int32(n)]
+			left[r] = append(left[r], entry{int32(k), s})
+			height[r] = max(height[r], height[k]+1)
+		}
+	}
+	for k := n - 1; k >= 0; k-- {
+		for s := p.start[k]; s < p.start[k+1]; s++ {
+			depth[k] = max(depth[k], depth[p.row[s-int32(n)]]+1)
+		}
+	}
+	for _, k := range byLevel(height) {
+		if len(left[k]) == 0 {
+			continue
+		}
+		var src []int
+		for _, e := range left[k] {
+			src = append(src, int(e.row))
+			l.down = append(l.down, e.slot)
+		}
+		l.forward.Row(k, src...)
+	}
+	for _, k := range byLevel(depth) {
+		var src []int
+		l.up = append(l.up, int32(k))
+		for s := p.start[k]; s < p.start[k+1]; s++ {
+			src = append(src, int(p.row[s-int32(n)]))
+			l.up = append(l.up, s)
+		}
+		l.backward.Row(k, src...)
+	}
+}
+
+// byLevel sorts rows by level, those of one level by their number.
+func byLevel(level []int) []int {
+	most := 0
+	for _, h := range level {
+		most = max(most, h)
+	}
+	at := make([]int, most+2)
+	for _, h := range level {
+		at[h+1]++
+	}
+	for i := range most + 1 {
+		at[i+1] += at[i]
+	}
+	out := make([]int, len(level))
+	for k, h := range level {
+		out[at[h]] = k
+		at[h]++
+	}
+	return out
+}
+
+// branches sorts the injections into lists.
+func (l *Lanes) branches() {
+	s := l.s
+	for i := range l.loads {
+		l.loads[i] = vector.NewLoads(i&1 == 1, i&2 == 2)
+	}
+	l.list, l.member = make([]int8, len(s.Injections)), make([]int32, len(s.Injections))
+	l.given = make([]complex128, len(s.Groups)*vector.Lanes)
+	free := func(u int32) bool { return u != network.Ground && int(l.slot[u]) < l.all }
+	for k := range s.Injections {
+		j := &s.Injections[k]
+		l.list[k] = -1
+		if j.Group != 0 {
+			l.list[k] = -2
+			continue
+		}
+		if !free(j.From) && !free(j.To) {
+			continue
+		}
+		list, to := 0, 0
+		if j.To != network.Ground {
+			list, to = 1, int(l.slot[j.To])
+		}
+		if j.PC != 1 || j.QC != 1 || j.PI != 0 || j.QI != 0 || j.PZ != 0 || j.QZ != 0 {
+			list += 2
+		}
+		least := 0.0
+		if j.Bent() {
+			least = Corner * Corner * j.Nominal * j.Nominal
+		}
+		n := j.Nominal
+		l.list[k], l.member[k] = int8(list), int32(l.loads[list].Len())
+		l.loads[list].Branch(int(l.slot[j.From]), to, least, [6]float64{j.PC, j.PI / n, j.PZ / (n * n), j.QC, j.QI / n, j.QZ / (n * n)})
+	}
+	for i := range l.loads {
+		l.power[i] = vector.Make(l.loads[i].Len())
+	}
+}
+
+// tolerate finds how small a change must be for the mismatch at every node to be within
+// a tolerance of 1, whatever the instant.
+func (l *Lanes) tolerate(largest []float64) {
+	s := l.s
+	at := make([]float64, len(s.nodeSize))
+	for k := range s.Injections {
+		j := &s.Injections[k]
+		moved := sensitivity * largest[k]
+		if j.Group != 0 {
+			moved *= groupSteepness
+		}
+		for _, u := range j.ends() {
+			if node := s.Net.Unknowns[u].Node; node >= 0 {
+				at[node] += moved
+			}
+		}
+	}
+	l.least = math.Inf(1)
+	for node, moved := range at {
+		if moved > 0 {
+			l.least = min(l.least, max(1000, s.nodeSize[node])/moved)
+		}
+	}
+}
+
+// refresh takes over the coefficients of the solver's device state.
+func (l *Lanes) refresh() {
+	s := l.s
+	if l.version == s.version {
+		return
+	}
+	l.version = s.version
+	put := func(r *vector.Rows, z complex128) { r.Coef = append(r.Coef, real(z), imag(z)) }
+	l.pull.Coef = l.pull.Coef[:0]
+	for _, row := range l.pulls {
+		for _, st := range row {
+			put(&l.pull, -s.Net.Elements[st.element].Y[st.entry]*complex(s.coef(st.a)*s.coef(st.b), 0))
+		}
+	}
+	l.gather.Coef = l.gather.Coef[:0]
+	for _, c := range l.gathers {
+		put(&l.gather, complex(s.coef(c), 0))
+	}
+	l.expand.Coef = l.expand.Coef[:0]
+	for _, c := range l.expands {
+		put(&l.expand, complex(s.coef(c), 0))
+	}
+	l.forward.Coef = l.forward.Coef[:0]
+	for _, at := range l.down {
+		put(&l.forward, -s.f[at])
+	}
+	l.backward.Coef = l.backward.Coef[:0]
+	for _, at := range l.up {
+		if int(at) < s.pat.n {
+			put(&l.backward, s.f[at])
+		} else {
+			put(&l.backward, -s.f[at])
+		}
+	}
+}
+
+// Input sets the inputs of a lane.
+func (l *Lanes) Input(lane int, in *Input) {
+	for f, z := range in.Source {
+		vector.Put(l.v, l.all+f, lane, z)
+		vector.Put(l.x, l.held+f, lane, z)
+	}
+	for k, z := range in.Power {
+		if list := l.list[k]; list >= 0 {
+			vector.Put(l.power[list], int(l.member[k]), lane, z)
+		}
+	}
+	for g := range l.s.Groups {
+		l.given[g*vector.Lanes+lane] = in.Power[l.s.Groups[g].Members[0]]
+	}
+}
+
+// Start sets the voltages that the lanes of a mask start from, or the no-load voltages
+// of their device state at the inputs in where start is nil.
+func (l *Lanes) Start(mask uint8, start []complex128, in *Input) {
+	if start == nil {
+		l.s.setPull(in)
+		l.s.ensureNoLoad(in)
+		start = l.s.noLoad
+	}
+	for u, at := range l.slot {
+		if int(at) >= l.all {
+			continue
+		}
+		for lane := range vector.Lanes {
+			if mask>>lane&1 == 1 {
+				vector.Put(l.v, int(at), lane, start[u])
+			}
+		}
+	}
+}
+
+// Solve iterates the lanes of a mask and returns those that arrived. The others, and
+// those at which some load stands below the corner, are the solver's.
+func (l *Lanes) Solve(mask uint8, tol Tolerance) (arrived uint8) {
+	if l.s.singular >= 0 {
+		return 0
+	}
+	l.refresh()
+	limit := min(tol.Change, tol.Mismatch*l.least)
+	var last, moved [vector.Lanes]float64
+	var slow [vector.Lanes]int
+	for lane := range last {
+		last[lane] = math.Inf(1)
+		l.Iterations[lane] = 0
+	}
+	for range maxFixedPoint {
+		below := l.iterate(mask, &moved)
+		mask &^= below
+		for lane := range vector.Lanes {
+			if mask>>lane&1 == 0 {
+				continue
+			}
+			change := math.Sqrt(moved[lane])
+			l.Iterations[lane]++
+			l.Change[lane] = change
+			left := change
+			if rate := change / last[lane]; rate > 0.5 && rate < 1 {
+				left = change * rate / (1 - rate)
+			}
+			switch {
+			case left < limit:
+				mask &^= 1 << lane
+				arrived |= 1 << lane
+			case !(change <= runaway):
+				mask &^= 1 << lane
+			case change > 0.9*last[lane]:
+				if slow[lane]++; slow[lane] > 4 {
+					mask &^= 1 << lane
+				}
+			}
+			last[lane] = change
+		}
+		if mask == 0 {
+			break
+		}
+	}
+	return arrived
+}
+
+// iterate moves the lanes of a mask by one iteration, and returns those that had a
+// load below the corner before it.
+func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) {
+	clear(l.x[:l.held*vector.Width])
+	l.pull.Set(l.x, l.x)
+	for i, b := range l.loads {
+		below |= b.Draw(l.x, l.v, l.power[i])
+	}
+	for g := range l.s.Groups {
+		below |= l.drawGroup(g, mask)
+	}
+	l.gather.Add(l.x, l.x)
+	l.forward.Add(l.x, l.x)
+	l.backward.Solve(l.x, l.x)
+	l.expand.Set(l.x, l.x)
+	vector.Advance(l.v, l.x, l.weight, mask&^below, moved)
+	return below
+}
+
+// drawGroup takes what a group draws off the currents, lane by lane.
+func (l *Lanes) drawGroup(g int, mask uint8) (below uint8) {
+	s := l.s
+	group := &s.Groups[g]
+	n := float64(len(group.Members))
+	for lane := range vector.Lanes {
+		if mask>>lane&1 == 0 {
+			continue
+		}
+		mean := 0.0
+		for _, k := range group.Members {
+			mean += cmplx.Abs(l.across(&s.Injections[k], lane)) / s.Injections[k].Nominal
+		}
+		if mean /= n; !(mean >= Corner) {
+			below |= 1 << lane
+			continue
+		}
+		p, _ := group.Law.Draws(l.given[g*vector.Lanes+lane], mean)
+		p = complex(real(p)/n, -imag(p)/n)
+		for _, k := range group.Members {
+			j := &s.Injections[k]
+			x := l.across(j, lane)
+			i := p * x * complex(1/(real(x)*real(x)+imag(x)*imag(x)), 0)
+			at := int(l.slot[j.From])
+			vector.Put(l.x, at, lane, vector.At(l.x, at, lane)-i)
+			if j.To != network.Ground {
+				at = int(l.slot[j.To])
+				vector.Put(l.x, at, lane, vector.At(l.x, at, lane)+i)
+			}
+		}
+	}
+	return below
+}
+
+func (l *Lanes) across(j *Injection, lane int) complex128 {
+	x := vector.At(l.v, int(l.slot[j.From]), lane)
+	if j.To != network.Ground {
+		x -= vector.At(l.v, int(l.slot[j.To]), lane)
+	}
+	return x
+}
+
+// Take sets out to the solution of a lane that arrived.
+func (l *Lanes) Take(lane int, out *Solution) {
+	for u, at := range l.slot {
+		out.V[u] = vector.At(l.v, int(at), lane)
+	}
+	out.Path, out.Iterations, out.Change = InLanes, l.Iterations[lane], l.Change[lane]
+}

@@ -1,0 +1,103 @@
+//go:build amd64 && !purego
+
+package vector
+
+import "golang.org/x/sys/cpu"
+
+// kernel is what the processor can do: 2 AVX-512, 1 AVX2 and FMA, 0 neither.
+var kernel = func() int {
+	switch x := &cpu.X86; {
+	case x.HasAVX512F && x.HasAVX512DQ && x.HasAVX512VL && x.HasFMA:
+		return 2
+	case x.HasAVX2 && x.HasFMA:
+		return 1
+	}
+	return 0
+}()
+
+// Kernel names the kernels in use.
+func Kernel() string { return [...]string{"plain", "AVX2", "AVX-512"}[kernel] }
+
+func rowsSet(dst, src *float64, index *int32, coef *float64, rows int) {
+	switch kernel {
+	case 2:
+		rowsSet512(dst, src, index, coef, rows)
+	case 1:
+		rowsSet256(dst, src, index, coef, rows)
+	default:
+		plainRows(dst, src, index, coef, rows, setRow)
+	}
+}
+
+func rowsAdd(dst, src *float64, index *int32, coef *float64, rows int) {
+	switch kernel {
+	case 2:
+		rowsAdd512(dst, src, index, coef, rows)
+	case 1:
+		rowsAdd256(dst, src, index, coef, rows)
+	default:
+		plainRows(dst, src, index, coef, rows, addRow)
+	}
+}
+
+func rowsSolve(dst, src *float64, index *int32, coef *float64, rows int) {
+	switch kernel {
+	case 2:
+		rowsSolve512(dst, src, index, coef, rows)
+	case 1:
+		rowsSolve256(dst, src, index, coef, rows)
+	default:
+		plainRows(dst, src, index, coef, rows, solveRow)
+	}
+}
+
+func drawWye(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
+	switch kernel {
+	case 2:
+		return drawWye512(into, v, power, index, shape, n)
+	case 1:
+		return drawWye256(into, v, power, index, shape, n)
+	}
+	return plainDraw(into, v, power, index, shape, n, false, false)
+}
+
+func drawPair(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
+	switch kernel {
+	case 2:
+		return drawPair512(into, v, power, index, shape, n)
+	case 1:
+		return drawPair256(into, v, power, index, shape, n)
+	}
+	return plainDraw(into, v, power, index, shape, n, true, false)
+}
+
+func drawWyeZIP(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
+	switch kernel {
+	case 2:
+		return drawWyeZIP512(into, v, power, index, shape, n)
+	case 1:
+		return drawWyeZIP256(into, v, power, index, shape, n)
+	}
+	return plainDraw(into, v, power, index, shape, n, false, true)
+}
+
+func drawPairZIP(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
+	switch kernel {
+	case 2:
+		return drawPairZIP512(into, v, power, index, shape, n)
+	case 1:
+		return drawPairZIP256(into, v, power, index, shape, n)
+	}
+	return plainDraw(into, v, power, index, shape, n, true, true)
+}
+
+func advance(v, x, weight *float64, mask *uint64, moved *float64, n int) {
+	switch kernel {
+	case 2:
+		advance512(v, x, weight, mask, moved, n)
+	case 1:
+		advance256(v, x, weight, mask, moved, n)
+	default:
+		plainAdvance(v, x, weight, mask, moved, n)
+	}
+}

@@ -1,0 +1,38 @@
+//go:build !amd64 || purego
+
+package vector
+
+// Kernel names the kernels in use.
+func Kernel() string { return "plain" }
+
+func rowsSet(dst, src *float64, index *int32, coef *float64, rows int) {
+	plainRows(dst, src, index, coef, rows, setRow)
+}
+
+func rowsAdd(dst, src *float64, index *int32, coef *float64, rows int) {
+	plainRows(dst, src, index, coef, rows, addRow)
+}
+
+func rowsSolve(dst, src *float64, index *int32, coef *float64, rows int) {
+	plainRows(dst, src, index, coef, rows, solveRow)
+}
+
+func drawWye(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
+	return plainDraw(into, v, power, index, shape, n, false, false)
+}
+
+func drawPair(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
+	return plainDraw(into, v, power, index, shape, n, true, false)
+}
+
+func drawWyeZIP(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
+	return plainDraw(into, v, power, index, shape, n, false, true)
+}
+
+func drawPairZIP(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
+	return plainDraw(into, v, power, index, shape, n, true, true)
+}
+
+func advance(v, x, weight *float64, mask *uint64, moved *float64, n int) {
+	plainAdvance(v, x, weight, mask, moved, n)
+}

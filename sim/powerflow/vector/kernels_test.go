@@ -1,0 +1,161 @@
+//go:build amd64 && !purego
+
+package vector
+
+import (
+	"math"
+	"math/rand/v2"
+	"testing"
+)
+
+// twin is one kernel in all its forms; each must give the same bits.
+type twin struct {
+	name string
+	run  func(t *testing.T, kind int) [][]float64
+}
+
+// fence surrounds values with numbers that are none, so that a kernel which reads or
+// writes beyond them shows.
+func fence(n int, rng *rand.Rand) (whole, values []float64) {
+	const f = 4 * Width
+	whole = make([]float64, n*Width+2*f)
+	for i := range whole {
+		whole[i] = math.NaN()
+	}
+	values = whole[f : f+n*Width : f+n*Width]
+	for i := range values {
+		values[i] = rng.NormFloat64() * math.Exp(rng.NormFloat64())
+	}
+	return whole, values
+}
+
+// odd puts numbers in that are none, or not finite, or zero.
+func odd(x []float64, rng *rand.Rand) {
+	for range len(x) / 40 {
+		x[rng.IntN(len(x))] = []float64{math.NaN(), math.Inf(1), math.Inf(-1), 0, math.Copysign(0, -1), 1e300, 5e-324}[rng.IntN(7)]
+	}
+}
+
+func same(a, b []float64) (int, bool) {
+	for i := range a {
+		x, y := math.Float64bits(a[i]), math.Float64bits(b[i])
+		if x != y && !(math.IsNaN(a[i]) && math.IsNaN(b[i])) {
+			return i, false
+		}
+	}
+	return 0, true
+}
+
+func kinds() []int {
+	out := []int{0}
+	for k := 1; k <= kernel; k++ {
+		out = append(out, k)
+	}
+	return out
+}
+
+func TestAssemblyEqualsPlainGo(t *testing.T) {
+	if kernel == 0 {
+		t.Skip("this processor has neither AVX2 with FMA nor AVX-512")
+	}
+	for seed := range uint64(60) {
+		rng := func() *rand.Rand { return rand.New(rand.NewPCG(seed, 7)) }
+		for _, tw := range twins(rng, seed%3 == 2) {
+			var want [][]float64
+			for _, k := range kinds() {
+				got := tw.run(t, k)
+				if k == 0 {
+					want = got
+					continue
+				}
+				for i := range got {
+					if at, ok := same(want[i], got[i]); !ok {
+						t.Fatalf("seed %d, %s, kernel %d, array %d, element %d: %g, plain Go %g", seed, tw.name, k, i, at, got[i][at], want[i][at])
+					}
+				}
+			}
+		}
+	}
+}
+
+func twins(random func() *rand.Rand, wild bool) (out []twin) {
+	const n = 23
+	for kind, name := range []string{"Set", "Add", "Solve"} {
+		out = append(out, twin{name, func(t *testing.T, k int) [][]float64 {
+			rng := random()
+			whole, x := fence(n, rng)
+			from, y := fence(n, rng)
+			if wild {
+				odd(x, rng)
+				odd(y, rng)
+			}
+			var r Rows
+			for i := range n - 1 {
+				var src []int
+				for range rng.IntN(5) {
+					src = append(src, rng.IntN(n))
+				}
+				r.Row(i, src...)
+			}
+			for range 2 * (r.Entries() + r.Len()) {
+				r.Coef = append(r.Coef, rng.NormFloat64())
+			}
+			d, s, i, c := &x[0], &y[0], &r.index[0], &r.Coef[0]
+			f := [][3]func(dst, src *float64, index *int32, coef *float64, rows int){
+				{nil, nil, nil},
+				{rowsSet256, rowsAdd256, rowsSolve256},
+				{rowsSet512, rowsAdd512, rowsSolve512},
+			}[k][kind]
+			if f == nil {
+				plainRows(d, s, i, c, r.rows, kind)
+			} else {
+				f(d, s, i, c, r.rows)
+			}
+			return [][]float64{whole, from}
+		}})
+	}
+	for mode, name := range []string{"wye", "pair", "wye ZIP", "pair ZIP"} {
+		out = append(out, twin{name, func(t *testing.T, k int) [][]float64 {
+			rng := random()
+			whole, into := fence(n, rng)
+			_, v := fence(n, rng)
+			_, s := fence(2*n, rng)
+			if wild {
+				odd(v, rng)
+				odd(s, rng)
+			}
+			l := NewLoads(mode&1 == 1, mode >= 2)
+			for range 2 * n {
+				l.Branch(rng.IntN(n), rng.IntN(n), rng.Float64(), [6]float64{rng.Float64(), rng.Float64(), rng.Float64(), rng.Float64(), rng.Float64(), rng.Float64()})
+			}
+			var below uint64
+			if k == 0 {
+				below = plainDraw(&into[0], &v[0], &s[0], &l.index[0], &l.shape[0], l.n, l.pair, l.zi)
+			} else {
+				f := [][4]func(into, v, power *float64, index *int32, shape *float64, n int) uint64{
+					{drawWye256, drawPair256, drawWyeZIP256, drawPairZIP256},
+					{drawWye512, drawPair512, drawWyeZIP512, drawPairZIP512},
+				}[k-1][mode]
+				below = f(&into[0], &v[0], &s[0], &l.index[0], &l.shape[0], l.n)
+			}
+			return [][]float64{whole, {float64(below)}}
+		}})
+	}
+	return append(out, twin{"advance", func(t *testing.T, k int) [][]float64 {
+		rng := random()
+		whole, v := fence(n, rng)
+		_, x := fence(n, rng)
+		if wild {
+			odd(x, rng)
+		}
+		w := make([]float64, n)
+		for i := range w {
+			w[i] = rng.Float64()
+		}
+		m := &masks[rng.IntN(256)]
+		var moved [Lanes]float64
+		f := []func(v, x, weight *float64, mask *uint64, moved *float64, n int){plainAdvance, advance256, advance512}[k]
+		f(&v[0], &x[0], &w[0], &m[0], &moved[0], n)
+		return [][]float64{whole, moved[:]}
+	}})
+}
