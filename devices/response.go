@@ -101,6 +101,10 @@ func (f *Inverter) lags() (p, q Lag) {
 	return Lag{f.voltWattResponse(), still * f.rated()}, Lag{f.response(), still * f.Rating}
 }
 
+// Responses returns the open loop response times that hold: of the reactive function, and
+// of voltage-active power; the defaults of the standard where the sheet has none.
+func (f *Inverter) Responses() (reactive, active Time) { return f.response(), f.voltWattResponse() }
+
 func (f *Inverter) response() Time {
 	switch {
 	case f.Response > 0:

@@ -362,7 +362,7 @@ func (c *compareDocument) groupSection(group, heading string) Section {
 func (c *compareDocument) sheetSections() []Section {
 	var out []Section
 	if len(c.names) > 1 && len(c.sheets.Rows) == 0 {
-		return []Section{{Heading: "Settings sheets", Blocks: []Block{Paragraph{Plain("No undominated case changes the control of a regulator or a capacitor, so there is no sheet to enter.")}}}}
+		return []Section{{Heading: "Settings sheets", Blocks: []Block{Paragraph{Plain("No undominated case changes the control of a regulator, a capacitor or an inverter, so there is no sheet to enter.")}}}}
 	}
 	for i := range c.sheets.Rows {
 		name, file := c.sheets.Cell(i, "case"), c.sheets.Cell(i, "file")

@@ -15,9 +15,9 @@ func or(x, blank float64) float64 {
 	return x
 }
 
-// inverterSheet is the sheet of a function for one inverter; blanks are the defaults
-// of its category.
-func inverterSheet(f *feeder.InverterFunction, rating float64) devices.Inverter {
+// InverterSheet is the sheet of a function for one inverter of a rating in kVA; blanks are
+// the defaults of its category.
+func InverterSheet(f *feeder.InverterFunction, rating float64) devices.Inverter {
 	s := devices.Inverter{Rating: rating, AtNight: f.AtNight, VoltWattOn: f.VoltWatt, Limit: or(f.Limit, 0),
 		PowerFactor: or(f.PowerFactor, 0), Reactive: or(f.Constant, 0)}
 	if f.CategoryA {

@@ -67,13 +67,13 @@ func (e *Engine) preparePlants(in *inputs) error {
 	p := &e.plants
 	step := e.Study.Settings.Period.Step
 	for i := range m.Functions { // shares of a rating all of them: any rating does
-		sheet := inverterSheet(&m.Functions[i], 1)
+		sheet := InverterSheet(&m.Functions[i], 1)
 		for _, err := range sheet.Check() {
 			faults.Add(m.Functions[i].At, "function %q: %v", m.Functions[i].Name, err)
 		}
 	}
 	add := func(f int, rating float64, group int) *inverter {
-		sheet := inverterSheet(&m.Functions[f], rating)
+		sheet := InverterSheet(&m.Functions[f], rating)
 		law := in.laws[group]
 		law.sheet, law.members = sheet, float64(len(in.groups[group].Members))
 		v := &inverter{law: law, group: group, generator: -1, lags: sheet.Lags(step)}

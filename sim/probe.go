@@ -128,7 +128,7 @@ func (s *Sizer) Set(generator int, factor float64) {
 	for _, v := range e.plants.inverters {
 		if v.generator == generator {
 			g := &e.net.Model.Generators[generator]
-			v.law.sheet = inverterSheet(&e.net.Model.Functions[g.Function], g.KVA*max(factor, least))
+			v.law.sheet = InverterSheet(&e.net.Model.Functions[g.Function], g.KVA*max(factor, least))
 		}
 	}
 }

@@ -223,7 +223,7 @@ func sheetRows(base, other *feeder.Model) (out []SheetRow) {
 		}
 		out = append(out, lines(bank.Name, "", capacitorItems(), before, bank.Control)...)
 	}
-	return out
+	return append(out, inverterRows(base, other)...)
 }
 
 // lines leaves out what is blank on both sides.
@@ -279,7 +279,7 @@ func (c *Comparison) cautions() {
 			add(x.Name, "The case changes what the feeder serves or how it is built (%s): what it buys and costs is not due to settings alone.", t)
 		}
 		if k > 0 && c.differs(k) && !slices.ContainsFunc(c.Sheets, func(s Sheet) bool { return s.Case == x.Name }) {
-			add(x.Name, "No settings sheet: the case is dominated or not ranked, or changes no control of a regulator or capacitor; all that it changes stands in settings.csv.")
+			add(x.Name, "No settings sheet: the case is dominated or not ranked, or changes no control of a regulator, a capacitor or an inverter; all that it changes stands in settings.csv.")
 		}
 		low, unsolved := x.number("low steps"), x.number("unsolved steps")
 		if low+unsolved > 0 {
@@ -307,6 +307,10 @@ func (c *Comparison) serves(k int) string {
 		switch s.Table {
 		case "regulator-settings", "capacitor-settings", "inverter-functions":
 			continue
+		case "generators", "batteries":
+			if s.Column == "function" || s.Column == "power factor" {
+				continue
+			}
 		}
 		name := s.Table
 		if name == "study.toml" {
