@@ -45,7 +45,11 @@ func LossesDocument(dir string) (*Document, error) {
 	}
 	d.Sections = append(d.Sections, where, l.factorSection())
 	if l.marginal != nil {
-		d.Sections = append(d.Sections, l.marginalSection())
+		m, err := l.marginalSection()
+		if err != nil {
+			return nil, err
+		}
+		d.Sections = append(d.Sections, m)
 	}
 	d.Sections = append(d.Sections, l.worthSection())
 	if l.saving != nil {
@@ -173,16 +177,21 @@ func abs(x float64) float64 {
 	return x
 }
 
-func (l *lossesDocument) marginalSection() Section {
+func (l *lossesDocument) marginalSection() (Section, error) {
 	s := Section{Heading: "Marginal losses and the value of a kW saved"}
 	n := len(l.marginal.Rows)
 	if n == 0 {
 		s.Blocks = []Block{Paragraph{Plain("No sampled step could be solved.")}}
-		return s
+		return s, nil
 	}
 	s.Blocks = append(s.Blocks, Paragraph{Say("A kW more is served with {} of losses on the way at {}, the most of all places, and with {} at {}, the least. As a check: losses that go with the square of the load cost at the margin about twice their average share.",
 		l.marginal.Value(0, "marginal losses [%]"), l.marginal.Name(0, "node"), l.marginal.Value(n-1, "marginal losses [%]"), l.marginal.Name(n-1, "node"))},
 		Paragraph{Plain("How: " + l.said("marginal") + ". Devices stand still, other loads answer the voltage as their ZIP says; the power is added at unity power factor, shared over the node's phases.")})
+	figures, err := l.marginalFigures(newStyle(200))
+	if err != nil {
+		return s, err
+	}
+	s.Blocks = append(s.Blocks, figures...)
 	rows := make([]int, 0, 2*shownElements)
 	for i := range n {
 		if i < shownElements || i >= n-5 {
@@ -196,19 +205,22 @@ func (l *lossesDocument) marginalSection() Section {
 	money := l.money(l.marginal)
 	var losses []string
 	for _, h := range l.marginal.Header {
-		if !slices.Contains(money, h) {
+		if !slices.Contains(money, h) && !slices.Contains(mapColumns, headOf(h)) {
 			losses = append(losses, h)
 		}
 	}
 	s.Blocks = append(s.Blocks, l.marginal.Table(caption, losses, slices.Clip(rows), "phases"))
 	if len(money) == 0 {
-		return s
+		return s, nil
 	}
 	t := l.marginal.Table("Value of a kW saved all year at the same places", append([]string{"node"}, money...), slices.Clip(rows))
 	t.Note = Plain("The value of a kW saved all year: its energy and the losses that it saves, at the price of the step; its demand and the losses at the charged peak of each month. All places: marginal.csv.")
 	s.Blocks = append(s.Blocks, t)
-	return s
+	return s, nil
 }
+
+// mapColumns of marginal.csv say where a place stands, and are for the figure.
+var mapColumns = []string{"fed from", "x", "y", "longitude", "latitude"}
 
 func (l *lossesDocument) worthSection() Section {
 	s := Section{Heading: "Worth"}

@@ -120,7 +120,7 @@ func (l *LossEstimate) worth() NamedTable {
 		return t
 	}
 	pwf := PresentWorthFactor(p.Rate, p.Years)
-	add("rate a year", trimmed(100*p.Rate), "%", "[prices] rate")
+	add("rate a year", trimmed(round4(100*p.Rate)), "%", "[prices] rate")
 	add("years", trimmed(p.Years), "years", "[prices] years")
 	add("present worth factor", results.FigureText(pwf), "years", "((1+i)^n − 1)/(i·(1+i)^n)")
 	add("present worth of the losses", money(yearly*pwf), l.Currency, "cost a year times the factor; loads and prices stay as they are")

@@ -35,6 +35,8 @@ type Marginal struct {
 type MarginalPlace struct {
 	Node, Phases     string
 	DistanceKM       float64
+	FedFrom          string  // the next place of the table towards the source; blank at a source
+	X, Y             float64 // as nodes.csv has them: m, or degrees; NaN where it does not say
 	Mean, Low, High  float64 // kW of losses per kW more, over the samples
 	Priced           float64 // mean of price·m over mean price; NaN without a price
 	AtPeak           float64 // mean over the months' peaks
@@ -216,9 +218,10 @@ func gather(c *Case, nodes []int, samples []sampled, rows [][]float64) *Marginal
 	for _, p := range c.Results.Places {
 		distance[p.Node] = p.DistanceKM
 	}
+	fed := fedFrom(c.Study.Model, nodes)
 	for _, n := range nodes {
 		node := &c.Study.Model.Nodes[n]
-		x := MarginalPlace{Node: node.Name, DistanceKM: math.NaN(), Low: math.Inf(1), High: math.Inf(-1)}
+		x := MarginalPlace{Node: node.Name, DistanceKM: math.NaN(), FedFrom: fed[n], X: node.X, Y: node.Y, Low: math.Inf(1), High: math.Inf(-1)}
 		if d, ok := distance[node.Name]; ok {
 			x.DistanceKM = d
 		}
@@ -256,7 +259,61 @@ func gather(c *Case, nodes []int, samples []sampled, rows [][]float64) *Marginal
 	return m
 }
 
+// fedFrom names for each node the next of the asked ones on the way to a source, the way
+// of the fewest elements; of equally short ones the first of the tables.
+func fedFrom(m *feeder.Model, asked []int) map[int]string {
+	near := make([][]int, len(m.Nodes))
+	join := func(a, b int) { near[a], near[b] = append(near[a], b), append(near[b], a) }
+	for i := range m.Sections {
+		join(m.Sections[i].From, m.Sections[i].To)
+	}
+	for i := range m.Transformers {
+		join(m.Transformers[i].From, m.Transformers[i].To)
+	}
+	for i := range m.Regulators {
+		join(m.Regulators[i].From, m.Regulators[i].To)
+	}
+	for i := range m.Switches {
+		if m.Switches[i].Closed {
+			join(m.Switches[i].From, m.Switches[i].To)
+		}
+	}
+	taken, reached := make([]bool, len(m.Nodes)), make([]bool, len(m.Nodes))
+	for _, n := range asked {
+		taken[n] = true
+	}
+	out := make(map[int]string, len(asked))
+	var queue []int
+	for i := range m.Sources {
+		if n := m.Sources[i].Node; !reached[n] {
+			reached[n] = true
+			queue = append(queue, n)
+		}
+	}
+	for ; len(queue) > 0; queue = queue[1:] {
+		from := queue[0]
+		name := out[from] // an asked node is named by itself, another by who feeds it
+		if taken[from] {
+			name = m.Nodes[from].Name
+		}
+		for _, to := range near[from] {
+			if !reached[to] {
+				reached[to] = true
+				out[to] = name
+				queue = append(queue, to)
+			}
+		}
+	}
+	return out
+}
+
+// marginalNoise is a marginal loss below which it is one of the solver's tolerance: 0.
+const marginalNoise = 1e-8
+
 func (x *MarginalPlace) take(s sampled, v float64, second bool) {
+	if math.Abs(v) < marginalNoise {
+		v = 0
+	}
 	switch {
 	case math.IsNaN(v):
 		x.Missing++
@@ -281,13 +338,22 @@ func (x *MarginalPlace) take(s sampled, v float64, second bool) {
 // a kW that is saved there all year is worth at the source, with the losses that it
 // saves.
 func (l *LossEstimate) marginalTable() NamedTable {
-	head := []string{"node", "phases", "distance [km]", "marginal losses [%]", "lowest [%]", "highest [%]", "at monthly peaks [%]", "losses saved by 1 kW all year [kWh]"}
+	head := []string{"node", "phases", "distance [km]", "fed from"}
+	// Where a place stands on the map, so that the figure is drawn from this table alone.
+	x, y := l.coordinates()
+	if x != "" {
+		head = append(head, x, y)
+	}
+	head = append(head, "marginal losses [%]", "lowest [%]", "highest [%]", "at monthly peaks [%]", "losses saved by 1 kW all year [kWh]")
 	per := " [" + l.Currency + "/kW a year]"
 	if l.priced() {
 		head = append(head, "energy of 1 kW saved"+per, "of it losses"+per)
 	}
 	if l.demands() {
 		head = append(head, "demand of 1 kW saved"+per)
+	}
+	if l.priced() || l.demands() {
+		head = append(head, "value of 1 kW saved"+per)
 	}
 	worth := !feeder.Unknown(l.prices.Rate) && (l.priced() || l.demands())
 	if worth {
@@ -301,8 +367,12 @@ func (l *LossEstimate) marginalTable() NamedTable {
 	}
 	months := float64(len(l.meters[0].months))
 	for _, x := range l.Marginal.Places {
-		row := []string{x.Node, x.Phases, results.FigureText(x.DistanceKM), results.FigureText(100 * x.Mean), results.FigureText(100 * x.Low), results.FigureText(100 * x.High),
-			results.FigureText(100 * x.AtPeak), results.FigureText(hours * x.Mean)}
+		row := []string{x.Node, x.Phases, results.FigureText(x.DistanceKM), x.FedFrom}
+		if y != "" {
+			row = append(row, results.FigureText(x.X), results.FigureText(x.Y))
+		}
+		row = append(row, results.FigureText(100*x.Mean), results.FigureText(100*x.Low), results.FigureText(100*x.High),
+			results.FigureText(100*x.AtPeak), results.FigureText(hours*x.Mean))
 		yearly := 0.0
 		if l.priced() {
 			row = append(row, money(hours*price*(1+x.Priced)), money(hours*price*x.Priced))
@@ -313,10 +383,28 @@ func (l *LossEstimate) marginalTable() NamedTable {
 			row = append(row, money(d))
 			yearly += d
 		}
+		if l.priced() || l.demands() {
+			row = append(row, money(yearly))
+		}
 		if worth {
 			row = append(row, money(yearly*PresentWorthFactor(l.prices.Rate, l.prices.Years)))
 		}
 		t.Rows = append(t.Rows, row)
 	}
 	return t
+}
+
+// coordinates heads the columns of the places' coordinates; blank where no place has any.
+func (l *LossEstimate) coordinates() (x, y string) {
+	m := l.Cases[0].Study.Model
+	for i := range m.Nodes {
+		switch n := &m.Nodes[i]; {
+		case math.IsNaN(n.X + n.Y):
+		case n.LonLat:
+			return "longitude [deg]", "latitude [deg]"
+		default:
+			return "x [m]", "y [m]"
+		}
+	}
+	return "", ""
 }
