@@ -274,7 +274,7 @@ func (c *impactDocument) mitigationSection() (Section, error) {
 		}
 		what.Rows = append(what.Rows, Fact{upper(c.list.Cell(i, "mitigation")), Plain(text)})
 	}
-	t.Note = Plain("Mended: fails without the remedy and passes with it. Newly failed: the other way round. Counted are the criteria of mitigations.csv, in which the return of units and other units' loss are left out.")
+	t.Note = Plain("Mended: fails without the remedy and passes with it. Newly failed: the other way round. Counted are the criteria of mitigations.csv, in which the loss and return of other units than the case's are left out.")
 	s.Blocks = append(s.Blocks, what, t)
 	if p, f := c.remedyFigure(newStyle(200)); p != nil {
 		b, err := c.picture(p, f)

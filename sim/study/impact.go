@@ -149,75 +149,126 @@ func ratedKW(g *feeder.Generator) float64 {
 	return g.KVA
 }
 
-// run makes every run: first the base and the case, then what needs to know when the
-// units of these do something.
+// returning is a set of units that comes back in a year without them: it jumps to full,
+// in the steps in which log has the units do something. set takes the jump.
+type returning struct {
+	full  *feeder.Study
+	log   *activity
+	event string
+	set   func(*jump)
+}
+
+// lonelyYear is a study without some units, and what comes back in it.
+type lonelyYear struct {
+	study *feeder.Study
+	back  []returning
+}
+
+// run makes every run: the base and the case; then the remedies, and the years without
+// units, which need to know when the units do something.
 func (im *impacting) run(ctx context.Context) error {
-	steps := im.base.Settings.Period.Steps()
-	type year struct {
-		study *feeder.Study
-		event string // what comes back; blank: a mitigation
-		log   *activity
-		of    *map[string]*jump
-		full  *feeder.Study
-	}
 	logB, logW := &activity{}, &activity{}
-	var later []year
+	var early, late []lonelyYear
 	for _, x := range []struct {
-		full   *feeder.Study
-		log    *activity
-		of     *map[string]*jump
-		events []event
-	}{{im.base, logB, &im.backB, im.events(im.base)}, {im.with, logW, &im.backW, im.events(im.with)}} {
-		for _, ev := range x.events {
-			if !ev.units.empty() {
-				later = append(later, year{variant(x.full, x.full.Case+" without "+ev.name, ev.units.without), ev.name, x.log, x.of, x.full})
+		full *feeder.Study
+		log  *activity
+		of   map[string]*jump
+	}{{im.base, logB, im.backB}, {im.with, logW, im.backW}} {
+		for _, ev := range im.events(x.full) {
+			if ev.units.empty() {
+				continue
+			}
+			y := lonelyYear{variant(x.full, x.full.Case+" without "+ev.name, ev.units.without),
+				[]returning{{x.full, x.log, ev.name, func(j *jump) { x.of[ev.name] = j }}}}
+			if x.full == im.with && ev.name == caseEvent {
+				late = append(late, y)
+			} else {
+				early = append(early, y)
 			}
 		}
 	}
-	if im.set.Begin != nil {
-		im.set.Begin((2 + len(later) + im.tried()) * steps)
+	// A remedy that changes the units alone leaves the year without them as it is, so that
+	// the units come back with it in the same year; one of settings has its own.
+	for i := range im.variants {
+		m := &im.variants[i]
+		if m.Why != "" {
+			continue
+		}
+		r := returning{m.study, &m.log, caseEvent, func(j *jump) { m.back = j }}
+		if m.settings {
+			late = append(late, lonelyYear{variant(m.study, m.study.Case+" without "+caseEvent, im.own.without), []returning{r}})
+		} else {
+			late[0].back = append(late[0].back, r)
+		}
 	}
+	if im.set.Begin != nil {
+		im.set.Begin((2 + len(early) + im.tried() + len(late)) * im.base.Settings.Period.Steps())
+	}
+	if err := im.together(ctx, 2, func(ctx context.Context, i int) (err error) {
+		if i == 0 {
+			im.b, err = im.full(ctx, im.base, logB, im.lossB)
+		} else {
+			im.w, err = im.full(ctx, im.with, logW, im.lossW)
+		}
+		return err
+	}); err != nil {
+		return err
+	}
+	jumps := make([][]*jump, len(early)+len(late))
+	if err := im.together(ctx, len(early)+len(im.variants), func(ctx context.Context, i int) (err error) {
+		if i < len(early) {
+			jumps[i], err = im.comeBack(ctx, early[i])
+			return err
+		}
+		return im.mitigate(ctx, &im.variants[i-len(early)])
+	}); err != nil {
+		return err
+	}
+	if err := im.together(ctx, len(late), func(ctx context.Context, i int) (err error) {
+		jumps[len(early)+i], err = im.comeBack(ctx, late[i])
+		return err
+	}); err != nil {
+		return err
+	}
+	for i, y := range append(early, late...) {
+		for k, r := range y.back {
+			r.set(jumps[i][k])
+		}
+	}
+	return nil
+}
+
+// together does n things at once, as many as there are workers.
+func (im *impacting) together(ctx context.Context, n int, do func(ctx context.Context, i int) error) error {
 	g, gctx := errgroup.WithContext(ctx)
 	g.SetLimit(im.workers())
-	var errs [2]error
-	g.Go(func() error { im.b, errs[0] = im.full(gctx, im.base, logB, im.lossB); return errs[0] })
-	g.Go(func() error { im.w, errs[1] = im.full(gctx, im.with, logW, im.lossW); return errs[1] })
-	if err := g.Wait(); err != nil {
-		return first(err, errs[:])
-	}
-	g, gctx = errgroup.WithContext(ctx)
-	g.SetLimit(im.workers())
-	jumps := make([]*jump, len(later))
-	all := make([]error, len(later)+len(im.variants))
-	for i, y := range later {
+	all := make([]error, n)
+	for i := range n {
 		g.Go(func() error {
-			_, err := runTrial(gctx, y.study, im.demo, im.watched(func(e *sim.Engine) ([]sim.Recorder, error) {
-				j, err := newJump(e, variant(y.full, y.full.Case, nil), im.demo, y.log.active(y.event))
-				if err != nil {
-					return nil, err
-				}
-				j.storage = y.log.stored
-				jumps[i] = j
-				return []sim.Recorder{j}, nil
-			}))
-			all[i] = err
-			return err
-		})
-	}
-	for i := range im.variants {
-		g.Go(func() error {
-			err := im.mitigate(gctx, &im.variants[i])
-			all[len(later)+i] = err
-			return err
+			all[i] = do(gctx, i)
+			return all[i]
 		})
 	}
 	if err := g.Wait(); err != nil {
 		return first(err, all)
 	}
-	for i, y := range later {
-		(*y.of)[y.event] = jumps[i]
-	}
 	return nil
+}
+
+// comeBack runs a year without units and jumps to each study with them.
+func (im *impacting) comeBack(ctx context.Context, y lonelyYear) (jumps []*jump, err error) {
+	_, err = runTrial(ctx, y.study, im.demo, im.watched(func(e *sim.Engine) (out []sim.Recorder, err error) {
+		for _, r := range y.back {
+			j, err := newJump(e, variant(r.full, r.full.Case, nil), im.demo, r.log.active(r.event))
+			if err != nil {
+				return nil, err
+			}
+			j.storage = r.log.stored
+			jumps, out = append(jumps, j), append(out, j)
+		}
+		return out, nil
+	}))
+	return jumps, err
 }
 
 // first returns the first error by place that is no consequence of another.

@@ -5,6 +5,7 @@ import (
 	"fmt"
 	"math"
 	"slices"
+	"strings"
 
 	"yearflow/sim"
 	"yearflow/sim/feeder"
@@ -24,52 +25,62 @@ type Mitigation struct {
 // returns why it cannot.
 type mitigating struct {
 	Mitigation
-	study *feeder.Study
-	run   *trial
-	loss  *jump
+	settings   bool // it changes controls of the feeder, and not the units alone
+	study      *feeder.Study
+	run        *trial
+	log        activity
+	loss, back *jump
 }
 
 // mitigations prepares the remedies: in memory, from the case's model.
 func (im *impacting) mitigations() []mitigating {
-	gens := func(m *feeder.Model, change func(*feeder.Generator) string) string {
-		why, any := "the case has no generator of its own: batteries have no such setting here", false
+	// units changes every generator and battery of the case.
+	units := func(m *feeder.Model, generator func(*feeder.Generator) string, battery func(*feeder.Battery)) string {
 		for i := range m.Generators {
 			if g := &m.Generators[i]; im.own.generators[g.Name] {
-				any = true
-				if w := change(g); w != "" {
-					return w
+				if why := generator(g); why != "" {
+					return why
 				}
 			}
 		}
-		if !any {
-			return why
+		for i := range m.Batteries {
+			if b := &m.Batteries[i]; im.own.batteries[b.Name] {
+				battery(b)
+			}
 		}
 		return ""
 	}
-	factor := func(pf float64) func(*feeder.Model) string {
-		return func(m *feeder.Model) string {
-			return gens(m, func(g *feeder.Generator) string { g.PF, g.Function = -pf, -1; return "" })
-		}
-	}
+	// A battery's inverter has its power factor by a function, a generator's by its row.
 	function := func(f feeder.InverterFunction) func(*feeder.Model) string {
 		return func(m *feeder.Model) string {
 			m.Functions = append(m.Functions, f)
 			k := len(m.Functions) - 1
-			return gens(m, func(g *feeder.Generator) string { g.PF, g.Function = 1, k; return "" })
+			return units(m, func(g *feeder.Generator) string { g.PF, g.Function = 1, k; return "" }, func(b *feeder.Battery) { b.Function = k })
+		}
+	}
+	factor := func(pf float64) func(*feeder.Model) string {
+		return func(m *feeder.Model) string {
+			f := blankFunction("constant power factor", false)
+			f.PowerFactor = -pf
+			m.Functions = append(m.Functions, f)
+			k := len(m.Functions) - 1
+			return units(m, func(g *feeder.Generator) string { g.PF, g.Function = -pf, -1; return "" }, func(b *feeder.Battery) { b.Function = k })
 		}
 	}
 	size := func(share float64) func(*feeder.Model) string {
 		return func(m *feeder.Model) string {
-			why := gens(m, func(g *feeder.Generator) string { return im.resize(g, share) })
-			for i := range m.Batteries {
-				if b := &m.Batteries[i]; im.own.batteries[b.Name] {
-					b.EnergyKWh, b.KW, b.KVA = share*b.EnergyKWh, share*b.KW, share*b.KVA
-					if len(im.own.generators) == 0 {
-						why = ""
-					}
-				}
+			return units(m, func(g *feeder.Generator) string { return im.resize(g, share) }, func(b *feeder.Battery) {
+				b.EnergyKWh, b.KVA = share*b.EnergyKWh, share*b.KVA
+				limitDispatch(b, share)
+			})
+		}
+	}
+	dispatch := func(share float64) func(*feeder.Model) string {
+		return func(m *feeder.Model) string {
+			if len(im.own.batteries) == 0 {
+				return "the case has no battery of its own"
 			}
-			return why
+			return units(m, func(*feeder.Generator) string { return "" }, func(b *feeder.Battery) { limitDispatch(b, share) })
 		}
 	}
 	controls := func(change func(*feeder.TapSettings)) func(*feeder.Model) string {
@@ -95,19 +106,21 @@ func (im *impacting) mitigations() []mitigating {
 	var out []mitigating
 	for _, x := range []struct {
 		name, what string
+		settings   bool
 		apply      func(*feeder.Model) string
 	}{
-		{"power factor 0.98", "the generators of the case absorb reactive power at a power factor of 0.98", factor(0.98)},
-		{"power factor 0.95", "the generators of the case absorb reactive power at a power factor of 0.95", factor(0.95)},
-		{"volt-var", "voltage-reactive power of category B with the default points of IEEE Std 1547-2018, table 8: 0.92, 0.98, 1.02, 1.08 p.u., 44 %", function(blankFunction("voltage-reactive power", false))},
-		{"volt-watt", "voltage-active power with the default points of IEEE Std 1547-2018, table 10: 1.06 and 1.10 p.u.", function(blankFunction("constant power factor", true))},
-		{"75 % of the size", "three quarters of the rating", size(0.75)},
-		{"50 % of the size", "half of the rating", size(0.50)},
-		{"set voltages 1 V lower", "every tap changer regulates 1 V lower", lower(1)},
-		{"set voltages 2 V lower", "every tap changer regulates 2 V lower", lower(2)},
-		{"reverse mode stay", "every tap changer stays with the load side on reverse power, by its forward settings where it has no others", controls(stay)},
+		{"power factor 0.98", "the generators and batteries of the case absorb reactive power at a power factor of 0.98, batteries when they charge too", false, factor(0.98)},
+		{"power factor 0.95", "the same at a power factor of 0.95", false, factor(0.95)},
+		{"volt-var", "voltage-reactive power of category B with the default points of IEEE Std 1547-2018, table 8: 0.92, 0.98, 1.02, 1.08 p.u., 44 %, of generators and batteries; none while a battery rests", false, function(blankFunction("voltage-reactive power", false))},
+		{"volt-watt", "voltage-active power with the default points of IEEE Std 1547-2018, table 10: 1.06 and 1.10 p.u.; it limits what is delivered, not what a battery draws", false, function(blankFunction("constant power factor", true))},
+		{"75 % of the size", "three quarters of the rating, and of a battery's energy", false, size(0.75)},
+		{"50 % of the size", "half of the rating, and of a battery's energy", false, size(0.50)},
+		{"dispatch at most 50 %", "the batteries of the case deliver and draw at most half of their power, with the energy that they have", false, dispatch(0.50)},
+		{"set voltages 1 V lower", "every tap changer regulates 1 V lower", true, lower(1)},
+		{"set voltages 2 V lower", "every tap changer regulates 2 V lower", true, lower(2)},
+		{"reverse mode stay", "every tap changer stays with the load side on reverse power, by its forward settings where it has no others", true, controls(stay)},
 	} {
-		m := mitigating{Mitigation: Mitigation{Name: x.name, What: x.what}}
+		m := mitigating{Mitigation: Mitigation{Name: x.name, What: x.what}, settings: x.settings}
 		m.study = variant(im.with, im.with.Case+", "+x.name, func(model *feeder.Model) { m.Why = x.apply(model) })
 		out = append(out, m)
 	}
@@ -130,6 +143,17 @@ func blankFunction(reactive string, voltWatt bool) feeder.InverterFunction {
 	return feeder.InverterFunction{Name: "mitigation", Reactive: reactive, PowerFactor: nan, Constant: nan, Reference: nan,
 		V: [4]float64{nan, nan, nan, nan}, Q: [4]float64{nan, nan, nan, nan}, P: [3]float64{nan, nan, nan},
 		VoltWatt: voltWatt, VoltWattV: [2]float64{nan, nan}, VoltWattP2: nan, Response: nan, WattTime: nan, Limit: nan}
+}
+
+// limitDispatch lets a battery deliver and draw a share of its power; a profile in p.u.
+// goes with it, other dispatch is cut off there.
+func limitDispatch(b *feeder.Battery, share float64) {
+	b.KW *= share
+	b.Windows = slices.Clone(b.Windows)
+	for i := range b.Windows {
+		w := &b.Windows[i]
+		w.KW = math.Max(-b.KW, math.Min(b.KW, w.KW))
+	}
 }
 
 // resize makes a generator a share of its size.
@@ -171,14 +195,13 @@ func (im *impacting) mitigate(ctx context.Context, m *mitigating) error {
 	if m.Why != "" {
 		return nil
 	}
+	does := im.own.delivers(m.study.Model)
+	m.log.add(caseEvent, does)
 	var err error
 	m.run, err = runTrial(ctx, m.study, im.demo, im.watched(func(e *sim.Engine) ([]sim.Recorder, error) {
-		j, err := newJump(e, variant(m.study, m.study.Case+" without", im.own.without), im.demo, im.own.delivers(m.study.Model))
-		if err != nil {
-			return nil, err
-		}
+		j, err := newJump(e, variant(m.study, m.study.Case+" without", im.own.without), im.demo, does)
 		m.loss = j
-		return []sim.Recorder{j}, nil
+		return []sim.Recorder{&m.log, j}, err
 	}))
 	return err
 }
@@ -192,8 +215,9 @@ func (im *impacting) compareMitigations() {
 			continue
 		}
 		rows := m.run.measures(im.life)
-		for _, x := range im.jumpMeasures(m.run, map[string]*jump{caseEvent: m.loss}, nil, newEnds(m.run.engine)) {
-			if x.group == "rapid voltage change" && (x.name == "sudden loss of "+caseEvent+", above 600 V" || x.name == "sudden loss of "+caseEvent+", up to 600 V") {
+		of := func(j *jump) map[string]*jump { return map[string]*jump{caseEvent: j} }
+		for _, x := range im.jumpMeasures(m.run, of(m.loss), of(m.back), m.back) {
+			if x.group != "rapid voltage change" || strings.Contains(x.name, " of "+caseEvent+", ") {
 				rows = append(rows, x)
 			}
 		}

@@ -151,6 +151,30 @@ func TestRapidVoltageChangeByHand(t *testing.T) {
 		t.Errorf("%d rows for the end of the line, want 3 phases, lost and back", found)
 	}
 
+	// A remedy is judged by the return too: half of the size is lost and comes back with
+	// 500 kW a phase. Set voltages are not tried on a feeder without a tap changer.
+	half := func(power float64) float64 {
+		b := 2*power*r + e*e
+		return 100 * (math.Sqrt((b+math.Sqrt(b*b-4*power*power*(r*r+x*x)))/2) - e) / e
+	}(0.5e6)
+	seen := 0
+	for _, m := range im.Mitigations {
+		for _, c := range m.Criteria {
+			if m.Name == "50 % of the size" && strings.HasSuffix(c.Name, "of units of the case, above 600 V") {
+				seen++
+				if math.Abs(c.With-half) > 2e-4 || math.Abs(c.Base-want) > 2e-4 || math.Abs(c.Difference-(half-want)) > 4e-4 {
+					t.Errorf("%s: %s from %g to %g %%, want from %g to %g", m.Name, c.Name, c.Base, c.With, want, half)
+				}
+			}
+		}
+		if why := m.Why; strings.HasPrefix(m.Name, "set voltages") != (why == "the feeder has no tap changer that acts") && m.Name != "reverse mode stay" && m.Name != "dispatch at most 50 %" {
+			t.Errorf("%s: not tried because %q", m.Name, why)
+		}
+	}
+	if seen != 2 {
+		t.Errorf("half of the size has %d rapid voltage changes of the units of the case above 600 V, want loss and return", seen)
+	}
+
 	// Of two units the loss of the largest alone takes the other's voltage along.
 	im, err = impactOf(t, p, "more", 2)
 	if err != nil {
@@ -227,5 +251,52 @@ func TestImpactNeedsUnits(t *testing.T) {
 	}
 	if _, _, err := study.Choose(p, []string{"wide-bend"}); err == nil || !strings.Contains(err.Error(), "wide-band") {
 		t.Errorf("an unknown case: got %v", err)
+	}
+}
+
+// A battery's inverter has a power factor and functions too, and its dispatch a limit. By
+// hand, as above: P + jQ a phase delivered into the end of a line of z = 1 + j2 ohm give
+//
+//	V⁴ − (2·(P·r + Q·x) + E²)·V² + (P² + Q²)·(r² + x²) = 0
+//
+// and the sudden loss takes the end back to E. 600 kW are ±200 kW a phase; the larger of
+// the changes at charging and at discharging counts.
+func TestMitigationsOfABattery(t *testing.T) {
+	p := folder(t, nil, map[string]string{
+		"study.toml":               "title = \"battery\"\n[period]\nstart = 2025-06-01\nend = 2025-06-02\nstep = \"1h\"\nzone = \"UTC\"\n[limits]\njudge = \"all\"\n",
+		"feeder/source.csv":        "node,nominal [kV]\nhead,12.47\n",
+		"feeder/constructions.csv": "construction,kind,r1 [ohm/km],x1 [ohm/km],r0 [ohm/km],x0 [ohm/km],b1 [uS/km],b0 [uS/km]\nline,sequence,1,2,1,2,0,0\n",
+		"feeder/sections.csv":      "section,from,to,phases,length [km],construction\nS,head,end,ABC,1,line\n",
+		"feeder/loads.csv":         "load,node,phases,real [kW],reactive [kvar],zip\nL,end,ABC,0.001,0,power\n",
+		"cases/b/batteries.csv":    "battery,node,phases,energy [kWh],power [kW],rating [kVA],dispatch,charge from,charge to,discharge from,discharge to,initial [%]\nB,end,ABC,5000,600,700,schedule,01:00,03:00,17:00,20:00,50\n",
+	})
+	im, err := impactOf(t, p, "b", 2)
+	if err != nil {
+		t.Fatal(err)
+	}
+	const e = 12470 / math.Sqrt2 / 1.2247448713915890
+	one := func(p, q float64) float64 {
+		b := 2*(p*1+q*2) + e*e
+		return 100 * math.Abs(math.Sqrt((b+math.Sqrt(b*b-4*(p*p+q*q)*5))/2)-e) / e
+	}
+	jump := func(p, q float64) float64 { return math.Max(one(p, q), one(-p, q)) }
+	tan := math.Sqrt(1/(0.95*0.95) - 1)
+	want := map[string]float64{"power factor 0.95": jump(200e3, -200e3*tan), "dispatch at most 50 %": jump(100e3, 0), "50 % of the size": jump(100e3, 0), "volt-watt": jump(200e3, 0)}
+	seen := 0
+	for _, m := range im.Mitigations {
+		if m.Why != "" && !strings.Contains(m.Why, "tap changer") {
+			t.Errorf("%s: not tried because %q", m.Name, m.Why)
+		}
+		for _, c := range m.Criteria {
+			if w, there := want[m.Name]; there && strings.HasSuffix(c.Name, "of units of the case, above 600 V") {
+				seen++
+				if math.Abs(c.With-w) > 2e-4 {
+					t.Errorf("%s: %s is %g %%, want %g", m.Name, c.Name, c.With, w)
+				}
+			}
+		}
+	}
+	if seen != 2*len(want) {
+		t.Errorf("%d changes were looked at, want %d", seen, 2*len(want))
 	}
 }
