@@ -105,6 +105,20 @@ func (s *Sampler) Step(dst []float64, i int) {
 // series goes over all steps.
 func (s *Sampler) Max(k int) float64 { return s.max[k]() }
 
+// Largest returns a bound of the absolute value of every series' step means: the
+// largest value that it has.
+func (s *Sampler) Largest() []float64 {
+	out := make([]float64, len(s.max))
+	for i := range s.groups {
+		for _, c := range s.groups[i].columns {
+			for _, v := range c.series.values {
+				out[c.to] = max(out[c.to], v, -v)
+			}
+		}
+	}
+	return out
+}
+
 func (s *Sampler) highest(g int, one *Series) float64 {
 	only := group{grid: s.groups[g].grid, segments: s.groups[g].segments, columns: []column{{0, one}}}
 	var v [1]float64

@@ -177,6 +177,7 @@ func (a *allocation) phaseName(eq *equation) string {
 // takeInputs sets the solver's input to that of a step, and the targets of the
 // allocation with it.
 func (e *Engine) takeInputs(step int) {
+	e.step = step
 	e.inputOf(step, &e.input)
 }
 

@@ -414,16 +414,24 @@ func (in *inputs) energies(m *feeder.Model) error {
 
 // at sets the solver's input to that of a step.
 func (in *inputs) at(step int, out *powerflow.Input) {
-	in.sampler.Step(in.values, step)
+	in.sampleAt(in.values, step)
+	in.scale(in.values, step, out)
+}
+
+// sampleAt sets values to those of every series in a step.
+func (in *inputs) sampleAt(values []float64, step int) { in.sampler.Step(values, step) }
+
+// scale sets the solver's input to that of a step with the given values.
+func (in *inputs) scale(values []float64, step int, out *powerflow.Input) {
 	month := -1
 	for k := range in.injections {
 		d := &in.driver[k]
 		p, q := 1.0, 1.0
 		if d.real >= 0 {
-			p = in.values[d.real]
+			p = values[d.real]
 			q = p
 			if d.reactive >= 0 {
-				q = in.values[d.reactive]
+				q = values[d.reactive]
 			}
 		}
 		if d.load >= 0 {
@@ -441,7 +449,7 @@ func (in *inputs) at(step int, out *powerflow.Input) {
 		if x.series < 0 {
 			out.Source[f] = x.volts
 		} else {
-			out.Source[f] = complex(in.values[x.series]*x.nominal/sqrt3, 0) * x.unit
+			out.Source[f] = complex(values[x.series]*x.nominal/sqrt3, 0) * x.unit
 		}
 	}
 }

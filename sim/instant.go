@@ -20,11 +20,14 @@ func (e *Engine) solve(tol powerflow.Tolerance) (bool, error) {
 	}
 	// Positions at which the equations are singular have no solution: Solve says where.
 	_ = e.flow.SetDevices(e.ratio, e.state.Closed)
-	var start []complex128
-	if e.anchored {
-		start = e.anchor
+	ok := e.speculate && tol == powerflow.Contract && e.solveAhead()
+	if !ok {
+		var start []complex128
+		if e.anchored {
+			start = e.anchor
+		}
+		ok = e.flow.Solve(&e.input, start, tol, e.solution)
 	}
-	ok := e.flow.Solve(&e.input, start, tol, e.solution)
 	e.paths[e.solution.Path]++
 	e.state.V = e.solution.V
 	if !ok {

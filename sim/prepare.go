@@ -41,6 +41,8 @@ type Options struct {
 	// Cache is a folder of the machine where what was read of meters is kept for the
 	// next run; blank: none.
 	Cache string
+	// Reference solves every step by itself: the judge of everything faster.
+	Reference bool
 }
 
 // Engine is a study ready to run. It is not safe for use by several goroutines at
@@ -58,6 +60,11 @@ type Engine struct {
 	plants  plants
 
 	allocation *allocation // nil: no measured total is shared over loads
+
+	reference bool   // every step is solved by itself
+	ahead     *ahead // nil: a step's input depends on the steps before it
+	speculate bool   // a run is going through its steps in order
+	step      int    // whose inputs are at hand
 
 	steady bool  // lags are left out: at start-up, and of a single instant
 	unitAt []int // by Model.Regulators: position of its first unit in State.Taps
@@ -140,7 +147,7 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 		faults.Add(m.Sources[0].At, "%v", err)
 		return nil, faults.Err()
 	}
-	e := &Engine{Study: st, net: net, flow: flow, in: in, paths: map[powerflow.Path]int{}}
+	e := &Engine{Study: st, net: net, flow: flow, in: in, reference: o.Reference, paths: map[powerflow.Path]int{}}
 	name := st.Case
 	if name == "" {
 		name = "base"
@@ -169,6 +176,7 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 	if err := e.prepareAllocation(o); err != nil {
 		return nil, err
 	}
+	e.prepareAhead()
 	for i := range m.Regulators {
 		e.regulator(i, o)
 	}

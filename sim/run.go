@@ -56,6 +56,11 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 		generated: make([]float64, len(e.state.Generation)), curtailed: make([]float64, len(e.state.Generation)),
 		stepGenerated: make([]float64, len(e.state.Generation)), stepCurtailed: make([]float64, len(e.state.Generation))}
 	r.coarse = newCoarse(e)
+	if e.ahead != nil {
+		e.ahead.begin()
+		e.speculate = true
+		defer func() { e.speculate = false }()
+	}
 	n := e.in.axis.Steps()
 	for step := range n {
 		if err := ctx.Err(); err != nil {

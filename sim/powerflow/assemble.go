@@ -78,6 +78,10 @@ func (s *Solver) SetDevices(ratio []float64, closed []bool) error {
 	return s.refactor()
 }
 
+// DeviceState numbers the device states that SetDevices has been given; two numbers
+// that are equal are the same state.
+func (s *Solver) DeviceState() int { return s.version }
+
 func (s *Solver) assemble() error {
 	clear(s.base)
 	for _, st := range s.still {

@@ -1,0 +1,132 @@
+package sim
+
+import (
+	"math"
+
+	"yearflow/profiles"
+	"yearflow/sim/powerflow"
+	"yearflow/sim/powerflow/vector"
+)
+
+// ahead solves the steps to come together with the step at hand, with the devices where
+// they stand. The event loop goes through the steps in order as if each were solved by
+// itself; what has been solved ahead holds until a device moves.
+//
+// The lane of a step is its number modulo the number of lanes, so that inputs which are
+// in place stay there when a device moves. All lanes start from the voltages that the
+// step at hand starts from; none runs past the end of the local day.
+type ahead struct {
+	lanes   *powerflow.Lanes
+	input   powerflow.Input
+	values  []float64
+	loaded  [vector.Lanes]int // step, −1 none
+	first   int               // step; of no block: −1
+	end     int
+	arrived uint8
+	state   int // device state that the block was solved with
+	dayEnd  int // first step of the next day
+}
+
+// prepareAhead makes the lanes, where a step's input is a function of the step alone:
+// with stored energy, vehicles, lags or loads that a measured total is shared over it
+// depends on how the steps before it went.
+func (e *Engine) prepareAhead() {
+	if e.reference || e.allocation != nil || len(e.plants.batteries) > 0 || len(e.plants.chargers) > 0 {
+		return
+	}
+	for _, v := range e.plants.inverters {
+		if v.lags {
+			return
+		}
+	}
+	e.ahead = &ahead{
+		lanes:  powerflow.NewLanes(e.flow, e.in.largest()),
+		input:  powerflow.Input{Source: make([]complex128, len(e.in.fixed)), Power: make([]complex128, len(e.in.injections))},
+		values: make([]float64, len(e.in.values)), first: -1,
+	}
+}
+
+// begin forgets what was solved before a run.
+func (a *ahead) begin() {
+	a.first, a.end, a.dayEnd = -1, -1, -1
+	for lane := range a.loaded {
+		a.loaded[lane] = -1
+	}
+}
+
+// solveAhead takes the step at hand from its lane, after solving lanes where it must. It
+// reports whether there was a solution to take: without one the step is the solver's.
+func (e *Engine) solveAhead() bool {
+	a := e.ahead
+	if e.step < a.first || e.step >= a.end || a.state != e.flow.DeviceState() {
+		e.solveLanes()
+	}
+	lane := e.step % vector.Lanes
+	if a.arrived>>lane&1 == 0 {
+		return false
+	}
+	a.lanes.Take(lane, e.solution)
+	return true
+}
+
+// solveLanes solves the step at hand and those behind it.
+func (e *Engine) solveLanes() {
+	a := e.ahead
+	a.first, a.state = e.step, e.flow.DeviceState()
+	a.end = min(a.first+vector.Lanes, e.in.axis.Steps(), e.dayEnd(a.first))
+	mask := uint8(0)
+	for step := a.first; step < a.end; step++ {
+		lane := step % vector.Lanes
+		mask |= 1 << lane
+		if a.loaded[lane] != step {
+			a.loaded[lane] = step
+			e.in.sampleAt(a.values, step)
+			e.in.scale(a.values, step, &a.input)
+			a.lanes.Input(lane, &a.input)
+		}
+	}
+	var start []complex128
+	if e.anchored {
+		start = e.anchor
+	}
+	a.lanes.Start(mask, start, &e.input)
+	a.arrived = a.lanes.Solve(mask, powerflow.Contract)
+}
+
+// dayEnd returns the first step of the local day after that of a step.
+func (e *Engine) dayEnd(step int) int {
+	a, axis := e.ahead, &e.in.axis
+	if step < a.dayEnd {
+		return a.dayEnd
+	}
+	start, _ := axis.Bounds(step)
+	next := profiles.DayStart(profiles.Day(start, axis.Zone)+1, axis.Zone)
+	a.dayEnd = int((next - axis.Start + axis.Step - 1) / axis.Step)
+	return a.dayEnd
+}
+
+// largest returns the most that each injection draws, VA, whatever the step.
+func (in *inputs) largest() []float64 {
+	series := in.sampler.Largest()
+	out := make([]float64, len(in.injections))
+	for k := range out {
+		d := &in.driver[k]
+		p := 1.0
+		if d.real >= 0 {
+			p = series[d.real]
+		}
+		q := p
+		if d.reactive >= 0 {
+			q = series[d.reactive]
+		}
+		if d.load >= 0 {
+			most := 0.0
+			for _, kW := range in.energy[d.load] {
+				most = max(most, math.Abs(kW))
+			}
+			p, q = p*most, q*most
+		}
+		out[k] = math.Hypot(real(in.share[k])*p, imag(in.share[k])*q)
+	}
+	return out
+}
