@@ -17,6 +17,7 @@
 // All start from the same voltages, take each step from the solution of the one before,
 // and stop where no voltage has moved by more than the tolerance. In C: one
 // factorisation for the state of the devices; in an iteration the currents of all
-// injections, one klu_z_solve with one right-hand side, the change. Compiled with
-// -O3 -march=native; the library is the distribution's.
+// injections, one klu_z_solve with one right-hand side, the change. KLU runs without its
+// row scaling, which makes it faster by a tenth and more than with its defaults.
+// Compiled with -O3 -march=native; the library is the distribution's.
 package klu

@@ -3,7 +3,7 @@
 package klu
 
 /*
-#cgo CFLAGS: -O3 -march=native -I/usr/include/suitesparse -DYARDSTICK_SCALE=0 -DYARDSTICK_BTF=0
+#cgo CFLAGS: -O3 -march=native -I/usr/include/suitesparse
 #cgo LDFLAGS: -lklu -lm
 #include <stdlib.h>
 #include "loop.h"
