@@ -75,6 +75,8 @@ type hosting struct {
 	demo     bool
 	base     *trial
 	log      *positionsLog
+	volts    *baseVoltages // nil: jumps are all solved
+	probes   *probes
 	progress func(done, total int)
 	done     atomic.Int64
 	total    int64
@@ -108,13 +110,23 @@ func MakeHosting(ctx context.Context, p Place, base *Case, s HostingSettings) (*
 		return nil, err
 	}
 	// What is wrong in [hosting] is told before anything is run.
-	if _, err := readHosting(e, 1); err != nil {
+	set, err := readHosting(e, 1)
+	if err != nil {
 		return nil, err
 	}
+	output, _, err := e.Profile(set.profile)
+	if err != nil {
+		return nil, err
+	}
+	h.volts, h.probes = newBaseVoltages(e, h.log, output), newProbes(h.workers)
 	watch := newSectionWatch(e)
 	load := &loadLog{watch: watch}
 	if h.base, err = runTrial(ctx, variant(h.st, h.st.Case, nil), h.demo, func(*sim.Engine) ([]sim.Recorder, error) {
-		return []sim.Recorder{h.log, load}, nil
+		out := []sim.Recorder{h.log, load}
+		if h.volts != nil {
+			out = append(out, h.volts)
+		}
+		return out, nil
 	}); err != nil {
 		return nil, err
 	}
@@ -134,18 +146,56 @@ func MakeHosting(ctx context.Context, p Place, base *Case, s HostingSettings) (*
 		}
 		h.Limits = append(h.Limits, HostingCriterion{l.name, l.unit, limit, source})
 	}
-	output, _, err := e.Profile(h.set.profile)
-	if err != nil {
-		return nil, err
-	}
 	h.total = int64((len(h.set.places)+1)*len(h.set.grid) + h.set.runs)
-	if err := h.searchPlaces(ctx); err != nil {
-		return nil, err
+	return h.Hosting, h.work(ctx, output, load.kW)
+}
+
+// work searches the places and rolls out, all of it on the same workers: the feeder first,
+// which usually takes longest, the deployments last, which fill what is left.
+func (h *hosting) work(ctx context.Context, output, load []float64) error {
+	g, gctx := errgroup.WithContext(ctx)
+	g.SetLimit(h.workers)
+	n := len(h.set.places) + 1
+	found, tried, errs := make([]HostedPlace, n), make([][]Candidate, n), make([]error, n+h.workers)
+	km := distances(h.st.Model)
+	for k := range n {
+		i := (k + n - 1) % n
+		g.Go(func() error {
+			p, nodes := h.place(i, km)
+			found[i], tried[i], errs[i] = h.search(gctx, p, nodes)
+			return errs[i]
+		})
 	}
-	if h.Rollout, err = h.rollOut(ctx, output, load.kW); err != nil {
-		return nil, err
+	deploy := h.rollOut(output, load)
+	for w := range h.workers {
+		g.Go(func() error {
+			errs[n+w] = deploy(gctx)
+			return errs[n+w]
+		})
 	}
-	return h.Hosting, nil
+	if err := g.Wait(); err != nil {
+		return first(err, errs)
+	}
+	for i := range n {
+		h.Places = append(h.Places, found[i])
+		h.Candidates = append(h.Candidates, tried[i]...)
+	}
+	h.Rollout.count()
+	return nil
+}
+
+// place is the i-th place to search, the feeder the last, and its nodes.
+func (h *hosting) place(i int, km []float64) (HostedPlace, []int) {
+	p, nodes := HostedPlace{Place: "feeder", DistanceKM: nan, NominalKV: nan}, h.set.places
+	if i < len(nodes) {
+		node := &h.st.Model.Nodes[nodes[i]]
+		p.Place, p.DistanceKM, p.NominalKV = node.Name, km[nodes[i]], node.Nominal
+		for _, ph := range node.Phases {
+			p.Phases += ph.String()
+		}
+		nodes = nodes[i : i+1]
+	}
+	return p, nodes
 }
 
 // loadLog keeps the load of the feeder at the end of each step, kW; NaN where it is not ok.
@@ -180,40 +230,7 @@ func (h *hosting) tick(n int) {
 	}
 }
 
-// searchPlaces walks up the grid at every place, the places side by side.
-func (h *hosting) searchPlaces(ctx context.Context) error {
-	n := len(h.set.places) + 1
-	found, tried := make([]HostedPlace, n), make([][]Candidate, n)
-	errs := make([]error, n)
-	g, gctx := errgroup.WithContext(ctx)
-	g.SetLimit(h.workers)
-	km := distances(h.st.Model)
-	for i := range n {
-		g.Go(func() error {
-			nodes := h.set.places
-			p := HostedPlace{Place: "feeder", DistanceKM: nan, NominalKV: nan}
-			if i < len(h.set.places) {
-				node := &h.st.Model.Nodes[nodes[i]]
-				p.Place, p.DistanceKM, p.NominalKV = node.Name, km[nodes[i]], node.Nominal
-				for _, ph := range node.Phases {
-					p.Phases += ph.String()
-				}
-				nodes = nodes[i : i+1]
-			}
-			found[i], tried[i], errs[i] = h.search(gctx, p, nodes)
-			return errs[i]
-		})
-	}
-	if err := g.Wait(); err != nil {
-		return first(err, errs)
-	}
-	for i := range n {
-		h.Places = append(h.Places, found[i])
-		h.Candidates = append(h.Candidates, tried[i]...)
-	}
-	return nil
-}
-
+// search walks up the grid at one place.
 func (h *hosting) search(ctx context.Context, p HostedPlace, nodes []int) (HostedPlace, []Candidate, error) {
 	var tried []Candidate
 	p.Breaks, p.Value, p.Limit = nan, nan, nan
@@ -273,9 +290,16 @@ func (h *hosting) candidate(ctx context.Context, place string, nodes []int, kW f
 			m.Generators = append(m.Generators, g)
 		}
 	})
+	probe, err := h.probes.take(h)
+	if err != nil {
+		return nil, err
+	}
+	defer h.probes.give(probe)
 	var loss *jump
 	t, err := runTrial(ctx, st, h.demo, func(e *sim.Engine) (out []sim.Recorder, err error) {
-		loss, err = newJump(e, variant(h.st, st.Case+", lost", nil), h.demo, own.delivers(st.Model))
+		if loss, err = jumpTo(e, probe, own.delivers(st.Model)); err == nil && h.volts != nil {
+			loss.known = h.volts.at
+		}
 		return []sim.Recorder{loss}, err
 	})
 	if err != nil {

@@ -5,8 +5,7 @@ import (
 	"math"
 	"math/rand/v2"
 	"slices"
-
-	"golang.org/x/sync/errgroup"
+	"sync/atomic"
 
 	"yearflow/sim"
 	"yearflow/sim/feeder"
@@ -80,9 +79,10 @@ type site struct {
 	kW   float64
 }
 
-// rollOut deploys units at customers in random order.
-func (h *hosting) rollOut(ctx context.Context, output, load []float64) (*Rollout, error) {
+// rollOut prepares a roll-out and returns what each worker has to do for it.
+func (h *hosting) rollOut(output, load []float64) (work func(context.Context) error) {
 	r := &Rollout{Seed: h.set.seed, Runs: h.set.runs, PerCustomer: h.set.perCustomer, Least: nan, All: nan}
+	h.Rollout = r
 	m := h.st.Model
 	var sites []site
 	total := 0.0
@@ -92,17 +92,18 @@ func (h *hosting) rollOut(ctx context.Context, output, load []float64) (*Rollout
 			total += l.Customers * h.set.perCustomer
 		}
 	}
+	nothing := func(context.Context) error { return nil }
 	r.Sites = len(sites)
 	if len(sites) == 0 {
 		r.Why = errNoSites.Error() + ", so that nobody adopts: loads.csv has a column customers"
 		h.tick(h.set.runs)
-		return r, nil
+		return nothing
 	}
 	instants := h.critical(output, load)
 	if len(instants) == 0 {
 		r.Why = "the output is nothing in every ok step"
 		h.tick(h.set.runs)
-		return r, nil
+		return nothing
 	}
 	for _, s := range instants {
 		start, _ := h.base.engine.Bounds(s)
@@ -112,28 +113,29 @@ func (h *hosting) rollOut(ctx context.Context, output, load []float64) (*Rollout
 		r.Levels = append(r.Levels, RolloutLevel{KW: total * float64(k+1) / float64(h.set.levels), By: map[string]int{}})
 	}
 	r.Deployments = make([]Deployment, h.set.runs)
-	g, gctx := errgroup.WithContext(ctx)
-	errs := make([]error, h.workers)
-	for w := range h.workers {
-		g.Go(func() error {
-			// Each worker has an engine of its own and takes every so many runs; a run depends
-			// on its number alone.
-			d, err := h.newDeployer(sites, instants)
-			for run := w; err == nil && run < h.set.runs; run += h.workers {
-				if err = gctx.Err(); err == nil {
-					r.Deployments[run], err = d.deploy(run, r.Levels)
-					h.tick(1)
-				}
+	var next atomic.Int64
+	return func(ctx context.Context) error {
+		// Each worker has an engine of its own and takes the next run; a run depends on its
+		// number alone.
+		var d *deployer
+		for {
+			run := int(next.Add(1)) - 1
+			if run >= h.set.runs {
+				return nil
 			}
-			errs[w] = err
-			return err
-		})
+			err := ctx.Err()
+			if err == nil && d == nil {
+				d, err = h.newDeployer(sites, instants)
+			}
+			if err == nil {
+				r.Deployments[run], err = d.deploy(run, r.Levels)
+			}
+			if err != nil {
+				return err
+			}
+			h.tick(1)
+		}
 	}
-	if err := g.Wait(); err != nil {
-		return nil, first(err, errs)
-	}
-	r.count()
-	return r, nil
 }
 
 // count sums up the deployments.
@@ -208,6 +210,13 @@ type deployer struct {
 	instants []int
 	before   []instantBefore
 	percent  []float64
+	all      *verdict // of all sites together, the same in every order
+}
+
+// verdict is what breaks first with some adopters.
+type verdict struct {
+	kind, where string
+	at          int64
 }
 
 // instantBefore is a critical instant without any adopter.
@@ -274,23 +283,36 @@ func (d *deployer) deploy(run int, levels []RolloutLevel) (Deployment, error) {
 			installed += d.sites[order[next]].kW
 			next++
 		}
-		kind, where, at := "", "", int64(0)
-		for k := range d.instants {
-			var err error
-			if kind, where, err = d.judge(k, order[:next]); err != nil {
-				return out, err
-			}
-			if kind != "" {
-				at = d.before[k].start
-				break
-			}
+		v, err := d.judgeAll(order[:next])
+		if err != nil {
+			return out, err
 		}
-		if kind != "" && out.Criterion == "" {
-			out.KW, out.Criterion, out.Where, out.At = installed, kind, where, at
+		if v.kind != "" && out.Criterion == "" {
+			out.KW, out.Criterion, out.Where, out.At = installed, v.kind, v.where, v.at
 		}
-		out.broken, out.installed = append(out.broken, kind), append(out.installed, installed)
+		out.broken, out.installed = append(out.broken, v.kind), append(out.installed, installed)
 	}
 	return out, nil
+}
+
+// judgeAll judges the critical instants until one violates.
+func (d *deployer) judgeAll(adopters []int) (v verdict, err error) {
+	if len(adopters) == len(d.sites) && d.all != nil {
+		return *d.all, nil
+	}
+	for k := range d.instants {
+		if v.kind, v.where, err = d.judge(k, adopters); err != nil {
+			return v, err
+		}
+		if v.kind != "" {
+			v.at = d.before[k].start
+			break
+		}
+	}
+	if len(adopters) == len(d.sites) {
+		d.all = &v
+	}
+	return v, nil
 }
 
 // judge solves one critical instant with the adopters and returns what breaks first.

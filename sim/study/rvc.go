@@ -24,6 +24,7 @@ type jump struct {
 	points   []results.Point
 	storage  func(step int, s *results.State) []float64 // kW by the probe's batteries
 	active   func(step int, s *results.State) bool
+	known    func(step int, s *results.State) []complex128 // the voltages after, where they were found before; nil: solve
 	step     int
 	worst    []change  // by point
 	low, hi  []float64 // p.u., of the probe: the voltage with the devices held
@@ -48,6 +49,12 @@ func newJump(running *sim.Engine, to *feeder.Study, demo bool, active func(step 
 	if err != nil {
 		return nil, err
 	}
+	return jumpTo(running, probe, active)
+}
+
+// jumpTo is newJump to an engine that is there already; no other may use it meanwhile.
+func jumpTo(running, probe *sim.Engine, active func(step int, s *results.State) bool) (*jump, error) {
+	to := probe.Study
 	j := newEnds(running)
 	j.probe, j.active = probe, active
 	if n := len(probe.Meter().Points); n != len(j.points) {
@@ -94,6 +101,12 @@ func (j *jump) Step(s *results.Step) error {
 	}
 	after := s.Last.V // nothing changes where the units do nothing
 	if j.active(step, s.Last) {
+		if j.known != nil {
+			if v := j.known(step, s.Last); v != nil {
+				j.see(s, v)
+				return nil
+			}
+		}
 		p := sim.Positions{Taps: s.Last.Taps, Closed: s.Last.Closed}
 		if j.storage != nil {
 			p.Storage = j.storage(step, s.Last)
@@ -110,6 +123,12 @@ func (j *jump) Step(s *results.Step) error {
 		}
 		after = in.State.V
 	}
+	j.see(s, after)
+	return nil
+}
+
+// see takes the voltages after a jump from the end of a step.
+func (j *jump) see(s *results.Step, after []complex128) {
 	for i := range j.points {
 		p := &j.points[i]
 		v, before := p.PU(after), p.PU(s.Last.V)
@@ -123,7 +142,6 @@ func (j *jump) Step(s *results.Step) error {
 			j.worst[i] = change{d, s.Start}
 		}
 	}
-	return nil
 }
 
 // idle is the power, VA, below which a unit does nothing.
