@@ -77,10 +77,19 @@ func (c *impactDocument) limitFigure(st *style) (*page, Figure) {
 	n.c.StrokeLine2(draw.LineStyle{Color: black, Width: vg.Points(1.4), Dashes: []vg.Length{4, 2}}, n.x(100), n.rect.Min.Y, n.x(100), n.rect.Max.Y)
 	for i, b := range bars {
 		y := n.rect.Max.Y - vg.Length(i)*row - row/2
-		n.haloed(small, n.x(math.Min(math.Max(b.with, b.base), hi))+5, y-1, text.XLeft, text.YCenter, percent(b.with))
+		n.haloed(small, besideLimit(n.x(math.Min(math.Max(b.with, b.base), hi))+5, small.Width(percent(b.with)), n.x(100)), y-1, text.XLeft, text.YCenter, percent(b.with))
 	}
 	n.keys([]key{{fill: axisGrey, text: "base"}, {fill: blue, text: "with the units"}, {fill: vermilion, text: "with the units, beyond the limit"}, {line: draw.LineStyle{Color: black, Width: vg.Points(1.4), Dashes: []vg.Length{4, 2}}, text: "limit"}}, n.rect.Min.X-room, n.rect.Min.Y-31)
 	return p, f
+}
+
+// besideLimit moves words that would lie on the line of the limit behind it.
+func besideLimit(x, wide, limit vg.Length) vg.Length {
+	const clear = vg.Length(4)
+	if x < limit+clear && x+wide > limit-clear {
+		return limit + clear
+	}
+	return x
 }
 
 // remedyFigure compares the remedies in what they are chosen by.
