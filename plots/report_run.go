@@ -22,6 +22,7 @@ type runReport struct {
 	summary, nodes, duty, losses, loading, monthly, plants, places, network *Ledger
 	measured, swaps                                                         *Ledger // nil: the run had no measurements
 	mended                                                                  *Ledger // nil: nothing was mended
+	settings                                                                *Ledger // nil: the folder is of an older version
 }
 
 // WriteReport writes report.html of a run from its results folder alone: the folder's
@@ -51,7 +52,7 @@ func reportOf(folder fs.FS, f *results.Folder, figures []Figure) (*Document, err
 		{&r.losses, "losses.csv", 2, false}, {&r.loading, "loading.csv", 2, false}, {&r.monthly, "monthly.csv", 1, false},
 		{&r.places, "places.csv", 1, false}, {&r.network, "network.csv", 1, false}, {&r.plants, "plants.csv", 1, true},
 		{&r.measured, "measured.csv", 3, true}, {&r.swaps, "phase-swaps.csv", 2, true},
-		{&r.mended, "mended.csv", 3, true},
+		{&r.mended, "mended.csv", 3, true}, {&r.settings, "settings.csv", 3, true},
 	} {
 		*x.to, err = ReadLedger(folder, x.file, x.keys)
 		if err != nil && !(x.optional && errors.Is(err, fs.ErrNotExist)) {
@@ -61,7 +62,7 @@ func reportOf(folder fs.FS, f *results.Folder, figures []Figure) (*Document, err
 	d := &Document{Kind: "Report of a run", Title: f.Run.Title, Case: f.Run.Case, Demo: f.Run.Demo, Trace: r.record.Trace(),
 		Subtitle: r.span.spoken() + " · steps of " + stepWords(f.Run.Step) + " · " + f.Run.Zone}
 	d.Lead = r.lead()
-	d.Sections = []Section{r.metSection(), r.feederSection(), r.yearSection(), r.wrongSection(), r.trustSection(),
+	d.Sections = []Section{r.metSection(), r.feederSection(), r.settingsSection(), r.yearSection(), r.wrongSection(), r.trustSection(),
 		r.record.LimitsSection(), r.record.AssumptionsSection(), r.dataSection(), r.record.InputsSection(), r.cautions()}
 	return d, nil
 }

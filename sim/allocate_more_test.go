@@ -6,6 +6,7 @@ import (
 	"math"
 	"os"
 	"path/filepath"
+	"strconv"
 	"strings"
 	"testing"
 	"testing/fstest"
@@ -207,6 +208,15 @@ func TestAllocationListsWhatCannotBeMet(t *testing.T) {
 		if said[q] != v {
 			t.Errorf("%s is %q, want %s", q, said[q], v)
 		}
+	}
+	// The mill's 150 kW are metered, all other load is shared out; loads are of constant power.
+	all, err := strconv.ParseFloat(said["load energy"], 64)
+	if err != nil {
+		t.Fatal(err)
+	}
+	got, err := strconv.ParseFloat(said["allocated share of load energy"], 64)
+	if want := 100 * (1 - 150*72/all); err != nil || math.Abs(got-want) > 0.01 {
+		t.Errorf("the allocated share is %g %%, want %g %%", got, want)
 	}
 }
 

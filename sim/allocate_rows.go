@@ -20,6 +20,7 @@ func (e *Engine) allocationAtEnd() *results.AllocationStep {
 	a.measure(e)
 	out := &a.last
 	out.Rows, out.Worst = out.Rows[:0], 0
+	out.Shared, out.Loads = a.powers(e)
 	n := len(a.equations)
 	sloped := false
 	for i := range a.equations {
@@ -45,6 +46,20 @@ func (e *Engine) allocationAtEnd() *results.AllocationStep {
 		out.Rows = append(out.Rows, a.row(i, status))
 	}
 	return out
+}
+
+// powers returns the real power of the loads that take a share, and of all loads, W at
+// nominal voltage.
+func (a *allocation) powers(e *Engine) (shared, loads float64) {
+	for i := range a.members {
+		shared += real(e.input.Power[a.members[i].injection])
+	}
+	for k, s := range e.input.Power {
+		if e.in.loadOf[k] >= 0 {
+			loads += real(s)
+		}
+	}
+	return shared, loads
 }
 
 // row is a measured figure in kW, kvar or A.
@@ -88,6 +103,7 @@ func (e *Engine) allocationUnsolved() *results.AllocationStep {
 	}
 	out := &a.last
 	out.Rows, out.Worst = out.Rows[:0], math.NaN()
+	out.Shared, out.Loads = 0, 0
 	for i := range a.equations {
 		r := a.row(i, results.AllocationUnsolved)
 		r.Solved, r.Remainder = math.NaN(), math.NaN()

@@ -15,6 +15,7 @@ import (
 
 	"yearflow/sim"
 	"yearflow/sim/results"
+	"yearflow/sim/study"
 )
 
 // runOptions are the options of run.
@@ -101,7 +102,7 @@ func (c *console) run(ctx context.Context, args []string, o *runOptions) error {
 	ran := time.Now()
 	info := results.RunInfo{Version: version, Inputs: inputs, Wall: []results.WallTime{
 		{Part: "reading", Seconds: read.Sub(began).Seconds()}, {Part: "run", Seconds: ran.Sub(read).Seconds()}}}
-	info.Warnings = e.Warnings
+	info.Warnings, info.Settings = e.Warnings, study.SettingsInForce(e.Study)
 	info.Figures = func(dir string) ([]string, results.WallTime, error) { return picturesInto(dir, !o.noFigures) }
 	if err := w.Finish(outcome, info); err != nil {
 		return machineOr(err)

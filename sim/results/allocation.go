@@ -30,6 +30,9 @@ type AllocationStep struct {
 	// Worst is the largest distance from a measured figure, in shares of its peak; NaN
 	// where there is no solution.
 	Worst float64
+	// Shared and Loads are the real power of the loads that share what was measured, and of
+	// all loads, W at nominal voltage.
+	Shared, Loads float64
 	// Rows are the figures that are not met, in the order of quantities and phases. They
 	// are used again at the next step.
 	Rows []AllocationRow
@@ -49,6 +52,7 @@ type allocationCounts struct {
 	steps, listed int
 	by            [allocationStatuses]int
 	worst         float64 // of the steps that are not listed
+	of, loads     float64 // sums over steps of AllocationStep.Shared and Loads
 	at            int64
 }
 
@@ -64,6 +68,8 @@ func (w *Writer) allocationHeader() []string {
 func (w *Writer) writeAllocation(s *Step) error {
 	a, c := s.Allocation, &w.shared
 	c.steps++
+	c.of += a.Shared
+	c.loads += a.Loads
 	if len(a.Rows) == 0 {
 		if a.Worst > c.worst {
 			c.worst, c.at = a.Worst, s.Start
@@ -106,4 +112,5 @@ func (s *summary) allocation() {
 		worst = math.NaN()
 	}
 	s.figure("largest allocation error of a step met", worst, "%")
+	s.figure("allocated share of load energy", share(c.of, c.loads), "%")
 }

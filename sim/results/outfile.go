@@ -47,6 +47,16 @@ func (f *outFile) header(columns ...string) error {
 	return f.end()
 }
 
+// rows writes rows of text.
+func (f *outFile) rows(rows [][]string) error {
+	for _, r := range rows {
+		if err := f.header(r...); err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
 func (f *outFile) comma()           { f.row = append(f.row, ',') }
 func (f *outFile) text(s string)    { f.row = appendText(f.row, s) }
 func (f *outFile) pu(x float64)     { f.row = appendPU(append(f.row, ','), x) }

@@ -14,6 +14,9 @@ type RunInfo struct {
 	Inputs  map[string]string // SHA-256 in hexadecimal digits, by file, in the study's folder
 	// Warnings is what is odd about the inputs but no error; reports repeat it.
 	Warnings []tables.Fault
+	// Settings is settings.csv, the settings sheets in force, its header first; nil: none
+	// is written.
+	Settings [][]string
 	// Wall holds wall times for timing.json, the only file that differs between two
 	// runs of the same inputs.
 	Wall []WallTime

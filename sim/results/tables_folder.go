@@ -86,16 +86,8 @@ func (t *TablesFolder) Table(name string, rows [][]string) error {
 	if err != nil {
 		return err
 	}
-	for _, row := range rows {
-		for i, c := range row {
-			if i > 0 {
-				f.comma()
-			}
-			f.text(c)
-		}
-		if err := f.end(); err != nil {
-			return errors.Join(err, f.out.Close())
-		}
+	if err := f.rows(rows); err != nil {
+		return errors.Join(err, f.out.Close())
 	}
 	return f.finish()
 }

@@ -373,8 +373,9 @@ func (w *Writer) finish(o *Outcome, run RunInfo) error {
 		{"network.csv", w.writeNetwork},
 		{"plants.csv", func(f *outFile) error { return writePlants(f, o.Plants) }},
 		{"mended.csv", w.writeMended},
+		{"settings.csv", func(f *outFile) error { return f.rows(run.Settings) }},
 	} {
-		if t.name == "mended.csv" && len(w.plan.Mended) == 0 {
+		if t.name == "mended.csv" && len(w.plan.Mended) == 0 || t.name == "settings.csv" && run.Settings == nil {
 			continue
 		}
 		f, err := createFile(w.folder.temp, t.name)

@@ -188,7 +188,7 @@ func runCase(ctx context.Context, p Place, st *feeder.Study, s Settings) (*Case,
 	if err != nil {
 		return nil, errors.Join(err, w.Abort())
 	}
-	info := results.RunInfo{Version: p.Version, Inputs: c.Inputs, Warnings: e.Warnings, Figures: s.Figures, Wall: []results.WallTime{
+	info := results.RunInfo{Version: p.Version, Inputs: c.Inputs, Warnings: e.Warnings, Settings: SettingsInForce(st), Figures: s.Figures, Wall: []results.WallTime{
 		{Part: "reading", Seconds: read.Sub(began).Seconds()}, {Part: "run", Seconds: time.Since(read).Seconds()}}}
 	if err := w.Finish(outcome, info); err != nil {
 		return nil, err

@@ -125,7 +125,7 @@ func onOff(on bool) string {
 func inverterRows(base, other *feeder.Model) (out []SheetRow) {
 	add := func(name string, before, now *inverterEntry) {
 		if before.adjusted() || now.adjusted() {
-			out = append(out, lines(name, "", inverterItems(), before, now)...)
+			out = append(out, lines("inverter", name, "", inverterItems(), before, now)...)
 		}
 	}
 	for i := range other.Generators {

@@ -20,6 +20,7 @@ type Sheet struct {
 
 // SheetRow is one setting of one device. AsLeft is left for the field.
 type SheetRow struct {
+	Kind                         string // regulator, capacitor, inverter
 	Device, Phase, Setting, Unit string
 	Present, New                 string // in the base, in the case
 }
@@ -207,7 +208,7 @@ func sheetRows(base, other *feeder.Model) (out []SheetRow) {
 			if bank.Ganged {
 				phase += " (ganged)"
 			}
-			out = append(out, lines(bank.Name, phase, tapItems(), before, &tapEntry{bank, unit.Settings})...)
+			out = append(out, lines("regulator", bank.Name, phase, tapItems(), before, &tapEntry{bank, unit.Settings})...)
 		}
 	}
 	for i := range other.Capacitors {
@@ -221,15 +222,15 @@ func sheetRows(base, other *feeder.Model) (out []SheetRow) {
 				before = base.Capacitors[k].Control
 			}
 		}
-		out = append(out, lines(bank.Name, "", capacitorItems(), before, bank.Control)...)
+		out = append(out, lines("capacitor", bank.Name, "", capacitorItems(), before, bank.Control)...)
 	}
 	return append(out, inverterRows(base, other)...)
 }
 
 // lines leaves out what is blank on both sides.
-func lines[S any](device, phase string, items []item[S], before, now *S) (out []SheetRow) {
+func lines[S any](kind, device, phase string, items []item[S], before, now *S) (out []SheetRow) {
 	for _, it := range items {
-		r := SheetRow{Device: device, Phase: phase, Setting: it.setting, Unit: it.unit, New: it.of(now)}
+		r := SheetRow{Kind: kind, Device: device, Phase: phase, Setting: it.setting, Unit: it.unit, New: it.of(now)}
 		if before != nil {
 			r.Present = it.of(before)
 		}
