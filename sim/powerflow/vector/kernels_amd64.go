@@ -101,3 +101,25 @@ func advance(v, x, weight *float64, mask *uint64, moved *float64, n int) {
 		plainAdvance(v, x, weight, mask, moved, n)
 	}
 }
+
+func scale(power, values *float64, index *int32, share *float64, n int) {
+	switch kernel {
+	case 2:
+		scale512(power, values, index, share, n)
+	case 1:
+		scale256(power, values, index, share, n)
+	default:
+		plainScale(power, values, index, share, n)
+	}
+}
+
+func predict(v, curve, when *float64, n int) {
+	switch kernel {
+	case 2:
+		predict512(v, curve, when, n)
+	case 1:
+		predict256(v, curve, when, n)
+	default:
+		plainPredict(v, curve, when, n)
+	}
+}

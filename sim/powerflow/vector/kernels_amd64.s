@@ -629,6 +629,80 @@ value:
 	VZEROUPPER
 	RET
 
+// func scale256(power *float64, values *float64, index *int32, share *float64, n int)
+// Requires: AVX
+TEXT ·scale256(SB), NOSPLIT, $0-40
+	MOVQ power+0(FP), AX
+	MOVQ values+8(FP), CX
+	MOVQ index+16(FP), DX
+	MOVQ share+24(FP), BX
+	MOVQ n+32(FP), SI
+
+branch:
+	MOVLQSX      (DX), DI
+	MOVLQSX      4(DX), R8
+	ADDQ         $0x08, DX
+	VBROADCASTSD (BX), Y0
+	VBROADCASTSD 8(BX), Y1
+	VMULPD       (CX)(DI*1), Y0, Y0
+	VMULPD       (CX)(R8*1), Y1, Y1
+	VMOVUPD      Y0, (AX)
+	VMOVUPD      Y1, 64(AX)
+	VBROADCASTSD (BX), Y0
+	VBROADCASTSD 8(BX), Y1
+	VMULPD       32(CX)(DI*1), Y0, Y0
+	VMULPD       32(CX)(R8*1), Y1, Y1
+	VMOVUPD      Y0, 32(AX)
+	VMOVUPD      Y1, 96(AX)
+	ADDQ         $0x10, BX
+	ADDQ         $0x00000080, AX
+	DECQ         SI
+	JNZ          branch
+	VZEROUPPER
+	RET
+
+// func predict256(v *float64, curve *float64, when *float64, n int)
+// Requires: AVX, FMA3
+TEXT ·predict256(SB), NOSPLIT, $0-32
+	MOVQ    v+0(FP), AX
+	MOVQ    curve+8(FP), CX
+	MOVQ    when+16(FP), DX
+	MOVQ    n+24(FP), BX
+	VMOVUPD (DX), Y0
+	VMOVUPD 32(DX), Y1
+
+value:
+	VBROADCASTSD 32(CX), Y3
+	VBROADCASTSD 16(CX), Y2
+	VFMADD231PD  Y3, Y0, Y2
+	VBROADCASTSD (CX), Y3
+	VFMADD231PD  Y2, Y0, Y3
+	VMOVUPD      Y3, (AX)
+	VBROADCASTSD 32(CX), Y3
+	VBROADCASTSD 16(CX), Y2
+	VFMADD231PD  Y3, Y1, Y2
+	VBROADCASTSD (CX), Y3
+	VFMADD231PD  Y2, Y1, Y3
+	VMOVUPD      Y3, 32(AX)
+	VBROADCASTSD 40(CX), Y3
+	VBROADCASTSD 24(CX), Y2
+	VFMADD231PD  Y3, Y0, Y2
+	VBROADCASTSD 8(CX), Y3
+	VFMADD231PD  Y2, Y0, Y3
+	VMOVUPD      Y3, 64(AX)
+	VBROADCASTSD 40(CX), Y3
+	VBROADCASTSD 24(CX), Y2
+	VFMADD231PD  Y3, Y1, Y2
+	VBROADCASTSD 8(CX), Y3
+	VFMADD231PD  Y2, Y1, Y3
+	VMOVUPD      Y3, 96(AX)
+	ADDQ         $0x30, CX
+	ADDQ         $0x00000080, AX
+	DECQ         BX
+	JNZ          value
+	VZEROUPPER
+	RET
+
 // func rowsSet512(dst *float64, src *float64, index *int32, coef *float64, rows int)
 // Requires: AVX, AVX512F
 TEXT ·rowsSet512(SB), NOSPLIT, $0-40
@@ -1043,5 +1117,60 @@ value:
 	VMULPD       Z3, Z1, Z1
 	VADDPD       Z1, Z0, Z0
 	VMOVUPD      Z0, (SI)
+	VZEROUPPER
+	RET
+
+// func scale512(power *float64, values *float64, index *int32, share *float64, n int)
+// Requires: AVX, AVX512F
+TEXT ·scale512(SB), NOSPLIT, $0-40
+	MOVQ power+0(FP), AX
+	MOVQ values+8(FP), CX
+	MOVQ index+16(FP), DX
+	MOVQ share+24(FP), BX
+	MOVQ n+32(FP), SI
+
+branch:
+	MOVLQSX      (DX), DI
+	MOVLQSX      4(DX), R8
+	ADDQ         $0x08, DX
+	VBROADCASTSD (BX), Z0
+	VBROADCASTSD 8(BX), Z1
+	VMULPD       (CX)(DI*1), Z0, Z0
+	VMULPD       (CX)(R8*1), Z1, Z1
+	VMOVUPD      Z0, (AX)
+	VMOVUPD      Z1, 64(AX)
+	ADDQ         $0x10, BX
+	ADDQ         $0x00000080, AX
+	DECQ         SI
+	JNZ          branch
+	VZEROUPPER
+	RET
+
+// func predict512(v *float64, curve *float64, when *float64, n int)
+// Requires: AVX, AVX512F
+TEXT ·predict512(SB), NOSPLIT, $0-32
+	MOVQ    v+0(FP), AX
+	MOVQ    curve+8(FP), CX
+	MOVQ    when+16(FP), DX
+	MOVQ    n+24(FP), BX
+	VMOVUPD (DX), Z0
+
+value:
+	VBROADCASTSD 32(CX), Z2
+	VBROADCASTSD 16(CX), Z1
+	VFMADD231PD  Z2, Z0, Z1
+	VBROADCASTSD (CX), Z2
+	VFMADD231PD  Z1, Z0, Z2
+	VMOVUPD      Z2, (AX)
+	VBROADCASTSD 40(CX), Z2
+	VBROADCASTSD 24(CX), Z1
+	VFMADD231PD  Z2, Z0, Z1
+	VBROADCASTSD 8(CX), Z2
+	VFMADD231PD  Z1, Z0, Z2
+	VMOVUPD      Z2, 64(AX)
+	ADDQ         $0x30, CX
+	ADDQ         $0x00000080, AX
+	DECQ         BX
+	JNZ          value
 	VZEROUPPER
 	RET

@@ -36,3 +36,9 @@ func drawPairZIP(into, v, power *float64, index *int32, shape *float64, n int) u
 func advance(v, x, weight *float64, mask *uint64, moved *float64, n int) {
 	plainAdvance(v, x, weight, mask, moved, n)
 }
+
+func scale(power, values *float64, index *int32, share *float64, n int) {
+	plainScale(power, values, index, share, n)
+}
+
+func predict(v, curve, when *float64, n int) { plainPredict(v, curve, when, n) }

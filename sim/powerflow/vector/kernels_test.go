@@ -141,6 +141,34 @@ func twins(random func() *rand.Rand, wild bool) (out []twin) {
 			return [][]float64{whole, {float64(below)}}
 		}})
 	}
+	out = append(out, twin{"scale", func(t *testing.T, k int) [][]float64 {
+		rng := random()
+		whole, power := fence(n, rng)
+		_, values := fence(4, rng)
+		if wild {
+			odd(values, rng)
+		}
+		var d Drives
+		for range n {
+			d.Drive(rng.IntN(8), rng.IntN(8), complex(rng.NormFloat64(), rng.NormFloat64()))
+		}
+		f := []func(power, values *float64, index *int32, share *float64, n int){plainScale, scale256, scale512}[k]
+		f(&power[0], &values[0], &d.index[0], &d.Share[0], d.n)
+		return [][]float64{whole}
+	}}, twin{"predict", func(t *testing.T, k int) [][]float64 {
+		rng := random()
+		whole, v := fence(n, rng)
+		curve, when := make([]float64, 6*n), make([]float64, Lanes)
+		for i := range curve {
+			curve[i] = rng.NormFloat64()
+		}
+		for i := range when {
+			when[i] = rng.Float64()
+		}
+		f := []func(v, curve, when *float64, n int){plainPredict, predict256, predict512}[k]
+		f(&v[0], &curve[0], &when[0], n)
+		return [][]float64{whole}
+	}})
 	return append(out, twin{"advance", func(t *testing.T, k int) [][]float64 {
 		rng := random()
 		whole, v := fence(n, rng)

@@ -44,6 +44,16 @@ func drawPairZIP256(into *float64, v *float64, power *float64, index *int32, sha
 //go:noescape
 func advance256(v *float64, x *float64, weight *float64, mask *uint64, moved *float64, n int)
 
+// scale256 is the kernel of Drives.Scale.
+//
+//go:noescape
+func scale256(power *float64, values *float64, index *int32, share *float64, n int)
+
+// predict256 is the kernel of Predict.
+//
+//go:noescape
+func predict256(v *float64, curve *float64, when *float64, n int)
+
 // rowsSet512 is the kernel of Rows.Set.
 //
 //go:noescape
@@ -83,3 +93,13 @@ func drawPairZIP512(into *float64, v *float64, power *float64, index *int32, sha
 //
 //go:noescape
 func advance512(v *float64, x *float64, weight *float64, mask *uint64, moved *float64, n int)
+
+// scale512 is the kernel of Drives.Scale.
+//
+//go:noescape
+func scale512(power *float64, values *float64, index *int32, share *float64, n int)
+
+// predict512 is the kernel of Predict.
+//
+//go:noescape
+func predict512(v *float64, curve *float64, when *float64, n int)

@@ -23,6 +23,8 @@ func main() {
 		m.draw("WyeZIP", false, true)
 		m.draw("PairZIP", true, true)
 		m.advance()
+		m.scale()
+		m.predict()
 	}
 	Generate()
 }
