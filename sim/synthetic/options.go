@@ -68,7 +68,9 @@ type Options struct {
 	Inputs Inputs
 	// ProfileDays is how many days the profiles cover from Start on; the others repeat
 	// them. Zero means all days for Hours, one day for Seconds and up to seven days for
-	// the others. A day takes 0.3 MB by the minute and 18 MB by the second.
+	// the others. A day takes 0.3 MB by the minute and 18 MB by the second: a year by the
+	// second is 6.6 GB and would not be held in memory, so that a year with fresh noise
+	// each second repeats some days of it, with a jump where they meet.
 	ProfileDays int
 }
 
