@@ -17,8 +17,9 @@ import (
 // step at hand starts from; none runs past the end of the local day.
 type ahead struct {
 	lanes   *powerflow.Lanes
-	input   powerflow.Input
-	values  []float64
+	values  []float64         // of the series, in one step
+	rows    []float64         // ones, then the values of each series, by lane
+	month   int               // that the shares of loads known by their energy are of
 	loaded  [vector.Lanes]int // step, −1 none
 	first   int               // step; of no block: −1
 	end     int
@@ -41,14 +42,21 @@ func (e *Engine) prepareAhead() {
 	}
 	e.ahead = &ahead{
 		lanes:  powerflow.NewLanes(e.flow, e.in.largest()),
-		input:  powerflow.Input{Source: make([]complex128, len(e.in.fixed)), Power: make([]complex128, len(e.in.injections))},
-		values: make([]float64, len(e.in.values)), first: -1,
+		values: make([]float64, len(e.in.values)),
+		rows:   make([]float64, (len(e.in.values)+1)*vector.Lanes),
+		first:  -1,
+	}
+	for k := range vector.Lanes {
+		e.ahead.rows[k] = 1
+		for f := range e.in.fixed {
+			e.ahead.lanes.Source(k, f, e.in.fixed[f].volts)
+		}
 	}
 }
 
 // begin forgets what was solved before a run.
 func (a *ahead) begin() {
-	a.first, a.end, a.dayEnd = -1, -1, -1
+	a.first, a.end, a.dayEnd, a.month = -1, -1, -1, -1
 	for lane := range a.loaded {
 		a.loaded[lane] = -1
 	}
@@ -76,21 +84,58 @@ func (e *Engine) solveLanes() {
 	a.end = min(a.first+vector.Lanes, e.in.axis.Steps(), e.dayEnd(a.first))
 	mask := uint8(0)
 	for step := a.first; step < a.end; step++ {
-		lane := step % vector.Lanes
-		mask |= 1 << lane
-		if a.loaded[lane] != step {
-			a.loaded[lane] = step
-			e.in.sampleAt(a.values, step)
-			e.in.scale(a.values, step, &a.input)
-			a.lanes.Input(lane, &a.input)
+		k := step % vector.Lanes
+		mask |= 1 << k
+		if a.loaded[k] != step {
+			a.loaded[k] = step
+			a.load(e.in, k, step)
 		}
 	}
+	if month := e.in.monthOf(a.first); month != a.month { // months begin with days, and blocks end with them
+		a.month = month
+		a.lanes.Follow(e.in.follow(month))
+	}
+	a.lanes.Drive(a.rows)
 	var start []complex128
 	if e.anchored {
 		start = e.anchor
 	}
 	a.lanes.Start(mask, start, &e.input)
 	a.arrived = a.lanes.Solve(mask, powerflow.Contract)
+	if e.quiet != nil {
+		e.quiet.measured = false
+	}
+}
+
+// load puts the inputs of a step into a lane.
+func (a *ahead) load(in *inputs, k, step int) {
+	in.sampleAt(a.values, step)
+	for i, v := range a.values {
+		a.rows[(i+1)*vector.Lanes+k] = v
+	}
+	for f := range in.fixed {
+		if x := &in.fixed[f]; x.series >= 0 {
+			a.lanes.Source(k, f, x.at(a.values))
+		}
+	}
+}
+
+// follow says how every injection follows the rows of ahead in a month.
+func (in *inputs) follow(month int) (p, q []int, share []complex128) {
+	p, q = make([]int, len(in.injections)), make([]int, len(in.injections))
+	share = append(share, in.share...)
+	for k := range in.injections {
+		d := &in.driver[k]
+		p[k] = d.real + 1 // no series: the row of ones
+		q[k] = p[k]
+		if d.real >= 0 && d.reactive >= 0 {
+			q[k] = d.reactive + 1
+		}
+		if d.load >= 0 {
+			share[k] *= complex(in.energy[d.load][month], 0)
+		}
+	}
+	return p, q, share
 }
 
 // dayEnd returns the first step of the local day after that of a step.

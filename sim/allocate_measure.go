@@ -114,7 +114,7 @@ func (a *allocation) at(e *Engine, p int) (s, i complex128) {
 	}
 	for k := range a.meters {
 		if a.meters[k].unknown == u {
-			i = e.into(&a.meters[k])
+			i = into(e, present{e}, &a.meters[k])
 		}
 	}
 	return e.state.V[u] * cmplx.Conj(i), i

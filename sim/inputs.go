@@ -35,6 +35,7 @@ type inputs struct {
 	laws             []*inverterLaw
 	groupOfGenerator []int
 	groupOfBattery   []int
+	branchesOf       [][]int // injections by generator
 	batteryBranches  [][]int
 	batterySeries    []int
 	batteryScale     []float64
@@ -117,6 +118,12 @@ func newInputs(st *feeder.Study, net *network.Network, cache string) (*inputs, e
 			in.sunlit = sky.series(&m.Generators[i], &faults)
 		}
 		in.generate(i, &m.Generators[i], net, find, use, &faults, st.Settings.ScaleGeneration)
+	}
+	in.branchesOf = make([][]int, len(m.Generators))
+	for k, g := range in.generator {
+		if g >= 0 {
+			in.branchesOf[g] = append(in.branchesOf[g], k)
+		}
 	}
 	for i := range m.Batteries {
 		in.battery(i, &m.Batteries[i], net, find, use)
@@ -445,13 +452,16 @@ func (in *inputs) scale(values []float64, step int, out *powerflow.Input) {
 		out.Power[k] = complex(real(s)*p, imag(s)*q)
 	}
 	for f := range in.fixed {
-		x := &in.fixed[f]
-		if x.series < 0 {
-			out.Source[f] = x.volts
-		} else {
-			out.Source[f] = complex(values[x.series]*x.nominal/sqrt3, 0) * x.unit
-		}
+		out.Source[f] = in.fixed[f].at(values)
 	}
+}
+
+// at is the voltage for the values of all series in a step.
+func (x *fixedVoltage) at(values []float64) complex128 {
+	if x.series < 0 {
+		return x.volts
+	}
+	return complex(values[x.series]*x.nominal/sqrt3, 0) * x.unit
 }
 
 // peaks returns each load's own highest real power over the axis, kW at 1 p.u.

@@ -118,54 +118,76 @@ func (e *Engine) watchedRating(w *feeder.Watched) float64 {
 	return m.Switches[w.Index].Rating
 }
 
+// solved is an instant that currents and voltages can be read of: the state at hand, or a
+// lane.
+type solved interface {
+	volt(unknown int32) complex128
+	flow(place int) complex128
+	coupling(k int) complex128
+	value(series int) float64
+}
+
+// present is the state at hand.
+type present struct{ *Engine }
+
+func (s present) volt(u int32) complex128   { return s.state.V[u] }
+func (s present) flow(i int) complex128     { return s.state.Flow[i] }
+func (s present) coupling(k int) complex128 { return s.state.Coupling[k] }
+func (s present) value(series int) float64  { return s.in.values[series] }
+
 // drawnAt returns the current that parts of couplings draw, A.
-func (e *Engine) drawnAt(parts []part) (sum complex128) {
+func drawnAt[S solved](e *Engine, x S, parts []part) (sum complex128) {
 	for _, p := range parts {
 		c := &e.net.Couplings[p.coupling]
-		sum += complex(c.Base[p.terminal]+c.Inverse[p.terminal]/e.ratio[p.coupling], 0) * e.state.Coupling[p.coupling]
+		sum += complex(c.Base[p.terminal]+c.Inverse[p.terminal]/e.ratio[p.coupling], 0) * x.coupling(p.coupling)
 	}
 	return sum
 }
 
 // into returns the current that enters an element at its from end, A.
-func (e *Engine) into(w *watchedPhase) complex128 {
-	current := e.drawnAt(w.parts)
+func into[S solved](e *Engine, x S, w *watchedPhase) complex128 {
+	current := drawnAt(e, x, w.parts)
 	for _, f := range w.flows {
-		current += e.state.Flow[f]
+		current += x.flow(f)
 	}
 	return current
 }
 
-func (e *Engine) between(from, to int32) complex128 {
-	v := e.state.V[from]
+func across[S solved](x S, from, to int32) complex128 {
+	v := x.volt(from)
 	if to != network.Ground {
-		v -= e.state.V[to]
+		v -= x.volt(to)
 	}
 	return v
 }
 
+func (e *Engine) between(from, to int32) complex128 { return across(present{e}, from, to) }
+
 // measure sets what a device's control sees in the solution at hand.
-func (e *Engine) measure(d *device, wall devices.Time) {
-	r := &d.reading
-	*r = Reading{Wall: wall}
+func (e *Engine) measure(d *device, wall devices.Time) { d.reading = read(e, present{e}, d, wall) }
+
+// read returns what a device's control sees of a solved instant.
+func read[S solved](e *Engine, x S, d *device, wall devices.Time) Reading {
+	r := Reading{Wall: wall}
 	if t := d.tap; t != nil {
-		r.Volts = e.between(t.from, t.to)
-		r.Amperes = -e.drawnAt(t.leaving)
-		r.SourceVolts = e.between(t.sourceFrom, t.sourceTo)
-		r.SourceAmperes = -e.into(&t.source)
-		return
+		r.Volts = across(x, t.from, t.to)
+		r.Amperes = -drawnAt(e, x, t.leaving)
+		r.SourceVolts = across(x, t.sourceFrom, t.sourceTo)
+		r.SourceAmperes = -into(e, x, &t.source)
+		return r
 	}
 	c := d.cap
-	r.V120 = cmplx.Abs(e.between(c.from, c.to)) / c.base
+	r.V120 = cmplx.Abs(across(x, c.from, c.to)) / c.base
 	for i := range c.watched {
 		w := &c.watched[i]
-		current := e.into(w)
-		s := e.state.V[w.unknown] * cmplx.Conj(current)
+		current := into(e, x, w)
+		s := x.volt(w.unknown) * cmplx.Conj(current)
 		r.KW += real(s) / 1000
 		r.KVAR += imag(s) / 1000
 		r.Current = math.Max(r.Current, cmplx.Abs(current))
 	}
 	if k := e.in.outside[d.Index]; k >= 0 {
-		r.Outside = e.in.values[k]
+		r.Outside = x.value(k)
 	}
+	return r
 }

@@ -204,7 +204,7 @@ func (e *Engine) read(p *meterPoint) float64 {
 		return float64(e.state.Taps[p.tap])
 	}
 	for i := range p.watched {
-		take(p.watched[i].unknown, e.into(&p.watched[i]))
+		take(p.watched[i].unknown, into(e, present{e}, &p.watched[i]))
 	}
 	for _, s := range p.source {
 		take(s.unknown, e.state.Source[s.source][s.phase])

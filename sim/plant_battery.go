@@ -122,7 +122,7 @@ func (e *Engine) follow(now devices.Time) bool {
 func (e *Engine) flowKW(ws []watchedPhase) (kW float64) {
 	for i := range ws {
 		w := &ws[i]
-		current := e.drawnAt(w.parts)
+		current := drawnAt(e, present{e}, w.parts)
 		for _, f := range w.flows {
 			current += e.state.Flow[f]
 		}

@@ -61,14 +61,20 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 		e.speculate = true
 		defer func() { e.speculate = false }()
 	}
+	r.quiet = newQuiet(r)
 	n := e.in.axis.Steps()
-	for step := range n {
+	for step := 0; step < n; {
 		if err := ctx.Err(); err != nil {
 			return nil, err
 		}
-		if err := r.step(step); err != nil {
+		skip, err := r.quietFrom(step)
+		if err == nil && skip == 0 {
+			skip, err = 1, r.step(step)
+		}
+		if err != nil {
 			return nil, err
 		}
+		step += skip
 	}
 	for p, k := range e.paths {
 		out.Paths[p.String()] = k
@@ -426,18 +432,29 @@ func newCoarse(e *Engine) *coarse {
 
 func (c *coarse) see(e *Engine) {
 	for i, d := range e.devices {
-		sheet, tap := d.tapSheet()
-		if sheet == nil || sheet.Held {
-			continue
-		}
-		// At the present tap: what the inputs alone do.
-		v := sheet.Measure(d.reading.Volts, d.reading.Amperes).Relay / sheet.Ratio(tap)
-		if c.last[i] == c.last[i] {
-			c.sum[i] += math.Abs(v - c.last[i])
-			c.count[i]++
-		}
-		c.last[i] = v
+		c.take(i, coarseValue(d, d.reading))
 	}
+}
+
+// coarseValue is the voltage that a tap changer regulates, V, at the present tap: what the
+// inputs alone do. It is NaN for what regulates nothing.
+func coarseValue(d *device, r Reading) float64 {
+	sheet, tap := d.tapSheet()
+	if sheet == nil || sheet.Held {
+		return math.NaN()
+	}
+	return sheet.Measure(r.Volts, r.Amperes).Relay / sheet.Ratio(tap)
+}
+
+func (c *coarse) take(i int, v float64) {
+	if v != v {
+		return
+	}
+	if c.last[i] == c.last[i] {
+		c.sum[i] += math.Abs(v - c.last[i])
+		c.count[i]++
+	}
+	c.last[i] = v
 }
 
 func (c *coarse) names(e *Engine) (out []string) {

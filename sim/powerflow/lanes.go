@@ -40,11 +40,19 @@ type Lanes struct {
 
 	loads  [4]*vector.Loads
 	power  [4][]float64
-	list   []int8  // by injection: its list, −1: it has no bearing on any unknown, −2: of a group
+	drives [4]vector.Drives
+	lead   []drive // by group: how its first member's power follows the series
+	list   []int8  // by injection: its list, −1: it is one of a group
 	member []int32 // by injection: its place in the list
 	given  []complex128
 
 	least float64 // change that keeps every node's mismatch, where loads are at their largest
+}
+
+// drive says how a power follows rows of values: P the first, Q the second.
+type drive struct {
+	p, q  int
+	share complex128
 }
 
 // sensitivity bounds how much of its power an injection's current moves by, as power,
@@ -217,15 +225,10 @@ func (l *Lanes) branches() {
 	}
 	l.list, l.member = make([]int8, len(s.Injections)), make([]int32, len(s.Injections))
 	l.given = make([]complex128, len(s.Groups)*vector.Lanes)
-	free := func(u int32) bool { return u != network.Ground && int(l.slot[u]) < l.all }
 	for k := range s.Injections {
 		j := &s.Injections[k]
-		l.list[k] = -1
 		if j.Group != 0 {
-			l.list[k] = -2
-			continue
-		}
-		if !free(j.From) && !free(j.To) {
+			l.list[k] = -1
 			continue
 		}
 		list, to := 0, 0
@@ -309,11 +312,44 @@ func (l *Lanes) refresh() {
 	}
 }
 
+// Follow says how every injection's power follows the rows of values that Drive gets:
+// P row p and Q row q, times its share, VA.
+func (l *Lanes) Follow(p, q []int, share []complex128) {
+	l.drives = [4]vector.Drives{}
+	l.lead = make([]drive, len(l.s.Groups))
+	for k := range l.s.Injections { // in the order in which branches lists them
+		if list := l.list[k]; list >= 0 {
+			l.drives[list].Drive(p[k], q[k], share[k])
+		}
+	}
+	for g := range l.lead {
+		k := l.s.Groups[g].Members[0]
+		l.lead[g] = drive{p[k], q[k], share[k]}
+	}
+}
+
+// Drive sets the powers of all lanes from rows of vector.Lanes values.
+func (l *Lanes) Drive(values []float64) {
+	for i := range l.drives {
+		l.drives[i].Scale(l.power[i], values)
+	}
+	for g, d := range l.lead {
+		for lane := range vector.Lanes {
+			l.given[g*vector.Lanes+lane] = complex(real(d.share)*values[d.p*vector.Lanes+lane], imag(d.share)*values[d.q*vector.Lanes+lane])
+		}
+	}
+}
+
+// Source sets what a fixed voltage is in a lane, V.
+func (l *Lanes) Source(lane, fixed int, z complex128) {
+	vector.Put(l.v, l.all+fixed, lane, z)
+	vector.Put(l.x, l.held+fixed, lane, z)
+}
+
 // Input sets the inputs of a lane.
 func (l *Lanes) Input(lane int, in *Input) {
 	for f, z := range in.Source {
-		vector.Put(l.v, l.all+f, lane, z)
-		vector.Put(l.x, l.held+f, lane, z)
+		l.Source(lane, f, z)
 	}
 	for k, z := range in.Power {
 		if list := l.list[k]; list >= 0 {
@@ -335,6 +371,10 @@ func (l *Lanes) Start(mask uint8, start []complex128, in *Input) {
 	}
 	for u, at := range l.slot {
 		if int(at) >= l.all {
+			continue
+		}
+		if mask == vector.All {
+			vector.Fill(l.v, int(at), start[u])
 			continue
 		}
 		for lane := range vector.Lanes {
@@ -398,12 +438,7 @@ func (l *Lanes) Solve(mask uint8, tol Tolerance) (arrived uint8) {
 func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) {
 	clear(l.x[:l.held*vector.Width])
 	l.pull.Set(l.x, l.x)
-	for i, b := range l.loads {
-		below |= b.Draw(l.x, l.v, l.power[i])
-	}
-	for g := range l.s.Groups {
-		below |= l.drawGroup(g, mask)
-	}
+	below = l.draw(l.x, mask)
 	l.gather.Add(l.x, l.x)
 	l.forward.Add(l.x, l.x)
 	l.backward.Solve(l.x, l.x)
@@ -412,8 +447,20 @@ func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) 
 	return below
 }
 
-// drawGroup takes what a group draws off the currents, lane by lane.
-func (l *Lanes) drawGroup(g int, mask uint8) (below uint8) {
+// draw takes what the injections draw off the currents that are put in, and returns the
+// lanes with a load below the corner.
+func (l *Lanes) draw(into []float64, mask uint8) (below uint8) {
+	for i, b := range l.loads {
+		below |= b.Draw(into, l.v, l.power[i])
+	}
+	for g := range l.s.Groups {
+		below |= l.drawGroup(into, g, mask)
+	}
+	return below
+}
+
+// drawGroup does so for a group, lane by lane.
+func (l *Lanes) drawGroup(into []float64, g int, mask uint8) (below uint8) {
 	s := l.s
 	group := &s.Groups[g]
 	n := float64(len(group.Members))
@@ -436,10 +483,10 @@ func (l *Lanes) drawGroup(g int, mask uint8) (below uint8) {
 			x := l.across(j, lane)
 			i := p * x * complex(1/(real(x)*real(x)+imag(x)*imag(x)), 0)
 			at := int(l.slot[j.From])
-			vector.Put(l.x, at, lane, vector.At(l.x, at, lane)-i)
+			vector.Put(into, at, lane, vector.At(into, at, lane)-i)
 			if j.To != network.Ground {
 				at = int(l.slot[j.To])
-				vector.Put(l.x, at, lane, vector.At(l.x, at, lane)+i)
+				vector.Put(into, at, lane, vector.At(into, at, lane)+i)
 			}
 		}
 	}

@@ -5,6 +5,8 @@
 package main
 
 import (
+	"flag"
+
 	. "github.com/mmcloughlin/avo/build"
 	. "github.com/mmcloughlin/avo/operand"
 	"github.com/mmcloughlin/avo/reg"
@@ -13,8 +15,14 @@ import (
 const lanes, stride = 8, 128
 
 func main() {
+	part := flag.String("part", "flow", "the kernels to write: flow, or watch")
+	flag.Parse()
 	ConstraintExpr("amd64,!purego")
 	for _, m := range []machine{{"256", 32}, {"512", 64}} {
+		if *part == "watch" {
+			m.watch()
+			continue
+		}
 		m.rows("Set")
 		m.rows("Add")
 		m.rows("Solve")
