@@ -184,8 +184,7 @@ func (l *lossesDocument) marginalSection() (Section, error) {
 		s.Blocks = []Block{Paragraph{Plain("No sampled step could be solved.")}}
 		return s, nil
 	}
-	s.Blocks = append(s.Blocks, Paragraph{Say("A kW more is served with {} of losses on the way at {}, the most of all places, and with {} at {}, the least. As a check: losses that go with the square of the load cost at the margin about twice their average share.",
-		l.marginal.Value(0, "marginal losses [%]"), l.marginal.Name(0, "node"), l.marginal.Value(n-1, "marginal losses [%]"), l.marginal.Name(n-1, "node"))},
+	s.Blocks = append(s.Blocks, Paragraph{Plain("Marginal losses are what a kW more at a place adds to the losses of the feeder. Losses that go with the square of the load cost at the margin about twice their average share.")},
 		Paragraph{Plain("How: " + l.said("marginal") + ". Devices stand still, other loads answer the voltage as their ZIP says; the power is added at unity power factor, shared over the node's phases.")})
 	figures, err := l.marginalFigures(newStyle(200))
 	if err != nil {

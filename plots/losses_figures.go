@@ -106,7 +106,7 @@ func (l *lossesDocument) elementFigure(st *style, rows []int) (*page, Figure) {
 		Finding: fmt.Sprintf("%s (%s) loses most, %s, %s of all; together they make %s.", first, l.element.Cell(0, "kind"), energy(numberIn(l.element.Cell(0, "energy [kWh]"))),
 			percent(numberIn(l.element.Cell(0, "share [%]"))), percent(numberIn(l.element.Cell(len(rows)-1, "share of it and those before [%]"))))}
 	f.Alt = "Bars of the energy lost in each of these elements, coloured by kind of loss. " + f.Finding
-	const bar, gap = vg.Length(12), vg.Length(5)
+	const bar, gap = vg.Length(11), vg.Length(3.5)
 	p := st.newPage(vg.Length(len(rows))*(bar+gap)+40, f.Title, f.Finding, l.foot())
 	label, small := st.text(labelSize, black), st.text(smallSize, inkGrey)
 	room := vg.Length(0)

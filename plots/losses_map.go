@@ -144,7 +144,8 @@ func (l *lossesDocument) marginalMap(st *style, m marginalSpots) (*page, Figure,
 	f.Alt = "Map of the feeder, the darker the more of a further kW is lost on the way. " + f.Finding
 	value := func(i int) float64 { return numberIn(m.l.Cell(i, marginalColumn)) }
 	k := rising{value(rows[0]), value(rows[len(rows)-1])}
-	p := st.newPage(m.layout.bodyHeight(), f.Title, f.Finding, l.foot())
+	// Low enough for the next figure to stand on the same printed page.
+	p := st.newPage(min(m.layout.bodyHeight(), 330), f.Title, f.Finding, l.foot())
 	n := mapPanel(p, m.layout)
 	spot := func(name string) (vg.Point, bool) {
 		at, ok := m.layout.at[name]

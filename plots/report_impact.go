@@ -276,6 +276,9 @@ func (c *impactDocument) mitigationSection() (Section, error) {
 	}
 	t.Note = Plain("Mended: fails without the remedy and passes with it. Newly failed: the other way round. Counted are the criteria of mitigations.csv, in which the loss and return of other units than the case's are left out.")
 	s.Blocks = append(s.Blocks, what, t)
+	for _, x := range c.remedyTables() {
+		s.Blocks = append(s.Blocks, x)
+	}
 	if p, f := c.remedyFigure(newStyle(200)); p != nil {
 		b, err := c.picture(p, f)
 		if err != nil {
@@ -283,38 +286,94 @@ func (c *impactDocument) mitigationSection() (Section, error) {
 		}
 		s.Blocks = append(s.Blocks, b)
 	}
-	for i := range c.list.Rows {
-		name := c.list.Cell(i, "mitigation")
-		x := Table{Caption: upper(name), Columns: []Column{{Head: "Criterion", Words: true}, {Head: "Unit", Words: true}, {Head: "With the units"}, {Head: "With the remedy"}, {Head: "Difference"}, {Head: "Limit"}, {Head: "Verdict", Words: true}, {Head: "Margin"}}}
-		for k, r := range c.mitigations.Rows {
-			if r[0] != name || c.mitigations.Cell(k, "difference") == "0.0000" || c.mitigations.Cell(k, "difference") == "0.000000" {
-				continue
-			}
-			u := func(column string) Value { return plain(unitCell(c.mitigations, k, column)) }
-			x.Rows = append(x.Rows, []Value{Word(r[1]), Word(shownUnit(r[2])), u("with DER"), u("mitigated"), u("difference"), u("limit"), c.mitigations.Name(k, "verdict"), u("margin")})
-		}
-		if len(x.Rows) > 0 {
-			x.Note = Plain("Criteria that the remedy does not change are left out; they are in mitigations.csv.")
-			s.Blocks = append(s.Blocks, x)
-		}
-	}
 	return s, nil
 }
 
-// yearSection shows the years of the base and of the case.
+// remedyColumns is how many remedies stand side by side in a printed table.
+const remedyColumns = 5
+
+// remedyTables hold the tried remedies side by side: the criteria that one of them changes,
+// with the value of each and who fails.
+func (c *impactDocument) remedyTables() (out []Table) {
+	var names []string
+	for i := range c.list.Rows {
+		if c.list.Cell(i, "tried") == "yes" {
+			names = append(names, c.list.Cell(i, "mitigation"))
+		}
+	}
+	if len(names) == 0 {
+		return nil
+	}
+	var criteria []string
+	for i, r := range c.mitigations.Rows {
+		if d := numberIn(c.mitigations.Cell(i, "difference")); d != 0 && !math.IsNaN(d) && !slices.Contains(criteria, r[1]) {
+			criteria = append(criteria, r[1])
+		}
+	}
+	parts := (len(names) + remedyColumns - 1) / remedyColumns
+	each := (len(names) + parts - 1) / parts
+	for at := 0; at < len(names); at += each {
+		out = append(out, c.remedyTable(names[at:min(at+each, len(names))], criteria))
+	}
+	out[len(out)-1].Note = Plain("Criteria that no remedy changes are left out; they and the margin of each are in mitigations.csv.")
+	return out
+}
+
+func (c *impactDocument) remedyTable(names, criteria []string) Table {
+	t := Table{Caption: "With " + strings.Join(names, ", "), Columns: []Column{{Head: "Criterion", Words: true}, {Head: "Unit", Words: true}, {Head: "Limit"}, {Head: "No remedy"}}}
+	for _, n := range names {
+		t.Columns = append(t.Columns, Column{Head: upper(n)})
+	}
+	t.Columns = append(t.Columns, Column{Head: "Fails", Words: true})
+	for _, q := range criteria {
+		row, fails := make([]Value, 4, len(t.Columns)), []string(nil)
+		for _, n := range names {
+			k := c.mitigations.Row(n, q)
+			if k < 0 {
+				row = append(row, Word("–"))
+				continue
+			}
+			row[0], row[1], row[2], row[3] = Word(q), Word(shownUnit(c.mitigations.Cell(k, "unit"))), plain(unitCell(c.mitigations, k, "limit")), plain(unitCell(c.mitigations, k, "with DER"))
+			row = append(row, plain(unitCell(c.mitigations, k, "mitigated")))
+			if c.mitigations.Cell(k, "verdict") == "fail" {
+				fails = append(fails, n)
+			}
+		}
+		if row[0].Show == "" {
+			continue // of none of these
+		}
+		if i := slices.IndexFunc(c.impact.Rows, func(r []string) bool { return r[1] == q }); i >= 0 && c.impact.Cell(i, "verdict") == "fail" {
+			fails = append([]string{"no remedy"}, fails...)
+		}
+		switch {
+		case len(fails) == len(names)+1:
+			fails = []string{"all"}
+		case len(fails) == 0 && row[2].Show != "–":
+			fails = []string{"none"}
+		case len(fails) == 0:
+			fails = []string{"–"}
+		}
+		t.Rows = append(t.Rows, append(row, Word(strings.Join(fails, ", "))))
+	}
+	return t
+}
+
+// yearSection shows the years of the base and of the case, figure by figure, so that the
+// two stand one below the other.
 func (c *impactDocument) yearSection(runs string) (Section, error) {
 	s := Section{Heading: "The year of the base and of the case"}
+	only := []string{"voltage-highest-year", "voltage-distance", "power"}
+	pictures := make([][]Block, len(only))
 	for _, r := range c.record.Cases {
 		f, err := results.ReadFolder(os.DirFS(filepath.Join(runs, r.Folder)))
 		if err != nil {
 			s.Blocks = append(s.Blocks, Paragraph{Plain("The results folder of case " + r.Case + " is not there, so that the figures of its year are left out; \"yearflow report\" draws them.")})
 			continue
 		}
-		figures, err := DrawFolder(f, func(string) (io.WriteCloser, error) { return noFile{}, nil }, Options{Only: []string{"voltage-highest-year", "voltage-distance", "power"}})
+		figures, err := DrawFolder(f, func(string) (io.WriteCloser, error) { return noFile{}, nil }, Options{Only: only})
 		if err != nil {
 			return s, err
 		}
-		s.Blocks = append(s.Blocks, Heading("Case "+r.Case))
 		for _, g := range figures {
 			name := r.Folder + "-" + g.Name
 			if err := os.MkdirAll(filepath.Join(c.dir, "figures"), 0o755); err != nil {
@@ -323,8 +382,15 @@ func (c *impactDocument) yearSection(runs string) (Section, error) {
 			if err := os.WriteFile(filepath.Join(c.dir, "figures", name), g.PNG, 0o644); err != nil {
 				return s, err
 			}
-			s.Blocks = append(s.Blocks, Picture{PNG: g.PNG, Title: g.Title, Alt: g.Alt, Caption: Plain(g.Finding), File: "figures/" + name, Inside: true})
+			k := slices.IndexFunc(only, func(o string) bool { return o == strings.TrimSuffix(g.Name, ".png") })
+			if k < 0 {
+				k = len(only) - 1
+			}
+			pictures[k] = append(pictures[k], Picture{PNG: g.PNG, Title: g.Title + ", case " + r.Case, Alt: g.Alt, Caption: Plain(g.Finding), File: "figures/" + name, Inside: true})
 		}
+	}
+	for _, p := range pictures {
+		s.Blocks = append(s.Blocks, p...)
 	}
 	return s, nil
 }

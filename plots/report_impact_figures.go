@@ -43,7 +43,7 @@ func (c *impactDocument) limitFigure(st *style) (*page, Figure) {
 	f := Figure{Name: "limits.png", Title: "How far limits are used up, base and with the units"}
 	f.Finding = fmt.Sprintf("%d of %s go beyond their limit with the units; the most used is that of the %s, %s.", over, count(len(bars), "criterion", "criteria"), mostAt, percent(most))
 	f.Alt = "Bars of each criterion in per cent of its limit, for the base and with the units. " + f.Finding
-	const row = vg.Length(24)
+	const row = vg.Length(16.5) // low enough for the first printed page
 	p := st.newPage(vg.Length(len(bars))*row+56, f.Title, f.Finding, c.foot())
 	label, small := st.text(smallSize, black), st.text(smallSize, inkGrey)
 	room := vg.Length(0)
@@ -71,8 +71,8 @@ func (c *impactDocument) limitFigure(st *style) (*page, Figure) {
 		if b.with > 100 {
 			tone = vermilion
 		}
-		n.bar(n.x(0), y+1, n.x(math.Min(math.Max(b.base, 0), hi)), y+8, axisGrey)
-		n.bar(n.x(0), y-8, n.x(math.Min(b.with, hi)), y-1, tone)
+		n.bar(n.x(0), y+0.5, n.x(math.Min(math.Max(b.base, 0), hi)), y+6.5, axisGrey)
+		n.bar(n.x(0), y-6.5, n.x(math.Min(b.with, hi)), y-0.5, tone)
 	}
 	n.c.StrokeLine2(draw.LineStyle{Color: black, Width: vg.Points(1.4), Dashes: []vg.Length{4, 2}}, n.x(100), n.rect.Min.Y, n.x(100), n.rect.Max.Y)
 	for i, b := range bars {
