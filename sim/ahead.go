@@ -2,6 +2,7 @@ package sim
 
 import (
 	"math"
+	"math/bits"
 
 	"yearflow/profiles"
 	"yearflow/sim/powerflow"
@@ -24,6 +25,7 @@ type ahead struct {
 	first   int               // step; of no block: −1
 	end     int
 	arrived uint8
+	taken   uint8
 	state   int // device state that the block was solved with
 	dayEnd  int // first step of the next day
 }
@@ -32,13 +34,8 @@ type ahead struct {
 // with stored energy, vehicles, lags or loads that a measured total is shared over it
 // depends on how the steps before it went.
 func (e *Engine) prepareAhead() {
-	if e.reference || e.allocation != nil || len(e.plants.batteries) > 0 || len(e.plants.chargers) > 0 {
+	if e.stepwise = e.whyStepwise(); e.stepwise != "" {
 		return
-	}
-	for _, v := range e.plants.inverters {
-		if v.lags {
-			return
-		}
 	}
 	e.ahead = &ahead{
 		lanes:  powerflow.NewLanes(e.flow, e.in.largest()),
@@ -52,6 +49,27 @@ func (e *Engine) prepareAhead() {
 			e.ahead.lanes.Source(k, f, e.in.fixed[f].volts)
 		}
 	}
+}
+
+// whyStepwise says in the words of run.json why every step is solved by itself; blank:
+// it is not.
+func (e *Engine) whyStepwise() string {
+	switch {
+	case e.reference:
+		return "asked for"
+	case e.allocation != nil:
+		return "allocation"
+	case len(e.plants.batteries) > 0:
+		return "batteries"
+	case len(e.plants.chargers) > 0:
+		return "chargers"
+	}
+	for _, v := range e.plants.inverters {
+		if v.lags {
+			return "lagging inverters"
+		}
+	}
+	return ""
 }
 
 // begin forgets what was solved before a run.
@@ -74,6 +92,10 @@ func (e *Engine) solveAhead() bool {
 		return false
 	}
 	a.lanes.Take(lane, e.solution)
+	if a.taken>>lane&1 == 0 {
+		a.taken |= 1 << lane
+		e.timing.LanesUsed++
+	}
 	return true
 }
 
@@ -100,6 +122,10 @@ func (e *Engine) solveLanes() {
 	if e.anchored {
 		start = e.anchor
 	}
+	e.lap(&e.timing.Assembling)
+	e.timing.Blocks++
+	e.timing.LanesSolved += bits.OnesCount8(mask)
+	a.taken = 0
 	a.lanes.Start(mask, start, &e.input)
 	a.arrived = a.lanes.Solve(mask, powerflow.Contract)
 	if e.quiet != nil {

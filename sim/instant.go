@@ -11,6 +11,7 @@ import (
 // solve finds the voltages for the inputs and the device positions at hand and
 // everything that is measured from them. It reports whether there is a solution.
 func (e *Engine) solve(tol powerflow.Tolerance) (bool, error) {
+	e.lap(&e.timing.Controls)
 	for k := range e.net.Couplings {
 		c := &e.net.Couplings[k]
 		e.ratio[k] = 1
@@ -20,6 +21,7 @@ func (e *Engine) solve(tol powerflow.Tolerance) (bool, error) {
 	}
 	// Positions at which the equations are singular have no solution: Solve says where.
 	_ = e.flow.SetDevices(e.ratio, e.state.Closed)
+	e.lap(&e.timing.Assembling)
 	ok := e.speculate && tol == powerflow.Contract && e.solveAhead()
 	if !ok {
 		var start []complex128
@@ -29,8 +31,11 @@ func (e *Engine) solve(tol powerflow.Tolerance) (bool, error) {
 		ok = e.flow.Solve(&e.input, start, tol, e.solution)
 	}
 	e.paths[e.solution.Path]++
+	e.timing.Solutions++
+	e.timing.Iterations += e.solution.Iterations
 	e.state.V = e.solution.V
 	if !ok {
+		e.lap(&e.timing.Solving)
 		return false, nil
 	}
 	e.flow.Flows(e.state.Flow, e.state.V)
@@ -47,6 +52,7 @@ func (e *Engine) solve(tol powerflow.Tolerance) (bool, error) {
 	}
 	e.plantPowers()
 	e.sources()
+	e.lap(&e.timing.Solving)
 	return true, nil
 }
 

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"math"
 	"strings"
+	"time"
 
 	"yearflow/devices"
 	"yearflow/sim/feeder"
@@ -43,6 +44,8 @@ type Options struct {
 	Cache string
 	// Reference solves every step by itself: the judge of everything faster.
 	Reference bool
+	// Timing has Engine.Timing measure where the time goes.
+	Timing bool
 }
 
 // Engine is a study ready to run. It is not safe for use by several goroutines at
@@ -80,8 +83,11 @@ type Engine struct {
 	source   []complex128 // by Network.Fixed
 	drawn    []complex128 // by injection
 	paths    map[powerflow.Path]int
-	edges    int
-	exact    bool // the solution at hand has the reference tolerance
+	timing   Timing
+	timed    bool
+	stepwise string    // why steps are solved by themselves; blank: they are not
+	since    time.Time // the last lap
+	exact    bool      // the solution at hand has the reference tolerance
 	interval results.Interval
 }
 
@@ -148,7 +154,7 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 		faults.Add(m.Sources[0].At, "%v", err)
 		return nil, faults.Err()
 	}
-	e := &Engine{Study: st, net: net, flow: flow, in: in, reference: o.Reference, paths: map[powerflow.Path]int{}}
+	e := &Engine{Study: st, net: net, flow: flow, in: in, reference: o.Reference, timed: o.Timing, paths: map[powerflow.Path]int{}}
 	name := st.Case
 	if name == "" {
 		name = "base"

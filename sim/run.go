@@ -32,6 +32,7 @@ const startUp = 24 * 3600 * devices.Second
 // begins settled, unless the study says "given". A cancelled context ends it between
 // two steps.
 func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outcome, error) {
+	e.startClock()
 	if err := e.baseOver(ctx); err != nil {
 		return nil, err
 	}
@@ -47,6 +48,7 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 		out.StillMoving = moving
 	}
 	clear(e.paths)
+	e.timing.startOver()
 	e.anchored = false
 	e.plants.reset(e.in.axis.Start)
 	e.steady = false
@@ -80,6 +82,8 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 		out.Paths[p.String()] = k
 	}
 	out.CoarseAt = r.coarse.names(e)
+	out.Speed = e.speed()
+	e.lap(&e.timing.Controls)
 	out.Plants = r.totals()
 	return out, nil
 }
@@ -178,7 +182,7 @@ func (e *Engine) observe(now, wall devices.Time) error {
 		e.measure(d, wall)
 	}
 	if !e.exact && e.nearEdge() {
-		e.edges++
+		e.timing.Edges++
 		ok, err := e.solve(powerflow.Reference)
 		if err != nil {
 			return err
@@ -253,7 +257,9 @@ type runner struct {
 func (r *runner) step(step int) error {
 	e := r.Engine
 	start, end := e.in.axis.Bounds(step)
+	e.lap(&e.timing.Controls)
 	e.takeInputs(step)
+	e.lap(&e.timing.Assembling)
 	// Start voltages are those after the last action, or of the first step of the day:
 	// a function of the inputs and the calendar.
 	if day := profiles.Day(start, e.in.axis.Zone); !r.started || day != r.day {
@@ -342,11 +348,13 @@ func (e *Engine) nextSwitch(now devices.Time) devices.Time {
 
 func (r *runner) close() error {
 	r.book()
+	r.lap(&r.timing.Controls)
 	for _, rec := range r.recorders {
 		if err := rec.Step(&r.record); err != nil {
 			return err
 		}
 	}
+	r.lap(&r.timing.Statistics)
 	return nil
 }
 
@@ -405,11 +413,13 @@ func (r *runner) interval(from, to devices.Time) error {
 		iv.Devices = append(iv.Devices, s)
 		iv.Settled = iv.Settled && !standing
 	}
+	e.lap(&e.timing.Controls)
 	for _, rec := range r.recorders {
 		if err := rec.Interval(iv); err != nil {
 			return err
 		}
 	}
+	e.lap(&e.timing.Statistics)
 	return nil
 }
 

@@ -58,6 +58,7 @@ type runOut struct {
 	StillMoving []string          `json:"still_moving_at_start_up"`
 	StepsBy     map[string]int    `json:"steps_by_solver"`
 	SolutionsBy map[string]int    `json:"solutions_by_solver"`
+	Speed       Speed             `json:"speed"`
 	Balance     balanceOut        `json:"balance"`
 	Coarse      coarseOut         `json:"coarse_step"`
 	Hunting     []huntingOut      `json:"hunting"`
@@ -169,11 +170,12 @@ func (w *Writer) writeRun(o *Outcome, run RunInfo) error {
 		Voltages: set.Run.Voltages, Flows: append([]string{}, set.Run.Flows...),
 		Counts:    w.countsOut(),
 		Positions: w.positionsOut(o), StillMoving: append([]string{}, o.StillMoving...),
-		StepsBy: w.solver, SolutionsBy: notNil(o.Paths),
+		StepsBy: w.solver, SolutionsBy: notNil(o.Paths), Speed: o.Speed,
 		Balance: balanceOut{Checked: w.balance.checked, Worst: w.balance.worst},
 		Coarse:  w.coarse(o),
 		Assumed: []noteOut{}, Warnings: []noteOut{}, Hunting: []huntingOut{}, Trouble: append([]troubleOut{}, w.trouble...), Inputs: notNil(run.Inputs), Results: w.hashes,
 	}
+	r.Speed.StepByStep = notNil(o.Speed.StepByStep)
 	if set.Run.Given {
 		r.Begins = "given"
 	}

@@ -154,11 +154,30 @@ type Outcome struct {
 	Paths map[string]int
 	// Hunting counts the instants at which a device was found hunting.
 	Hunting []HuntingEvent
+	Speed   Speed
 	// Plants is what every generator, battery and charger did.
 	Plants []PlantRow
 	// CoarseAt names regulators at which the mean change of the measured voltage from
 	// step to step exceeds the bandwidth.
 	CoarseAt []string
+}
+
+// Speed counts the work that a run took: the object speed of run.json. It is the same
+// for every run of the same study, however long that takes.
+type Speed struct {
+	// Blocks of steps were solved at once; of the steps in them LanesUsed were taken, the
+	// others were solved for nothing, since a device moved before or they did not arrive.
+	Blocks      int `json:"blocks"`
+	LanesSolved int `json:"lanes_solved"`
+	LanesUsed   int `json:"lanes_used"`
+	// Iterations and Solutions are those that were taken.
+	Iterations int `json:"iterations"`
+	Solutions  int `json:"solutions"`
+	// Edges are instants solved again for a measurement near an edge of a control.
+	Edges      int `json:"instants_near_an_edge"`
+	QuietSteps int `json:"quiet_steps"`
+	// StepByStep counts the steps that were solved by themselves, by the reason.
+	StepByStep map[string]int `json:"steps_by_themselves"`
 }
 
 // PlantRow is what a generator, a battery or a charger did over the period, kWh at
