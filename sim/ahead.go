@@ -26,6 +26,7 @@ type ahead struct {
 	end     int
 	arrived uint8
 	taken   uint8
+	window  window
 	state   int // device state that the block was solved with
 	dayEnd  int // first step of the next day
 }
@@ -43,10 +44,16 @@ func (e *Engine) prepareAhead() {
 		rows:   make([]float64, (len(e.in.values)+1)*vector.Lanes),
 		first:  -1,
 	}
+	e.in.still(e.ahead.lanes, e.ahead.rows)
+	e.prepareWindow()
+}
+
+// still sets what no step changes.
+func (in *inputs) still(lanes *powerflow.Lanes, rows []float64) {
 	for k := range vector.Lanes {
-		e.ahead.rows[k] = 1
-		for f := range e.in.fixed {
-			e.ahead.lanes.Source(k, f, e.in.fixed[f].volts)
+		rows[k] = 1
+		for f := range in.fixed {
+			lanes.Source(k, f, in.fixed[f].volts)
 		}
 	}
 }
@@ -75,6 +82,7 @@ func (e *Engine) whyStepwise() string {
 // begin forgets what was solved before a run.
 func (a *ahead) begin() {
 	a.first, a.end, a.dayEnd, a.month = -1, -1, -1, -1
+	a.window.first, a.window.end = -1, -1
 	for lane := range a.loaded {
 		a.loaded[lane] = -1
 	}
@@ -104,6 +112,15 @@ func (e *Engine) solveLanes() {
 	a := e.ahead
 	a.first, a.state = e.step, e.flow.DeviceState()
 	a.end = min(a.first+vector.Lanes, e.in.axis.Steps(), e.dayEnd(a.first))
+	if month := e.in.monthOf(a.first); month != a.month { // months begin with days, and blocks end with them
+		a.month = month
+		a.lanes.Follow(e.in.follow(month))
+		a.window.follow(e.in, month)
+	}
+	curved := e.anchored && a.window.prepare(e)
+	if curved {
+		a.end = min(a.end, a.window.end)
+	}
 	mask := uint8(0)
 	for step := a.first; step < a.end; step++ {
 		k := step % vector.Lanes
@@ -113,35 +130,38 @@ func (e *Engine) solveLanes() {
 			a.load(e.in, k, step)
 		}
 	}
-	if month := e.in.monthOf(a.first); month != a.month { // months begin with days, and blocks end with them
-		a.month = month
-		a.lanes.Follow(e.in.follow(month))
-	}
 	a.lanes.Drive(a.rows)
-	var start []complex128
-	if e.anchored {
-		start = e.anchor
+	switch {
+	case curved:
+		a.window.start(a)
+	case e.anchored:
+		a.lanes.Start(mask, e.anchor, &e.input)
+	default:
+		a.lanes.Start(mask, nil, &e.input)
 	}
 	e.lap(&e.timing.Assembling)
 	e.timing.Blocks++
 	e.timing.LanesSolved += bits.OnesCount8(mask)
 	a.taken = 0
-	a.lanes.Start(mask, start, &e.input)
 	a.arrived = a.lanes.Solve(mask, powerflow.Contract)
+	e.lap(&e.timing.Solving)
 	if e.quiet != nil {
 		e.quiet.measured = false
 	}
 }
 
 // load puts the inputs of a step into a lane.
-func (a *ahead) load(in *inputs, k, step int) {
-	in.sampleAt(a.values, step)
-	for i, v := range a.values {
-		a.rows[(i+1)*vector.Lanes+k] = v
+func (a *ahead) load(in *inputs, k, step int) { in.loadLane(a.lanes, a.rows, a.values, k, step) }
+
+// loadLane puts the inputs of a step into a lane of lanes, its values into rows.
+func (in *inputs) loadLane(lanes *powerflow.Lanes, rows, values []float64, k, step int) {
+	in.sampleAt(values, step)
+	for i, v := range values {
+		rows[(i+1)*vector.Lanes+k] = v
 	}
 	for f := range in.fixed {
 		if x := &in.fixed[f]; x.series >= 0 {
-			a.lanes.Source(k, f, x.at(a.values))
+			lanes.Source(k, f, x.at(values))
 		}
 	}
 }

@@ -67,6 +67,7 @@ type Engine struct {
 	reference bool   // every step is solved by itself
 	ahead     *ahead // nil: a step's input depends on the steps before it
 	quiet     *quiet // nil: every step is gone through by itself
+	stepwise  string // why there is no ahead
 	speculate bool   // a run is going through its steps in order
 	step      int    // whose inputs are at hand
 
@@ -85,7 +86,6 @@ type Engine struct {
 	paths    map[powerflow.Path]int
 	timing   Timing
 	timed    bool
-	stepwise string    // why steps are solved by themselves; blank: they are not
 	since    time.Time // the last lap
 	exact    bool      // the solution at hand has the reference tolerance
 	interval results.Interval

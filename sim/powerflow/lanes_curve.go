@@ -1,0 +1,30 @@
+package powerflow
+
+import "yearflow/sim/powerflow/vector"
+
+// Curve is a parabola through the voltages of three instants: what start vectors between
+// them are taken from.
+type Curve struct{ coef []float64 }
+
+// NewCurve makes room for a curve.
+func (l *Lanes) NewCurve() *Curve { return &Curve{make([]float64, 6*l.all)} }
+
+// Fit lays c through lanes 0, 1 and 2 at w = 0, middle and 1.
+//
+//	V(w) = a + b·w + c·w²,  a = V₀,  c = (V₁ − V₀ − m·(V₂ − V₀))/(m² − m),  b = V₂ − V₀ − c
+//
+// m being the middle, which must lie between 0 and 1.
+func (l *Lanes) Fit(c *Curve, middle float64) {
+	scale := 1 / (middle*middle - middle)
+	for at := range l.all {
+		v := l.v[at*vector.Width:]
+		for part := range 2 {
+			v0, v1, v2 := v[part*vector.Lanes], v[part*vector.Lanes+1], v[part*vector.Lanes+2]
+			q := (v1 - v0 - middle*(v2-v0)) * scale
+			c.coef[6*at+part], c.coef[6*at+2+part], c.coef[6*at+4+part] = v0, v2-v0-q, q
+		}
+	}
+}
+
+// Predict starts all lanes on a curve, each at its own w.
+func (l *Lanes) Predict(c *Curve, when *[vector.Lanes]float64) { vector.Predict(l.v, c.coef, when) }
