@@ -156,7 +156,7 @@ func (s *survey) okOnly(column string) []float64 {
 // readVoltages goes through voltages.csv once. Where it has all judged places, what
 // is lowest and highest is taken from them.
 func (s *survey) readVoltages(all bool) error {
-	if s.VoltageNames == nil {
+	if len(s.VoltageNames) == 0 {
 		return nil
 	}
 	if all {
