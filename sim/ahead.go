@@ -100,10 +100,7 @@ func (e *Engine) solveAhead() bool {
 		return false
 	}
 	a.lanes.Take(lane, e.solution)
-	if a.taken>>lane&1 == 0 {
-		a.taken |= 1 << lane
-		e.timing.LanesUsed++
-	}
+	e.countLane(lane)
 	return true
 }
 

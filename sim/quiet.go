@@ -137,7 +137,9 @@ const noQuiet = 1800 * devices.Second
 func (q *quiet) read(e *Engine, k int, now devices.Time, first bool) bool {
 	if !q.measured {
 		q.measured = true
+		e.lap(&e.timing.Controls)
 		e.ahead.lanes.Currents(q.currents, e.ahead.arrived)
+		e.lap(&e.timing.Solving)
 	}
 	for i, d := range e.devices {
 		x := read(e, lane{e, k}, d, now)
@@ -180,13 +182,19 @@ func (r *runner) hand(step, n int) error {
 		q.lanes.Generation[k] = generation
 		q.lanes.Load[k] = q.currents.Drawn[k] + generation
 		r.coarse.skip(q.coarse, k)
+		e.timing.Iterations += a.lanes.Iterations[k]
+		e.countLane(k)
 	}
 	e.paths[powerflow.InLanes] += n
+	e.timing.Solutions += n
+	e.timing.QuietSteps += n
+	e.lap(&e.timing.Controls)
 	for _, rec := range q.recorders {
 		if err := rec.Quiet(&q.out); err != nil {
 			return err
 		}
 	}
+	e.lap(&e.timing.Statistics)
 	return nil
 }
 

@@ -58,6 +58,14 @@ func (e *Engine) spend(part *time.Duration) {
 	e.since = now
 }
 
+// countLane counts a lane of the block at hand as used.
+func (e *Engine) countLane(lane int) {
+	if a := e.ahead; a.taken>>lane&1 == 0 {
+		a.taken |= 1 << lane
+		e.timing.LanesUsed++
+	}
+}
+
 // speed is what run.json says of the paths that the steps took.
 func (e *Engine) speed() results.Speed {
 	t := e.Timing()
