@@ -1,0 +1,451 @@
+//go:build avo
+
+package main
+
+import (
+	. "github.com/mmcloughlin/avo/build"
+	. "github.com/mmcloughlin/avo/operand"
+	"github.com/mmcloughlin/avo/reg"
+)
+
+// watch writes the kernels that look at solved instants.
+func (m machine) watch() {
+	m.lengths()
+	m.dots()
+	m.squares()
+	m.banks()
+	m.triples()
+	m.bins()
+}
+
+func begin(name, of, signature string) {
+	TEXT(name, NOSPLIT, signature)
+	Pragma("noescape")
+	Doc(name + " is the kernel of " + of + ".")
+}
+
+// Comparisons that hold of what is no number, too.
+const (
+	notBelowOrEqual = 6
+	notAboveOrEqual = 9
+)
+
+// watcher makes flags: of each row the lanes of the mask in which a comparison holds.
+type watcher struct {
+	machine
+	flags, live, any reg.GPVirtual
+	row              reg.GPVirtual
+	k                reg.OpmaskVirtual
+	masks            reg.GPVirtual
+}
+
+func (m machine) newWatcher() *watcher {
+	w := &watcher{machine: m, masks: GP64()}
+	w.flags = GP64()
+	Load(Param("flags"), w.flags)
+	Load(Param("mask"), w.masks)
+	w.live, w.any, w.row = GP64(), GP64(), GP64()
+	XORQ(w.any, w.any)
+	XORQ(w.live, w.live)
+	t := m.vec()
+	if m.bytes == 64 {
+		w.k = K()
+		VMOVUPD(Mem{Base: w.masks}, t)
+		VPMOVQ2M(t, w.k)
+		KMOVB(w.k, w.live.As32())
+		w.k = K()
+		return w
+	}
+	for p := range m.parts() {
+		VMOVUPD(Mem{Base: w.masks, Disp: p * m.bytes}, t)
+		w.bits(t, w.live, p)
+	}
+	return w
+}
+
+// bits ors the signs of a part into a register.
+func (w *watcher) bits(t reg.VecVirtual, into reg.GPVirtual, part int) {
+	b := GP32()
+	VMOVMSKPD(t, b)
+	if part > 0 {
+		SHLL(U8(4*part), b)
+	}
+	ORQ(b.As64(), into)
+}
+
+// compare adds the lanes of a part in which x stands to the bound as the comparison says.
+func (w *watcher) compare(how uint8, bound, x reg.VecVirtual, part int) {
+	if w.bytes == 64 {
+		b := GP32()
+		VCMPPD(U8(how), bound, x, w.k)
+		KMOVB(w.k, b)
+		ORQ(b.As64(), w.row)
+		return
+	}
+	t := w.vec()
+	VCMPPD(U8(how), bound, x, t)
+	w.bits(t, w.row, part)
+}
+
+// flag stores the flags of a row.
+func (w *watcher) flag() {
+	ANDQ(w.live, w.row)
+	ORQ(w.row, w.any)
+	MOVB(w.row.As8(), Mem{Base: w.flags})
+	INCQ(w.flags)
+}
+
+func (w *watcher) end() {
+	Store(w.any, ReturnIndex(0))
+	VZEROUPPER()
+	RET()
+}
+
+// gather adds the sum of the lanes of the mask to a number in memory; x is lost.
+func (w *watcher) gather(x []reg.VecVirtual, sum Mem) {
+	for p := range x {
+		if w.bytes == 64 {
+			VPANDQ(Mem{Base: w.masks}, x[p], x[p])
+		} else {
+			VANDPD(Mem{Base: w.masks, Disp: p * w.bytes}, x[p], x[p])
+		}
+	}
+	var y reg.VecVirtual
+	if w.bytes == 64 {
+		y = YMM()
+		VEXTRACTF64X4(U8(1), x[0], y)
+		VADDPD(x[0].(reg.Vec).AsY(), y, y)
+	} else {
+		y = x[0]
+		VADDPD(x[1], y, y)
+	}
+	h := XMM()
+	VEXTRACTF128(U8(1), y.(reg.Vec).AsY(), h)
+	VADDPD(y.(reg.Vec).AsX(), h, h)
+	g := XMM()
+	VUNPCKHPD(h, h, g)
+	VADDSD(g, h, h)
+	VADDSD(sum, h, h)
+	VMOVSD(h, sum)
+}
+
+func broadcast(bits uint64, v reg.VecVirtual) {
+	g, x := GP64(), XMM()
+	MOVQ(U64(bits), g)
+	MOVQ(g, x)
+	VBROADCASTSD(x, v)
+}
+
+func (m machine) lengths() {
+	begin("lengths"+m.name, "Lengths.Watch", "func(out, v *float64, index *int32, rows *float64, flags *uint8, mask *uint64, least, most *float64, n int) uint64")
+	out, v := Load(Param("out"), GP64()), Load(Param("v"), GP64())
+	index, rows := Load(Param("index"), GP64()), Load(Param("rows"), GP64())
+	n := Load(Param("n"), GP64())
+	w := m.newWatcher()
+	from, to := GP64(), GP64()
+	least, most := m.vecs(), m.vecs()
+	x, y := m.vecs(), m.vecs()
+	b := m.vec()
+	for p := range least {
+		broadcast(0x7ff0000000000000, least[p])
+		broadcast(0xfff0000000000000, most[p])
+	}
+	Label("row")
+	MOVLQSX(Mem{Base: index}, from)
+	MOVLQSX(Mem{Base: index, Disp: 4}, to)
+	ADDQ(U8(8), index)
+	XORQ(w.row, w.row)
+	for p := range x {
+		VMOVUPD(m.re(v, from, p), x[p])
+		VMOVUPD(m.im(v, from, p), y[p])
+	}
+	TESTQ(to, to)
+	JS(LabelRef("ground"))
+	for p := range x {
+		VSUBPD(m.re(v, to, p), x[p], x[p])
+		VSUBPD(m.im(v, to, p), y[p], y[p])
+	}
+	Label("ground")
+	VBROADCASTSD(Mem{Base: rows}, b)
+	for p := range x {
+		VMULPD(x[p], x[p], x[p])
+		VMULPD(y[p], y[p], y[p])
+		VADDPD(y[p], x[p], x[p])
+		VSQRTPD(x[p], x[p])
+		VDIVPD(b, x[p], x[p])
+		VMOVUPD(x[p], Mem{Base: out, Disp: p * m.bytes})
+		VMINPD(least[p], x[p], least[p])
+		VMAXPD(most[p], x[p], most[p])
+	}
+	VBROADCASTSD(Mem{Base: rows, Disp: 8}, b)
+	for p := range x {
+		w.compare(notAboveOrEqual, b, x[p], p)
+	}
+	VBROADCASTSD(Mem{Base: rows, Disp: 16}, b)
+	for p := range x {
+		w.compare(notBelowOrEqual, b, x[p], p)
+	}
+	w.gather(x, Mem{Base: rows, Disp: 24})
+	w.flag()
+	ADDQ(U8(32), rows)
+	ADDQ(U8(8*lanes), out)
+	DECQ(n)
+	JNZ(LabelRef("row"))
+	Load(Param("least"), to)
+	for p := range least {
+		VMOVUPD(least[p], Mem{Base: to, Disp: p * m.bytes})
+	}
+	Load(Param("most"), to)
+	for p := range most {
+		VMOVUPD(most[p], Mem{Base: to, Disp: p * m.bytes})
+	}
+	w.end()
+}
+
+func (m machine) dots() {
+	begin("dots"+m.name, "Dots.Watch", "func(out, v, i *float64, index *int32, rows *float64, flags *uint8, mask *uint64, total *float64, n int) uint64")
+	out, v, i := Load(Param("out"), GP64()), Load(Param("v"), GP64()), Load(Param("i"), GP64())
+	index, rows := Load(Param("index"), GP64()), Load(Param("rows"), GP64())
+	n := Load(Param("n"), GP64())
+	w := m.newWatcher()
+	a, c, k := GP64(), GP64(), GP64()
+	total, x, y, z := m.vecs(), m.vecs(), m.vecs(), m.vecs()
+	b := m.vec()
+	for p := range total {
+		zero(total[p])
+	}
+	Label("row")
+	MOVLQSX(Mem{Base: index}, k)
+	ADDQ(U8(4), index)
+	XORQ(w.row, w.row)
+	for p := range x {
+		zero(x[p])
+	}
+	TESTQ(k, k)
+	JZ(LabelRef("end"))
+	Label("pair")
+	MOVLQSX(Mem{Base: index}, a)
+	MOVLQSX(Mem{Base: index, Disp: 4}, c)
+	ADDQ(U8(8), index)
+	for p := range x {
+		VMOVUPD(m.re(v, a, p), y[p])
+		VMULPD(m.re(i, c, p), y[p], y[p])
+		VMOVUPD(m.im(v, a, p), z[p])
+		VMULPD(m.im(i, c, p), z[p], z[p])
+		VADDPD(z[p], y[p], y[p])
+		VADDPD(y[p], x[p], x[p])
+	}
+	DECQ(k)
+	JNZ(LabelRef("pair"))
+	Label("end")
+	VBROADCASTSD(Mem{Base: rows}, b)
+	for p := range x {
+		VMOVUPD(x[p], Mem{Base: out, Disp: p * m.bytes})
+		VADDPD(x[p], total[p], total[p])
+		w.compare(notBelowOrEqual, b, x[p], p)
+	}
+	w.gather(x, Mem{Base: rows, Disp: 8})
+	w.flag()
+	ADDQ(U8(16), rows)
+	ADDQ(U8(8*lanes), out)
+	DECQ(n)
+	JNZ(LabelRef("row"))
+	Load(Param("total"), a)
+	for p := range total {
+		VMOVUPD(total[p], Mem{Base: a, Disp: p * m.bytes})
+	}
+	w.end()
+}
+
+func (m machine) squares() {
+	begin("squares"+m.name, "Squares.Watch", "func(x *float64, index *int32, high *float64, flags *uint8, mask *uint64, n int) uint64")
+	x, index, high := Load(Param("x"), GP64()), Load(Param("index"), GP64()), Load(Param("high"), GP64())
+	n := Load(Param("n"), GP64())
+	w := m.newWatcher()
+	a, c := GP64(), GP64()
+	re, s, t, b := m.vec(), m.vec(), m.vec(), m.vec()
+	Label("row")
+	MOVLQSX(Mem{Base: index}, a)
+	MOVLQSX(Mem{Base: index, Disp: 4}, c)
+	ADDQ(U8(8), index)
+	XORQ(w.row, w.row)
+	VBROADCASTSD(Mem{Base: high}, b)
+	ADDQ(U8(8), high)
+	for p := range m.parts() {
+		for k, at := range []reg.GPVirtual{a, c} {
+			into := []reg.VecVirtual{s, t}[k]
+			VMOVUPD(m.re(x, at, p), re)
+			VMOVUPD(m.im(x, at, p), into)
+			VMULPD(into, into, into)
+			VFMADD231PD(re, re, into)
+		}
+		VMAXPD(s, t, s)
+		w.compare(notBelowOrEqual, b, s, p)
+	}
+	w.flag()
+	DECQ(n)
+	JNZ(LabelRef("row"))
+	w.end()
+}
+
+func (m machine) banks() {
+	begin("banks"+m.name, "Banks.Watch", "func(v, i *float64, index *int32, high *float64, flags *uint8, mask *uint64, n int) uint64")
+	v, i := Load(Param("v"), GP64()), Load(Param("i"), GP64())
+	index, high := Load(Param("index"), GP64()), Load(Param("high"), GP64())
+	n := Load(Param("n"), GP64())
+	w := m.newWatcher()
+	a, c, k := GP64(), GP64(), GP64()
+	re, im := m.vecs(), m.vecs()
+	x, y, b := m.vec(), m.vec(), m.vec()
+	Label("row")
+	MOVLQSX(Mem{Base: index}, k)
+	ADDQ(U8(4), index)
+	XORQ(w.row, w.row)
+	for p := range re {
+		zero(re[p])
+		zero(im[p])
+	}
+	TESTQ(k, k)
+	JZ(LabelRef("end"))
+	Label("pair")
+	MOVLQSX(Mem{Base: index}, a)
+	MOVLQSX(Mem{Base: index, Disp: 4}, c)
+	ADDQ(U8(8), index)
+	for p := range re {
+		VMOVUPD(m.re(v, a, p), x)
+		VMOVUPD(m.im(v, a, p), y)
+		VFMADD231PD(m.re(i, c, p), x, re[p])
+		VFMADD231PD(m.im(i, c, p), y, re[p])
+		VFMADD231PD(m.re(i, c, p), y, im[p])
+		VFNMADD231PD(m.im(i, c, p), x, im[p])
+	}
+	DECQ(k)
+	JNZ(LabelRef("pair"))
+	Label("end")
+	VBROADCASTSD(Mem{Base: high}, b)
+	ADDQ(U8(8), high)
+	for p := range re {
+		VMULPD(im[p], im[p], im[p])
+		VFMADD231PD(re[p], re[p], im[p])
+		w.compare(notBelowOrEqual, b, im[p], p)
+	}
+	w.flag()
+	DECQ(n)
+	JNZ(LabelRef("row"))
+	w.end()
+}
+
+func (m machine) triples() {
+	begin("triples"+m.name, "Triples.Watch", "func(out, v *float64, index *int32, constants, far, ratio *float64, n int)")
+	out, v := Load(Param("out"), GP64()), Load(Param("v"), GP64())
+	index, constants := Load(Param("index"), GP64()), Load(Param("constants"), GP64())
+	far, ratio, n := Load(Param("far"), GP64()), Load(Param("ratio"), GP64()), Load(Param("n"), GP64())
+	var at [3]reg.GPVirtual
+	for k := range at {
+		at[k] = GP64()
+	}
+	var re, im [3]reg.VecVirtual
+	for k := range re {
+		re[k], im[k] = m.vec(), m.vec()
+	}
+	var sq [3]reg.VecVirtual
+	for k := range sq {
+		sq[k] = m.vec()
+	}
+	s, t, u, c := m.vec(), m.vec(), m.vec(), m.vec()
+	// square sets d to e² + d².
+	square := func(e, d reg.VecVirtual) {
+		VMULPD(d, d, d)
+		VFMADD231PD(e, e, d)
+	}
+	Label("row")
+	for k := range at {
+		MOVLQSX(Mem{Base: index, Disp: 4 * k}, at[k])
+	}
+	ADDQ(U8(12), index)
+	for p := range m.parts() {
+		for k := range at {
+			VMOVUPD(m.re(v, at[k], p), re[k])
+			VMOVUPD(m.im(v, at[k], p), im[k])
+		}
+		for k := range at {
+			next := (k + 1) % 3
+			VSUBPD(re[next], re[k], s)
+			VSUBPD(im[next], im[k], sq[k])
+			square(s, sq[k])
+		}
+		VADDPD(sq[1], sq[0], s)
+		VADDPD(sq[2], s, s)
+		VBROADCASTSD(Mem{Base: constants}, c)
+		VMULPD(c, s, s) // mean
+		VMAXPD(sq[2], sq[1], t)
+		VMAXPD(t, sq[0], t)
+		VSUBPD(s, t, t)
+		VMINPD(sq[2], sq[1], u)
+		VMINPD(u, sq[0], u)
+		VSUBPD(u, s, u)
+		VMAXPD(u, t, t)
+		VDIVPD(s, t, t)
+		VMOVUPD(t, Mem{Base: out, Disp: p * m.bytes})
+		VMAXPD(Mem{Base: far, Disp: p * m.bytes}, t, t)
+		VMOVUPD(t, Mem{Base: far, Disp: p * m.bytes})
+		// a − (b + c)/2 in place of a, ± j·sin 120°·(b − c)
+		VBROADCASTSD(Mem{Base: constants, Disp: 8}, c)
+		VADDPD(re[2], re[1], s)
+		VFNMADD231PD(s, c, re[0])
+		VADDPD(im[2], im[1], s)
+		VFNMADD231PD(s, c, im[0])
+		VBROADCASTSD(Mem{Base: constants, Disp: 16}, c)
+		VSUBPD(im[2], im[1], t)
+		VMULPD(c, t, t)
+		VSUBPD(re[2], re[1], u)
+		VMULPD(c, u, u)
+		VADDPD(t, re[0], sq[0])
+		VSUBPD(u, im[0], sq[1])
+		square(sq[0], sq[1])
+		VSUBPD(t, re[0], sq[0])
+		VADDPD(u, im[0], sq[2])
+		square(sq[0], sq[2])
+		VDIVPD(sq[2], sq[1], t)
+		VMOVUPD(t, Mem{Base: out, Disp: p*m.bytes + 8*lanes})
+		VMAXPD(Mem{Base: ratio, Disp: p * m.bytes}, t, t)
+		VMOVUPD(t, Mem{Base: ratio, Disp: p * m.bytes})
+	}
+	ADDQ(U32(stride), out)
+	DECQ(n)
+	JNZ(LabelRef("row"))
+	VZEROUPPER()
+	RET()
+}
+
+func (m machine) bins() {
+	begin("bins"+m.name, "Bins", "func(out *int32, x, scale *float64, n int)")
+	out, x := Load(Param("out"), GP64()), Load(Param("x"), GP64())
+	scale, n := Load(Param("scale"), GP64()), Load(Param("n"), GP64())
+	width, limit, low, d := m.vec(), m.vec(), m.vec(), m.vec()
+	VBROADCASTSD(Mem{Base: scale}, width)
+	VBROADCASTSD(Mem{Base: scale, Disp: 8}, limit)
+	zero(low)
+	Label("row")
+	for p := range m.parts() {
+		VMOVUPD(Mem{Base: x, Disp: p * m.bytes}, d)
+		VDIVPD(width, d, d)
+		VMINPD(limit, d, d)
+		VMAXPD(low, d, d)
+		if m.bytes == 64 {
+			y := YMM()
+			VCVTTPD2DQ(d, y)
+			VMOVDQU(y, Mem{Base: out})
+		} else {
+			y := XMM()
+			VCVTTPD2DQY(d, y)
+			VMOVDQU(y, Mem{Base: out, Disp: p * 16})
+		}
+	}
+	ADDQ(U8(8*lanes), x)
+	ADDQ(U8(4*lanes), out)
+	DECQ(n)
+	JNZ(LabelRef("row"))
+	VZEROUPPER()
+	RET()
+}
