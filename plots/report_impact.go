@@ -304,56 +304,49 @@ func (c *impactDocument) remedyTables() (out []Table) {
 	if len(names) == 0 {
 		return nil
 	}
-	var criteria []string
-	for i, r := range c.mitigations.Rows {
-		if d := numberIn(c.mitigations.Cell(i, "difference")); d != 0 && !math.IsNaN(d) && !slices.Contains(criteria, r[1]) {
-			criteria = append(criteria, r[1])
-		}
-	}
 	parts := (len(names) + remedyColumns - 1) / remedyColumns
 	each := (len(names) + parts - 1) / parts
 	for at := 0; at < len(names); at += each {
-		out = append(out, c.remedyTable(names[at:min(at+each, len(names))], criteria))
+		out = append(out, c.remedyTable(names[at:min(at+each, len(names))]))
 	}
-	out[len(out)-1].Note = Plain("Criteria that no remedy changes are left out; they and the margin of each are in mitigations.csv.")
+	out[len(out)-1].Note = Plain("0 is the case without a remedy; the last column names by number who fails. Criteria that none of a table's remedies changes are left out, and the operations of single devices that pass with all; they and all margins are in mitigations.csv.")
 	return out
 }
 
-func (c *impactDocument) remedyTable(names, criteria []string) Table {
-	t := Table{Caption: "With " + strings.Join(names, ", "), Columns: []Column{{Head: "Criterion", Words: true}, {Head: "Unit", Words: true}, {Head: "Limit"}, {Head: "No remedy"}}}
-	for _, n := range names {
-		t.Columns = append(t.Columns, Column{Head: upper(n)})
+// remedyTable holds a few remedies in the order of impact.csv.
+func (c *impactDocument) remedyTable(names []string) Table {
+	t := Table{Caption: "With " + strings.Join(names, ", "), Columns: []Column{{Head: "Criterion", Words: true}, {Head: "Unit", Words: true}, {Head: "Limit"}, {Head: "0: no remedy"}}}
+	for i, n := range names {
+		t.Columns = append(t.Columns, Column{Head: fmt.Sprintf("%d: %s", i+1, n)})
 	}
-	t.Columns = append(t.Columns, Column{Head: "Fails", Words: true})
-	for _, q := range criteria {
-		row, fails := make([]Value, 4, len(t.Columns)), []string(nil)
-		for _, n := range names {
-			k := c.mitigations.Row(n, q)
+	t.Columns = append(t.Columns, Column{Head: "Fail", Words: true})
+	for i, r := range c.impact.Rows {
+		row, fails, changed := make([]Value, 4, len(t.Columns)), []string(nil), false
+		if c.impact.Cell(i, "verdict") == "fail" {
+			fails = append(fails, "0")
+		}
+		for j, n := range names {
+			k := c.mitigations.Row(n, r[1])
 			if k < 0 {
 				row = append(row, Word("–"))
 				continue
 			}
-			row[0], row[1], row[2], row[3] = Word(q), Word(shownUnit(c.mitigations.Cell(k, "unit"))), plain(unitCell(c.mitigations, k, "limit")), plain(unitCell(c.mitigations, k, "with DER"))
+			row[0], row[1], row[2], row[3] = Word(r[1]), Word(shownUnit(r[2])), plain(unitCell(c.mitigations, k, "limit")), plain(unitCell(c.mitigations, k, "with DER"))
 			row = append(row, plain(unitCell(c.mitigations, k, "mitigated")))
+			if d := numberIn(c.mitigations.Cell(k, "difference")); d != 0 && !math.IsNaN(d) {
+				changed = true
+			}
 			if c.mitigations.Cell(k, "verdict") == "fail" {
-				fails = append(fails, n)
+				fails = append(fails, fmt.Sprint(j+1))
 			}
 		}
-		if row[0].Show == "" {
-			continue // of none of these
+		if !changed || len(fails) == 0 && strings.HasPrefix(r[1], "operations of ") {
+			continue
 		}
-		if i := slices.IndexFunc(c.impact.Rows, func(r []string) bool { return r[1] == q }); i >= 0 && c.impact.Cell(i, "verdict") == "fail" {
-			fails = append([]string{"no remedy"}, fails...)
-		}
-		switch {
-		case len(fails) == len(names)+1:
-			fails = []string{"all"}
-		case len(fails) == 0 && row[2].Show != "–":
-			fails = []string{"none"}
-		case len(fails) == 0:
+		if len(fails) == 0 {
 			fails = []string{"–"}
 		}
-		t.Rows = append(t.Rows, append(row, Word(strings.Join(fails, ", "))))
+		t.Rows = append(t.Rows, append(row, Word(strings.Join(fails, " "))))
 	}
 	return t
 }
