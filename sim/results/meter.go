@@ -210,7 +210,7 @@ func (m *Meter) readPowers(s *State, r *Reading) {
 	}
 	for _, x := range m.sources {
 		i := s.Source[x.source][x.phase]
-		va := s.V[x.unknown] * cmplx.Conj(i)
+		va := apparent(s.V[x.unknown], i)
 		r.Source += va
 		r.SourcePhase[x.phase] += va
 		r.SourceCurrent[x.phase] += magnitude(i)
@@ -233,24 +233,28 @@ func (m *Meter) readPowers(s *State, r *Reading) {
 	}
 }
 
+// apparent is V·conj(I), VA.
+func apparent(v, i complex128) complex128 {
+	return complex(float64(real(v)*real(i))+float64(imag(v)*imag(i)), float64(imag(v)*real(i))-float64(real(v)*imag(i)))
+}
+
 // power returns Σ V·conj(I) over an element's terminals, VA.
-func (p *part) power(s *State) complex128 {
-	var re, im float64
+func (p *part) power(s *State) (sum complex128) {
 	flow := s.Flow[p.flow : p.flow+len(p.terminals)]
 	for k, t := range p.terminals {
-		if t < 0 {
-			continue
+		if t >= 0 {
+			sum += apparent(s.V[t], flow[k])
 		}
-		v, i := s.V[t], flow[k]
-		re += real(v)*real(i) + imag(v)*imag(i)
-		im += imag(v)*real(i) - real(v)*imag(i)
 	}
-	return complex(re, im)
+	return sum
 }
 
 // magnitude is |z| without the care for overflow of math.Hypot: volts and amperes
-// are far from it.
-func magnitude(z complex128) float64 { return math.Sqrt(real(z)*real(z) + imag(z)*imag(z)) }
+// are far from it. Conversions round the products, as package vector does, so that a
+// value is the same whichever way it was read.
+func magnitude(z complex128) float64 {
+	return math.Sqrt(float64(real(z)*real(z)) + float64(imag(z)*imag(z)))
+}
 
 func (m *Meter) readVoltages(s *State, r *Reading) {
 	r.Lowest, r.Highest = -1, -1
@@ -272,25 +276,18 @@ func (m *Meter) readVoltages(s *State, r *Reading) {
 // largest |V2|/|V1|, over the three-phase nodes.
 func (m *Meter) readUnbalance(s *State, r *Reading) {
 	r.Unbalance, r.UnbalanceAt, r.NegativeSequence = math.NaN(), -1, math.NaN()
-	const re, im = -0.5, 0.86602540378443864676372317075293618 // a = 1∠120°
 	worst, ratio := -1.0, -1.0
 	for k, u := range m.three {
 		a, b, c := s.V[u[0]], s.V[u[1]], s.V[u[2]]
-		ab, bc, ca := magnitude(a-b), magnitude(b-c), magnitude(c-a)
-		mean := (ab + bc + ca) / 3
-		if mean <= 0 {
+		d, ok := unbalance(a, b, c)
+		if !ok {
 			continue
 		}
-		d := max(math.Abs(ab-mean), math.Abs(bc-mean), math.Abs(ca-mean)) / mean
 		if d > worst {
 			worst, r.UnbalanceAt = d, m.threeAt[k]
 		}
-		// b·a + c·a² and b·a² + c·a share the sum and the difference of b and c.
-		sum, dif := b+c, b-c
-		half := complex(real(a)+re*real(sum), imag(a)+re*imag(sum))
-		turn := complex(-im*imag(dif), im*real(dif))
-		if v1, v2 := magnitude(half+turn), magnitude(half-turn); v1 > 0 {
-			ratio = max(ratio, v2/v1)
+		if q, ok := sequences(a, b, c); ok {
+			ratio = max(ratio, q)
 		}
 	}
 	if worst >= 0 {
@@ -299,4 +296,25 @@ func (m *Meter) readUnbalance(s *State, r *Reading) {
 	if ratio >= 0 {
 		r.NegativeSequence = 100 * ratio
 	}
+}
+
+// unbalance is that of three voltages to ground; there is none without voltages.
+func unbalance(a, b, c complex128) (float64, bool) {
+	ab, bc, ca := magnitude(a-b), magnitude(b-c), magnitude(c-a)
+	mean := (ab + bc + ca) / 3
+	if mean <= 0 {
+		return 0, false
+	}
+	return max(math.Abs(ab-mean), math.Abs(bc-mean), math.Abs(ca-mean)) / mean, true
+}
+
+// sequences is |V2|/|V1| of three voltages; there is none without a positive sequence.
+func sequences(a, b, c complex128) (float64, bool) {
+	const re, im = -0.5, 0.86602540378443864676372317075293618 // 1∠120°
+	// b·a + c·a² and b·a² + c·a share the sum and the difference of b and c.
+	sum, dif := b+c, b-c
+	half := complex(real(a)+re*real(sum), imag(a)+re*imag(sum))
+	turn := complex(-im*imag(dif), im*real(dif))
+	v1, v2 := magnitude(half+turn), magnitude(half-turn)
+	return v2 / v1, v1 > 0
 }

@@ -4,6 +4,8 @@ import (
 	"math"
 	"math/bits"
 	"slices"
+
+	"yearflow/sim/powerflow/vector"
 )
 
 // The percentiles of nodes.csv. A percentile p is the lowest voltage v for which
@@ -53,21 +55,75 @@ func (d *distribution) method() string {
 
 // add takes the voltages of an interval of the given duration.
 func (d *distribution) add(pu []float64, ns int64) {
+	if row := d.row(ns); row != nil {
+		copy(row, pu)
+		return
+	}
+	for i := range d.bins {
+		d.bins[i].add(pu[i], ns)
+	}
+}
+
+// addLane takes the voltages of one of several instants, which stand side by side.
+func (d *distribution) addLane(pu []float64, lane int, ns int64) {
+	if row := d.row(ns); row != nil {
+		for i := range row {
+			row[i] = pu[i*vector.Lanes+lane]
+		}
+		return
+	}
+	for i := range d.bins {
+		d.bins[i].add(pu[i*vector.Lanes+lane], ns)
+	}
+}
+
+// addLanes enters those of all instants of a mask into the histograms; bin is room for
+// their numbers.
+func (d *distribution) addLanes(pu []float64, bin []int32, mask uint8, ns int64) {
+	vector.Bins(bin, pu, binWidth, lastBin)
+	for i := range d.bins {
+		h, b := &d.bins[i], (*[vector.Lanes]int32)(bin[i*vector.Lanes:])
+		if mask != vector.All {
+			for x, k := range b {
+				if mask>>x&1 == 1 {
+					h.enter(int(k), ns)
+				}
+			}
+			continue
+		}
+		low, high := b[0], b[0]
+		for _, k := range b[1:] {
+			low, high = min(low, k), max(high, k)
+		}
+		if low == high {
+			h.enter(int(low), vector.Lanes*ns)
+			continue
+		}
+		h.reach(int(low))
+		h.reach(int(high))
+		for _, k := range b {
+			h.time[int(k)-h.first] += ns
+		}
+		h.total += vector.Lanes * ns
+	}
+}
+
+// row returns where to put the voltages of an interval, nil where histograms take them.
+func (d *distribution) row(ns int64) []float64 {
 	if d.bins == nil && (len(d.spans)+1)*d.points > d.limit {
 		d.toBins()
 	}
 	if d.bins != nil {
-		for i, v := range pu {
-			d.bins[i].add(v, ns)
-		}
-		return
+		return nil
 	}
 	if len(d.spans)%rowsPerBlock == 0 {
 		d.blocks = append(d.blocks, make([]float64, 0, rowsPerBlock*d.points))
 	}
-	last := len(d.blocks) - 1
-	d.blocks[last] = append(d.blocks[last], pu...)
 	d.spans = append(d.spans, ns)
+	b := &d.blocks[len(d.blocks)-1]
+	n := len(*b)
+	*b = (*b)[:n+d.points]
+	return (*b)[n:]
 }
 
 // toBins goes over to histograms and takes along what has been kept.
@@ -193,15 +249,27 @@ type histogram struct {
 // margin is the number of bins that a histogram grows by beyond what it needs.
 const margin = 64
 
+// lastBin takes what is beyond: far from any feeder's voltage one bin is as good as
+// another.
+const lastBin = 4 / binWidth
+
 func (h *histogram) add(v float64, ns int64) {
 	b := int(math.Floor(v / binWidth))
-	// Far from any feeder's voltage one bin is as good as another.
-	b = min(max(b, 0), int(4/binWidth))
+	h.enter(min(max(b, 0), int(lastBin)), ns)
+}
+
+// enter adds time to a bin.
+func (h *histogram) enter(b int, ns int64) {
+	h.reach(b)
+	h.time[b-h.first] += ns
+	h.total += ns
+}
+
+// reach makes room for a bin.
+func (h *histogram) reach(b int) {
 	if b < h.first || b >= h.first+len(h.time) {
 		h.grow(b)
 	}
-	h.time[b-h.first] += ns
-	h.total += ns
 }
 
 func (h *histogram) grow(b int) {

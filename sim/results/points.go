@@ -1,8 +1,6 @@
 package results
 
 import (
-	"math"
-
 	"yearflow/sim/feeder"
 	"yearflow/sim/network"
 )
@@ -37,7 +35,7 @@ func (p *Point) PU(v []complex128) float64 {
 	if p.W != network.Ground {
 		d -= v[p.W]
 	}
-	return math.Sqrt(real(d)*real(d)+imag(d)*imag(d)) / p.Base
+	return magnitude(d) / p.Base
 }
 
 var pairsOfPhases = [3]feeder.Pair{{feeder.A, feeder.B}, {feeder.B, feeder.C}, {feeder.C, feeder.A}}

@@ -1,6 +1,10 @@
 package results
 
-import "yearflow/sim/powerflow/vector"
+import (
+	"math"
+
+	"yearflow/sim/powerflow/vector"
+)
 
 // Lanes is several solved steps side by side, with the devices at the same positions:
 // arrays of package vector.
@@ -47,59 +51,63 @@ func (w *Writer) Quiet(q *Quiet) error {
 	if w.err != nil {
 		return w.err
 	}
-	for k := range q.Count {
-		s := q.unpack(k, w.plan)
-		start := q.Start + int64(k)*q.Step
-		balance := w.balance
-		if err := w.Interval(&Interval{Start: start, End: start + q.Step, Settled: true, State: s, Devices: q.Devices}); err != nil {
-			return err
-		}
-		if err := w.Step(&Step{Start: start, End: start + q.Step, Last: s, Solver: q.Solver}); err != nil {
-			return err
-		}
-		balance.checked += 2
-		w.balance = balance
+	if err := w.quiet(q); err != nil {
+		return w.fail(err)
+	}
+	w.solver[q.Solver] += q.Count
+	copy(w.taps, q.State.Taps)
+	copy(w.caps, q.State.Closed)
+	return nil
+}
+
+func (w *Writer) quiet(q *Quiet) error {
+	if err := q.check(); err != nil {
+		return err
+	}
+	for rest := *q; rest.Count > 0; {
+		part, month := rest.cut(w.clock)
+		w.stats.quiet(&part, w.stats.month(month))
+		r := w.stats.watch
+		r.balance(&part, &w.balance)
+		energies := r.energies(&part)
+		w.row.quiet(&part, r, &energies)
+	}
+	for i, d := range q.Devices {
+		w.duty[i].hours.add(d, int64(q.Count)*q.Step, true)
 	}
 	return nil
 }
 
-// unpack returns the k-th step as a State.
-func (q *Quiet) unpack(k int, p *Plan) *State {
-	l, x := q.State, q.lane(k)
-	s := &State{V: make([]complex128, len(l.Slot)), Flow: make([]complex128, len(l.Flow)/vector.Width), Coupling: make([]complex128, len(l.Coupling)/vector.Width),
-		Source: make([][3]complex128, len(p.Model.Sources)), Load: []complex128{complex(l.Load[x], 0)}, Generation: []complex128{complex(l.Generation[x], 0)}, Taps: l.Taps, Closed: l.Closed}
-	for u, at := range l.Slot {
-		s.V[u] = vector.At(l.V, int(at), x)
-	}
-	for i := range s.Flow {
-		s.Flow[i] = vector.At(l.Flow, i, x)
-	}
-	for i := range s.Coupling {
-		s.Coupling[i] = vector.At(l.Coupling, i, x)
-	}
-	for i := range s.Source {
-		for ph := range 3 {
-			s.Source[i][ph] = vector.At(l.Source, 3*i+ph, x)
+// cut takes the steps off that begin in the month of the first, and returns them and the
+// month.
+func (q *Quiet) cut(clock *zoneClock) (part Quiet, month int) {
+	month = clock.monthOf(q.Start)
+	part = *q
+	if last := q.Start + int64(q.Count-1)*q.Step; clock.monthOf(last) != month {
+		part.Count = 1
+		for clock.monthOf(q.Start+int64(part.Count)*q.Step) == month {
+			part.Count++
 		}
 	}
-	return s
+	q.Start += int64(part.Count) * q.Step
+	q.First = q.lane(part.Count)
+	q.Count -= part.Count
+	return part, month
 }
 
-// Whole tells whether a step must come as Interval and Step.
-func (t *Totals) Whole(start, end int64) bool { return t.stats.judge.drops }
-
-// Quiet takes steps as if each had come as an Interval and a Step.
-func (t *Totals) Quiet(q *Quiet) error {
-	for k := range q.Count {
-		start := q.Start + int64(k)*q.Step
-		if err := t.Interval(&Interval{Start: start, End: start + q.Step, Settled: true, State: q.unpack(k, t.plan), Devices: q.Devices}); err != nil {
-			return err
-		}
-		if err := t.Step(&Step{Start: start, End: start + q.Step, Solver: q.Solver}); err != nil {
-			return err
-		}
+// quiet adds the steps to the row, which goes on behind them.
+func (r *row) quiet(q *Quiet, w *watch, e *energies) {
+	if r.steps == 0 {
+		*r = row{start: q.Start, lowest: math.Inf(1), highest: math.Inf(-1)}
 	}
-	return nil
+	r.steps += q.Count
+	r.solved += q.Count
+	r.last = false // what a row says of its end is read there
+	for k := range q.Count {
+		x := q.lane(k)
+		r.lowest, r.highest = min(r.lowest, w.least[x]), max(r.highest, w.most[x])
+	}
+	r.energies.merge(e)
 }
 
 // Whole tells whether a step must come as Interval and Step.
@@ -107,14 +115,11 @@ func (t *Tally) Whole(start, end int64) bool { return t.w.stats.judge.drops }
 
 // Quiet takes steps as if each had come as an Interval and a Step.
 func (t *Tally) Quiet(q *Quiet) error {
-	for k := range q.Count {
-		start := q.Start + int64(k)*q.Step
-		if err := t.Interval(&Interval{Start: start, End: start + q.Step, Settled: true, State: q.unpack(k, t.w.plan), Devices: q.Devices}); err != nil {
-			return err
-		}
-		if err := t.Step(&Step{Start: start, End: start + q.Step, Solver: q.Solver}); err != nil {
-			return err
-		}
+	if t.w.err != nil {
+		return t.w.err
+	}
+	if err := t.w.quiet(q); err != nil {
+		return t.w.fail(err)
 	}
 	return nil
 }

@@ -130,6 +130,8 @@ type statistics struct {
 	unbalanceAt           int
 	unbalanceAbove3       int64
 	lowJudged, highJudged extreme
+
+	watch *watch // of quiet steps; nil before the first
 }
 
 type monthBucket struct {
@@ -163,6 +165,13 @@ func (s *statistics) month(month int) *bucket {
 	return &s.months[len(s.months)-1].bucket
 }
 
+// gather completes the sums with those of quiet steps.
+func (s *statistics) gather() {
+	if s.watch != nil {
+		s.watch.gather()
+	}
+}
+
 // sample is a settled interval that waits for the end of its step.
 type sample struct {
 	start, end int64
@@ -174,6 +183,9 @@ type sample struct {
 // settled takes a settled interval of an OK step into account.
 func (s *statistics) settled(x *sample, month *bucket) {
 	ns, r := x.end-x.start, x.reading
+	if s.watch != nil {
+		s.watch.stale = true
+	}
 	s.dist.add(r.PU, ns)
 	span := float64(ns)
 	var out outsideTimes

@@ -69,6 +69,7 @@ func (t *Tally) Step(s *Step) error {
 
 // Summary returns the rows of summary.csv.
 func (t *Tally) Summary() ([]SummaryRow, error) {
+	t.w.stats.gather()
 	var out memory
 	f := &outFile{name: "summary.csv", out: &out, sum: noHash{}}
 	if err := t.w.writeSummary(f); err != nil {

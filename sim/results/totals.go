@@ -26,6 +26,8 @@ type Totals struct {
 	hunting   int64
 	ok        []byte
 	operating []int
+
+	block *totalsBlock // of quiet steps; nil before the first
 }
 
 type monthPeak struct {

@@ -353,6 +353,7 @@ func (w *Writer) finish(o *Outcome, run RunInfo) error {
 			return err
 		}
 	}
+	w.stats.gather()
 	w.finalPositions(o)
 	for _, f := range w.logs() {
 		if err := w.keep(f, nil); err != nil {

@@ -1,0 +1,228 @@
+package results
+
+import (
+	"math"
+
+	"yearflow/sim/network"
+	"yearflow/sim/powerflow/vector"
+)
+
+// watch takes quiet steps into statistics, eight at once. Bounds are drawn so that
+// nearly all that is read lies within them: only what may be a new extreme, or beyond a
+// limit or a rating, is looked at one by one, and then by the code, or at least in the
+// operations, that a single instant is looked at with.
+type watch struct {
+	block
+	s *statistics
+
+	rowOf  [lossKinds][]int // row of losses.csv of each part, −1: the part shares it
+	shared []sharedLoss
+	bare   []int // rows without a part: their loss is 0
+	bareAt bool  // it has been booked
+
+	sections, couplings   vector.Squares
+	sectionRow, coupleRow []int // into Meter.loading
+	banks                 vector.Banks
+	bankRow               []int
+	bankFlow              vector.Rows // sums of currents
+	bankAmps              []float64
+
+	triples      vector.Triples
+	triple       []float64
+	far, ratioSq [vector.Lanes]float64
+	bins         []int32
+
+	step  int64 // ns, length of the steps whose sums stand in the rows of the lists
+	calls int   // since the sums were taken
+	stale bool  // the bounds: something was booked elsewhere
+	taps  []int // that the bounds are drawn for
+}
+
+// sharedLoss is a row of losses.csv of several parts.
+type sharedLoss struct {
+	row   int
+	kind  LossKind
+	parts []int
+}
+
+// within is a relative slack of bounds whose quantities are not computed to the bit.
+const within = 1e-11
+
+func newWatch(s *statistics) *watch {
+	m := s.meter
+	w := &watch{block: newBlock(m, s.judge), s: s, stale: true}
+	w.nameParts()
+	phases := 0
+	for i := range m.loading {
+		row := &m.loading[i]
+		switch row.kind {
+		case network.Section:
+			w.sectionRow = append(w.sectionRow, i)
+			w.sections.Row(row.from, row.to)
+		case network.Transformer:
+			w.bankRow = append(w.bankRow, i)
+			for k := range row.flows.phases {
+				f := row.flows.phases[k].flows
+				w.bankFlow.Row(phases, f...)
+				for range f {
+					w.bankFlow.Coef = append(w.bankFlow.Coef, 1, 0)
+				}
+				phases++
+			}
+		default:
+			w.coupleRow = append(w.coupleRow, i)
+			w.couplings.Row(row.coupling, row.coupling)
+		}
+	}
+	w.bankAmps = vector.Make(phases)
+	w.triple = vector.Make(len(m.three))
+	w.bins = make([]int32, len(w.pu))
+	return w
+}
+
+// nameParts finds the rows that parts are summed into.
+func (w *watch) nameParts() {
+	m := w.meter
+	of := make([][]int, len(m.losses)) // parts, by row
+	kind := make([]LossKind, len(m.losses))
+	for i := range m.parts {
+		p := &m.parts[i]
+		of[p.row], kind[p.row] = append(of[p.row], len(w.rowOf[p.kind])), p.kind
+		w.rowOf[p.kind] = append(w.rowOf[p.kind], p.row)
+	}
+	for row, parts := range of {
+		switch len(parts) {
+		case 0:
+			w.bare = append(w.bare, row)
+		case 1:
+		default:
+			w.shared = append(w.shared, sharedLoss{row, kind[row], parts})
+			for _, i := range parts {
+				w.rowOf[kind[row]][i] = -1
+			}
+		}
+	}
+}
+
+// place makes the lists that depend on where voltages stand.
+func (w *watch) place(l *Lanes) {
+	w.gather()
+	w.block.place(l)
+	m := w.meter
+	w.banks, w.triples = vector.Banks{}, vector.Triples{}
+	phases := 0
+	for _, row := range w.bankRow {
+		var pairs [][2]int
+		for _, p := range m.loading[row].flows.phases {
+			pairs = append(pairs, [2]int{int(l.Slot[p.unknown]), phases})
+			phases++
+		}
+		w.banks.Row(pairs...)
+	}
+	for _, u := range m.three {
+		w.triples.Row(int(l.Slot[u[0]]), int(l.Slot[u[1]]), int(l.Slot[u[2]]))
+	}
+	w.stale = true
+}
+
+// gather takes the sums out of the lists.
+func (w *watch) gather() {
+	ns := float64(w.step)
+	for i := range w.points.Rows {
+		r := &w.points.Rows[i]
+		w.s.points[i].sum += r.Sum * ns
+		r.Sum = 0
+	}
+	for kind := range w.parts {
+		for i := range w.parts[kind].Rows {
+			r := &w.parts[kind].Rows[i]
+			row := w.rowOf[kind][i]
+			if row < 0 {
+				row = w.sharedRow(LossKind(kind), i)
+			}
+			w.s.lossEnergy[row] += r.Sum * ns
+			r.Sum = 0
+		}
+	}
+	w.calls = 0
+}
+
+func (w *watch) sharedRow(kind LossKind, part int) int {
+	for _, s := range w.shared {
+		if s.kind != kind {
+			continue
+		}
+		for _, i := range s.parts {
+			if i == part {
+				return s.row
+			}
+		}
+	}
+	return -1 // every part has a row
+}
+
+// bound draws the bounds anew.
+func (w *watch) bound() {
+	w.stale = false
+	for i := range w.points.Rows {
+		w.boundPoint(i)
+	}
+	for kind := range w.parts {
+		for i, row := range w.rowOf[kind] {
+			high := math.Inf(1)
+			if row >= 0 {
+				high = w.s.lossPeak[row].least()
+			}
+			w.parts[kind].Rows[i].High = high
+		}
+	}
+	for i, row := range w.sectionRow {
+		w.sections.High[i] = w.boundSquare(row, 1)
+	}
+	for i := range w.coupleRow {
+		w.boundCoupling(i)
+	}
+	for i, row := range w.bankRow {
+		w.banks.High[i] = w.boundSquare(row, 1000)
+	}
+}
+
+// least is what a value must be above to be the peak.
+func (p *peak) least() float64 {
+	if !p.known {
+		return math.Inf(-1)
+	}
+	return p.value
+}
+
+func (w *watch) boundPoint(i int) {
+	c, p, r := &w.judge.classes[w.judge.of[i]], &w.s.points[i], &w.points.Rows[i]
+	r.Low, r.High = max(p.min, c.LowA-limitSlack), min(p.max, c.HighA+limitSlack)
+}
+
+// boundCoupling: what is compared is the larger of a and a/ratio.
+func (w *watch) boundCoupling(i int) {
+	r, scale := &w.meter.loading[w.coupleRow[i]], 1.0
+	if r.ratioOf >= 0 {
+		scale = min(1, ratioOf(r.reg, w.taps[r.ratioOf]))
+	}
+	w.couplings.High[i] = w.boundSquare(w.coupleRow[i], scale)
+}
+
+// boundSquare is the square of what a row's loading must be above to count, times scale,
+// less some slack.
+func (w *watch) boundSquare(row int, scale float64) float64 {
+	r := &w.meter.loading[row]
+	high := w.s.loadPeak[row].least()
+	if r.rating < high { // an unknown one is no number
+		high = r.rating
+	}
+	if r.emergency < high {
+		high = r.emergency
+	}
+	if high < 0 {
+		return -1
+	}
+	high *= scale * (1 - within)
+	return high * high
+}

@@ -1,0 +1,354 @@
+package results
+
+import (
+	"math"
+	"slices"
+
+	"yearflow/sim/network"
+	"yearflow/sim/powerflow/vector"
+)
+
+// gatherEvery is the number of Quiets after which sums leave the lists: sums of sums lose
+// less to rounding.
+const gatherEvery = 4096
+
+// quiet takes a Quiet whose steps lie in one month.
+func (s *statistics) quiet(q *Quiet, month *bucket) {
+	if s.watch == nil {
+		s.watch = newWatch(s)
+	}
+	w := s.watch
+	if !w.fits(q.State) {
+		w.place(q.State)
+	}
+	if w.step != q.Step || w.calls >= gatherEvery {
+		w.gather()
+		w.step = q.Step
+	}
+	w.calls++
+	if w.stale || !slices.Equal(w.taps, q.State.Taps) {
+		w.taps = append(w.taps[:0], q.State.Taps...)
+		w.bound()
+	}
+	w.read(q)
+	w.distribute(q)
+	if w.seen != 0 {
+		w.voltages(q)
+	}
+	out := w.settleOutside(q.Step)
+	energies := w.energies(q)
+	for _, b := range [...]*bucket{&s.total, month} {
+		b.steps += q.Count
+		b.settled += int64(q.Count) * q.Step
+		b.outsideTimes.add(&out)
+		b.energies.merge(&energies)
+		w.extremes(q, b)
+		for k := range q.Count {
+			b.peakDemand.take(w.source[q.lane(k)], q.Start+int64(k)*q.Step)
+		}
+	}
+	w.powers(q)
+	w.lossPeaks(q)
+	w.loadings(q)
+	w.unbalances(q)
+}
+
+// distribute enters the voltages into the percentiles.
+func (w *watch) distribute(q *Quiet) {
+	d := w.s.dist
+	if d.bins != nil {
+		d.addLanes(w.pu, w.bins, w.mask, q.Step)
+		return
+	}
+	for k := range q.Count {
+		d.addLane(w.pu, q.lane(k), q.Step)
+	}
+}
+
+// voltages looks closer at what is flagged.
+func (w *watch) voltages(q *Quiet) {
+	s := w.s
+	for i, flag := range w.points.Flags {
+		if flag == 0 {
+			continue
+		}
+		p := &s.points[i]
+		x := (*[vector.Lanes]float64)(w.pu[i*vector.Lanes:])
+		for k := range q.Count {
+			v, at := x[q.lane(k)], q.Start+int64(k)*q.Step
+			if v < p.min {
+				p.min, p.minTime = v, at
+				if w.judge.judged[i] {
+					s.lowJudged.lower(v, i, at)
+				}
+			}
+			if v > p.max {
+				p.max, p.maxTime = v, at
+				if w.judge.judged[i] {
+					s.highJudged.higher(v, i, at)
+				}
+			}
+		}
+		if out := w.look(i); out != 0 {
+			below, above, belowB, aboveB := times(out, q.Step)
+			p.belowA += below
+			p.aboveA += above
+			p.belowB += belowB
+			p.aboveB += aboveB
+		}
+		w.boundPoint(i)
+	}
+}
+
+// lower is low for values that come point by point: of equal ones the first in time
+// counts, and of those of one instant the first to come.
+func (e *extreme) lower(v float64, point int, at int64) {
+	if !e.known || v < e.value || v == e.value && at < e.time {
+		*e = extreme{v, point, at, true}
+	}
+}
+
+func (e *extreme) higher(v float64, point int, at int64) {
+	if !e.known || v > e.value || v == e.value && at < e.time {
+		*e = extreme{v, point, at, true}
+	}
+}
+
+// extremes enters the lowest and the highest voltage of each step.
+func (w *watch) extremes(q *Quiet, b *bucket) {
+	if len(w.meter.Points) == 0 {
+		return
+	}
+	for k := range q.Count {
+		x, at := q.lane(k), q.Start+int64(k)*q.Step
+		if v := w.least[x]; !b.lowestPU.known || v < b.lowestPU.value {
+			b.lowestPU.low(v, w.find(v, x), at)
+		}
+		if v := w.most[x]; !b.highestP.known || v > b.highestP.value {
+			b.highestP.high(v, w.find(v, x), at)
+		}
+	}
+}
+
+// find returns the first point with a voltage.
+func (w *watch) find(v float64, lane int) int {
+	for i := range w.meter.Points {
+		if w.pu[i*vector.Lanes+lane] == v {
+			return i
+		}
+	}
+	return 0
+}
+
+// powers enters the power of the sources and all losses.
+func (w *watch) powers(q *Quiet) {
+	s := w.s
+	for k := range q.Count {
+		x, at := q.lane(k), q.Start+int64(k)*q.Step
+		s.lossesPeak.take(w.losses[x], at)
+		s.leastDemand.take(-w.source[x], at)
+		if w.source[x] < 0 {
+			s.reverse += q.Step
+		}
+	}
+}
+
+func (w *watch) lossPeaks(q *Quiet) {
+	s := w.s
+	for kind := range w.parts {
+		if w.flagged[kind] == 0 {
+			continue
+		}
+		d := &w.parts[kind]
+		for i, flag := range d.Flags {
+			row := w.rowOf[kind][i]
+			if flag == 0 || row < 0 {
+				continue
+			}
+			p := &s.lossPeak[row]
+			for k := range q.Count {
+				p.take(w.power[kind][i*vector.Lanes+q.lane(k)], q.Start+int64(k)*q.Step)
+			}
+			d.Rows[i].High = p.least()
+		}
+	}
+	for i := range w.shared {
+		r := &w.shared[i]
+		p, power := &s.lossPeak[r.row], w.power[r.kind]
+		for k := range q.Count {
+			x, sum := q.lane(k), 0.0
+			for _, part := range r.parts {
+				sum += power[part*vector.Lanes+x]
+			}
+			p.take(sum, q.Start+int64(k)*q.Step)
+		}
+	}
+	if w.bareAt {
+		return
+	}
+	w.bareAt = true
+	for _, row := range w.bare {
+		s.lossPeak[row].take(0, q.Start)
+	}
+}
+
+func (w *watch) loadings(q *Quiet) {
+	l := q.State
+	if w.sections.Watch(l.Flow, w.mask) != 0 {
+		for i, flag := range w.sections.Flags {
+			if flag != 0 {
+				w.loading(q, w.sectionRow[i])
+				w.sections.High[i] = w.boundSquare(w.sectionRow[i], 1)
+			}
+		}
+	}
+	if w.couplings.Watch(l.Coupling, w.mask) != 0 {
+		for i, flag := range w.couplings.Flags {
+			if flag != 0 {
+				w.loading(q, w.coupleRow[i])
+				w.boundCoupling(i)
+			}
+		}
+	}
+	if len(w.bankRow) == 0 {
+		return
+	}
+	w.bankFlow.Set(w.bankAmps, l.Flow)
+	if w.banks.Watch(l.V, w.bankAmps, w.mask) != 0 {
+		for i, flag := range w.banks.Flags {
+			if flag != 0 {
+				w.loading(q, w.bankRow[i])
+				w.banks.High[i] = w.boundSquare(w.bankRow[i], 1000)
+			}
+		}
+	}
+}
+
+// loading looks at a row of loading.csv.
+func (w *watch) loading(q *Quiet, i int) {
+	s, l, row := w.s, q.State, &w.meter.loading[i]
+	for k := range q.Count {
+		x := q.lane(k)
+		var a float64
+		switch row.kind {
+		case network.Section:
+			a = max(magnitude(vector.At(l.Flow, row.from, x)), magnitude(vector.At(l.Flow, row.to, x)))
+		case network.Transformer:
+			a = magnitude(row.flows.powerAt(l, x)) / 1000
+		default:
+			a = magnitude(vector.At(l.Coupling, row.coupling, x))
+			if row.ratioOf >= 0 {
+				a = max(a, a/ratioOf(row.reg, l.Taps[row.ratioOf]))
+			}
+		}
+		s.loadPeak[i].take(a, q.Start+int64(k)*q.Step)
+		if a > row.rating {
+			s.aboveRating[i] += q.Step
+		}
+		if a > row.emergency {
+			s.aboveEmergency[i] += q.Step
+		}
+	}
+}
+
+// powerAt is power in a lane, of an element without couplings.
+func (e *endFlow) powerAt(l *Lanes, lane int) (sum complex128) {
+	for k := range e.phases {
+		var i complex128
+		for _, f := range e.phases[k].flows {
+			i += vector.At(l.Flow, f, lane)
+		}
+		sum += apparent(vector.At(l.V, int(l.Slot[e.phases[k].unknown]), lane), i)
+	}
+	return sum
+}
+
+// The unbalance of a node lies between what the distances of squares say: with δ the
+// largest distance of a side's square from the mean of the squares, over that mean, it is
+// δ/2 but for terms of second order, at most δ²/16, and smaller ones.
+func unbalanceBetween(far float64) (low, high float64) {
+	if !(far < 0.2) {
+		return 0, math.Inf(1)
+	}
+	spread := 0.07*far*far + far*far*far + 1e-14
+	return far/2 - spread, far/2 + spread
+}
+
+// unbalances looks closer at lanes that may have a new largest unbalance or negative
+// sequence, or that may be on either side of 3 %.
+func (w *watch) unbalances(q *Quiet) {
+	if len(w.meter.three) == 0 {
+		return
+	}
+	s := w.s
+	w.triples.Watch(w.triple, q.State.V, &w.far, &w.ratioSq)
+	for k := range q.Count {
+		x, at := q.lane(k), q.Start+int64(k)*q.Step
+		if w.far[x] >= 0 {
+			low, high := unbalanceBetween(w.far[x])
+			switch {
+			case 100*high > s.unbalance.least()*(1-within) || 100*low <= 3*(1+within) && 100*high > 3*(1-within):
+				u, node := w.unbalance(q, x, low)
+				if node < 0 {
+					break
+				}
+				if !s.unbalance.known || u > s.unbalance.value {
+					s.unbalanceAt = node
+				}
+				s.unbalance.take(u, at)
+				if u > 3 {
+					s.unbalanceAbove3 += q.Step
+				}
+			case 100*low > 3:
+				s.unbalanceAbove3 += q.Step
+			}
+		}
+		if w.ratioSq[x] >= 0 {
+			if r := math.Sqrt(w.ratioSq[x]); 100*(r+ratioSlack) > s.negative.least() {
+				if n := w.negative(q, x, r); n >= 0 {
+					s.negative.take(n, at)
+				}
+			}
+		}
+	}
+}
+
+// ratioSlack is more than rounding makes of |V2|/|V1|.
+const ratioSlack = 1e-13
+
+// unbalance returns the largest unbalance of a lane, %, and its node. That is a node
+// whose unbalance may be low or more.
+func (w *watch) unbalance(q *Quiet, lane int, low float64) (float64, int) {
+	worst, at := -1.0, -1
+	for k, u := range w.meter.three {
+		if _, high := unbalanceBetween(w.triple[k*vector.Width+lane]); high < low {
+			continue
+		}
+		if d, ok := unbalance(w.voltage(q, u[0], lane), w.voltage(q, u[1], lane), w.voltage(q, u[2], lane)); ok && d > worst {
+			worst, at = d, w.meter.threeAt[k]
+		}
+	}
+	return 100 * worst, at
+}
+
+// negative returns the largest |V2|/|V1| of a lane, %; below zero: none.
+func (w *watch) negative(q *Quiet, lane int, about float64) float64 {
+	least := 0.0
+	if !math.IsInf(about, 1) && about > 2*ratioSlack {
+		least = (about - 2*ratioSlack) * (about - 2*ratioSlack)
+	}
+	ratio := -1.0
+	for k, u := range w.meter.three {
+		if w.triple[k*vector.Width+vector.Lanes+lane] < least {
+			continue
+		}
+		if r, ok := sequences(w.voltage(q, u[0], lane), w.voltage(q, u[1], lane), w.voltage(q, u[2], lane)); ok {
+			ratio = max(ratio, r)
+		}
+	}
+	return 100 * ratio
+}
+
+func (w *watch) voltage(q *Quiet, u int32, lane int) complex128 {
+	return vector.At(q.State.V, int(q.State.Slot[u]), lane)
+}
