@@ -29,6 +29,7 @@ type Lanes struct {
 	// is put into a fixed voltage.
 	v, x      []float64
 	slot      []int32 // by unknown, into v
+	rank      []int32 // of an independent unknown's place in the elimination order among the values
 	free, all int     // independent ones, and those with the dependent ones
 	held      int     // the second value of the first fixed voltage
 	weight    []float64
@@ -79,6 +80,7 @@ func NewLanes(s *Solver, largest []float64) *Lanes {
 func (l *Lanes) place() {
 	s := l.s
 	l.slot = make([]int32, len(s.Net.Unknowns))
+	l.rank = s.pat.levels()
 	l.all = l.free
 	for u, terms := range s.red.terms {
 		if !plainTerm(terms) {
@@ -91,7 +93,7 @@ func (l *Lanes) place() {
 	for u, terms := range s.red.terms {
 		if plainTerm(terms) {
 			if c := terms[0].col; c >= 0 {
-				l.slot[u] = s.pat.place[c]
+				l.slot[u] = l.rank[s.pat.place[c]]
 			} else {
 				l.slot[u] = int32(l.all) + (-1 - c)
 				continue
@@ -122,7 +124,7 @@ func (l *Lanes) rows() {
 		for _, x := range st {
 			src = append(src, l.held+int(x.fixed))
 		}
-		l.pull.Row(int(row), src...)
+		l.pull.Row(int(l.rank[row]), src...)
 		l.pulls = append(l.pulls, st)
 	}
 	into := make([][]int, l.free)
@@ -135,7 +137,7 @@ func (l *Lanes) rows() {
 		for _, t := range terms {
 			from := l.held + int(-1-t.col)
 			if t.col >= 0 {
-				from = int(s.pat.place[t.col])
+				from = int(l.rank[s.pat.place[t.col]])
 				into[from] = append(into[from], int(l.slot[u]))
 				coef[from] = append(coef[from], t.coef)
 			}
@@ -153,68 +155,43 @@ func (l *Lanes) rows() {
 	l.sweep()
 }
 
-// sweep lists the rows of the two substitutions. Both are worked off row by row, each
-// from what it depends on, level by level of the elimination tree: rows of one level
-// do not wait for each other.
+// sweep lists the rows of the two substitutions, each row with what it depends on.
 func (l *Lanes) sweep() {
 	p := l.s.pat
 	n := p.n
 	type entry struct{ row, slot int32 }
 	left := make([][]entry, n) // of each row
-	depth, height := make([]int, n), make([]int, n)
 	for k := range n {
 		for s := p.start[k]; s < p.start[k+1]; s++ {
 			r := p.row[s-int32(n)]
 			left[r] = append(left[r], entry{int32(k), s})
-			height[r] = max(height[r], height[k]+1)
 		}
 	}
-	for k := n - 1; k >= 0; k-- {
-		for s := p.start[k]; s < p.start[k+1]; s++ {
-			depth[k] = max(depth[k], depth[p.row[s-int32(n)]]+1)
-		}
+	order := make([]int, n) // elimination place by rank
+	for k, r := range l.rank {
+		order[r] = k
 	}
-	for _, k := range byLevel(height) {
+	for _, k := range order {
 		if len(left[k]) == 0 {
 			continue
 		}
 		var src []int
 		for _, e := range left[k] {
-			src = append(src, int(e.row))
+			src = append(src, int(l.rank[e.row]))
 			l.down = append(l.down, e.slot)
 		}
-		l.forward.Row(k, src...)
+		l.forward.Row(int(l.rank[k]), src...)
 	}
-	for _, k := range byLevel(depth) {
+	for r := n - 1; r >= 0; r-- {
+		k := order[r]
 		var src []int
 		l.up = append(l.up, int32(k))
 		for s := p.start[k]; s < p.start[k+1]; s++ {
-			src = append(src, int(p.row[s-int32(n)]))
+			src = append(src, int(l.rank[p.row[s-int32(n)]]))
 			l.up = append(l.up, s)
 		}
-		l.backward.Row(k, src...)
+		l.backward.Row(int(l.rank[k]), src...)
 	}
-}
-
-// byLevel sorts rows by level, those of one level by their number.
-func byLevel(level []int) []int {
-	most := 0
-	for _, h := range level {
-		most = max(most, h)
-	}
-	at := make([]int, most+2)
-	for _, h := range level {
-		at[h+1]++
-	}
-	for i := range most + 1 {
-		at[i+1] += at[i]
-	}
-	out := make([]int, len(level))
-	for k, h := range level {
-		out[at[h]] = k
-		at[h]++
-	}
-	return out
 }
 
 // branches sorts the injections into lists.

@@ -27,6 +27,9 @@ var contestants = []func(testing.TB, *synthetic.Circuit) klu.Stepper{
 	func(_ testing.TB, c *synthetic.Circuit) klu.Stepper {
 		return klu.NewReference(c.Solver, c.Level(0))
 	},
+	func(_ testing.TB, c *synthetic.Circuit) klu.Stepper {
+		return klu.NewLaneRun(c.Solver, c.Level(0))
+	},
 }
 
 // BenchmarkSteps prints for each contestant, by its name: µs a step (median of the
