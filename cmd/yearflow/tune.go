@@ -10,6 +10,7 @@ import (
 
 	"github.com/spf13/cobra"
 
+	"yearflow/plots"
 	"yearflow/sim/results"
 	"yearflow/sim/study"
 	"yearflow/sim/tables"
@@ -85,7 +86,7 @@ func (c *console) tune(ctx context.Context, args []string, o *tuneOptions) error
 	case err != nil:
 		return machineOr(err)
 	}
-	if err := t.Write(dir, place, nil); err != nil {
+	if err := t.Write(dir, place, drawDocument("tune.html", plots.TuneDocument)); err != nil {
 		return documentError(err)
 	}
 	where := filepath.Join(dir, "case")
@@ -110,7 +111,7 @@ func (c *console) watchTune(evaluated, budget int, base, best *study.Point) {
 
 func (c *console) tellTune(out io.Writer, t *study.Tuning, dir, where string) {
 	fmt.Fprintf(out, "%s: settings searched, %s; %s\n", t.Title, count(t.Evaluated, "candidate-year"), t.Stopped)
-	fmt.Fprintf(out, "Tables in %s\n\n", dir)
+	fmt.Fprintf(out, "Document and tables in %s\n\n", dir)
 	tables := map[string][][]string{}
 	for _, x := range t.Tables() {
 		tables[x.Name] = x.Rows
@@ -124,7 +125,7 @@ func (c *console) tellTune(out io.Writer, t *study.Tuning, dir, where string) {
 	}
 	s.write(out)
 	if t.Best == nil {
-		fmt.Fprintln(out, "\nNo candidate within the bounds was evaluated.")
+		fmt.Fprintf(out, "\nNo candidate within the bounds was evaluated.\nThe document: %s\n", filepath.Join(dir, "tune.html"))
 		return
 	}
 	fmt.Fprintf(out, "\nsetting by setting, the one that matters most first; flat: as good as the best\n(%s), the others held\n\n", t.FlatText())
@@ -147,7 +148,8 @@ func (c *console) tellTune(out io.Writer, t *study.Tuning, dir, where string) {
 	}
 	if t.CaseName == "" {
 		fmt.Fprintln(out, "No candidate is better than the base: no case is written.")
-		return
+	} else {
+		fmt.Fprintf(out, "The best as a case: %s. Its settings sheet: %s\n", where, filepath.Join(dir, "sheet.csv"))
 	}
-	fmt.Fprintf(out, "The best as a case: %s. Its settings sheet: %s\n", where, filepath.Join(dir, "sheet.csv"))
+	fmt.Fprintf(out, "The document: %s\n", filepath.Join(dir, "tune.html"))
 }

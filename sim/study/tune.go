@@ -137,10 +137,11 @@ func (t *Tuning) good(p *Point) bool {
 type Sensitivity struct {
 	Knob    *Knob
 	Index   int // into Spec.Knobs
-	Rank    int // 1 matters most; by Range
+	Rank    int // 1 matters most; by Range; 0 where that is not known
 	Profile []*Point
-	// Range is the highest score of the profile less the lowest; Down and Up are what one
-	// step down or up costs, NaN where that is out of bounds or was not evaluated.
+	// Range is the highest score of the profile less the lowest, NaN where no value but
+	// the best's was evaluated; Down and Up are what one step down or up costs, NaN where
+	// that is out of bounds or was not evaluated.
 	Range, Down, Up float64
 	// FlatLow to FlatHigh are the values around the best over which every profile point
 	// is as good as the best.
@@ -177,6 +178,9 @@ func (t *Tuning) sensitivities() {
 			}
 		}
 		x.Range = high - low
+		if len(x.Profile) < 2 && k.Levels() > 1 {
+			x.Range = math.NaN() // the budget was spent before: nothing is known
+		}
 		first, last := at, at
 		for first > 0 && t.good(x.Profile[first-1]) {
 			first--
@@ -201,11 +205,19 @@ func (t *Tuning) sensitivities() {
 			return -1
 		case a.Range < b.Range:
 			return 1
+		case math.IsNaN(a.Range) != math.IsNaN(b.Range):
+			if math.IsNaN(a.Range) {
+				return 1
+			}
+			return -1
 		}
 		return 0
 	})
 	for i := range t.Sensitivities {
 		s := &t.Sensitivities[i]
+		if math.IsNaN(s.Range) {
+			continue
+		}
 		s.Rank = i + 1
 		if i > 0 && t.Sensitivities[i-1].Range == s.Range {
 			s.Rank = t.Sensitivities[i-1].Rank
@@ -260,7 +272,7 @@ func (t *Tuning) cautions() {
 		add("%s %% of the time is settling: this step is too coarse for operations and durations.", tenths(s))
 	}
 	for _, s := range t.Sensitivities {
-		if s.Edge != "" && s.Edge != "both" && s.Range > 0 {
+		if s.Edge != "" && s.Edge != "both" && s.Range != 0 { // NaN: not known
 			add("%s of the best lies on its %s bound, %s: a better one may lie beyond.", s.Knob.Name(), s.Edge, s.Knob.cellOf(s.Knob.value(t.Best.Levels[s.Index])))
 		}
 	}

@@ -6,7 +6,6 @@ import (
 	"path/filepath"
 	"strconv"
 	"strings"
-	"time"
 
 	"yearflow/sim/feeder"
 	"yearflow/sim/results"
@@ -15,7 +14,8 @@ import (
 // Tables returns the files of the document by name, in the order of reading; the first
 // row of each is its header.
 func (t *Tuning) Tables() []NamedTable {
-	out := []NamedTable{t.mainTable(), t.settingsTable(), t.sensitivityTable(), t.profileTable(), t.candidatesTable()}
+	out := []NamedTable{t.mainTable(), t.settingsTable(), t.weightsTable(), t.limitsTable(), t.searchTable(), t.methodTable(), t.progressTable(),
+		t.sensitivityTable(), t.profileTable(), t.undominatedTable(), t.candidatesTable()}
 	if t.Sheet != nil {
 		sheet := t.Sheet.table()
 		sheet.Name = "sheet.csv"
@@ -182,8 +182,11 @@ func (t *Tuning) Good() (n int) {
 func (t *Tuning) sensitivityTable() NamedTable {
 	out := NamedTable{Name: "sensitivity.csv", Rows: [][]string{{"rank", "device", "phase", "setting", "unit", "best", "range of score", "one step down", "one step up", "flat from", "flat to", "points", "at bound"}}}
 	for _, s := range t.Sensitivities {
-		k := s.Knob
-		out.Rows = append(out.Rows, []string{strconv.Itoa(s.Rank), k.Device, k.Phase, k.Setting, k.Unit, t.setting(k, s.Index, t.Best), results.FigureText(s.Range),
+		k, rank := s.Knob, ""
+		if s.Rank > 0 {
+			rank = strconv.Itoa(s.Rank)
+		}
+		out.Rows = append(out.Rows, []string{rank, k.Device, k.Phase, k.Setting, k.Unit, t.setting(k, s.Index, t.Best), results.FigureText(s.Range),
 			results.FigureText(s.Down), results.FigureText(s.Up), k.cellOf(s.FlatLow), k.cellOf(s.FlatHigh), strconv.Itoa(len(s.Profile)), s.Edge})
 	}
 	return out
@@ -209,11 +212,7 @@ func (t *Tuning) profileTable() NamedTable {
 
 func (t *Tuning) aimNames() (out []string) {
 	for _, q := range t.weighed() {
-		name := q.name
-		if q.unit != "1" {
-			name += " [" + q.unit + "]"
-		}
-		out = append(out, name)
+		out = append(out, aimHead(q.name, q.unit))
 	}
 	return out
 }
@@ -277,7 +276,7 @@ func (t *Tuning) candidatesTable() NamedTable {
 }
 
 // Write writes the folder of the search: its tables, the case of the best in case, what
-// draw adds to them, and tune.json. draw may be nil.
+// draw adds to them (tune.html, figures), and tune.json. draw may be nil.
 func (t *Tuning) Write(dir string, p Place, draw func(dir string) error) error {
 	f, err := results.CreateTables(dir, "tune")
 	if err != nil {
@@ -295,16 +294,11 @@ func (t *Tuning) Write(dir string, p Place, draw func(dir string) error) error {
 		}
 	}
 	period := t.study.Settings.Period
-	zone := time.UTC
-	if period.Zone != nil {
-		zone = period.Zone
-	}
-	stamp := func(ns int64) string { return time.Unix(0, ns).In(zone).Format(time.RFC3339) }
-	r := results.TablesRecord{Version: p.Version, Title: t.Title, Demo: p.Demo, Zone: zone.String(),
+	r := results.TablesRecord{Version: p.Version, Title: t.Title, Demo: p.Demo, Zone: period.Zone.String(), Period: period.String(),
+		Start: stampOf(t.study, period.Start), End: stampOf(t.study, period.End), Step: float64(period.Step) / 1e9,
 		Cases: []results.TablesCase{{Case: feeder.Base, Inputs: t.inputs}},
-		Said: map[string]any{"start": stamp(period.Start), "end": stamp(period.End), "step seconds": float64(period.Step) / 1e9,
-			"method": t.Method(), "seed": t.Spec.Seed, "budget": t.Spec.Budget, "evaluated": t.Evaluated, "stopped": t.Stopped, "case": t.CaseName,
-			"as good as the best": t.Good(), "as good is": t.FlatText(), "currency": t.study.Settings.Prices.Currency, "limits": limitsText(&t.study.Settings.Limits)}}
+		Said: map[string]any{"method": t.Method(), "stopped": t.Stopped, "case": t.CaseName, "as good is": t.FlatText(), "built in": t.Spec.BuiltIn,
+			"improves": t.Improves(), "log": filepath.Base(dir) + "-log.csv", "currency": t.study.Settings.Prices.Currency, "limits": limitsText(&t.study.Settings.Limits)}}
 	if err := f.Record(r); err != nil {
 		return err
 	}
