@@ -201,14 +201,18 @@ func (t *tuneDocument) searchedSection() Section {
 
 func (t *tuneDocument) methodSection() (Section, error) {
 	s := Section{Heading: "How it was searched, and how far"}
-	s.Blocks = append(s.Blocks, Paragraph{Plain("Method: " + t.said("method") + ".")},
+	s.Blocks = append(s.Blocks, Paragraph{Plain("Method: " + t.said("method") + ".")})
+	if i := t.method.Row("evolution"); i >= 0 && t.method.Cell(i, "candidates") == "0" {
+		s.Blocks = append(s.Blocks, Finding{Text: Plain("The budget left no room for the evolution: what was found comes from the other parts alone, and a better one may lie farther off."), Bad: true})
+	}
+	s.Blocks = append(s.Blocks,
 		Facts{Rows: []Fact{
 			{"Stopped", Plain(t.said("stopped"))},
 			{"Seed of the random numbers", Text{t.search.Name(t.search.Row("seed"), "value")}},
 			{"Candidate-years evaluated", Say("{} of at most {}", t.inSearch("candidate-years"), t.inSearch("budget"))},
 			{"Grid", Say("{} candidates, {} of them evaluated ({})", t.inSearch("candidates of the grid"), t.inSearch("candidates of the grid evaluated"), t.inSearch("share of the grid evaluated"))},
-			{"No settings sheet could hold", Say("{} candidates more, which cost nothing", t.inSearch("candidates that no sheet can hold"))},
-			{"All limits kept by", Say("{} candidates", t.inSearch("candidates that keep all limits"))},
+			{"No settings sheet could hold", Say("{} of those asked for, which cost nothing", t.inSearch("candidates that no sheet can hold"))},
+			{"All limits kept by", Say("{} of those evaluated", t.inSearch("candidates that keep all limits"))},
 			{"Log of all that was evaluated", Plain(t.said("log") + ", beside this folder: a search with a larger budget goes on from it")},
 		}})
 	p, f := t.progressFigure(newStyle(200))
@@ -218,7 +222,7 @@ func (t *tuneDocument) methodSection() (Section, error) {
 	}
 	var parts Facts
 	for i := range t.method.Rows {
-		text := Say("{} candidates: "+t.method.Cell(i, "what"), t.method.Value(i, "candidates"))
+		text := Say("Candidates: {}. "+upper(t.method.Cell(i, "what")), t.method.Value(i, "candidates"))
 		if from := t.method.Cell(i, "source"); from != "" {
 			text = append(text, Word(" ("+from+")"))
 		}
@@ -339,12 +343,17 @@ func (t *tuneDocument) tradeSection() (Section, error) {
 	aims.Note = Plain("Their settings stand in undominated.csv, all that was evaluated in candidates.csv.")
 	if score <= 7 {
 		settings := t.front.Table("Settings of these candidates", append([]string{"candidate"}, append(slices.Clone(t.front.Header[1:score]), "note")...), rows, "note")
+		for k, i := range rows {
+			for c := 1; c < score; c++ { // settings as they are entered
+				settings.Rows[k][c] = t.front.Name(i, t.front.Header[c])
+			}
+		}
 		aims.Note = Plain("All that was evaluated: candidates.csv.")
 		s.Blocks = append(s.Blocks, aims, settings)
 	} else {
 		s.Blocks = append(s.Blocks, aims)
 	}
-	stake := t.weights.Table("What the aims decide about", []string{"quantity", "weight", "range of its part of the score", "range among the undominated"}, nil)
+	stake := t.weights.Table("What the aims decide about", []string{"quantity", "range of its part of the score", "range among the undominated"}, nil)
 	stake.Note = Plain("The range of weight times quantity over all candidates that keep the limits, and over the undominated of them.")
 	s.Blocks = append(s.Blocks, stake)
 	return s, nil

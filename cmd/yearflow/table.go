@@ -8,6 +8,7 @@ import (
 	"io"
 	"math"
 	"os"
+	"slices"
 	"strconv"
 	"strings"
 	"unicode/utf8"
@@ -115,12 +116,54 @@ func (c *console) quiet(files ...string) io.Writer {
 }
 
 // record is a row as a JSON object: the columns in their order, numbers as numbers.
-type record struct{ header, cells []string }
+type record struct {
+	header, cells []string
+	kinds         []columnKind
+	unit          int // the column that holds the unit of the row; −1 for none
+}
 
 var _ json.Marshaler = record{}
 
-// MarshalJSON writes a cell of a column with a unit as a number and null for a blank;
-// any other as a string. A "value" has its unit beside it.
+// columnKind says how the cells of a column stand in JSON.
+type columnKind uint8
+
+// Words stay strings; a number is null where it is blank; a column by unit holds a number
+// where the unit of its row is that of a quantity, and else a place, a phase or a time.
+const (
+	wordColumn columnKind = iota
+	numberColumn
+	unitColumn
+)
+
+// kindsOf tells the columns of a table apart by their heads, never by their cells: a node
+// may be called 1204.
+func kindsOf(header []string) (kinds []columnKind, unit int) {
+	kinds, unit = make([]columnKind, len(header)), slices.Index(header, "unit")
+	// compare.csv has a column for each case behind its unit, and a case any name.
+	cases := len(header) > 3 && header[0] == "group" && header[1] == "quantity" && unit == 2
+	for i, h := range header {
+		switch {
+		case cases && i > unit:
+			kinds[i] = unitColumn
+		case strings.HasSuffix(h, "]"):
+			kinds[i] = numberColumn
+		}
+		if cases {
+			continue
+		}
+		switch h {
+		case "line", "column", "row", "tap", "weight", "part of score of the base", "part of score of the best":
+			kinds[i] = numberColumn
+		case "value", "base", "best", "with DER", "change", "difference", "limit", "margin":
+			if unit >= 0 {
+				kinds[i] = unitColumn
+			}
+		}
+	}
+	return kinds, unit
+}
+
+// MarshalJSON writes numbers as they stand in the CSV file, digit for digit.
 func (r record) MarshalJSON() ([]byte, error) {
 	var b bytes.Buffer
 	b.WriteByte('{')
@@ -145,28 +188,39 @@ func (r record) MarshalJSON() ([]byte, error) {
 }
 
 func (r record) value(i int) any {
-	number := strings.HasSuffix(r.header[i], "]")
-	switch r.header[i] {
-	case "line", "column", "row", "tap":
-		number = true
-	case "value":
-		unit := r.cells[i+1]
-		number = unit == "1" || unitForPeople(unit) != ""
+	cell := r.cells[i]
+	switch {
+	case r.kinds[i] == wordColumn:
+		return cell
+	case cell == "":
+		return nil
+	case r.kinds[i] == unitColumn && !quantityUnit(r.cells[r.unit]):
+		return cell
 	}
-	if !number {
-		return r.cells[i]
+	if v, err := strconv.ParseFloat(cell, 64); err == nil {
+		if math.IsNaN(v) || math.IsInf(v, 0) {
+			return nil
+		}
+		return json.Number(strings.TrimPrefix(cell, "+"))
 	}
-	if v, err := strconv.ParseFloat(r.cells[i], 64); err == nil && !math.IsNaN(v) && !math.IsInf(v, 0) {
-		return json.Number(strings.TrimPrefix(r.cells[i], "+"))
+	return cell // such as "at least 12.5"
+}
+
+// quantityUnit tells the units of numbers from the kinds of words that stand in their place.
+func quantityUnit(unit string) bool {
+	switch unit {
+	case "", "time", "node", "element", "node.phase", "device.phase", "element.phase":
+		return false
 	}
-	return nil
+	return true
 }
 
 // records turns rows under a header into objects.
 func records(rows [][]string) []record {
 	out := make([]record, 0, len(rows))
+	kinds, unit := kindsOf(rows[0])
 	for _, r := range rows[1:] {
-		out = append(out, record{rows[0], r})
+		out = append(out, record{rows[0], r, kinds, unit})
 	}
 	return out
 }
