@@ -120,7 +120,7 @@ func (t *tuneDocument) leadFindings() []Block {
 	if t.better() {
 		out = append(out, Paragraph{t.changes()})
 	}
-	return append(out, Paragraph{Plain("Every candidate was judged on the whole period with the controls acting. The score is the sum of weight times quantity over the aims of section 1; the weights are the reader's to choose.")})
+	return out
 }
 
 // changes says which settings the best moves, from where to where.
@@ -172,13 +172,14 @@ func settingTable(l *Ledger, caption string, values []string, others ...string) 
 }
 
 func (t *tuneDocument) searchedSection() Section {
-	lead := "The settings below, each on a grid of values from its lowest to its highest in equal steps; all others stand as in the base."
+	lead := "The settings below, each on a grid of values from its lowest to its highest in equal steps; all others stand as in the base. Every candidate was judged on the whole period with the controls acting."
 	if built, _ := t.record.Said["built in"].(bool); built {
 		lead += " study.toml names none in [tune] settings, so these are the set voltages of all regulators, the units of a bank alike."
 	}
 	settings := settingTable(t.settings, "Settings and their bounds", []string{"low", "high", "step", "base", "best"})
 	settings.Note = Plain("Of a device with several phases the setting holds for all, unless it names one. A base outside the bounds or between the steps is no candidate.")
 	aims := t.weights.Table("Aims: the score is the sum of weight times quantity", []string{"quantity", "unit", "weight", "source"}, nil, "unit", "source")
+	aims.Note = Plain("Less is better. The weights are the reader's to choose; another choice may have another best.")
 	for i := range aims.Rows {
 		aims.Rows[i][1], aims.Rows[i][2] = Word(shownUnit(t.weights.Cell(i, "unit"))), t.weights.Name(i, "weight")
 	}
@@ -248,6 +249,9 @@ func (t *tuneDocument) bestSection() (Section, error) {
 		if t.tune.Cell(i, "part of score of the base") != "" {
 			parts.Rows = append(parts.Rows, []Value{name, t.tune.Name(i, "weight"), t.tune.Value(i, "part of score of the base"), t.tune.Value(i, "part of score of the best")})
 		}
+	}
+	if n := len(parts.Rows); n > 1 {
+		parts.Rows = append(parts.Rows[1:], parts.Rows[0]) // the sum below its parts
 	}
 	x.Note = Plain("Settled intervals of solved steps count. Limits of voltage: " + t.said("limits") + ". A quantity without a weight or a limit was not looked at: hold the case against the base with compare before it is used.")
 	s.Blocks = []Block{parts, x}

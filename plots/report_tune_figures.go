@@ -233,10 +233,13 @@ func (t *tuneDocument) profiles() (out []settingProfile) {
 		x.low, x.high, x.base = settingNumber(t.settings.Cell(row, "low")), settingNumber(t.settings.Cell(row, "high")), settingNumber(t.settings.Cell(row, "base"))
 		x.flatWords = t.sensitivity.Cell(i, "flat from") + " to " + t.sensitivity.Cell(i, "flat to")
 		if x.flatLow == x.flatHigh {
-			x.flatWords = "only " + t.sensitivity.Cell(i, "flat to")
+			x.flatWords = t.sensitivity.Cell(i, "flat to")
 		}
 		if x.unit != "" && x.unit != "h" {
 			x.flatWords += " " + x.unit
+		}
+		if x.flatLow == x.flatHigh {
+			x.flatWords += " only"
 		}
 		for k, r := range t.profile.Rows {
 			if slices.Equal(r[:3], key) {
@@ -385,7 +388,7 @@ func flatFinding(all []settingProfile) string {
 	case whole == len(all):
 		return "No setting matters alone: over its whole range, all others held, every value that was evaluated is as good as the best."
 	case len(all) == 1 || share(all[sharp]) == share(all[flat]):
-		return fmt.Sprintf("%s is as good as the best at %s.", all[sharp].name, all[sharp].flatWords)
+		return fmt.Sprintf("Of the values tried of %s, as good as the best are %s.", all[sharp].name, all[sharp].flatWords)
 	}
-	return fmt.Sprintf("The sharpest setting is %s, as good as the best at %s; the flattest is %s, as good at %s.", all[sharp].name, all[sharp].flatWords, all[flat].name, all[flat].flatWords)
+	return fmt.Sprintf("Of the values tried, the sharpest setting is %s, as good as the best at %s; the flattest is %s, at %s.", all[sharp].name, all[sharp].flatWords, all[flat].name, all[flat].flatWords)
 }

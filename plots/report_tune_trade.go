@@ -41,7 +41,11 @@ func (t *tuneDocument) matterFigure(st *style) (*page, Figure) {
 		y := p.body.Max.Y - 6 - vg.Length(k)*(bar+gap) - bar/2
 		p.label(label, x0-6, y, text.XRight, text.YCenter, fit(label, settingName(t.sensitivity, i), room-8))
 		p.bar(x0, y-bar/2, at(v), y+bar/2, blue)
-		p.label(small, at(v)+4, y, text.XLeft, text.YCenter, score(v))
+		x := at(v) + 4
+		if good < top && x < at(good)+4 && x+small.Width(score(v)) > at(good)-2 {
+			x = at(good) + 4 // beside the line that marks what is as good
+		}
+		p.label(small, x, y, text.XLeft, text.YCenter, score(v))
 	}
 	if good < top {
 		low := p.body.Max.Y - 6 - vg.Length(len(rows))*(bar+gap)

@@ -121,20 +121,17 @@ func numbers(t *testing.T, dir, name string, least int) {
 		if err != nil {
 			continue
 		}
-		y, err := strconv.ParseFloat(strings.NewReplacer(",", "", "−", "-").Replace(shown), 64)
+		plain := strings.NewReplacer(",", "", "−", "-", "×10", "e", "⁻", "-", "⁰", "0", "¹", "1", "²", "2", "³", "3", "⁴", "4", "⁵", "5", "⁶", "6", "⁷", "7", "⁸", "8", "⁹", "9").Replace(shown)
+		y, err := strconv.ParseFloat(plain, 64)
+		mantissa, exponent, _ := strings.Cut(plain, "e")
+		_, decimals, _ := strings.Cut(mantissa, ".")
+		scale, _ := strconv.Atoi(exponent)
 		if err != nil {
 			t.Errorf("%s: %s shows %q for %q", name, source, shown, value)
-		} else if decimals := strings.IndexByte(shown, '.'); math.Abs(x-y) > 0.5001*math.Pow(10, -float64(max(0, len(shown)-1-decimals)*boolInt(decimals >= 0))) {
+		} else if math.Abs(x-y) > 0.5001*math.Pow10(scale-len(decimals)) {
 			t.Errorf("%s: %s shows %q for %q", name, source, shown, value)
 		}
 	}
-}
-
-func boolInt(b bool) int {
-	if b {
-		return 1
-	}
-	return 0
 }
 
 func lookUp(rows [][]string, row, column string) (string, bool) {
