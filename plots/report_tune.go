@@ -117,8 +117,21 @@ func (t *tuneDocument) leadFindings() []Block {
 	default:
 		out = append(out, Finding{Text: Say("The best of {} candidate-years has a score of {}, the base {}: a change of {}. Less is better.", years, t.tune.Value(0, "best"), t.tune.Value(0, "base"), t.tune.Value(0, "change [%]"))})
 	}
+	if names := t.brokenBy("base"); len(names) > 0 && !broken {
+		out = append(out, Finding{Text: Plain("The base breaks what the best keeps: " + strings.Join(names, "; ") + "."), Bad: true})
+	}
 	if t.better() {
 		out = append(out, Paragraph{t.changes()})
+	}
+	return out
+}
+
+// brokenBy lists the limits that the base or the best breaks.
+func (t *tuneDocument) brokenBy(of string) (out []string) {
+	for i := range t.limits.Rows {
+		if t.limits.Cell(i, "kept by the "+of) == "no" {
+			out = append(out, t.limits.Cell(i, "quantity")+", "+t.limits.Cell(i, "sense")+" "+Text{unitCell(t.limits, i, "value")}.String())
+		}
 	}
 	return out
 }
@@ -183,21 +196,29 @@ func (t *tuneDocument) searchedSection() Section {
 	for i := range aims.Rows {
 		aims.Rows[i][1], aims.Rows[i][2] = Word(shownUnit(t.weights.Cell(i, "unit"))), t.weights.Name(i, "weight")
 	}
-	v := Verdicts{Caption: "Limits, and how the best keeps them"}
-	column := "best"
-	if !t.has() {
-		v.Caption, column = "Limits, and how the base keeps them", "base"
+	s := Section{Heading: "What was searched, for what, within which limits", Blocks: []Block{Paragraph{Plain(lead)}, settings, aims}}
+	if !t.has() || len(t.brokenBy("base")) > 0 {
+		s.Blocks = append(s.Blocks, t.verdicts("base"))
 	}
+	if t.has() {
+		s.Blocks = append(s.Blocks, t.verdicts("best"))
+	}
+	return s
+}
+
+// verdicts says how the base or the best keeps the limits.
+func (t *tuneDocument) verdicts(of string) Verdicts {
+	v := Verdicts{Caption: "Limits, and how the " + of + " keeps them"}
 	for i := range t.limits.Rows {
-		r := Verdict{Criterion: t.limits.Cell(i, "quantity") + ", " + t.limits.Cell(i, "sense"), Value: unitCell(t.limits, i, column), Limit: unitCell(t.limits, i, "value"),
-			Margin: unitCell(t.limits, i, "margin of the "+column), Source: t.limits.Cell(i, "from")}
-		if t.limits.Cell(i, "kept by the "+column) == "no" {
+		r := Verdict{Criterion: t.limits.Cell(i, "quantity") + ", " + t.limits.Cell(i, "sense"), Value: unitCell(t.limits, i, of), Limit: unitCell(t.limits, i, "value"),
+			Margin: unitCell(t.limits, i, "margin of the "+of), Source: t.limits.Cell(i, "from")}
+		if t.limits.Cell(i, "kept by the "+of) == "no" {
 			r.Result = Fail
 		}
 		v.Rows = append(v.Rows, r)
 	}
 	v.Note = Plain("A candidate that keeps all limits is preferred to one that does not, whatever their scores.")
-	return Section{Heading: "What was searched, for what, within which limits", Blocks: []Block{Paragraph{Plain(lead)}, settings, aims, v}}
+	return v
 }
 
 func (t *tuneDocument) methodSection() (Section, error) {

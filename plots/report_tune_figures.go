@@ -122,17 +122,41 @@ func (t *tuneDocument) progressFigure(st *style) (*page, Figure) {
 			a.dot(x, a.y(y), 2.2, sky)
 		}
 	}
-	edges, values := []float64{}, []float64{}
-	for i := range t.progress.Rows {
-		edges, values = append(edges, numberIn(t.progress.Cell(i, "candidate-years"))), append(values, numberIn(t.progress.Cell(i, "score")))
-	}
-	x, y := steps(append(edges, n), values)
-	a.add(line{x, y, draw.LineStyle{Color: blue, Width: vg.Points(dataWidth + 0.5)}})
-	items := []key{{line: draw.LineStyle{Color: blue, Width: vg.Points(dataWidth + 0.5)}, text: "best so far"}, {line: baseLine, text: "base"}}
-	at := p.body.Min.X
-	a.keys(items, at, p.body.Min.Y+18)
+	items := t.progressLine(a, n)
+	a.keys(items, p.body.Min.X, p.body.Min.Y+18)
 	t.markKeys(a, kinds, p.body.Min.Y+4)
 	return p, f
+}
+
+// progressLine draws the best so far up to n candidate-years, in grey while it breaks a
+// limit, and returns the legend of the lines.
+func (t *tuneDocument) progressLine(a *panel, n float64) []key {
+	kept := draw.LineStyle{Color: blue, Width: vg.Points(dataWidth + 0.5)}
+	broken := draw.LineStyle{Color: axisGrey, Width: vg.Points(dataWidth + 0.5)}
+	var edges, values, before []float64 // before: of those that break a limit
+	for i := range t.progress.Rows {
+		edges = append(edges, numberIn(t.progress.Cell(i, "candidate-years")))
+		y, late := numberIn(t.progress.Cell(i, "score")), nan
+		if t.progress.Cell(i, "limits kept") == "no" {
+			y, late = nan, y
+		}
+		values, before = append(values, y), append(before, late)
+	}
+	edges = append(edges, n)
+	var items []key
+	for _, l := range []struct {
+		values []float64
+		style  draw.LineStyle
+		name   string
+	}{{before, broken, "best so far, breaks a limit"}, {values, kept, "best so far"}} {
+		if !slices.ContainsFunc(l.values, func(v float64) bool { return !math.IsNaN(v) }) {
+			continue
+		}
+		x, y := steps(edges, l.values)
+		a.add(line{x, y, l.style})
+		items = append(items, key{line: l.style, text: l.name})
+	}
+	return append(items, key{line: baseLine, text: "base"})
 }
 
 // countTicks are whole numbers from 0 to n.
@@ -176,8 +200,14 @@ func (t *tuneDocument) progressFinding(evaluated int) string {
 	switch {
 	case last == 0:
 		return fmt.Sprintf("No candidate of %s is better than the base, whose score is %s.", count(evaluated, "candidate-year", "candidate-years"), score(base))
+	case t.progress.Cell(0, "limits kept") == "no" && t.progress.Cell(last, "limits kept") == "yes":
+		first := 0
+		for t.progress.Cell(first, "limits kept") == "no" {
+			first++
+		}
+		return fmt.Sprintf("The base breaks a limit; all limits were first kept after %s of %s, and the best was found after %s.", t.progress.Cell(first, "candidate-years"), count(evaluated, "candidate-year", "candidate-years"), at)
 	case best > base:
-		return fmt.Sprintf("The base breaks a limit; the best so far after %s of %s costs %s more of score.", at, count(evaluated, "candidate-year", "candidate-years"), score(best-base))
+		return fmt.Sprintf("The base breaks limits by more than the best, which was found after %s of %s and has %s more of score.", at, count(evaluated, "candidate-year", "candidate-years"), score(best-base))
 	case best == base:
 		return fmt.Sprintf("The best was found after %s of %s; its score is that of the base.", at, count(evaluated, "candidate-year", "candidate-years"))
 	}
@@ -271,6 +301,9 @@ func (t *tuneDocument) profileFigure(st *style) (*page, Figure) {
 	f := Figure{Name: "tune-flat.png", Title: "How flat the optimum is, setting by setting", Finding: flatFinding(all)}
 	f.Alt = "A panel for each setting with the score above that of the best against the setting's value; the values as good as the best are shaded. " + f.Finding
 	shown := all[:min(len(all), shownProfiles)]
+	if len(shown) < len(all) {
+		f.Title += fmt.Sprintf(": the %d that matter most", len(shown))
+	}
 	good := t.flatRise()
 	top := 2 * good
 	for _, x := range shown {

@@ -81,6 +81,11 @@ func TestTuneFindingsOfLittle(t *testing.T) {
 		t.Error(got)
 	}
 	d = inventedSearch()
+	d.progress.Rows[0][5] = "no"
+	if got := d.progressFinding(5); got != "The base breaks a limit; all limits were first kept after 3 of 5 candidate-years, and the best was found after 5." {
+		t.Error(got)
+	}
+	d = inventedSearch()
 	d.sensitivity.Rows[1][6], d.sensitivity.Rows[2][6] = "", ""
 	if got := d.matterFinding(); !strings.HasSuffix(got, "by 150 over the values tried. Of 2 settings nothing is known: the budget was spent.") {
 		t.Error(got)
@@ -112,27 +117,37 @@ func TestTuneFindingsOfLittle(t *testing.T) {
 	}
 }
 
-// The two aims are those that decide most, wherever they stand.
+// The two aims are those with most to trade, wherever they stand; where one candidate is
+// the best in all of them, those that decide most.
 func TestMainAims(t *testing.T) {
 	for _, tt := range []struct {
-		front, all string // ranges by aim
-		a, b       int
+		weights, front string // of the aims; the undominated, a candidate a word, its aims by slashes
+		spans          string // ranges among the undominated
+		a, b           int
 	}{
-		{"5 9", "1 1", 0, 1},
-		{"5 9 7", "9 1 1", 1, 2},
-		{"9 5 7", "1 9 1", 0, 2},
-		{"0 0 0 0", "1 8 2 9", 1, 3},
-		{"4 4 4", "1 1 1", 0, 1},
-		{"1 2 3 4", "9 8 7 6", 2, 3},
+		{"1 1", "1/9 9/1", "8 8", 0, 1},
+		// b and c: 5 against 4. a and b: the best in a is nearly as good in b.
+		{"1 1 1", "0/9/1 1/4/5 90/8/1", "90 5 4", 1, 2},
+		// The same with c weighed at 100 and a tenth of its numbers: still b and c.
+		{"1 1 10", "0/9/0.1 1/4/0.5 90/8/0.1", "90 5 4", 1, 2},
+		// More of c is better: a and c.
+		{"1 1 -1", "0/1/1 9/1/9", "9 0 8", 0, 2},
+		{"1 1 1 1", "1/1/1/1", "0 8 2 9", 1, 3},
+		{"1 1 1", "1/1/1", "4 4 4", 0, 1},
 	} {
-		d := &tuneDocument{weights: &Ledger{Keys: 1, Header: []string{"quantity", "range among the undominated", "range of its part of the score"}}}
-		all := strings.Fields(tt.all)
-		for i, f := range strings.Fields(tt.front) {
-			d.weights.Rows = append(d.weights.Rows, []string{string(rune('a' + i)), f, all[i]})
+		d := &tuneDocument{weights: &Ledger{Keys: 1, Header: []string{"quantity", "unit", "weight", "range among the undominated", "range of its part of the score"}}, front: &Ledger{}}
+		spans := strings.Fields(tt.spans)
+		for i, w := range strings.Fields(tt.weights) {
+			name := string(rune('a' + i))
+			d.weights.Rows = append(d.weights.Rows, []string{name, "1", w, spans[i], "1"})
+			d.front.Header = append(d.front.Header, name)
 		}
-		d.aims = len(all)
+		for _, c := range strings.Fields(tt.front) {
+			d.front.Rows = append(d.front.Rows, strings.Split(c, "/"))
+		}
+		d.aims = len(spans)
 		if a, b := d.mainAims(); a != tt.a || b != tt.b {
-			t.Errorf("%s of %s: %d and %d, want %d and %d", tt.front, tt.all, a, b, tt.a, tt.b)
+			t.Errorf("%+v: %d and %d", tt, a, b)
 		}
 	}
 }

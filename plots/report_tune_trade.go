@@ -95,30 +95,51 @@ func (t *tuneDocument) matterFinding() string {
 	return out
 }
 
-// mainAims are the two aims that decide most among the undominated candidates, as rows of
-// weights.csv in their order there; of equals those that decide most among all.
+// mainAims are the two aims, in the order of weights.csv, with most to trade: between the
+// candidates of the undominated that are best in either, the lesser of what each costs in
+// the other, as parts of the score, is highest. Of equals those that decide most among the
+// undominated, and then among all.
 func (t *tuneDocument) mainAims() (a, b int) {
-	before := func(i, k int) bool {
-		for _, c := range [2]string{"range among the undominated", "range of its part of the score"} {
-			if x, y := numberIn(t.weights.Cell(i, c)), numberIn(t.weights.Cell(k, c)); x != y {
-				return x > y
-			}
+	stake := func(i, k int) float64 {
+		ends := [2]int{t.bestIn(i), t.bestIn(k)}
+		cost := func(aim, from, to int) float64 {
+			c := t.aimColumn(aim)
+			return numberIn(t.weights.Cell(aim, "weight")) * (numberIn(t.front.Cell(to, c)) - numberIn(t.front.Cell(from, c)))
 		}
-		return i < k
+		return math.Min(cost(i, ends[0], ends[1]), cost(k, ends[1], ends[0]))
+	}
+	span := func(i, k int, column string) float64 {
+		return numberIn(t.weights.Cell(i, column)) + numberIn(t.weights.Cell(k, column))
 	}
 	a, b = 0, 1
-	if before(b, a) {
-		a, b = b, a
-	}
-	for i := 2; i < t.aims; i++ {
-		switch {
-		case before(i, a):
-			a, b = i, a
-		case before(i, b):
-			b = i
+	for k := 1; k < t.aims; k++ {
+		for i := range k {
+			better := 0.0
+			for _, d := range [3]float64{stake(i, k) - stake(a, b), span(i, k, "range among the undominated") - span(a, b, "range among the undominated"),
+				span(i, k, "range of its part of the score") - span(a, b, "range of its part of the score")} {
+				if better == 0 {
+					better = d
+				}
+			}
+			if better > 0 {
+				a, b = i, k
+			}
 		}
 	}
-	return min(a, b), max(a, b)
+	return a, b
+}
+
+// bestIn is the row of undominated.csv that is best in an aim; of equals the first, which
+// has the lowest score.
+func (t *tuneDocument) bestIn(aim int) int {
+	c, weight := t.aimColumn(aim), numberIn(t.weights.Cell(aim, "weight"))
+	at := 0
+	for i := range t.front.Rows {
+		if (numberIn(t.front.Cell(i, c))-numberIn(t.front.Cell(at, c)))*weight < 0 {
+			at = i
+		}
+	}
+	return at
 }
 
 // aimColumn is the column of an aim in candidates.csv and undominated.csv, and its title.
@@ -231,17 +252,7 @@ func (t *tuneDocument) tradeFinding(ai, bi int) string {
 		return "One candidate is the best in every aim: there is nothing to be traded."
 	}
 	ca, cb := t.aimColumn(ai), t.aimColumn(bi)
-	// Less is better where the weight is above zero.
-	better := func(row int, x, y float64) bool { return (x-y)*numberIn(t.weights.Cell(row, "weight")) < 0 }
-	bestA, bestB := 0, 0
-	for i := range n {
-		if better(ai, numberIn(t.front.Cell(i, ca)), numberIn(t.front.Cell(bestA, ca))) {
-			bestA = i
-		}
-		if better(bi, numberIn(t.front.Cell(i, cb)), numberIn(t.front.Cell(bestB, cb))) {
-			bestB = i
-		}
-	}
+	bestA, bestB := t.bestIn(ai), t.bestIn(bi)
 	value := func(i int, column string) string {
 		v := Number(t.front.Cell(i, column), unitOf(column), "")
 		if v.Unit != "" {
