@@ -36,6 +36,7 @@ func documentKinds() []documentKind {
 		{"losses", alone(plots.LossesDocument)},
 		{"impact", plots.ImpactDocument},
 		{"hosting", plots.HostingDocument},
+		{"tune", alone(plots.TuneDocument)},
 	}
 }
 

@@ -30,7 +30,7 @@ same inputs, the document does without them.
 
 Exit status: 0 done; 2 the folder is none, half of one, or of another version; 3 the machine
 failed.`,
-		Example: "  yearflow run\n  yearflow report results/base\n  yearflow report results/compare",
+		Example: "  yearflow run\n  yearflow report results/base\n  yearflow compare --case lower-band\n  yearflow report results/compare",
 		Args: func(_ *cobra.Command, args []string) error {
 			if len(args) != 1 {
 				return wrongf("report takes one results folder, such as results/base")

@@ -23,6 +23,7 @@ func documentStudy(t *testing.T) {
 	must(t, exitDone, "losses", "--samples", "-1")
 	must(t, exitDone, "impact", "--case", "more-solar")
 	must(t, exitDone, "hosting")
+	must(t, exitDone, "tune", "--budget", "12")
 }
 
 // tree reads every file below a folder.
@@ -70,6 +71,7 @@ func TestReportOfDocuments(t *testing.T) {
 func reportAgain(t *testing.T) {
 	for _, k := range []struct{ dir, page string }{
 		{"results/compare", "compare.html"}, {"results/losses", "losses.html"}, {"results/impact-more-solar", "impact.html"}, {"results/hosting", "hosting.html"},
+		{"results/tune", "tune.html"},
 	} {
 		t.Run(k.page, func(t *testing.T) {
 			page := filepath.Join(k.dir, k.page)
@@ -102,6 +104,7 @@ func reportOfHalf(t *testing.T) {
 	for _, k := range []struct{ kind, dir, table string }{
 		{"compare", "results/compare", "ranking.csv"}, {"losses", "results/losses", "losses-by-kind.csv"},
 		{"impact", "results/impact-more-solar", "rvc.csv"}, {"hosting", "results/hosting", "candidates.csv"},
+		{"tune", "results/tune", "candidates.csv"},
 	} {
 		table, record := filepath.Join(k.dir, k.table), filepath.Join(k.dir, k.kind+".json")
 		for _, x := range []struct {
