@@ -331,8 +331,15 @@ func (c *compareDocument) groupSection(group, heading string) Section {
 	for _, n := range c.names {
 		t.Columns = append(t.Columns, Column{Head: n})
 	}
+	var extremes []string // quantities that have a place or a time of their own
 	for i, r := range c.compare.Rows {
 		if r[0] != group {
+			continue
+		}
+		if of, is := c.extreme(r[1]); is {
+			if !slices.Contains(extremes, of) {
+				extremes = append(extremes, of)
+			}
 			continue
 		}
 		row := []Value{Word(r[1]), Word(shownUnit(r[2]))}
@@ -356,7 +363,47 @@ func (c *compareDocument) groupSection(group, heading string) Section {
 		return s
 	}
 	s.Blocks = []Block{t}
+	for _, q := range extremes {
+		s.Blocks = append(s.Blocks, c.extremes(q))
+	}
 	return s
+}
+
+// extreme tells whether a row of compare.csv is the place or the time of another, and of
+// which. Side by side, places and times of many cases are wider than a page.
+func (c *compareDocument) extreme(quantity string) (of string, is bool) {
+	for _, end := range [...]string{" place", " time"} {
+		if of, is := strings.CutSuffix(quantity, end); is && c.at(of, c.names[0]).Source != "" {
+			return of, true
+		}
+	}
+	return "", false
+}
+
+// extremes is the table of a quantity with its place and time, a case a row.
+func (c *compareDocument) extremes(quantity string) Table {
+	unit := ""
+	for _, r := range c.compare.Rows {
+		if r[1] == quantity {
+			unit = shownUnit(r[2])
+		}
+	}
+	t := Table{Caption: upper(quantity) + " of each case", Columns: []Column{{Head: "Case", Words: true}, {Head: quantity, Unit: unit}}}
+	ends := []string{}
+	for _, end := range [...]string{"place", "time"} {
+		if c.at(quantity+" "+end, c.names[0]).Source != "" {
+			ends = append(ends, end)
+			t.Columns = append(t.Columns, Column{Head: end, Words: true})
+		}
+	}
+	for _, n := range c.names {
+		row := []Value{Word(n), c.at(quantity, n)}
+		for _, end := range ends {
+			row = append(row, c.at(quantity+" "+end, n))
+		}
+		t.Rows = append(t.Rows, row)
+	}
+	return t
 }
 
 func (c *compareDocument) sheetSections() []Section {
@@ -419,7 +466,7 @@ func deviceSheet(l *Ledger, device string) Table {
 				unit = l.Cell(k, "unit")
 			}
 		}
-		t.Rows = append(t.Rows, append(append(append(row, Word(unit)), cells...), Word(change), Word("")))
+		t.Rows = append(t.Rows, append(append(append(row, Word(shownUnit(unit))), cells...), Word(change), Word("")))
 	}
 	return t
 }

@@ -212,8 +212,20 @@ type cellView struct {
 	First bool
 }
 
-// Tall tells a picture that is higher than wide: on paper it may take more of a page.
-func (b blockView) Tall() bool { return b.Height > b.Width }
+// Long tells a text that may be broken into lines; a number or a name is not.
+func (c cellView) Long() bool { return c.Words && len(c.Show) > 32 }
+
+// Shape is the class of a picture that is nearly as high as wide, or higher: on paper it
+// may take more of a page than two to a page leave it, or its words could not be read.
+func (b blockView) Shape() string {
+	switch {
+	case b.Height > b.Width:
+		return "tall"
+	case 4*b.Height > 3*b.Width:
+		return "square"
+	}
+	return ""
+}
 
 // Cells joins the values of a row with their columns.
 func (b blockView) Cells(row []Value) []cellView {

@@ -28,10 +28,10 @@ func (r *runReport) feederSection() Section {
 		}
 	}
 	s := Section{Heading: "The feeder at a glance", Blocks: []Block{facts}}
-	s.Blocks = append(s.Blocks, r.picture("map")...)
 	if r.plants != nil && len(r.plants.Rows) > 0 {
 		s.Blocks = append(s.Blocks, r.plants.Table("Generators, batteries and chargers over the period", nil, nil, "kind"))
 	}
+	s.Blocks = append(s.Blocks, r.picture("map")...) // last: on paper it wants most of a page
 	return s
 }
 
