@@ -278,3 +278,24 @@ func TestDocumentsOfLittle(t *testing.T) {
 		}
 	}
 }
+
+// The tables of impact and hosting by their heads: a place called 1204 stays a name, a cell
+// such as "at least 3" a word.
+func TestRecordsByUnit(t *testing.T) {
+	for _, tt := range []struct{ header, row, want string }{
+		{"group,criterion,unit,base,with DER,difference,limit,source,verdict,margin,base verdict,where,when",
+			"voltage,hours above A,h,0.0000,+1.2500,,8,7,pass,at least 3,pass,1204,2025",
+			`[{"group":"voltage","criterion":"hours above A","unit":"h","base":0.0000,"with DER":1.2500,"difference":null,"limit":8,"source":"7","verdict":"pass","margin":"at least 3","base verdict":"pass","where":"1204","when":"2025"}]`},
+		{"place,phases,nominal [kV],keeps [kW],breaks at [kW],value,limit,unit,where,sizes tried",
+			"1204,ABC,12.47,500,,101.5,100,%,7,12",
+			`[{"place":"1204","phases":"ABC","nominal [kV]":12.47,"keeps [kW]":500,"breaks at [kW]":null,"value":101.5,"limit":100,"unit":"%","where":"7","sizes tried":"12"}]`},
+		{"group,quantity,unit,base,where", "voltage,lowest place,node.phase,12.3,7.1", `[{"group":"voltage","quantity":"lowest place","unit":"node.phase","base":"12.3","where":"7.1"}]`},
+		{"group,quantity,unit,base,where", "money,cost,USD,12.30,", `[{"group":"money","quantity":"cost","unit":"USD","base":12.30,"where":null}]`},
+		{"quantity,value,unit", "peak,NaN,kW", `[{"quantity":"peak","value":null,"unit":"kW"}]`},
+	} {
+		got, err := json.Marshal(records([][]string{strings.Split(tt.header, ","), strings.Split(tt.row, ",")}))
+		if err != nil || string(got) != tt.want {
+			t.Errorf("%v\n got  %s\n want %s", err, got, tt.want)
+		}
+	}
+}
