@@ -61,15 +61,30 @@ type TapReading struct {
 // (Kersting, ch. 7; the rotation of pairs is common practice). The voltage of a unit
 // across two phases is that of the pair.
 func (c *TapChanger) Measure(v, i complex128) TapReading {
-	local := v / complex(c.PT, 0)
+	local := complex(real(v)/c.PT, imag(v)/c.PT)
 	r := TapReading{Local: cmplx.Abs(local)}
 	r.Relay = r.Local
 	if c.R != 0 || c.X != 0 {
-		sin, cos := math.Sincos(c.Rotation)
-		drop := complex(c.R, c.X) * complex(cos, sin) * i / complex(c.CT, 0)
-		r.Relay = cmplx.Abs(local - drop)
+		z := complex(c.R, c.X)
+		if c.Rotation != 0 {
+			sin, cos := math.Sincos(c.Rotation)
+			z *= complex(cos, sin)
+		}
+		z *= i
+		r.Relay = cmplx.Abs(local - complex(real(z)/c.CT, imag(z)/c.CT))
 	}
 	return r
+}
+
+// Calm tells of most readings that leave a control at rest that they do: nothing is
+// remembered, there are no limits, and the voltage is inside the band by more than Near.
+// Observe then changes nothing and Edge is false; where Calm is false, they say.
+func (c *TapChanger) Calm(s TapState, r TapReading) bool {
+	if s.Ask != 0 || s.Side != 0 || s.Rest != 0 || s.Sequence {
+		return false
+	}
+	half := c.Bandwidth/2 - Near
+	return c.Held || c.LimitHigh != c.LimitHigh && c.LimitLow != c.LimitLow && r.Relay > c.Set-half && r.Relay < c.Set+half
 }
 
 // TapState is the state of a tap changer and its control. The zero value, with a

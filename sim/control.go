@@ -104,5 +104,9 @@ func (c *tapControl) Edge(r Reading) bool {
 // reverse tells whether power flows from the load side back: the sign of the real
 // part of the current, turned by the angle that belongs to its pair.
 func (c *tapControl) reverse(r Reading) bool {
-	return real(r.Volts*cmplx.Conj(r.Amperes*cmplx.Rect(1, c.sheet.Rotation))) < 0
+	i := r.Amperes
+	if c.sheet.Rotation != 0 {
+		i *= cmplx.Rect(1, c.sheet.Rotation)
+	}
+	return real(r.Volts)*real(i)+imag(r.Volts)*imag(i) < 0
 }

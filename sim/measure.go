@@ -172,6 +172,9 @@ func read[S solved](e *Engine, x S, d *device, wall devices.Time) Reading {
 	if t := d.tap; t != nil {
 		r.Volts = across(x, t.from, t.to)
 		r.Amperes = -drawnAt(e, x, t.leaving)
+		if t.forward {
+			return r
+		}
 		r.SourceVolts = across(x, t.sourceFrom, t.sourceTo)
 		r.SourceAmperes = -into(e, x, &t.source)
 		return r

@@ -109,6 +109,7 @@ type tapMeter struct {
 
 	sourceFrom, sourceTo int32 // the same voltage at the source side
 	source               watchedPhase
+	forward              bool // nobody looks at the source side
 }
 
 // part is a share of a coupling's own current.
@@ -313,6 +314,7 @@ func (e *Engine) regulator(i int, o Options) {
 			d.Controller = &reverseControl{*reverse, devices.ReverseState{TapState: position}}
 		default:
 			d.Controller = &tapControl{sheet, position}
+			d.tap.forward = true
 		}
 		e.devices = append(e.devices, d)
 		e.Plan.Devices = append(e.Plan.Devices, d.Device)

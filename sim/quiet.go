@@ -19,30 +19,41 @@ type quietRecorder interface {
 }
 
 // idler is a control that can tell whether a reading leaves it as it is: it asks for
-// nothing, starts or stops no clock, and stands near no edge.
+// nothing, starts or stops no clock, and stands near no edge. Then it says how the device
+// stands, and, of a tap changer, what coarse watches.
 type idler interface {
-	Idle(r Reading, now devices.Time) bool
+	Idle(r Reading, now devices.Time) (s results.DeviceState, watched float64, idle bool)
 }
 
-func (c *tapControl) Idle(r Reading, now devices.Time) bool {
+func (c *tapControl) Idle(r Reading, now devices.Time) (s results.DeviceState, watched float64, idle bool) {
 	m := c.sheet.Measure(r.Volts, r.Amperes)
-	return !c.sheet.Standing(c.state) && !c.sheet.Edge(c.state, m) && c.sheet.Observe(c.state, m, now) == c.state
+	if !c.sheet.Calm(c.state, m) && (c.sheet.Standing(c.state) || c.sheet.Edge(c.state, m) || c.sheet.Observe(c.state, m, now) != c.state) {
+		return s, 0, false
+	}
+	s = results.DeviceState{OutOfBand: c.sheet.OutOfBand(m), AtStop: c.sheet.AtStop(c.state), Reverse: c.reverse(r)}
+	return s, coarseOf(&c.sheet, c.state.Position, m), true
 }
 
-func (c *reverseControl) Idle(r Reading, now devices.Time) bool {
+func (c *reverseControl) Idle(r Reading, now devices.Time) (s results.DeviceState, watched float64, idle bool) {
 	m := c.see(r)
-	return !c.sheet.Standing(c.state) && !c.sheet.Edge(c.state, m) && c.sheet.Observe(c.state, m, now) == c.state
+	if c.sheet.Standing(c.state) || c.sheet.Edge(c.state, m) || c.sheet.Observe(c.state, m, now) != c.state {
+		return s, 0, false
+	}
+	s, _ = c.State(r)
+	return s, coarseOf(&c.sheet.Forward, c.state.Position, c.sheet.Forward.Measure(r.Volts, r.Amperes)), true
 }
 
-func (c *capacitorControl) Idle(r Reading, now devices.Time) bool {
+func (c *capacitorControl) Idle(r Reading, now devices.Time) (s results.DeviceState, watched float64, idle bool) {
 	m := c.reading(r)
-	return !c.sheet.Standing(c.state) && !c.sheet.Edge(c.state, m) && c.sheet.Observe(c.state, m, now) == c.state
+	idle = !c.sheet.Standing(c.state) && !c.sheet.Edge(c.state, m) && c.sheet.Observe(c.state, m, now) == c.state
+	return s, math.NaN(), idle
 }
 
 // quiet hands on runs of steps in which no device acts, asks or changes what it
 // remembers, straight from their lanes: each is one settled interval.
 type quiet struct {
 	recorders []quietRecorder
+	controls  []idler // by device
 	currents  *powerflow.LaneCurrents
 	measured  bool // currents are those of the block at hand
 	out       results.Quiet
@@ -66,9 +77,11 @@ func newQuiet(r *runner) *quiet {
 		q.recorders = append(q.recorders, k)
 	}
 	for _, d := range e.devices {
-		if _, ok := d.Controller.(idler); !ok {
+		c, ok := d.Controller.(idler)
+		if !ok {
 			return nil
 		}
+		q.controls = append(q.controls, c)
 	}
 	q.currents = e.ahead.lanes.NewLaneCurrents()
 	q.lanes.V, q.lanes.Slot = e.ahead.lanes.Voltages()
@@ -143,17 +156,17 @@ func (q *quiet) read(e *Engine, k int, now devices.Time, first bool) bool {
 	}
 	for i, d := range e.devices {
 		x := read(e, lane{e, k}, d, now)
-		if !d.Controller.(idler).Idle(x, now) {
+		s, watched, idle := q.controls[i].Idle(x, now)
+		if !idle {
 			return false
 		}
-		s, _ := d.State(x)
 		s.Hunting = d.hunting.Hunts(now)
 		if first {
 			q.states[i] = s
 		} else if q.states[i] != s {
 			return false
 		}
-		q.coarse[i*vector.Lanes+k] = coarseValue(d, x)
+		q.coarse[i*vector.Lanes+k] = watched
 	}
 	return true
 }

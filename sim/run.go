@@ -450,10 +450,17 @@ func (c *coarse) see(e *Engine) {
 // inputs alone do. It is NaN for what regulates nothing.
 func coarseValue(d *device, r Reading) float64 {
 	sheet, tap := d.tapSheet()
-	if sheet == nil || sheet.Held {
+	if sheet == nil {
 		return math.NaN()
 	}
-	return sheet.Measure(r.Volts, r.Amperes).Relay / sheet.Ratio(tap)
+	return coarseOf(sheet, tap, sheet.Measure(r.Volts, r.Amperes))
+}
+
+func coarseOf(sheet *devices.TapChanger, tap int, m devices.TapReading) float64 {
+	if sheet.Held {
+		return math.NaN()
+	}
+	return m.Relay / sheet.Ratio(tap)
 }
 
 func (c *coarse) take(i int, v float64) {
