@@ -25,7 +25,7 @@ type block struct {
 
 	// Of the Quiet at hand. Powers are W.
 	mask                 uint8
-	seen                 uint8 // lanes in which some voltage is beyond its bounds
+	seen, left           uint8 // lanes in which some voltage is beyond its bounds, or has left its bin
 	flagged              [lossKinds]uint8
 	least, most          [vector.Lanes]float64 // p.u.
 	byKind               [lossKinds][vector.Lanes]float64
@@ -75,6 +75,8 @@ func (b *block) place(l *Lanes) {
 			to = int(l.Slot[p.W])
 		}
 		b.points.Row(int(l.Slot[p.U]), to, p.Base)
+		r := &b.points.Rows[i]
+		r.From, r.To = math.Inf(-1), math.Inf(1)
 	}
 	b.parts = [lossKinds]vector.Dots{}
 	for i := range m.parts {
@@ -114,7 +116,7 @@ func (b *block) read(q *Quiet) {
 	for k := range q.Count {
 		b.mask |= 1 << q.lane(k)
 	}
-	b.seen = b.points.Watch(b.pu, l.V, b.mask, &b.least, &b.most)
+	b.seen, b.left = b.points.Watch(b.pu, l.V, b.mask, &b.least, &b.most)
 	for k := range b.parts {
 		b.flagged[k] = b.parts[k].Watch(b.power[k], l.V, l.Flow, b.mask, &b.byKind[k])
 	}

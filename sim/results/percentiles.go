@@ -77,37 +77,6 @@ func (d *distribution) addLane(pu []float64, lane int, ns int64) {
 	}
 }
 
-// addLanes enters those of all instants of a mask into the histograms; bin is room for
-// their numbers.
-func (d *distribution) addLanes(pu []float64, bin []int32, mask uint8, ns int64) {
-	vector.Bins(bin, pu, binWidth, lastBin)
-	for i := range d.bins {
-		h, b := &d.bins[i], (*[vector.Lanes]int32)(bin[i*vector.Lanes:])
-		if mask != vector.All {
-			for x, k := range b {
-				if mask>>x&1 == 1 {
-					h.enter(int(k), ns)
-				}
-			}
-			continue
-		}
-		low, high := b[0], b[0]
-		for _, k := range b[1:] {
-			low, high = min(low, k), max(high, k)
-		}
-		if low == high {
-			h.enter(int(low), vector.Lanes*ns)
-			continue
-		}
-		h.reach(int(low))
-		h.reach(int(high))
-		for _, k := range b {
-			h.time[int(k)-h.first] += ns
-		}
-		h.total += vector.Lanes * ns
-	}
-}
-
 // row returns where to put the voltages of an interval, nil where histograms take them.
 func (d *distribution) row(ns int64) []float64 {
 	if d.bins == nil && (len(d.spans)+1)*d.points > d.limit {
@@ -263,6 +232,27 @@ func (h *histogram) enter(b int, ns int64) {
 	h.reach(b)
 	h.time[b-h.first] += ns
 	h.total += ns
+}
+
+// enterLanes adds time to the bins of the lanes of a mask.
+func (h *histogram) enterLanes(bin *[vector.Lanes]int32, mask uint8, ns int64) {
+	if mask != vector.All {
+		for x, k := range bin {
+			if mask>>x&1 == 1 {
+				h.enter(int(k), ns)
+			}
+		}
+		return
+	}
+	for _, k := range bin {
+		at := int(k) - h.first
+		if uint(at) >= uint(len(h.time)) {
+			h.grow(int(k))
+			at = int(k) - h.first
+		}
+		h.time[at] += ns
+	}
+	h.total += vector.Lanes * ns
 }
 
 // reach makes room for a bin.

@@ -38,7 +38,7 @@ type Quiet struct {
 }
 
 // lane is that of the k-th step.
-func (q *Quiet) lane(k int) int { return (q.First + k) % vector.Lanes }
+func (q *Quiet) lane(k int) int { return int(uint(q.First+k) % vector.Lanes) }
 
 // Whole tells whether a step must come as Interval and Step, and not in a Quiet: a row
 // of the logs ends with it, or what is asked of it is not in Lanes.

@@ -30,7 +30,14 @@ type watch struct {
 	triples      vector.Triples
 	triple       []float64
 	far, ratioSq [vector.Lanes]float64
-	bins         []int32
+
+	// In histograms: the bin of each point, which stands in its row as a range, and since
+	// when time spent there has not been entered. The clock counts quiet steps.
+	binned bool
+	bins   []int32 // by point and lane
+	bin    []int32
+	since  []int64
+	clock  int64
 
 	step  int64 // ns, length of the steps whose sums stand in the rows of the lists
 	calls int   // since the sums were taken
@@ -44,9 +51,6 @@ type sharedLoss struct {
 	kind  LossKind
 	parts []int
 }
-
-// within is a relative slack of bounds whose quantities are not computed to the bit.
-const within = 1e-11
 
 func newWatch(s *statistics) *watch {
 	m := s.meter
@@ -76,7 +80,8 @@ func newWatch(s *statistics) *watch {
 	}
 	w.bankAmps = vector.Make(phases)
 	w.triple = vector.Make(len(m.three))
-	w.bins = make([]int32, len(w.pu))
+	n := len(m.Points)
+	w.bins, w.bin, w.since = make([]int32, n*vector.Lanes), make([]int32, n), make([]int64, n)
 	return w
 }
 
@@ -108,6 +113,7 @@ func (w *watch) nameParts() {
 func (w *watch) place(l *Lanes) {
 	w.gather()
 	w.block.place(l)
+	w.binned = false
 	m := w.meter
 	w.banks, w.triples = vector.Banks{}, vector.Triples{}
 	phases := 0
@@ -144,7 +150,20 @@ func (w *watch) gather() {
 			r.Sum = 0
 		}
 	}
+	if w.binned {
+		for i := range w.s.dist.bins {
+			w.release(i)
+		}
+	}
 	w.calls = 0
+}
+
+// release enters the time that a point has spent in its bin.
+func (w *watch) release(i int) {
+	if ns := w.clock - w.since[i]; ns > 0 {
+		w.s.dist.bins[i].enter(int(w.bin[i]), ns)
+	}
+	w.since[i] = w.clock
 }
 
 func (w *watch) sharedRow(kind LossKind, part int) int {
@@ -176,14 +195,14 @@ func (w *watch) bound() {
 			w.parts[kind].Rows[i].High = high
 		}
 	}
-	for i, row := range w.sectionRow {
-		w.sections.High[i] = w.boundSquare(row, 1)
+	for i := range w.sectionRow {
+		w.boundSection(i)
 	}
 	for i := range w.coupleRow {
 		w.boundCoupling(i)
 	}
-	for i, row := range w.bankRow {
-		w.banks.High[i] = w.boundSquare(row, 1000)
+	for i := range w.bankRow {
+		w.boundBank(i)
 	}
 }
 
@@ -200,18 +219,30 @@ func (w *watch) boundPoint(i int) {
 	r.Low, r.High = max(p.min, c.LowA-limitSlack), min(p.max, c.HighA+limitSlack)
 }
 
-// boundCoupling: what is compared is the larger of a and a/ratio.
-func (w *watch) boundCoupling(i int) {
-	r, scale := &w.meter.loading[w.coupleRow[i]], 1.0
-	if r.ratioOf >= 0 {
-		scale = min(1, ratioOf(r.reg, w.taps[r.ratioOf]))
-	}
-	w.couplings.High[i] = w.boundSquare(w.coupleRow[i], scale)
+func (w *watch) boundSection(i int) {
+	w.sections.High[i] = w.boundSquare(w.sectionRow[i], 1, math.Sqrt)
 }
 
-// boundSquare is the square of what a row's loading must be above to count, times scale,
-// less some slack.
-func (w *watch) boundSquare(row int, scale float64) float64 {
+func (w *watch) boundBank(i int) {
+	w.banks.High[i] = w.boundSquare(w.bankRow[i], 1000, func(s float64) float64 { return math.Sqrt(s) / 1000 })
+}
+
+func (w *watch) boundCoupling(i int) {
+	r := &w.meter.loading[w.coupleRow[i]]
+	if r.ratioOf < 0 {
+		w.couplings.High[i] = w.boundSquare(w.coupleRow[i], 1, math.Sqrt)
+		return
+	}
+	ratio := ratioOf(r.reg, w.taps[r.ratioOf])
+	w.couplings.High[i] = w.boundSquare(w.coupleRow[i], min(1, ratio), func(s float64) float64 {
+		a := math.Sqrt(s)
+		return max(a, a/ratio)
+	})
+}
+
+// boundSquare is the largest square of which a row's loading, about its root over scale,
+// is no new peak and not above a rating: below zero where everything is.
+func (w *watch) boundSquare(row int, scale float64, loading func(square float64) float64) float64 {
 	r := &w.meter.loading[row]
 	high := w.s.loadPeak[row].least()
 	if r.rating < high { // an unknown one is no number
@@ -220,9 +251,21 @@ func (w *watch) boundSquare(row int, scale float64) float64 {
 	if r.emergency < high {
 		high = r.emergency
 	}
-	if high < 0 {
+	if !(high >= 0) {
 		return -1
 	}
-	high *= scale * (1 - within)
-	return high * high
+	s := high * scale * high * scale
+	if math.IsInf(s, 1) {
+		return s
+	}
+	for s > 0 && loading(s) > high {
+		s = math.Nextafter(s, 0)
+	}
+	for {
+		next := math.Nextafter(s, math.Inf(1))
+		if loading(next) > high {
+			return s
+		}
+		s = next
+	}
 }

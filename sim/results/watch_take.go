@@ -56,13 +56,47 @@ func (s *statistics) quiet(q *Quiet, month *bucket) {
 // distribute enters the voltages into the percentiles.
 func (w *watch) distribute(q *Quiet) {
 	d := w.s.dist
-	if d.bins != nil {
-		d.addLanes(w.pu, w.bins, w.mask, q.Step)
+	if d.bins == nil {
+		for k := range q.Count {
+			d.addLane(w.pu, q.lane(k), q.Step)
+		}
 		return
 	}
-	for k := range q.Count {
-		d.addLane(w.pu, q.lane(k), q.Step)
+	if !w.binned { // nothing stands in a bin yet
+		w.binned = true
+		for i := range w.points.Left {
+			w.points.Left[i], w.since[i] = w.mask, w.clock
+		}
+		w.left = w.mask
 	}
+	then := w.clock
+	w.clock += int64(q.Count) * q.Step
+	if w.left == 0 {
+		return
+	}
+	vector.Bins(w.bins, w.pu, binWidth, lastBin)
+	last := q.lane(q.Count - 1)
+	for i, left := range w.points.Left {
+		if left == 0 {
+			continue
+		}
+		h, b := &d.bins[i], (*[vector.Lanes]int32)(w.bins[i*vector.Lanes:])
+		if ns := then - w.since[i]; ns > 0 {
+			h.enter(int(w.bin[i]), ns)
+		}
+		w.since[i] = w.clock
+		h.enterLanes(b, w.mask, q.Step)
+		if w.bin[i] != b[last] || math.IsInf(w.points.Rows[i].To, 1) {
+			w.stay(i, b[last])
+		}
+	}
+}
+
+// stay draws the range of a point's bin, less than rounding makes of its edges.
+func (w *watch) stay(i int, bin int32) {
+	w.bin[i] = bin
+	r := &w.points.Rows[i]
+	r.From, r.To = float64(bin)*binWidth*(1+1e-14), float64(bin+1)*binWidth*(1-1e-14)
 }
 
 // voltages looks closer at what is flagged.
@@ -198,7 +232,7 @@ func (w *watch) loadings(q *Quiet) {
 		for i, flag := range w.sections.Flags {
 			if flag != 0 {
 				w.loading(q, w.sectionRow[i])
-				w.sections.High[i] = w.boundSquare(w.sectionRow[i], 1)
+				w.boundSection(i)
 			}
 		}
 	}
@@ -218,7 +252,7 @@ func (w *watch) loadings(q *Quiet) {
 		for i, flag := range w.banks.Flags {
 			if flag != 0 {
 				w.loading(q, w.bankRow[i])
-				w.banks.High[i] = w.boundSquare(w.bankRow[i], 1000)
+				w.boundBank(i)
 			}
 		}
 	}
@@ -270,9 +304,11 @@ func unbalanceBetween(far float64) (low, high float64) {
 	if !(far < 0.2) {
 		return 0, math.Inf(1)
 	}
-	spread := 0.07*far*far + far*far*far + 1e-14
+	spread := unbalanceSpread(far)
 	return far/2 - spread, far/2 + spread
 }
+
+func unbalanceSpread(far float64) float64 { return 0.07*far*far + far*far*far + 1e-14 }
 
 // unbalances looks closer at lanes that may have a new largest unbalance or negative
 // sequence, or that may be on either side of 3 %.
@@ -287,8 +323,8 @@ func (w *watch) unbalances(q *Quiet) {
 		if w.far[x] >= 0 {
 			low, high := unbalanceBetween(w.far[x])
 			switch {
-			case 100*high > s.unbalance.least()*(1-within) || 100*low <= 3*(1+within) && 100*high > 3*(1-within):
-				u, node := w.unbalance(q, x, low)
+			case 100*high > s.unbalance.least() || 100*low <= 3 && 100*high > 3:
+				u, node := w.unbalance(q, x)
 				if node < 0 {
 					break
 				}
@@ -316,12 +352,16 @@ func (w *watch) unbalances(q *Quiet) {
 // ratioSlack is more than rounding makes of |V2|/|V1|.
 const ratioSlack = 1e-13
 
-// unbalance returns the largest unbalance of a lane, %, and its node. That is a node
-// whose unbalance may be low or more.
-func (w *watch) unbalance(q *Quiet, lane int, low float64) (float64, int) {
+// unbalance returns the largest unbalance of a lane, %, and its node.
+func (w *watch) unbalance(q *Quiet, lane int) (float64, int) {
+	// Nodes below this have less than the one that is furthest out at least has.
+	least := math.Inf(-1)
+	if far := w.far[lane]; far < 0.2 {
+		least = far - 5*unbalanceSpread(far)
+	}
 	worst, at := -1.0, -1
 	for k, u := range w.meter.three {
-		if _, high := unbalanceBetween(w.triple[k*vector.Width+lane]); high < low {
+		if w.triple[k*vector.Width+lane] < least {
 			continue
 		}
 		if d, ok := unbalance(w.voltage(q, u[0], lane), w.voltage(q, u[1], lane), w.voltage(q, u[2], lane)); ok && d > worst {

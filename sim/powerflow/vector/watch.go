@@ -14,18 +14,19 @@ type Lengths struct {
 	wide  int
 	Rows  []LengthRow
 	Flags []uint8
+	Left  []uint8 // flags of the other range
 }
 
-// LengthRow has what a magnitude is divided by, the bounds, and the sum over all lanes
-// and calls.
-type LengthRow struct{ Base, Low, High, Sum float64 }
+// LengthRow has what a magnitude is divided by, the bounds, a range besides, and the
+// sum over all lanes and calls.
+type LengthRow struct{ Base, Low, High, From, To, Sum float64 }
 
 // Row appends a magnitude, of the value from where to is negative.
 func (l *Lengths) Row(from, to int, base float64) {
 	l.index = append(l.index, int32(from*Stride), offset(to))
 	l.wide = max(l.wide, from+1, to+1)
 	l.Rows = append(l.Rows, LengthRow{Base: base})
-	l.Flags = append(l.Flags, 0)
+	l.Flags, l.Left = append(l.Flags, 0), append(l.Left, 0)
 }
 
 func offset(value int) int32 {
@@ -36,17 +37,19 @@ func offset(value int) int32 {
 }
 
 // Watch sets out to the magnitudes, Lanes numbers a row, and least and most to the
-// smallest and the largest of each lane, whatever the mask. It returns all flags in one.
-// The operations are √(re² + im²)/Base, each rounded.
-func (l *Lengths) Watch(out, v []float64, mask uint8, least, most *[Lanes]float64) uint8 {
+// smallest and the largest of each lane, whatever the mask. It returns all flags in one,
+// beyond those of the bounds and left those of the range. The operations are
+// √(re² + im²)/Base, each rounded.
+func (l *Lengths) Watch(out, v []float64, mask uint8, least, most *[Lanes]float64) (beyond, left uint8) {
 	n := len(l.Rows)
 	if n == 0 {
-		return 0
+		return 0, 0
 	}
-	if len(v) < l.wide*Width || len(out) < n*Lanes || len(l.Flags) != n || len(l.index) != 2*n {
+	if len(v) < l.wide*Width || len(out) < n*Lanes || len(l.Flags) != n || len(l.Left) != n || len(l.index) != 2*n {
 		panic("vector: magnitudes reach beyond the values")
 	}
-	return uint8(lengths(&out[0], &v[0], &l.index[0], &l.Rows[0].Base, &l.Flags[0], &masks[mask][0], &least[0], &most[0], n))
+	found := lengths(&out[0], &v[0], &l.index[0], &l.Rows[0].Base, &l.Flags[0], &l.Left[0], &masks[mask][0], &least[0], &most[0], n)
+	return uint8(found), uint8(found >> 8)
 }
 
 // Dots is a list of real powers, each Σ Re(V·conj(I)) over pairs of a voltage and a
@@ -92,7 +95,8 @@ func (d *Dots) Watch(out, v, i []float64, mask uint8, total *[Lanes]float64) uin
 	return uint8(dots(&out[0], &v[0], first(i), &d.index[0], &d.Rows[0].High, &d.Flags[0], &masks[mask][0], &total[0], n))
 }
 
-// Squares is a list of squares of magnitudes, each the larger one of two values.
+// Squares is a list of squares of magnitudes, re² + im², each the larger one of two
+// values. Every operation is rounded.
 type Squares struct {
 	index []int32
 	wide  int
@@ -121,7 +125,7 @@ func (s *Squares) Watch(x []float64, mask uint8) uint8 {
 }
 
 // Banks is a list of squares of apparent powers, |Σ V·conj(I)|² over pairs of a voltage
-// and a current.
+// and a current. Every operation is rounded.
 type Banks struct {
 	index        []int32
 	wideV, wideI int

@@ -2,14 +2,14 @@
 
 package vector
 
-func lengths(out, v *float64, index *int32, rows *float64, flags *uint8, mask *uint64, least, most *float64, n int) uint64 {
+func lengths(out, v *float64, index *int32, rows *float64, flags, left *uint8, mask *uint64, least, most *float64, n int) uint64 {
 	switch kernel {
 	case 2:
-		return lengths512(out, v, index, rows, flags, mask, least, most, n)
+		return lengths512(out, v, index, rows, flags, left, mask, least, most, n)
 	case 1:
-		return lengths256(out, v, index, rows, flags, mask, least, most, n)
+		return lengths256(out, v, index, rows, flags, left, mask, least, most, n)
 	}
-	return plainLengths(out, v, index, rows, flags, mask, least, most, n)
+	return plainLengths(out, v, index, rows, flags, left, mask, least, most, n)
 }
 
 func dots(out, v, i *float64, index *int32, rows *float64, flags *uint8, mask *uint64, total *float64, n int) uint64 {

@@ -4,16 +4,16 @@
 
 #include "textflag.h"
 
-// func lengths256(out *float64, v *float64, index *int32, rows *float64, flags *uint8, mask *uint64, least *float64, most *float64, n int) uint64
+// func lengths256(out *float64, v *float64, index *int32, rows *float64, flags *uint8, left *uint8, mask *uint64, least *float64, most *float64, n int) uint64
 // Requires: AVX, AVX2, SSE2
-TEXT ·lengths256(SB), NOSPLIT, $0-80
+TEXT ·lengths256(SB), NOSPLIT, $0-88
 	MOVQ         out+0(FP), AX
 	MOVQ         v+8(FP), CX
 	MOVQ         index+16(FP), DX
 	MOVQ         rows+24(FP), BX
-	MOVQ         n+64(FP), SI
+	MOVQ         n+72(FP), SI
 	MOVQ         flags+32(FP), R8
-	MOVQ         mask+40(FP), DI
+	MOVQ         mask+48(FP), DI
 	XORQ         R10, R10
 	XORQ         R9, R9
 	VMOVUPD      (DI), Y0
@@ -23,6 +23,7 @@ TEXT ·lengths256(SB), NOSPLIT, $0-80
 	VMOVMSKPD    Y0, R11
 	SHLL         $0x04, R11
 	ORQ          R11, R9
+	MOVQ         left+40(FP), R12
 	MOVQ         $0x7ff0000000000000, R11
 	MOVQ         R11, X0
 	VBROADCASTSD X0, Y0
@@ -37,20 +38,20 @@ TEXT ·lengths256(SB), NOSPLIT, $0-80
 	VBROADCASTSD X3, Y3
 
 row:
-	MOVLQSX (DX), R12
-	MOVLQSX 4(DX), R13
+	MOVLQSX (DX), R13
+	MOVLQSX 4(DX), R14
 	ADDQ    $0x08, DX
 	XORQ    R11, R11
-	VMOVUPD (CX)(R12*1), Y4
-	VMOVUPD 64(CX)(R12*1), Y6
-	VMOVUPD 32(CX)(R12*1), Y5
-	VMOVUPD 96(CX)(R12*1), Y7
-	TESTQ   R13, R13
+	VMOVUPD (CX)(R13*1), Y4
+	VMOVUPD 64(CX)(R13*1), Y6
+	VMOVUPD 32(CX)(R13*1), Y5
+	VMOVUPD 96(CX)(R13*1), Y7
+	TESTQ   R14, R14
 	JS      ground
-	VSUBPD  (CX)(R13*1), Y4, Y4
-	VSUBPD  64(CX)(R13*1), Y6, Y6
-	VSUBPD  32(CX)(R13*1), Y5, Y5
-	VSUBPD  96(CX)(R13*1), Y7, Y7
+	VSUBPD  (CX)(R14*1), Y4, Y4
+	VSUBPD  64(CX)(R14*1), Y6, Y6
+	VSUBPD  32(CX)(R14*1), Y5, Y5
+	VSUBPD  96(CX)(R14*1), Y7, Y7
 
 ground:
 	VBROADCASTSD (BX), Y8
@@ -72,20 +73,46 @@ ground:
 	VMAXPD       Y3, Y5, Y3
 	VBROADCASTSD 8(BX), Y8
 	VCMPPD       $0x09, Y8, Y4, Y6
-	VMOVMSKPD    Y6, R12
-	ORQ          R12, R11
+	VMOVMSKPD    Y6, R13
+	ORQ          R13, R11
 	VCMPPD       $0x09, Y8, Y5, Y6
-	VMOVMSKPD    Y6, R12
-	SHLL         $0x04, R12
-	ORQ          R12, R11
+	VMOVMSKPD    Y6, R13
+	SHLL         $0x04, R13
+	ORQ          R13, R11
 	VBROADCASTSD 16(BX), Y8
 	VCMPPD       $0x06, Y8, Y4, Y6
-	VMOVMSKPD    Y6, R12
-	ORQ          R12, R11
+	VMOVMSKPD    Y6, R13
+	ORQ          R13, R11
 	VCMPPD       $0x06, Y8, Y5, Y6
-	VMOVMSKPD    Y6, R12
-	SHLL         $0x04, R12
-	ORQ          R12, R11
+	VMOVMSKPD    Y6, R13
+	SHLL         $0x04, R13
+	ORQ          R13, R11
+	ANDQ         R9, R11
+	ORQ          R11, R10
+	MOVB         R11, (R8)
+	INCQ         R8
+	XORQ         R11, R11
+	VBROADCASTSD 24(BX), Y8
+	VCMPPD       $0x09, Y8, Y4, Y6
+	VMOVMSKPD    Y6, R13
+	ORQ          R13, R11
+	VCMPPD       $0x09, Y8, Y5, Y6
+	VMOVMSKPD    Y6, R13
+	SHLL         $0x04, R13
+	ORQ          R13, R11
+	VBROADCASTSD 32(BX), Y8
+	VCMPPD       $0x06, Y8, Y4, Y6
+	VMOVMSKPD    Y6, R13
+	ORQ          R13, R11
+	VCMPPD       $0x06, Y8, Y5, Y6
+	VMOVMSKPD    Y6, R13
+	SHLL         $0x04, R13
+	ORQ          R13, R11
+	ANDQ         R9, R11
+	MOVB         R11, (R12)
+	INCQ         R12
+	SHLQ         $0x08, R11
+	ORQ          R11, R10
 	VANDPD       (DI), Y4, Y4
 	VANDPD       32(DI), Y5, Y5
 	VADDPD       Y5, Y4, Y4
@@ -93,23 +120,19 @@ ground:
 	VADDPD       X4, X5, X5
 	VUNPCKHPD    X5, X5, X4
 	VADDSD       X4, X5, X5
-	VADDSD       24(BX), X5, X5
-	VMOVSD       X5, 24(BX)
-	ANDQ         R9, R11
-	ORQ          R11, R10
-	MOVB         R11, (R8)
-	INCQ         R8
-	ADDQ         $0x20, BX
+	VADDSD       40(BX), X5, X5
+	VMOVSD       X5, 40(BX)
+	ADDQ         $0x30, BX
 	ADDQ         $0x40, AX
 	DECQ         SI
 	JNZ          row
-	MOVQ         least+48(FP), R13
-	VMOVUPD      Y0, (R13)
-	VMOVUPD      Y1, 32(R13)
-	MOVQ         most+56(FP), R13
-	VMOVUPD      Y2, (R13)
-	VMOVUPD      Y3, 32(R13)
-	MOVQ         R10, ret+72(FP)
+	MOVQ         least+56(FP), R14
+	VMOVUPD      Y0, (R14)
+	VMOVUPD      Y1, 32(R14)
+	MOVQ         most+64(FP), R14
+	VMOVUPD      Y2, (R14)
+	VMOVUPD      Y3, 32(R14)
+	MOVQ         R10, ret+80(FP)
 	VZEROUPPER
 	RET
 
@@ -202,7 +225,7 @@ end:
 	RET
 
 // func squares256(x *float64, index *int32, high *float64, flags *uint8, mask *uint64, n int) uint64
-// Requires: AVX, FMA3
+// Requires: AVX
 TEXT ·squares256(SB), NOSPLIT, $0-56
 	MOVQ      x+0(FP), AX
 	MOVQ      index+8(FP), CX
@@ -230,11 +253,13 @@ row:
 	VMOVUPD      (AX)(R10*1), Y0
 	VMOVUPD      64(AX)(R10*1), Y1
 	VMULPD       Y1, Y1, Y1
-	VFMADD231PD  Y0, Y0, Y1
+	VMULPD       Y0, Y0, Y0
+	VADDPD       Y1, Y0, Y1
 	VMOVUPD      (AX)(R11*1), Y0
 	VMOVUPD      64(AX)(R11*1), Y2
 	VMULPD       Y2, Y2, Y2
-	VFMADD231PD  Y0, Y0, Y2
+	VMULPD       Y0, Y0, Y0
+	VADDPD       Y2, Y0, Y2
 	VMAXPD       Y1, Y2, Y1
 	VCMPPD       $0x06, Y3, Y1, Y0
 	VMOVMSKPD    Y0, R12
@@ -242,11 +267,13 @@ row:
 	VMOVUPD      32(AX)(R10*1), Y0
 	VMOVUPD      96(AX)(R10*1), Y1
 	VMULPD       Y1, Y1, Y1
-	VFMADD231PD  Y0, Y0, Y1
+	VMULPD       Y0, Y0, Y0
+	VADDPD       Y1, Y0, Y1
 	VMOVUPD      32(AX)(R11*1), Y0
 	VMOVUPD      96(AX)(R11*1), Y2
 	VMULPD       Y2, Y2, Y2
-	VFMADD231PD  Y0, Y0, Y2
+	VMULPD       Y0, Y0, Y0
+	VADDPD       Y2, Y0, Y2
 	VMAXPD       Y1, Y2, Y1
 	VCMPPD       $0x06, Y3, Y1, Y0
 	VMOVMSKPD    Y0, R10
@@ -263,7 +290,7 @@ row:
 	RET
 
 // func banks256(v *float64, i *float64, index *int32, high *float64, flags *uint8, mask *uint64, n int) uint64
-// Requires: AVX, FMA3
+// Requires: AVX
 TEXT ·banks256(SB), NOSPLIT, $0-64
 	MOVQ      v+0(FP), AX
 	MOVQ      i+8(FP), CX
@@ -294,34 +321,44 @@ row:
 	JZ      end
 
 pair:
-	MOVLQSX      (DX), R11
-	MOVLQSX      4(DX), R12
-	ADDQ         $0x08, DX
-	VMOVUPD      (AX)(R11*1), Y4
-	VMOVUPD      64(AX)(R11*1), Y5
-	VFMADD231PD  (CX)(R12*1), Y4, Y0
-	VFMADD231PD  64(CX)(R12*1), Y5, Y0
-	VFMADD231PD  (CX)(R12*1), Y5, Y2
-	VFNMADD231PD 64(CX)(R12*1), Y4, Y2
-	VMOVUPD      32(AX)(R11*1), Y4
-	VMOVUPD      96(AX)(R11*1), Y5
-	VFMADD231PD  32(CX)(R12*1), Y4, Y1
-	VFMADD231PD  96(CX)(R12*1), Y5, Y1
-	VFMADD231PD  32(CX)(R12*1), Y5, Y3
-	VFNMADD231PD 96(CX)(R12*1), Y4, Y3
-	DECQ         R13
-	JNZ          pair
+	MOVLQSX (DX), R11
+	MOVLQSX 4(DX), R12
+	ADDQ    $0x08, DX
+	VMOVUPD (AX)(R11*1), Y4
+	VMOVUPD 64(AX)(R11*1), Y5
+	VMULPD  (CX)(R12*1), Y4, Y6
+	VMULPD  64(CX)(R12*1), Y5, Y7
+	VADDPD  Y7, Y6, Y6
+	VADDPD  Y6, Y0, Y0
+	VMULPD  (CX)(R12*1), Y5, Y6
+	VMULPD  64(CX)(R12*1), Y4, Y7
+	VSUBPD  Y7, Y6, Y6
+	VADDPD  Y6, Y2, Y2
+	VMOVUPD 32(AX)(R11*1), Y4
+	VMOVUPD 96(AX)(R11*1), Y5
+	VMULPD  32(CX)(R12*1), Y4, Y6
+	VMULPD  96(CX)(R12*1), Y5, Y7
+	VADDPD  Y7, Y6, Y6
+	VADDPD  Y6, Y1, Y1
+	VMULPD  32(CX)(R12*1), Y5, Y6
+	VMULPD  96(CX)(R12*1), Y4, Y7
+	VSUBPD  Y7, Y6, Y6
+	VADDPD  Y6, Y3, Y3
+	DECQ    R13
+	JNZ     pair
 
 end:
 	VBROADCASTSD (BX), Y4
 	ADDQ         $0x08, BX
 	VMULPD       Y2, Y2, Y2
-	VFMADD231PD  Y0, Y0, Y2
+	VMULPD       Y0, Y0, Y0
+	VADDPD       Y2, Y0, Y2
 	VCMPPD       $0x06, Y4, Y2, Y0
 	VMOVMSKPD    Y0, R11
 	ORQ          R11, DI
 	VMULPD       Y3, Y3, Y3
-	VFMADD231PD  Y1, Y1, Y3
+	VMULPD       Y1, Y1, Y1
+	VADDPD       Y3, Y1, Y3
 	VCMPPD       $0x06, Y4, Y3, Y0
 	VMOVMSKPD    Y0, R11
 	SHLL         $0x04, R11
@@ -499,21 +536,22 @@ row:
 	VZEROUPPER
 	RET
 
-// func lengths512(out *float64, v *float64, index *int32, rows *float64, flags *uint8, mask *uint64, least *float64, most *float64, n int) uint64
+// func lengths512(out *float64, v *float64, index *int32, rows *float64, flags *uint8, left *uint8, mask *uint64, least *float64, most *float64, n int) uint64
 // Requires: AVX, AVX512DQ, AVX512F, SSE2
-TEXT ·lengths512(SB), NOSPLIT, $0-80
+TEXT ·lengths512(SB), NOSPLIT, $0-88
 	MOVQ         out+0(FP), AX
 	MOVQ         v+8(FP), CX
 	MOVQ         index+16(FP), DX
 	MOVQ         rows+24(FP), BX
-	MOVQ         n+64(FP), SI
+	MOVQ         n+72(FP), SI
 	MOVQ         flags+32(FP), R8
-	MOVQ         mask+40(FP), DI
+	MOVQ         mask+48(FP), DI
 	XORQ         R10, R10
 	XORQ         R9, R9
 	VMOVUPD      (DI), Z0
 	VPMOVQ2M     Z0, K1
 	KMOVB        K1, R9
+	MOVQ         left+40(FP), R12
 	MOVQ         $0x7ff0000000000000, R11
 	MOVQ         R11, X0
 	VBROADCASTSD X0, Z0
@@ -522,16 +560,16 @@ TEXT ·lengths512(SB), NOSPLIT, $0-80
 	VBROADCASTSD X1, Z1
 
 row:
-	MOVLQSX (DX), R12
-	MOVLQSX 4(DX), R13
+	MOVLQSX (DX), R13
+	MOVLQSX 4(DX), R14
 	ADDQ    $0x08, DX
 	XORQ    R11, R11
-	VMOVUPD (CX)(R12*1), Z2
-	VMOVUPD 64(CX)(R12*1), Z3
-	TESTQ   R13, R13
+	VMOVUPD (CX)(R13*1), Z2
+	VMOVUPD 64(CX)(R13*1), Z3
+	TESTQ   R14, R14
 	JS      ground
-	VSUBPD  (CX)(R13*1), Z2, Z2
-	VSUBPD  64(CX)(R13*1), Z3, Z3
+	VSUBPD  (CX)(R14*1), Z2, Z2
+	VSUBPD  64(CX)(R14*1), Z3, Z3
 
 ground:
 	VBROADCASTSD  (BX), Z4
@@ -545,12 +583,30 @@ ground:
 	VMAXPD        Z1, Z2, Z1
 	VBROADCASTSD  8(BX), Z4
 	VCMPPD        $0x09, Z4, Z2, K1
-	KMOVB         K1, R12
-	ORQ           R12, R11
+	KMOVB         K1, R13
+	ORQ           R13, R11
 	VBROADCASTSD  16(BX), Z4
 	VCMPPD        $0x06, Z4, Z2, K1
-	KMOVB         K1, R12
-	ORQ           R12, R11
+	KMOVB         K1, R13
+	ORQ           R13, R11
+	ANDQ          R9, R11
+	ORQ           R11, R10
+	MOVB          R11, (R8)
+	INCQ          R8
+	XORQ          R11, R11
+	VBROADCASTSD  24(BX), Z4
+	VCMPPD        $0x09, Z4, Z2, K1
+	KMOVB         K1, R13
+	ORQ           R13, R11
+	VBROADCASTSD  32(BX), Z4
+	VCMPPD        $0x06, Z4, Z2, K1
+	KMOVB         K1, R13
+	ORQ           R13, R11
+	ANDQ          R9, R11
+	MOVB          R11, (R12)
+	INCQ          R12
+	SHLQ          $0x08, R11
+	ORQ           R11, R10
 	VPANDQ        (DI), Z2, Z2
 	VEXTRACTF64X4 $0x01, Z2, Y3
 	VADDPD        Y2, Y3, Y3
@@ -558,21 +614,17 @@ ground:
 	VADDPD        X3, X2, X2
 	VUNPCKHPD     X2, X2, X3
 	VADDSD        X3, X2, X2
-	VADDSD        24(BX), X2, X2
-	VMOVSD        X2, 24(BX)
-	ANDQ          R9, R11
-	ORQ           R11, R10
-	MOVB          R11, (R8)
-	INCQ          R8
-	ADDQ          $0x20, BX
+	VADDSD        40(BX), X2, X2
+	VMOVSD        X2, 40(BX)
+	ADDQ          $0x30, BX
 	ADDQ          $0x40, AX
 	DECQ          SI
 	JNZ           row
-	MOVQ          least+48(FP), R13
-	VMOVUPD       Z0, (R13)
-	MOVQ          most+56(FP), R13
-	VMOVUPD       Z1, (R13)
-	MOVQ          R10, ret+72(FP)
+	MOVQ          least+56(FP), R14
+	VMOVUPD       Z0, (R14)
+	MOVQ          most+64(FP), R14
+	VMOVUPD       Z1, (R14)
+	MOVQ          R10, ret+80(FP)
 	VZEROUPPER
 	RET
 
@@ -670,11 +722,13 @@ row:
 	VMOVUPD      (AX)(R10*1), Z0
 	VMOVUPD      64(AX)(R10*1), Z1
 	VMULPD       Z1, Z1, Z1
-	VFMADD231PD  Z0, Z0, Z1
+	VMULPD       Z0, Z0, Z0
+	VADDPD       Z1, Z0, Z1
 	VMOVUPD      (AX)(R11*1), Z0
 	VMOVUPD      64(AX)(R11*1), Z2
 	VMULPD       Z2, Z2, Z2
-	VFMADD231PD  Z0, Z0, Z2
+	VMULPD       Z0, Z0, Z0
+	VADDPD       Z2, Z0, Z2
 	VMAXPD       Z1, Z2, Z1
 	VCMPPD       $0x06, Z3, Z1, K1
 	KMOVB        K1, R10
@@ -715,23 +769,28 @@ row:
 	JZ      end
 
 pair:
-	MOVLQSX      (DX), R11
-	MOVLQSX      4(DX), R12
-	ADDQ         $0x08, DX
-	VMOVUPD      (AX)(R11*1), Z0
-	VMOVUPD      64(AX)(R11*1), Z3
-	VFMADD231PD  (CX)(R12*1), Z0, Z1
-	VFMADD231PD  64(CX)(R12*1), Z3, Z1
-	VFMADD231PD  (CX)(R12*1), Z3, Z2
-	VFNMADD231PD 64(CX)(R12*1), Z0, Z2
-	DECQ         R13
-	JNZ          pair
+	MOVLQSX (DX), R11
+	MOVLQSX 4(DX), R12
+	ADDQ    $0x08, DX
+	VMOVUPD (AX)(R11*1), Z0
+	VMOVUPD 64(AX)(R11*1), Z3
+	VMULPD  (CX)(R12*1), Z0, Z4
+	VMULPD  64(CX)(R12*1), Z3, Z5
+	VADDPD  Z5, Z4, Z4
+	VADDPD  Z4, Z1, Z1
+	VMULPD  (CX)(R12*1), Z3, Z4
+	VMULPD  64(CX)(R12*1), Z0, Z5
+	VSUBPD  Z5, Z4, Z4
+	VADDPD  Z4, Z2, Z2
+	DECQ    R13
+	JNZ     pair
 
 end:
 	VBROADCASTSD (BX), Z0
 	ADDQ         $0x08, BX
 	VMULPD       Z2, Z2, Z2
-	VFMADD231PD  Z1, Z1, Z2
+	VMULPD       Z1, Z1, Z1
+	VADDPD       Z2, Z1, Z2
 	VCMPPD       $0x06, Z0, Z2, K1
 	KMOVB        K1, R11
 	ORQ          R11, DI

@@ -2,8 +2,8 @@
 
 package vector
 
-func lengths(out, v *float64, index *int32, rows *float64, flags *uint8, mask *uint64, least, most *float64, n int) uint64 {
-	return plainLengths(out, v, index, rows, flags, mask, least, most, n)
+func lengths(out, v *float64, index *int32, rows *float64, flags, left *uint8, mask *uint64, least, most *float64, n int) uint64 {
+	return plainLengths(out, v, index, rows, flags, left, mask, least, most, n)
 }
 
 func dots(out, v, i *float64, index *int32, rows *float64, flags *uint8, mask *uint64, total *float64, n int) uint64 {

@@ -30,7 +30,7 @@ func live(m *[Lanes]uint64) (bits uint8) {
 	return bits
 }
 
-func plainLengths(out, v *float64, index *int32, rows *float64, flags *uint8, mask *uint64, least, most *float64, n int) (found uint64) {
+func plainLengths(out, v *float64, index *int32, rows *float64, flags, left *uint8, mask *uint64, least, most *float64, n int) (found uint64) {
 	m := (*[Lanes]uint64)(unsafe.Pointer(mask))
 	alive := live(m)
 	low, high := numbers(least, 0), numbers(most, 0)
@@ -42,7 +42,7 @@ func plainLengths(out, v *float64, index *int32, rows *float64, flags *uint8, ma
 		row := (*LengthRow)(unsafe.Add(unsafe.Pointer(rows), k*int(unsafe.Sizeof(LengthRow{}))))
 		a, to := value(v, r.next()), r.next()
 		x := numbers(out, k)
-		flag := uint8(0)
+		flag, out := uint8(0), uint8(0)
 		for l := range Lanes {
 			re, im := a[l], a[Lanes+l]
 			if to >= 0 {
@@ -60,9 +60,12 @@ func plainLengths(out, v *float64, index *int32, rows *float64, flags *uint8, ma
 			if !(d >= row.Low) || !(d <= row.High) {
 				flag |= 1 << l
 			}
+			if !(d >= row.From) || !(d <= row.To) {
+				out |= 1 << l
+			}
 		}
 		row.Sum += gather(x, m)
-		found |= put(flags, k, flag&alive)
+		found |= put(flags, k, flag&alive) | put(left, k, out&alive)<<8
 	}
 	return found
 }
@@ -107,8 +110,8 @@ func plainSquares(x *float64, index *int32, high *float64, flags *uint8, mask *u
 		a, b, bound := value(x, r.next()), value(x, r.next()), r.number()
 		flag := uint8(0)
 		for l := range Lanes {
-			s := math.FMA(a[l], a[l], a[Lanes+l]*a[Lanes+l])
-			if t := math.FMA(b[l], b[l], b[Lanes+l]*b[Lanes+l]); t > s {
+			s := float64(a[l]*a[l]) + float64(a[Lanes+l]*a[Lanes+l])
+			if t := float64(b[l]*b[l]) + float64(b[Lanes+l]*b[Lanes+l]); t > s {
 				s = t
 			}
 			if !(s <= bound) {
@@ -128,16 +131,14 @@ func plainBanks(v, i *float64, index *int32, high *float64, flags *uint8, mask *
 		for range r.next() {
 			a, b := value(v, r.next()), value(i, r.next())
 			for l := range Lanes {
-				re[l] = math.FMA(a[l], b[l], re[l])
-				re[l] = math.FMA(a[Lanes+l], b[Lanes+l], re[l])
-				im[l] = math.FMA(a[Lanes+l], b[l], im[l])
-				im[l] = math.FMA(-a[l], b[Lanes+l], im[l])
+				re[l] += float64(a[l]*b[l]) + float64(a[Lanes+l]*b[Lanes+l])
+				im[l] += float64(a[Lanes+l]*b[l]) - float64(a[l]*b[Lanes+l])
 			}
 		}
 		bound := r.number()
 		flag := uint8(0)
 		for l := range Lanes {
-			if !(math.FMA(re[l], re[l], im[l]*im[l]) <= bound) {
+			if !(float64(re[l]*re[l])+float64(im[l]*im[l]) <= bound) {
 				flag |= 1 << l
 			}
 		}

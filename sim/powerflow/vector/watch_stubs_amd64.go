@@ -7,7 +7,7 @@ package vector
 // lengths256 is the kernel of Lengths.Watch.
 //
 //go:noescape
-func lengths256(out *float64, v *float64, index *int32, rows *float64, flags *uint8, mask *uint64, least *float64, most *float64, n int) uint64
+func lengths256(out *float64, v *float64, index *int32, rows *float64, flags *uint8, left *uint8, mask *uint64, least *float64, most *float64, n int) uint64
 
 // dots256 is the kernel of Dots.Watch.
 //
@@ -37,7 +37,7 @@ func bins256(out *int32, x *float64, scale *float64, n int)
 // lengths512 is the kernel of Lengths.Watch.
 //
 //go:noescape
-func lengths512(out *float64, v *float64, index *int32, rows *float64, flags *uint8, mask *uint64, least *float64, most *float64, n int) uint64
+func lengths512(out *float64, v *float64, index *int32, rows *float64, flags *uint8, left *uint8, mask *uint64, least *float64, most *float64, n int) uint64
 
 // dots512 is the kernel of Dots.Watch.
 //

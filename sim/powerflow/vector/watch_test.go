@@ -58,16 +58,17 @@ func watchers(random func() *rand.Rand, wild bool) (out []twin) {
 		var l Lengths
 		for k := range n {
 			l.Row(rng.IntN(n), rng.IntN(n+1)-1, 1+rng.Float64())
-			l.Rows[k].Low, l.Rows[k].High, l.Rows[k].Sum = rng.Float64(), 3*rng.Float64(), rng.Float64()
+			r := &l.Rows[k]
+			r.Low, r.High, r.From, r.To, r.Sum = rng.Float64(), 3*rng.Float64(), rng.Float64(), 3*rng.Float64(), rng.Float64()
 		}
 		var least, most [Lanes]float64
-		f := []func(out, v *float64, index *int32, rows *float64, flags *uint8, mask *uint64, least, most *float64, n int) uint64{plainLengths, lengths256, lengths512}[kind]
-		found := f(&x[0], &v[0], &l.index[0], &l.Rows[0].Base, &l.Flags[0], &masks[mask][0], &least[0], &most[0], n)
+		f := []func(out, v *float64, index *int32, rows *float64, flags, left *uint8, mask *uint64, least, most *float64, n int) uint64{plainLengths, lengths256, lengths512}[kind]
+		found := f(&x[0], &v[0], &l.index[0], &l.Rows[0].Base, &l.Flags[0], &l.Left[0], &masks[mask][0], &least[0], &most[0], n)
 		sums := []float64{float64(found)}
 		for _, r := range l.Rows {
-			sums = append(sums, r.Base, r.Low, r.High, r.Sum)
+			sums = append(sums, r.Base, r.Low, r.High, r.From, r.To, r.Sum)
 		}
-		return [][]float64{whole, least[:], most[:], bytes(l.Flags), sums}
+		return [][]float64{whole, least[:], most[:], bytes(l.Flags), bytes(l.Left), sums}
 	}})
 	out = append(out, twin{"dots", func(t *testing.T, kind int) [][]float64 {
 		rng := random()
@@ -169,13 +170,13 @@ func TestWatchingFindsWhatIsBeyond(t *testing.T) {
 	var l Lengths
 	for k := range n {
 		l.Row(k, (k+1)%n, 2)
-		l.Rows[k].Low, l.Rows[k].High = 0.4, 1.1
+		l.Rows[k].Low, l.Rows[k].High, l.Rows[k].From, l.Rows[k].To = 0.4, 1.1, 0, 1.1
 	}
 	var least, most [Lanes]float64
-	found := l.Watch(x, v, mask, &least, &most)
-	var all uint8
+	found, left := l.Watch(x, v, mask, &least, &most)
+	var all, allHigh uint8
 	for k := range n {
-		want, sum := uint8(0), 0.0
+		want, high, sum := uint8(0), uint8(0), 0.0
 		for lane := range Lanes {
 			d := At(v, k, lane) - At(v, (k+1)%n, lane)
 			pu := math.Hypot(real(d), imag(d)) / 2
@@ -189,13 +190,17 @@ func TestWatchingFindsWhatIsBeyond(t *testing.T) {
 			if pu < 0.4 || pu > 1.1 {
 				want |= 1 << lane
 			}
+			if pu > 1.1 {
+				high |= 1 << lane
+			}
 		}
 		all |= want
-		if l.Flags[k] != want || !(math.Abs(l.Rows[k].Sum-sum) <= 1e-14*sum) {
+		allHigh |= high
+		if l.Flags[k] != want || l.Left[k] != high || !(math.Abs(l.Rows[k].Sum-sum) <= 1e-14*sum) {
 			t.Errorf("row %d: flags %08b and sum %g, want %08b and %g", k, l.Flags[k], l.Rows[k].Sum, want, sum)
 		}
 	}
-	if found != all || all == 0 {
-		t.Errorf("flags %08b, want %08b", found, all)
+	if found != all || left != allHigh || all == 0 || allHigh == 0 {
+		t.Errorf("flags %08b and %08b, want %08b and %08b", found, left, all, allHigh)
 	}
 }

@@ -137,11 +137,13 @@ func broadcast(bits uint64, v reg.VecVirtual) {
 }
 
 func (m machine) lengths() {
-	begin("lengths"+m.name, "Lengths.Watch", "func(out, v *float64, index *int32, rows *float64, flags *uint8, mask *uint64, least, most *float64, n int) uint64")
+	begin("lengths"+m.name, "Lengths.Watch", "func(out, v *float64, index *int32, rows *float64, flags, left *uint8, mask *uint64, least, most *float64, n int) uint64")
 	out, v := Load(Param("out"), GP64()), Load(Param("v"), GP64())
 	index, rows := Load(Param("index"), GP64()), Load(Param("rows"), GP64())
 	n := Load(Param("n"), GP64())
 	w := m.newWatcher()
+	left := GP64()
+	Load(Param("left"), left)
 	from, to := GP64(), GP64()
 	least, most := m.vecs(), m.vecs()
 	x, y := m.vecs(), m.vecs()
@@ -185,9 +187,23 @@ func (m machine) lengths() {
 	for p := range x {
 		w.compare(notBelowOrEqual, b, x[p], p)
 	}
-	w.gather(x, Mem{Base: rows, Disp: 24})
 	w.flag()
-	ADDQ(U8(32), rows)
+	XORQ(w.row, w.row)
+	VBROADCASTSD(Mem{Base: rows, Disp: 24}, b)
+	for p := range x {
+		w.compare(notAboveOrEqual, b, x[p], p)
+	}
+	VBROADCASTSD(Mem{Base: rows, Disp: 32}, b)
+	for p := range x {
+		w.compare(notBelowOrEqual, b, x[p], p)
+	}
+	ANDQ(w.live, w.row)
+	MOVB(w.row.As8(), Mem{Base: left})
+	INCQ(left)
+	SHLQ(U8(8), w.row)
+	ORQ(w.row, w.any)
+	w.gather(x, Mem{Base: rows, Disp: 40})
+	ADDQ(U8(48), rows)
 	ADDQ(U8(8*lanes), out)
 	DECQ(n)
 	JNZ(LabelRef("row"))
@@ -277,7 +293,8 @@ func (m machine) squares() {
 			VMOVUPD(m.re(x, at, p), re)
 			VMOVUPD(m.im(x, at, p), into)
 			VMULPD(into, into, into)
-			VFMADD231PD(re, re, into)
+			VMULPD(re, re, re)
+			VADDPD(into, re, into)
 		}
 		VMAXPD(s, t, s)
 		w.compare(notBelowOrEqual, b, s, p)
@@ -296,7 +313,7 @@ func (m machine) banks() {
 	w := m.newWatcher()
 	a, c, k := GP64(), GP64(), GP64()
 	re, im := m.vecs(), m.vecs()
-	x, y, b := m.vec(), m.vec(), m.vec()
+	x, y, z, u, b := m.vec(), m.vec(), m.vec(), m.vec(), m.vec()
 	Label("row")
 	MOVLQSX(Mem{Base: index}, k)
 	ADDQ(U8(4), index)
@@ -314,10 +331,14 @@ func (m machine) banks() {
 	for p := range re {
 		VMOVUPD(m.re(v, a, p), x)
 		VMOVUPD(m.im(v, a, p), y)
-		VFMADD231PD(m.re(i, c, p), x, re[p])
-		VFMADD231PD(m.im(i, c, p), y, re[p])
-		VFMADD231PD(m.re(i, c, p), y, im[p])
-		VFNMADD231PD(m.im(i, c, p), x, im[p])
+		VMULPD(m.re(i, c, p), x, z)
+		VMULPD(m.im(i, c, p), y, u)
+		VADDPD(u, z, z)
+		VADDPD(z, re[p], re[p])
+		VMULPD(m.re(i, c, p), y, z)
+		VMULPD(m.im(i, c, p), x, u)
+		VSUBPD(u, z, z)
+		VADDPD(z, im[p], im[p])
 	}
 	DECQ(k)
 	JNZ(LabelRef("pair"))
@@ -326,7 +347,8 @@ func (m machine) banks() {
 	ADDQ(U8(8), high)
 	for p := range re {
 		VMULPD(im[p], im[p], im[p])
-		VFMADD231PD(re[p], re[p], im[p])
+		VMULPD(re[p], re[p], re[p])
+		VADDPD(im[p], re[p], im[p])
 		w.compare(notBelowOrEqual, b, im[p], p)
 	}
 	w.flag()
