@@ -49,10 +49,16 @@ func (e *Engine) baseOver(ctx context.Context) error {
 	return nil
 }
 
-// baseAt solves the study without the case at one step and takes its factors.
+// baseAt takes the factors of the study without the case at one step: those of its walk
+// over the period where it has been made, so that an instant beside a run has the loads of
+// the run and several engines may share the walk, else those of the step solved alone.
 func (e *Engine) baseAt(step int) error {
 	a := e.allocation
 	if a == nil || a.base == nil {
+		return nil
+	}
+	if b := a.base.allocation; len(b.kept) > 0 && len(b.kept) == e.in.axis.Steps()*len(a.factors) {
+		a.kept, a.first = b.kept, 0
 		return nil
 	}
 	if _, err := a.base.Solve(step, Positions{}); err != nil {

@@ -135,9 +135,10 @@ func Run(ctx context.Context, p Place, studies []*feeder.Study, s Settings) ([]*
 	}
 	g.SetLimit(workers)
 	errs := make([]error, len(studies))
+	walks := &baseWalks{}
 	for i, st := range studies {
 		g.Go(func() error {
-			out[i], errs[i] = runCase(ctx, p, st, s)
+			out[i], errs[i] = runCase(ctx, p, st, s, walks)
 			return errs[i]
 		})
 	}
@@ -153,7 +154,7 @@ func Run(ctx context.Context, p Place, studies []*feeder.Study, s Settings) ([]*
 	return out, nil
 }
 
-func runCase(ctx context.Context, p Place, st *feeder.Study, s Settings) (*Case, error) {
+func runCase(ctx context.Context, p Place, st *feeder.Study, s Settings, walks *baseWalks) (*Case, error) {
 	if err := ctx.Err(); err != nil {
 		return nil, err
 	}
@@ -174,6 +175,11 @@ func runCase(ctx context.Context, p Place, st *feeder.Study, s Settings) (*Case,
 	}
 	if err := replaceable(c.Dir); err != nil {
 		return nil, err
+	}
+	if keepsBaseLoads(st) {
+		if e, err = walks.prepare(ctx, st, p.Demo); err != nil {
+			return nil, err
+		}
 	}
 	read := time.Now()
 	w, err := results.Create(c.Dir, e.Plan)

@@ -77,6 +77,7 @@ type hosting struct {
 	log      *positionsLog
 	volts    *baseVoltages // nil: jumps are all solved
 	probes   *probes
+	walks    baseWalks
 	progress func(done, total int)
 	done     atomic.Int64
 	total    int64
@@ -121,7 +122,7 @@ func MakeHosting(ctx context.Context, p Place, base *Case, s HostingSettings) (*
 	h.volts, h.probes = newBaseVoltages(e, h.log, output), newProbes(h.workers)
 	watch := newSectionWatch(e)
 	load := &loadLog{watch: watch}
-	if h.base, err = runTrial(ctx, variant(h.st, h.st.Case, nil), h.demo, func(*sim.Engine) ([]sim.Recorder, error) {
+	if h.base, err = runTrial(ctx, &h.walks, variant(h.st, h.st.Case, nil), h.demo, func(*sim.Engine) ([]sim.Recorder, error) {
 		out := []sim.Recorder{h.log, load}
 		if h.volts != nil {
 			out = append(out, h.volts)
@@ -290,13 +291,13 @@ func (h *hosting) candidate(ctx context.Context, place string, nodes []int, kW f
 			m.Generators = append(m.Generators, g)
 		}
 	})
-	probe, err := h.probes.take(h)
+	probe, err := h.probes.take(ctx, h)
 	if err != nil {
 		return nil, err
 	}
 	defer h.probes.give(probe)
 	var loss *jump
-	t, err := runTrial(ctx, st, h.demo, func(e *sim.Engine) (out []sim.Recorder, err error) {
+	t, err := runTrial(ctx, &h.walks, st, h.demo, func(e *sim.Engine) (out []sim.Recorder, err error) {
 		if loss, err = jumpTo(e, probe, own.delivers(st.Model)); err == nil && h.volts != nil {
 			loss.known = h.volts.at
 		}

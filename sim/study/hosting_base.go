@@ -1,6 +1,7 @@
 package study
 
 import (
+	"context"
 	"slices"
 
 	"yearflow/sim"
@@ -61,12 +62,12 @@ type probes struct{ free chan *sim.Engine }
 func newProbes(workers int) *probes { return &probes{make(chan *sim.Engine, workers)} }
 
 // take returns a free engine, or makes one.
-func (p *probes) take(h *hosting) (*sim.Engine, error) {
+func (p *probes) take(ctx context.Context, h *hosting) (*sim.Engine, error) {
 	select {
 	case e := <-p.free:
 		return e, nil
 	default:
-		return sim.Prepare(variant(h.st, "hosting, lost", nil), sim.Options{Demo: h.demo})
+		return h.walks.prepare(ctx, variant(h.st, "hosting, lost", nil), h.demo)
 	}
 }
 

@@ -110,7 +110,9 @@ func (h *hosting) rollOut(output, load []float64) (work func(context.Context) er
 		r.Instants = append(r.Instants, start)
 	}
 	for k := range h.set.levels {
-		r.Levels = append(r.Levels, RolloutLevel{KW: total * float64(k+1) / float64(h.set.levels), By: map[string]int{}})
+		// With the square: limits break low, and there the share of the runs rises steeply.
+		share := float64(k+1) / float64(h.set.levels)
+		r.Levels = append(r.Levels, RolloutLevel{KW: total * share * share, By: map[string]int{}})
 	}
 	r.Deployments = make([]Deployment, h.set.runs)
 	var next atomic.Int64
@@ -125,7 +127,7 @@ func (h *hosting) rollOut(output, load []float64) (work func(context.Context) er
 			}
 			err := ctx.Err()
 			if err == nil && d == nil {
-				d, err = h.newDeployer(sites, instants)
+				d, err = h.newDeployer(ctx, sites, instants)
 			}
 			if err == nil {
 				r.Deployments[run], err = d.deploy(run, r.Levels)
@@ -225,7 +227,7 @@ type instantBefore struct {
 	start       int64
 }
 
-func (h *hosting) newDeployer(sites []site, instants []int) (*deployer, error) {
+func (h *hosting) newDeployer(ctx context.Context, sites []site, instants []int) (*deployer, error) {
 	d := &deployer{h: h, sites: sites, first: len(h.st.Model.Generators), instants: instants}
 	st := variant(h.st, "roll-out", func(m *feeder.Model) {
 		for _, s := range sites {
@@ -235,7 +237,7 @@ func (h *hosting) newDeployer(sites []site, instants []int) (*deployer, error) {
 			m.Generators = append(m.Generators, g)
 		}
 	})
-	e, err := sim.Prepare(st, sim.Options{Demo: h.demo})
+	e, err := h.walks.prepare(ctx, st, h.demo)
 	if err != nil {
 		return nil, err
 	}

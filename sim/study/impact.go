@@ -91,6 +91,7 @@ type impacting struct {
 	b, w         *trial
 	lossB, lossW map[string]*jump
 	backB, backW map[string]*jump
+	walks        baseWalks
 	ends         *jump // voltages of the base at the ends of its steps
 	variants     []mitigating
 }
@@ -257,9 +258,9 @@ func (im *impacting) together(ctx context.Context, n int, do func(ctx context.Co
 
 // comeBack runs a year without units and jumps to each study with them.
 func (im *impacting) comeBack(ctx context.Context, y lonelyYear) (jumps []*jump, err error) {
-	_, err = runTrial(ctx, y.study, im.demo, im.watched(func(e *sim.Engine) (out []sim.Recorder, err error) {
+	_, err = runTrial(ctx, &im.walks, y.study, im.demo, im.watched(func(e *sim.Engine) (out []sim.Recorder, err error) {
 		for _, r := range y.back {
-			j, err := newJump(e, variant(r.full, r.full.Case, nil), im.demo, r.log.active(r.event))
+			j, err := newJump(ctx, &im.walks, e, variant(r.full, r.full.Case, nil), im.demo, r.log.active(r.event))
 			if err != nil {
 				return nil, err
 			}
@@ -322,14 +323,14 @@ func (im *impacting) events(st *feeder.Study) []event {
 
 // full runs the base or the case with every loss, and notes when units do something.
 func (im *impacting) full(ctx context.Context, st *feeder.Study, log *activity, losses map[string]*jump) (*trial, error) {
-	return runTrial(ctx, variant(st, st.Case, nil), im.demo, im.watched(func(e *sim.Engine) ([]sim.Recorder, error) {
+	return runTrial(ctx, &im.walks, variant(st, st.Case, nil), im.demo, im.watched(func(e *sim.Engine) ([]sim.Recorder, error) {
 		out := []sim.Recorder{log}
 		for _, ev := range im.events(st) {
 			if ev.units.empty() {
 				continue
 			}
 			does := ev.units.delivers(st.Model)
-			j, err := newJump(e, variant(st, st.Case+" without "+ev.name, ev.units.without), im.demo, does)
+			j, err := newJump(ctx, &im.walks, e, variant(st, st.Case+" without "+ev.name, ev.units.without), im.demo, does)
 			if err != nil {
 				return nil, err
 			}

@@ -198,8 +198,8 @@ func (im *impacting) mitigate(ctx context.Context, m *mitigating) error {
 	does := im.own.delivers(m.study.Model)
 	m.log.add(caseEvent, does)
 	var err error
-	m.run, err = runTrial(ctx, m.study, im.demo, im.watched(func(e *sim.Engine) ([]sim.Recorder, error) {
-		j, err := newJump(e, variant(m.study, m.study.Case+" without", im.own.without), im.demo, does)
+	m.run, err = runTrial(ctx, &im.walks, m.study, im.demo, im.watched(func(e *sim.Engine) ([]sim.Recorder, error) {
+		j, err := newJump(ctx, &im.walks, e, variant(m.study, m.study.Case+" without", im.own.without), im.demo, does)
 		m.loss = j
 		return []sim.Recorder{&m.log, j}, err
 	}))

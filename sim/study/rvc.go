@@ -1,6 +1,7 @@
 package study
 
 import (
+	"context"
 	"fmt"
 	"math"
 	"math/cmplx"
@@ -44,8 +45,8 @@ var _ sim.Recorder = (*jump)(nil)
 
 // newJump prepares to jump from the state of running to that of a study with other
 // units. active tells in which steps the units do something.
-func newJump(running *sim.Engine, to *feeder.Study, demo bool, active func(step int, s *results.State) bool) (*jump, error) {
-	probe, err := sim.Prepare(to, sim.Options{Demo: demo})
+func newJump(ctx context.Context, w *baseWalks, running *sim.Engine, to *feeder.Study, demo bool, active func(step int, s *results.State) bool) (*jump, error) {
+	probe, err := w.prepare(ctx, to, demo)
 	if err != nil {
 		return nil, err
 	}

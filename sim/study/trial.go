@@ -34,8 +34,8 @@ type reversed struct {
 
 // runTrial runs a study with further recorders. Its numbers are those that the results
 // folder of the same study would hold.
-func runTrial(ctx context.Context, st *feeder.Study, demo bool, more func(*sim.Engine) ([]sim.Recorder, error)) (*trial, error) {
-	e, err := sim.Prepare(st, sim.Options{Demo: demo})
+func runTrial(ctx context.Context, w *baseWalks, st *feeder.Study, demo bool, more func(*sim.Engine) ([]sim.Recorder, error)) (*trial, error) {
+	e, err := w.prepare(ctx, st, demo)
 	if err != nil {
 		return nil, err
 	}
