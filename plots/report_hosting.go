@@ -74,16 +74,16 @@ func (h *hostingDocument) lead() []Block {
 	}
 	out := []Block{Paragraph{Plain("How much more of kind " + h.said("kind") + " (output by profile " + h.said("profile") + ") each place takes beside what the base has. " + upper(h.said("search")) + ".")}}
 	if leastAt >= 0 {
-		out = append(out, Finding{Text: Say("The least is hosted at {}: {} keep every criterion. The most at {}: {}.", h.places.Name(leastAt, "place"), h.places.Value(leastAt, "keeps"), h.places.Name(mostAt, "place"), h.places.Value(mostAt, "keeps"))})
+		out = append(out, Finding{Text: Say("The least is hosted at {}: {} keep every criterion. The most at {}: {}.", h.places.Name(leastAt, "place"), h.places.Rounded(leastAt, "keeps", 0), h.places.Name(mostAt, "place"), h.places.Rounded(mostAt, "keeps", 0))})
 	}
 	if free > 0 {
-		out = append(out, Finding{Text: Plain(fmt.Sprintf("At %s no size of the grid (%s) breaks a criterion: what they take is more than the largest.", count(free, "place", "places"), h.said("grid")))})
+		out = append(out, Finding{Text: Plain(fmt.Sprintf("At %s no size of the grid (%s) breaks a criterion: they take the largest, and how much more is not known.", count(free, "place", "places"), h.said("grid")))})
 	}
 	if i := h.places.Row("feeder"); i >= 0 {
 		if h.places.Cell(i, "breaks at") == "" {
-			out = append(out, Finding{Text: Say("Shared equally over these places the feeder keeps every criterion up to {}, the largest size of the grid.", h.places.Value(i, "keeps"))})
+			out = append(out, Finding{Text: Say("Shared equally over these places the feeder keeps every criterion up to {}, the largest size of the grid.", h.places.Rounded(i, "keeps", 0))})
 		} else {
-			out = append(out, Finding{Text: Say("Shared equally over these places the feeder keeps every criterion up to {} in all; {} break one: "+h.places.Cell(i, "criterion")+".", h.places.Value(i, "keeps"), h.places.Value(i, "breaks at"))})
+			out = append(out, Finding{Text: Say("Shared equally over these places the feeder keeps every criterion up to {} in all; {} break one: "+h.places.Cell(i, "criterion")+".", h.places.Rounded(i, "keeps", 0), h.places.Rounded(i, "breaks at", 0))})
 		}
 	}
 	return out
@@ -119,7 +119,7 @@ func (h *hostingDocument) rolloutSection(st *style) (Section, error) {
 		return s, err
 	}
 	t := h.rollout.Table("Share of the runs that violate, by installed power", []string{"installed at least", "mean installed", "runs", "runs that violate", "share", "voltage above A", "voltage below A", "loading", "rapid voltage change", "no solution"}, nil)
-	t.Note = Plain("The last columns count runs by what was found first in them. Method: random deployments of growing penetration, as in Bollen and Hassan (Wiley, 2011), Navarro-Espinosa and Ochoa (IEEE Trans. Power Systems, 2016) and Ding and Mather (IEEE Trans. Sustainable Energy, 2017); recalled from memory.")
+	t.Note = Plain("The last columns count runs by what was found first in them. Installed power rises with the square of the level, so that the low end is seen finely. Method: random deployments of growing penetration, as in Bollen and Hassan (Wiley, 2011), Navarro-Espinosa and Ochoa (IEEE Trans. Power Systems, 2016) and Ding and Mather (IEEE Trans. Sustainable Energy, 2017); recalled from memory.")
 	var at []string
 	for i := range h.instants.Rows {
 		at = append(at, Number(h.instants.Cell(i, "instant"), "time", "").Show)
@@ -140,6 +140,10 @@ func (h *hostingDocument) triedSection() Section {
 		return Section{Heading: "Runs that break a criterion", Blocks: []Block{Paragraph{Plain("None.")}}}
 	}
 	t := h.tried.Table("Every criterion that a size breaks", []string{"place", "size", "criterion", "value", "limit", "unit", "margin", "where"}, rows, "unit", "where")
+	for k, i := range rows { // a key of the table, but a number to read
+		t.Rows[k][1] = plain(Rounded(h.tried.Cell(i, "size [kW]"), "kW", SourceOf(h.tried.File, "size [kW]", h.tried.Rows[i][:h.tried.Keys]...), 0))
+	}
+	t.Columns[1].Words = false
 	t.Note = Plain("All runs with all criteria are in candidates.csv.")
 	return Section{Heading: "Runs that break a criterion", Blocks: []Block{t}}
 }

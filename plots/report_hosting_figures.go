@@ -80,7 +80,9 @@ func (h *hostingDocument) placesFigure(st *style) (*page, Figure, error) {
 	}
 	f.Alt = "Bars of the largest size that keeps every criterion, by place in the order of distance, coloured by the criterion that the next size breaks. " + f.Finding
 	const row = vg.Length(19)
-	p := st.newPage(vg.Length(n)*row+74, f.Title, f.Finding, h.foot())
+	items := append([]key{{line: draw.LineStyle{Color: black, Width: vg.Points(1.8)}, text: "breaks"}}, h.bindingKeys()...)
+	more := keyLine * vg.Length(len(st.keyRows(items, pageMargin))-1)
+	p := st.newPage(vg.Length(n)*row+70+more, f.Title, f.Finding, h.foot())
 	label, small := st.text(labelSize, black), st.text(smallSize, inkGrey)
 	name := func(i int) string {
 		if km := h.places.Cell(i, "distance"); km != "" {
@@ -94,7 +96,7 @@ func (h *hostingDocument) placesFigure(st *style) (*page, Figure, error) {
 	}
 	room = min(room+8, 180)
 	_, hi := roundRange(0, math.Max(top, 1), 5)
-	a := p.panel(vg.Rectangle{Min: vg.Point{X: p.body.Min.X + room, Y: p.body.Min.Y + 62}, Max: vg.Point{X: p.body.Max.X - 40, Y: p.body.Max.Y - 4}}, 0, hi, 0, float64(n))
+	a := p.panel(vg.Rectangle{Min: vg.Point{X: p.body.Min.X + room, Y: p.body.Min.Y + 58 + more}, Max: vg.Point{X: p.body.Max.X - 40, Y: p.body.Max.Y - 4}}, 0, hi, 0, float64(n))
 	ticks := linear(0, hi, 5)
 	for _, k := range ticks {
 		a.c.StrokeLine2(gridLine, a.x(k.at), a.rect.Min.Y, a.x(k.at), a.rect.Max.Y)
@@ -114,7 +116,6 @@ func (h *hostingDocument) placesFigure(st *style) (*page, Figure, error) {
 		}
 		a.label(small, end+4, y, text.XLeft, text.YCenter, number(keeps, 0))
 	}
-	items := append([]key{{line: draw.LineStyle{Color: black, Width: vg.Points(1.8)}, text: "breaks"}}, h.bindingKeys()...)
 	a.keys(items, p.body.Min.X, a.rect.Min.Y-46)
 	return p, f, nil
 }
