@@ -79,12 +79,10 @@ func drawOperations(s *survey, st *style) (*page, Figure) {
 				continue
 			}
 			t := value
-			if lightness(col) < 0.55 {
-				t.Color = white
-			}
+			t.Color = inkOn(col)
 			txt := number(float64(c), 0)
 			if c == 0 {
-				txt, t.Color = "·", axisGrey
+				txt, t.Color = "·", inkGrey
 			}
 			p.label(t, x+w/2, mid, text.XCenter, text.YCenter, txt)
 		}

@@ -221,7 +221,7 @@ func (b blockView) Shape() string {
 	switch {
 	case b.Height > b.Width:
 		return "tall"
-	case 4*b.Height > 3*b.Width:
+	case 20*b.Height > 17*b.Width:
 		return "square"
 	}
 	return ""

@@ -218,46 +218,6 @@ func TestReportEscapesTheStudy(t *testing.T) {
 	}
 }
 
-// Text reads on its ground: WCAG 2.2, success criterion 1.4.3, asks for 4.5 to 1.
-func TestContrast(t *testing.T) {
-	luminance := func(hex string) float64 {
-		n, err := strconv.ParseUint(strings.TrimPrefix(hex, "#"), 16, 32)
-		if err != nil {
-			t.Fatal(err)
-		}
-		y := 0.0
-		for i, w := range []float64{0.2126, 0.7152, 0.0722} {
-			c := float64(n>>(16-8*i)&0xff) / 255
-			if c <= 0.04045 {
-				c /= 12.92
-			} else {
-				c = math.Pow((c+0.055)/1.055, 2.4)
-			}
-			y += w * c
-		}
-		return y
-	}
-	colour := func(name string) string {
-		m := regexp.MustCompile(name + `: (#[0-9a-f]{6})`).FindStringSubmatch(reportCSS)
-		if m == nil {
-			t.Fatalf("the style sheet has no colour %s", name)
-		}
-		return m[1]
-	}
-	grounds := []string{"#ffffff", colour("--wash"), colour("--warn")}
-	texts := []string{colour("--ink"), colour("--second"), colour("--blue"), colour("--bad")}
-	for _, m := range regexp.MustCompile(`[^-]color: (#[0-9a-f]{6})`).FindAllStringSubmatch(reportCSS, -1) {
-		texts = append(texts, m[1])
-	}
-	for _, c := range texts {
-		for _, g := range grounds {
-			if ratio := (luminance(g) + 0.05) / (luminance(c) + 0.05); ratio < 4.5 {
-				t.Errorf("%s on %s has a contrast of %.2f, want 4.5", c, g, ratio)
-			}
-		}
-	}
-}
-
 // The report of a year must cost little beside its figures.
 func BenchmarkReport(b *testing.B) {
 	g := small()
