@@ -51,7 +51,15 @@ func HostingDocument(dir, runs string) (*Document, error) {
 	if err != nil {
 		return nil, err
 	}
-	d.Sections = append(d.Sections, h.placesSection(), rollout, h.triedSection(), s.sources())
+	d.Sections = append(d.Sections, h.placesSection(), rollout, h.triedSection())
+	if _, there := s.record.Files["cautions.csv"]; there {
+		var items []Text
+		for l, i := s.ledger("cautions.csv", 1), 0; i < len(l.Rows); i++ {
+			items = append(items, Plain(upper(l.Cell(i, "caution"))+"."))
+		}
+		d.Sections = append(d.Sections, Section{Heading: "Cautions", Blocks: []Block{Caution{Title: "Of these numbers", Items: items}}})
+	}
+	d.Sections = append(d.Sections, s.sources())
 	return d, s.err
 }
 

@@ -28,7 +28,7 @@ reports over the whole period what the units do: voltage with the controls actin
 held, rapid voltage change at the sudden loss and return of units, unbalance, reverse
 power, loading, losses, operations, curtailment and the usual screens; each criterion
 with its limit, the source of the limit, verdict and margin. Remedies (power factor,
-inverter functions, smaller size, settings) are run as cases of their own.
+inverter functions, smaller size, dispatch, settings) are run as cases of their own.
 
 Exit status: 0 done; 1 steps were low or unsolved; 2 the input is wrong; 3 the machine
 failed.`,

@@ -28,6 +28,7 @@ type Hosting struct {
 	Places     []HostedPlace // the feeder last: the sizes shared equally over the places
 	Candidates []Candidate
 	Rollout    *Rollout
+	Cautions   []string
 }
 
 // HostingCriterion is a criterion with the limit that holds.
@@ -182,7 +183,28 @@ func (h *hosting) work(ctx context.Context, output, load []float64) error {
 		h.Candidates = append(h.Candidates, tried[i]...)
 	}
 	h.Rollout.count()
+	h.cautions()
 	return nil
+}
+
+// cautions lists what a reader must know before trusting the numbers.
+func (h *hosting) cautions() {
+	add := func(format string, args ...any) { h.Cautions = append(h.Cautions, fmt.Sprintf(format, args...)) }
+	if n := h.base.number("low steps") + h.base.number("unsolved steps"); n > 0 {
+		add("%g steps of the base are low or unsolved; nothing of them is in any number here", n)
+	}
+	if text := fewSteps(h.st); text != "" {
+		add("%s", text)
+	}
+	for _, d := range h.base.outcome.CoarseAt {
+		add("the step is too coarse for operations and durations at %s: the voltage moves by more than its bandwidth from step to step", d)
+	}
+	add("every new unit follows the one profile %s: units apart from each other do not deliver alike, and a cloud does not cover all of them at once", h.Profile)
+	if h.set.function < 0 {
+		add("the new units run at a constant power factor of %g; with an inverter function ([hosting] function) a place may take more", h.set.factor)
+	}
+	add("each place is filled alone: what several take together is less than the sum; the row feeder shares one size equally")
+	add("fault duty, protection and what is upstream of the source are not looked at")
 }
 
 // place is the i-th place to search, the feeder the last, and its nodes.

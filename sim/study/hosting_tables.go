@@ -30,7 +30,11 @@ func (h *Hosting) Tables() []NamedTable {
 	for _, l := range h.Limits {
 		criteria.Rows = append(criteria.Rows, []string{l.Name, l.Unit, f(l.Limit), l.Source})
 	}
-	return append([]NamedTable{places, tried, criteria}, h.rolloutTables()...)
+	cautions := NamedTable{Name: "cautions.csv", Rows: [][]string{{"number", "caution"}}}
+	for i, t := range h.Cautions {
+		cautions.Rows = append(cautions.Rows, []string{fmt.Sprint(i + 1), t})
+	}
+	return append(append([]NamedTable{places, tried, criteria}, h.rolloutTables()...), cautions)
 }
 
 func (h *Hosting) rolloutTables() []NamedTable {

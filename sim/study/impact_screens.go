@@ -359,6 +359,17 @@ func (im *impacting) cautions() {
 			add("%s: the step is too coarse for operations and durations at %s: the voltage moves by more than its bandwidth from step to step", t.name, r)
 		}
 	}
+	if text := fewSteps(im.base); text != "" {
+		add("%s", text)
+	}
+	if other := im.otherSteps(im.b, im.w); other {
+		add("other steps are low or unsolved with the units than in the base: the two and their difference are over different times")
+	}
+	for i := range im.variants {
+		if m := &im.variants[i]; m.run != nil && im.otherSteps(im.w, m.run) {
+			add("remedy %s: other steps are low or unsolved than without it: the two are over different times", m.Name)
+		}
+	}
 	skipped := 0
 	for _, of := range []map[string]*jump{im.lossB, im.lossW, im.backB, im.backW} {
 		for _, ev := range []string{allEvent, largestEvent, caseEvent} {
@@ -377,4 +388,24 @@ func (im *impacting) cautions() {
 		add("hours outside the limits are those at the meters, after the allowance of %g V; highest and lowest voltages are those at the nodes", im.base.Settings.Limits.Allowance)
 	}
 	add("inside a step the output is constant: changes of output within a step, and their flicker, are not studied")
+}
+
+// otherSteps tells whether two runs have another number of low or of unsolved steps.
+func (im *impacting) otherSteps(a, b *trial) bool {
+	return a.number("low steps") != b.number("low steps") || a.number("unsolved steps") != b.number("unsolved steps")
+}
+
+// few is the number of steps below which a period says little of a year.
+const few = 24
+
+// fewSteps warns of a short period; blank where it is long enough.
+func fewSteps(st *feeder.Study) string {
+	n := st.Settings.Period.Steps()
+	switch {
+	case n == 1:
+		return "the period has a single step: hours, operations and extremes are those of no year"
+	case n < few:
+		return fmt.Sprintf("the period has %d steps: hours, operations and extremes of so few are those of no year", n)
+	}
+	return ""
 }

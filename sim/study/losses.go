@@ -324,7 +324,9 @@ func (l *LossEstimate) cautions() {
 	if feeder.Unknown(l.prices.Rate) {
 		add("", "There is no present worth: [prices] rate is not given.")
 	}
-	if n := l.Cases[0].Study.Settings.Period.Steps(); n < 8 {
+	if n := l.Cases[0].Study.Settings.Period.Steps(); n == 1 {
+		add("", "The period has a single step: factors and peaks are those of no year.")
+	} else if n < few {
 		add("", "The period has %d steps: factors and peaks of so few are those of no year.", n)
 	}
 	for k, x := range l.Cases {
