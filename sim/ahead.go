@@ -24,6 +24,7 @@ type ahead struct {
 	loaded  [vector.Lanes]int // step, −1 none
 	first   int               // step; of no block: −1
 	end     int
+	number  int // of the block
 	arrived uint8
 	taken   uint8
 	window  window
@@ -107,6 +108,11 @@ func (e *Engine) solveAhead() bool {
 // solveLanes solves the step at hand and those behind it.
 func (e *Engine) solveLanes() {
 	a := e.ahead
+	a.number++
+	if e.quiet != nil && e.quiet.lent {
+		e.quiet.lent = false
+		_ = e.relay.exchange() // a recorder's error comes back with the step
+	}
 	a.first, a.state = e.step, e.flow.DeviceState()
 	a.end = min(a.first+vector.Lanes, e.in.axis.Steps(), e.dayEnd(a.first))
 	if month := e.in.monthOf(a.first); month != a.month { // months begin with days, and blocks end with them
@@ -142,9 +148,6 @@ func (e *Engine) solveLanes() {
 	a.taken = 0
 	a.arrived = a.lanes.Solve(mask, powerflow.Contract)
 	e.lap(&e.timing.Solving)
-	if e.quiet != nil {
-		e.quiet.measured = false
-	}
 }
 
 // load puts the inputs of a step into a lane.

@@ -67,6 +67,7 @@ type Engine struct {
 	reference bool   // every step is solved by itself
 	ahead     *ahead // nil: a step's input depends on the steps before it
 	quiet     *quiet // nil: every step is gone through by itself
+	relay     *relay // nil: a recorder looks at the engine itself, and is called by it
 	stepwise  string // why there is no ahead
 	speculate bool   // a run is going through its steps in order
 	step      int    // whose inputs are at hand

@@ -49,46 +49,40 @@ func (c *capacitorControl) Idle(r Reading, now devices.Time) (s results.DeviceSt
 	return s, math.NaN(), idle
 }
 
-// quiet hands on runs of steps in which no device acts, asks or changes what it
-// remembers, straight from their lanes: each is one settled interval.
+// quiet finds runs of steps in which no device acts, asks or changes what it remembers:
+// each is one settled interval.
 type quiet struct {
-	recorders []quietRecorder
-	controls  []idler // by device
-	currents  *powerflow.LaneCurrents
-	measured  bool // currents are those of the block at hand
-	out       results.Quiet
-	lanes     results.Lanes
-	coarse    []float64 // by device and lane: what coarse watches
-	states    []results.DeviceState
+	controls []idler // by device
+	currents *powerflow.LaneCurrents
+	number   int       // of the block that currents are of
+	lent     bool      // the block at hand has been handed on
+	coarse   []float64 // by device and lane: what coarse watches
+	states   []results.DeviceState
 }
 
-// newQuiet returns nil where a recorder or a control cannot do without every step.
-func newQuiet(r *runner) *quiet {
-	e := r.Engine
-	if e.ahead == nil || len(e.devices) > 0 && e.Study.Settings.Limits.Allowance != 0 {
+// newQuiet returns nil where steps are solved one by one or a control cannot do without
+// seeing each.
+func newQuiet(e *Engine) *quiet {
+	if e.ahead == nil {
 		return nil
 	}
-	q := &quiet{coarse: make([]float64, len(e.devices)*vector.Lanes), states: make([]results.DeviceState, len(e.devices))}
-	for _, x := range r.recorders {
-		k, ok := x.(quietRecorder)
-		if !ok {
-			return nil
-		}
-		q.recorders = append(q.recorders, k)
-	}
+	q := &quiet{number: -1, coarse: make([]float64, len(e.devices)*vector.Lanes), states: make([]results.DeviceState, len(e.devices))}
+	flows := []int{}
 	for _, d := range e.devices {
 		c, ok := d.Controller.(idler)
 		if !ok {
 			return nil
 		}
 		q.controls = append(q.controls, c)
+		if d.tap != nil {
+			flows = append(flows, d.tap.source.flows...)
+		} else {
+			for _, w := range d.cap.watched {
+				flows = append(flows, w.flows...)
+			}
+		}
 	}
-	q.currents = e.ahead.lanes.NewLaneCurrents()
-	q.lanes.V, q.lanes.Slot = e.ahead.lanes.Voltages()
-	q.lanes.Flow, q.lanes.Coupling = q.currents.Flow, q.currents.Coupling
-	q.lanes.Source = vector.Make(3 * len(e.net.Model.Sources))
-	q.out.State = &q.lanes
-	q.out.Solver = powerflow.InLanes.String()
+	q.currents = e.ahead.lanes.NewLaneCurrents(flows)
 	return q
 }
 
@@ -109,7 +103,7 @@ func (l lane) value(series int) float64  { return l.ahead.rows[(series+1)*vector
 func (r *runner) quietFrom(step int) (int, error) {
 	e, q := r.Engine, r.quiet
 	a := e.ahead
-	if q == nil || !r.started || r.acted || step >= a.dayEnd || e.due() != devices.Never {
+	if q == nil || r.relay == nil || !r.started || r.acted || step >= a.dayEnd || e.due() != devices.Never {
 		return 0, nil
 	}
 	if step < a.first || step >= a.end || a.state != e.flow.DeviceState() {
@@ -129,7 +123,7 @@ func (r *runner) quietFrom(step int) (int, error) {
 			break
 		}
 		whole := false
-		for _, rec := range q.recorders {
+		for _, rec := range r.relay.recorders {
 			whole = whole || rec.Whole(from, to)
 		}
 		if whole {
@@ -148,10 +142,11 @@ const noQuiet = 1800 * devices.Second
 // read looks at a lane with every device, and tells whether it leaves all of them as they
 // are and as they stood in the first lane.
 func (q *quiet) read(e *Engine, k int, now devices.Time, first bool) bool {
-	if !q.measured {
-		q.measured = true
+	if a := e.ahead; q.number != a.number {
+		q.number = a.number
 		e.lap(&e.timing.Controls)
-		e.ahead.lanes.Currents(q.currents, e.ahead.arrived)
+		q.currents.Refresh()
+		q.currents.Read(a.lanes.Block, a.arrived)
 		e.lap(&e.timing.Solving)
 	}
 	for i, d := range e.devices {
@@ -174,66 +169,23 @@ func (q *quiet) read(e *Engine, k int, now devices.Time, first bool) bool {
 // hand gives n steps to the recorders.
 func (r *runner) hand(step, n int) error {
 	e, q := r.Engine, r.quiet
-	a := e.ahead
-	start, _ := e.in.axis.Bounds(step)
-	q.out.Start, q.out.Step, q.out.First, q.out.Count, q.out.Devices = start, e.in.axis.Step, step%vector.Lanes, n, q.states
-	q.lanes.Taps, q.lanes.Closed = e.state.Taps, e.state.Closed
-	for f, x := range e.net.Fixed {
-		at := 3*x.Source + int(x.Phase)
-		copy(q.lanes.Source[at*vector.Width:(at+1)*vector.Width], q.currents.Source[f*vector.Width:])
-	}
-	hours := float64(e.in.axis.Step) / 3.6e12
 	for i := range n {
 		k := (step + i) % vector.Lanes
-		generation := 0.0
-		for g := range r.generated {
-			p, curtailed := a.delivered(e, g, k)
-			generation += p
-			r.generated[g] += p / 1000 * hours
-			r.curtailed[g] += curtailed * hours
-		}
-		q.lanes.Generation[k] = generation
-		q.lanes.Load[k] = q.currents.Drawn[k] + generation
 		r.coarse.skip(q.coarse, k)
-		e.timing.Iterations += a.lanes.Iterations[k]
+		e.timing.Iterations += e.ahead.lanes.Iterations[k]
 		e.countLane(k)
 	}
 	e.paths[powerflow.InLanes] += n
 	e.timing.Solutions += n
 	e.timing.QuietSteps += n
 	e.lap(&e.timing.Controls)
-	for _, rec := range q.recorders {
-		if err := rec.Quiet(&q.out); err != nil {
-			return err
-		}
+	if r.relay.state != e.ahead.state {
+		r.relay.refresh()
 	}
-	e.lap(&e.timing.Statistics)
-	return nil
-}
-
-// delivered is what a generator delivers in a lane, W, and what its function takes from
-// what it could, kW.
-func (a *ahead) delivered(e *Engine, generator, k int) (watts, curtailed float64) {
-	for _, v := range e.plants.inverters {
-		if v.generator != generator {
-			continue
-		}
-		g := &e.in.groups[v.group]
-		mean := 0.0
-		for _, m := range g.Members {
-			j := &e.in.injections[m]
-			x := across(lane{e, k}, j.From, j.To)
-			mean += math.Hypot(real(x), imag(x)) / j.Nominal
-		}
-		mean /= float64(len(g.Members))
-		available := -a.lanes.Power(int(g.Members[0]), k) / 1000 * v.law.members
-		o := v.law.output(available, mean)
-		return o.P * 1000, o.Curtailed
-	}
-	for _, m := range e.in.branchesOf[generator] {
-		watts -= a.lanes.Power(m, k)
-	}
-	return watts, 0
+	q.lent = true
+	err := r.relay.quiet(step, n, q.states)
+	e.lap(&e.timing.Waiting)
+	return err
 }
 
 // skip takes lane k of what coarse watches, by device.

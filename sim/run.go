@@ -63,20 +63,8 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 		e.speculate = true
 		defer func() { e.speculate = false }()
 	}
-	r.quiet = newQuiet(r)
-	n := e.in.axis.Steps()
-	for step := 0; step < n; {
-		if err := ctx.Err(); err != nil {
-			return nil, err
-		}
-		skip, err := r.quietFrom(step)
-		if err == nil && skip == 0 {
-			skip, err = 1, r.step(step)
-		}
-		if err != nil {
-			return nil, err
-		}
-		step += skip
+	if err := r.walk(ctx); err != nil {
+		return nil, err
 	}
 	for p, k := range e.paths {
 		out.Paths[p.String()] = k
@@ -86,6 +74,56 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 	e.lap(&e.timing.Controls)
 	out.Plants = r.totals()
 	return out, nil
+}
+
+// walk goes through the steps. Recorders that need not look at the engine work beside it.
+func (r *runner) walk(ctx context.Context) (err error) {
+	e := r.Engine
+	e.quiet, e.relay = nil, nil
+	if beside := detached(r.recorders); beside != nil && e.allocation == nil {
+		e.quiet, e.relay = newQuiet(e), newRelay(e, beside)
+		r.recorders = []Recorder{e.relay}
+		defer func() {
+			failed := e.relay.close()
+			if failed != nil {
+				err = failed
+			}
+			e.timing.Waiting += e.timing.Statistics
+			e.timing.Statistics = e.relay.busy
+			for g := range r.generated {
+				r.generated[g] += e.relay.tally.generated[g]
+				r.curtailed[g] += e.relay.tally.curtailed[g]
+			}
+		}()
+	}
+	n := e.in.axis.Steps()
+	for step := 0; step < n; {
+		if err := ctx.Err(); err != nil {
+			return err
+		}
+		skip, err := r.quietFrom(step)
+		if err == nil && skip == 0 {
+			skip, err = 1, r.step(step)
+		}
+		if err != nil {
+			return err
+		}
+		step += skip
+	}
+	return nil
+}
+
+// detached returns the recorders where none of them needs more than what it is handed;
+// else nil.
+func detached(recorders []Recorder) (out []quietRecorder) {
+	for _, x := range recorders {
+		q, ok := x.(quietRecorder)
+		if !ok {
+			return nil
+		}
+		out = append(out, q)
+	}
+	return out
 }
 
 // Steps is the number of steps of the study's period.

@@ -15,7 +15,10 @@ type Timing struct {
 	// and of the flows that follow from the voltages, Controls that of measuring and of
 	// everything that devices, plants and the event loop do, Statistics that of the
 	// recorders, the writing of files included.
-	Assembling, Solving, Controls, Statistics time.Duration
+	//
+	// Recorders that work beside the run take time of another core: what Statistics says is
+	// then not part of the run's own, and Waiting is the time that it waited for them.
+	Assembling, Solving, Controls, Statistics, Waiting time.Duration
 
 	Blocks                 int // of steps solved at once
 	LanesSolved, LanesUsed int // instants solved in blocks, and those taken from there

@@ -27,7 +27,8 @@ type Lanes struct {
 	// of each fixed voltage. Of v the first of these two is the voltage that injections
 	// see, of x the second that of the equations; the first of x takes the current that
 	// is put into a fixed voltage.
-	v, x      []float64
+	*Block
+	x         []float64
 	slot      []int32 // by unknown, into v
 	rank      []int32 // of an independent unknown's place in the elimination order among the values
 	free, all int     // independent ones, and those with the dependent ones
@@ -40,14 +41,38 @@ type Lanes struct {
 	down, up                                []int32 // slots of the factor
 
 	loads  [4]*vector.Loads
-	power  [4][]float64
 	drives [4]vector.Drives
 	lead   []drive // by group: how its first member's power follows the series
 	list   []int8  // by injection: its list, −1: it is one of a group
 	member []int32 // by injection: its place in the list
-	given  []complex128
 
 	least float64 // change that keeps every node's mismatch, where loads are at their largest
+}
+
+// Block is what lanes were given and what they found: who takes it out of a Lanes, by
+// Exchange, can read it while the next one is solved.
+type Block struct {
+	l     *Lanes
+	v     []float64
+	power [4][]float64
+	given []complex128 // by group and lane
+}
+
+// NewBlock makes room for a block.
+func (l *Lanes) NewBlock() *Block {
+	b := &Block{l: l, v: vector.Make(l.held + len(l.s.Net.Fixed)), given: make([]complex128, len(l.s.Groups)*vector.Lanes)}
+	for i := range l.loads {
+		b.power[i] = vector.Make(l.loads[i].Len())
+	}
+	return b
+}
+
+// Exchange returns the block at hand and goes on with another. Fixed voltages stay.
+func (l *Lanes) Exchange(next *Block) *Block {
+	old := l.Block
+	copy(next.v[l.all*vector.Width:], old.v[l.all*vector.Width:])
+	l.Block = next
+	return old
 }
 
 // drive says how a power follows rows of values: P the first, Q the second.
@@ -102,7 +127,7 @@ func (l *Lanes) place() {
 		l.weight[l.slot[u]] = s.perUnit[u] * s.perUnit[u]
 	}
 	n := l.held + len(s.Net.Fixed)
-	l.v, l.x = vector.Make(n), vector.Make(n)
+	l.x = vector.Make(n)
 }
 
 // plainTerm tells whether an unknown is an independent or a fixed one.
@@ -201,7 +226,6 @@ func (l *Lanes) branches() {
 		l.loads[i] = vector.NewLoads(i&1 == 1, i&2 == 2)
 	}
 	l.list, l.member = make([]int8, len(s.Injections)), make([]int32, len(s.Injections))
-	l.given = make([]complex128, len(s.Groups)*vector.Lanes)
 	for k := range s.Injections {
 		j := &s.Injections[k]
 		if j.Group != 0 {
@@ -223,9 +247,7 @@ func (l *Lanes) branches() {
 		l.list[k], l.member[k] = int8(list), int32(l.loads[list].Len())
 		l.loads[list].Branch(int(l.slot[j.From]), to, least, [6]float64{j.PC, j.PI / n, j.PZ / (n * n), j.QC, j.QI / n, j.QZ / (n * n)})
 	}
-	for i := range l.loads {
-		l.power[i] = vector.Make(l.loads[i].Len())
-	}
+	l.Block = l.NewBlock()
 }
 
 // tolerate finds how small a change must be for the mismatch at every node to be within
@@ -415,7 +437,7 @@ func (l *Lanes) Solve(mask uint8, tol Tolerance) (arrived uint8) {
 func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) {
 	clear(l.x[:l.held*vector.Width])
 	l.pull.Set(l.x, l.x)
-	below = l.draw(l.x, mask)
+	below = l.draw(l.x, l.Block, mask)
 	l.gather.Add(l.x, l.x)
 	l.forward.Add(l.x, l.x)
 	l.backward.Solve(l.x, l.x)
@@ -424,20 +446,20 @@ func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) 
 	return below
 }
 
-// draw takes what the injections draw off the currents that are put in, and returns the
-// lanes with a load below the corner.
-func (l *Lanes) draw(into []float64, mask uint8) (below uint8) {
-	for i, b := range l.loads {
-		below |= b.Draw(into, l.v, l.power[i])
+// draw takes what the injections draw in a block off the currents that are put in, and
+// returns the lanes with a load below the corner.
+func (l *Lanes) draw(into []float64, b *Block, mask uint8) (below uint8) {
+	for i, list := range l.loads {
+		below |= list.Draw(into, b.v, b.power[i])
 	}
 	for g := range l.s.Groups {
-		below |= l.drawGroup(into, g, mask)
+		below |= l.drawGroup(into, b, g, mask)
 	}
 	return below
 }
 
 // drawGroup does so for a group, lane by lane.
-func (l *Lanes) drawGroup(into []float64, g int, mask uint8) (below uint8) {
+func (l *Lanes) drawGroup(into []float64, b *Block, g int, mask uint8) (below uint8) {
 	s := l.s
 	group := &s.Groups[g]
 	n := float64(len(group.Members))
@@ -445,19 +467,16 @@ func (l *Lanes) drawGroup(into []float64, g int, mask uint8) (below uint8) {
 		if mask>>lane&1 == 0 {
 			continue
 		}
-		mean := 0.0
-		for _, k := range group.Members {
-			mean += cmplx.Abs(l.across(&s.Injections[k], lane)) / s.Injections[k].Nominal
-		}
-		if mean /= n; !(mean >= Corner) {
+		mean := b.GroupVoltage(g, lane)
+		if !(mean >= Corner) {
 			below |= 1 << lane
 			continue
 		}
-		p, _ := group.Law.Draws(l.given[g*vector.Lanes+lane], mean)
+		p, _ := group.Law.Draws(b.given[g*vector.Lanes+lane], mean)
 		p = complex(real(p)/n, -imag(p)/n)
 		for _, k := range group.Members {
 			j := &s.Injections[k]
-			x := l.across(j, lane)
+			x := b.across(j, lane)
 			i := p * x * complex(1/(real(x)*real(x)+imag(x)*imag(x)), 0)
 			at := int(l.slot[j.From])
 			vector.Put(into, at, lane, vector.At(into, at, lane)-i)
@@ -470,12 +489,38 @@ func (l *Lanes) drawGroup(into []float64, g int, mask uint8) (below uint8) {
 	return below
 }
 
-func (l *Lanes) across(j *Injection, lane int) complex128 {
-	x := vector.At(l.v, int(l.slot[j.From]), lane)
+func (b *Block) across(j *Injection, lane int) complex128 {
+	x := b.V(j.From, lane)
 	if j.To != network.Ground {
-		x -= vector.At(l.v, int(l.slot[j.To]), lane)
+		x -= b.V(j.To, lane)
 	}
 	return x
+}
+
+// GroupVoltage is the mean voltage of a group's branches in a lane, p.u.
+func (b *Block) GroupVoltage(g, lane int) (mean float64) {
+	s := b.l.s
+	members := s.Groups[g].Members
+	for _, k := range members {
+		mean += cmplx.Abs(b.across(&s.Injections[k], lane)) / s.Injections[k].Nominal
+	}
+	return mean / float64(len(members))
+}
+
+// V is the voltage of an unknown in a lane.
+func (b *Block) V(u int32, lane int) complex128 { return vector.At(b.v, int(b.l.slot[u]), lane) }
+
+// Voltages are the values, and where each unknown's stands among them.
+func (b *Block) Voltages() (v []float64, slot []int32) { return b.v, b.l.slot }
+
+// Power is the real power, W at 1 p.u., that an injection is asked for in a lane: of one
+// in a group what the group is given.
+func (b *Block) Power(injection, lane int) float64 {
+	list := b.l.list[injection]
+	if list < 0 {
+		return real(b.given[int(b.l.s.Injections[injection].Group-1)*vector.Lanes+lane])
+	}
+	return real(vector.At(b.power[list], int(b.l.member[injection]), lane))
 }
 
 // Take sets out to the solution of a lane that arrived.

@@ -15,8 +15,11 @@ type LaneCurrents struct {
 	// negative.
 	Drawn [vector.Lanes]float64
 
+	l       *Lanes
 	version int
 	put     []float64 // values, as Lanes.x: currents that injections put in
+	draws   bool      // put matters
+	all     bool      // everything is read
 	rest    []float64 // values: what dependent unknowns, then fixed ones, still have to receive
 
 	elements, capacitors, sum, less, own, source vector.Rows
@@ -25,10 +28,12 @@ type LaneCurrents struct {
 	owns, sources                                []func() float64
 }
 
-// NewLaneCurrents prepares the reading of currents. A LaneCurrents belongs to its Lanes.
-func (l *Lanes) NewLaneCurrents() *LaneCurrents {
+// NewLaneCurrents prepares the reading of currents: of all of them, or, where flows is not
+// nil, of couplings, sources and the flows at these places; Drawn is not read then.
+func (l *Lanes) NewLaneCurrents(flows []int) *LaneCurrents {
 	s, n := l.s, l.s.Net
-	c := &LaneCurrents{version: -1,
+	wanted := l.wanted(flows)
+	c := &LaneCurrents{l: l, version: -1, draws: wanted == nil, all: wanted == nil,
 		Flow: vector.Make(n.Offsets[len(n.Elements)]), Coupling: vector.Make(len(n.Couplings)), put: vector.Make(l.held)}
 	at := map[int32][]int{} // flows that leave an unknown
 	for e := range n.Elements {
@@ -36,6 +41,9 @@ func (l *Lanes) NewLaneCurrents() *LaneCurrents {
 		w := len(el.Terminals)
 		for p, u := range el.Terminals {
 			at[u] = append(at[u], n.Offsets[e]+p)
+			if wanted != nil && !wanted[n.Offsets[e]+p] {
+				continue
+			}
 			var src []int
 			rows := &c.elements
 			if el.Kind == network.Capacitor {
@@ -53,6 +61,11 @@ func (l *Lanes) NewLaneCurrents() *LaneCurrents {
 				}
 			}
 			rows.Row(n.Offsets[e]+p, src...)
+		}
+	}
+	for k := range s.Injections {
+		for _, u := range s.Injections[k].ends() {
+			c.draws = c.draws || int(l.slot[u]) >= l.free
 		}
 	}
 	place := map[int32]int{} // of dependent unknowns in rest
@@ -103,8 +116,31 @@ func (l *Lanes) NewLaneCurrents() *LaneCurrents {
 	return c
 }
 
-// refresh takes over the coefficients of the solver's device state.
-func (c *LaneCurrents) refresh(s *Solver) {
+// wanted tells which flows are read: those at the given places, and those that leave
+// dependent and fixed unknowns; nil: all.
+func (l *Lanes) wanted(flows []int) []bool {
+	if flows == nil {
+		return nil
+	}
+	n := l.s.Net
+	out := make([]bool, n.Offsets[len(n.Elements)])
+	for _, f := range flows {
+		out[f] = true
+	}
+	for e := range n.Elements {
+		for p, u := range n.Elements[e].Terminals {
+			if int(l.slot[u]) >= l.free {
+				out[n.Offsets[e]+p] = true
+			}
+		}
+	}
+	return out
+}
+
+// Refresh takes over the coefficients of the solver's device state, which must be that of
+// the blocks read next.
+func (c *LaneCurrents) Refresh() {
+	s := c.l.s
 	if c.version == s.version {
 		return
 	}
@@ -125,39 +161,27 @@ func (c *LaneCurrents) refresh(s *Solver) {
 	}
 }
 
-// Currents reads the currents of the lanes of a mask, which must have arrived; those of
+// Read reads the currents of a block's lanes of a mask, which must have arrived; those of
 // others mean nothing.
-func (l *Lanes) Currents(c *LaneCurrents, mask uint8) {
-	c.refresh(l.s)
-	clear(c.put)
-	l.draw(c.put, mask)
-	c.elements.Set(c.Flow, l.v)
-	c.capacitors.Set(c.Flow, l.v)
+func (c *LaneCurrents) Read(b *Block, mask uint8) {
+	l := c.l
+	if c.draws {
+		clear(c.put)
+		l.draw(c.put, b, mask)
+	}
+	c.elements.Set(c.Flow, b.v)
+	c.capacitors.Set(c.Flow, b.v)
 	c.sum.Set(c.rest, c.Flow)
 	c.less.Add(c.rest, c.put)
 	c.own.Set(c.Coupling, c.rest)
 	c.source.Add(c.Source, c.Coupling)
 	c.Drawn = [vector.Lanes]float64{}
-	for at := 0; at < l.held; at++ {
-		v, j := l.v[at*vector.Width:(at+1)*vector.Width], c.put[at*vector.Width:(at+1)*vector.Width]
-		for lane := range vector.Lanes {
-			c.Drawn[lane] -= v[lane]*j[lane] + v[vector.Lanes+lane]*j[vector.Lanes+lane]
+	if c.all {
+		for at := 0; at < l.held; at++ {
+			v, j := (*[vector.Width]float64)(b.v[at*vector.Width:]), (*[vector.Width]float64)(c.put[at*vector.Width:])
+			for lane := range vector.Lanes {
+				c.Drawn[lane] -= v[lane]*j[lane] + v[vector.Lanes+lane]*j[vector.Lanes+lane]
+			}
 		}
 	}
-}
-
-// Voltages are the values of the lanes, and where each unknown's stands among them.
-func (l *Lanes) Voltages() (v []float64, slot []int32) { return l.v, l.slot }
-
-// V is the voltage of an unknown in a lane.
-func (l *Lanes) V(u int32, lane int) complex128 { return vector.At(l.v, int(l.slot[u]), lane) }
-
-// Power is the real power, W at 1 p.u., that an injection is asked for in a lane: of one
-// in a group what the group is given.
-func (l *Lanes) Power(injection, lane int) float64 {
-	list := l.list[injection]
-	if list < 0 {
-		return real(l.given[int(l.s.Injections[injection].Group-1)*vector.Lanes+lane])
-	}
-	return real(vector.At(l.power[list], int(l.member[injection]), lane))
 }

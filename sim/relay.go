@@ -1,0 +1,319 @@
+package sim
+
+import (
+	"errors"
+	"sync/atomic"
+	"time"
+
+	"yearflow/devices"
+	"yearflow/sim/powerflow"
+	"yearflow/sim/powerflow/vector"
+	"yearflow/sim/results"
+)
+
+// relay hands on what a run finds to recorders that work beside it, in order: while they
+// take one interval in, the next is solved. Everything is copied, or lent until it has
+// been taken in, so that the recorders see the same whatever the pace.
+type relay struct {
+	e         *Engine
+	recorders []quietRecorder
+	events    chan *event
+	free      chan *event
+	blocks    chan *powerflow.Block // to be solved in
+	done      chan struct{}
+	failed    atomic.Bool
+	err       error // of a recorder, to be read after done
+	last      *event
+	state     int // device state that currents are read with
+
+	// What the receiving side works with.
+	currents *powerflow.LaneCurrents
+	solved   int // number of the block that currents are of
+	lanes    results.Lanes
+	out      results.Quiet
+	tally    plantTally // of quiet steps
+	busy     time.Duration
+	timed    bool
+}
+
+// event is one thing that is handed on: an interval, the step that ends with it, an
+// action, or quiet steps.
+type event struct {
+	interval, step, action bool
+	state                  results.State
+	devices                []results.DeviceState
+	asInterval             results.Interval
+	asStep                 results.Step
+	asAction               results.Action
+
+	quiet   int // steps, beginning at lane and at start
+	lane    int
+	start   int64
+	block   *powerflow.Block
+	number  int // of the block
+	arrived uint8
+	taps    []int
+	closed  []bool
+
+	retired *powerflow.Block // nothing after this event is of the block
+	wait    chan struct{}    // closed when everything before has been taken in
+}
+
+// plantTally is what generators delivered and did not, kWh.
+type plantTally struct{ generated, curtailed []float64 }
+
+// relayed bounds what is under way, in events and in numbers of their states.
+const (
+	relayEvents  = 32
+	relayNumbers = 4 << 20
+	relayBlocks  = 8
+)
+
+// newRelay begins to receive. Close ends it.
+func newRelay(e *Engine, recorders []quietRecorder) *relay {
+	numbers := len(e.state.V) + len(e.state.Flow)
+	n := max(4, min(relayEvents, relayNumbers/max(numbers, 1)))
+	r := &relay{e: e, recorders: recorders, events: make(chan *event, n), free: make(chan *event, n), done: make(chan struct{}), timed: e.timed, solved: -1,
+		tally: plantTally{make([]float64, len(e.state.Generation)), make([]float64, len(e.state.Generation))}}
+	for range n {
+		r.free <- &event{state: e.state.Like(), devices: make([]results.DeviceState, len(e.devices)), taps: make([]int, len(e.state.Taps)), closed: make([]bool, len(e.state.Closed))}
+	}
+	if e.ahead != nil {
+		l := e.ahead.lanes
+		r.currents = l.NewLaneCurrents(nil)
+		r.currents.Refresh()
+		r.state = e.flow.DeviceState()
+		r.lanes.Flow, r.lanes.Coupling = r.currents.Flow, r.currents.Coupling
+		r.lanes.Source = vector.Make(3 * len(e.net.Model.Sources))
+		r.out.State, r.out.Solver, r.out.Step = &r.lanes, powerflow.InLanes.String(), e.in.axis.Step
+		r.blocks = make(chan *powerflow.Block, relayBlocks+1)
+		for range relayBlocks {
+			r.blocks <- l.NewBlock()
+		}
+	}
+	go r.receive()
+	return r
+}
+
+var errRecorder = errors.New("a recorder failed") // replaced by its own error when the relay closes
+
+// next returns an event to fill.
+func (r *relay) next() (*event, error) {
+	if r.failed.Load() {
+		return nil, errRecorder
+	}
+	ev := <-r.free
+	ev.interval, ev.step, ev.action, ev.quiet, ev.block, ev.retired, ev.wait = false, false, false, 0, nil, nil, nil
+	return ev, nil
+}
+
+// flush sends the interval that waited for the end of its step.
+func (r *relay) flush() {
+	if r.last != nil {
+		r.events <- r.last
+		r.last = nil
+	}
+}
+
+// Interval takes an interval, which waits for what comes next.
+func (r *relay) Interval(iv *results.Interval) error {
+	r.flush()
+	ev, err := r.next()
+	if err != nil {
+		return err
+	}
+	ev.interval = true
+	ev.state.Copy(iv.State)
+	ev.devices = append(ev.devices[:0], iv.Devices...)
+	ev.asInterval = *iv
+	ev.asInterval.State, ev.asInterval.Devices = &ev.state, ev.devices
+	r.last = ev
+	return nil
+}
+
+// Step takes a step. Its last state is that of its last interval, but for what plants
+// store.
+func (r *relay) Step(s *results.Step) error {
+	if r.last == nil || s.Last == nil || len(s.Last.Stored) > 0 {
+		r.flush()
+		ev, err := r.next()
+		if err != nil {
+			return err
+		}
+		if s.Last != nil {
+			ev.state.Copy(s.Last)
+		}
+		r.last = ev
+	}
+	ev := r.last
+	ev.step, ev.asStep = true, *s
+	if s.Last != nil {
+		ev.asStep.Last = &ev.state
+	}
+	r.flush()
+	return nil
+}
+
+// Action takes an action.
+func (r *relay) Action(a *results.Action) error {
+	r.flush()
+	ev, err := r.next()
+	if err != nil {
+		return err
+	}
+	ev.action, ev.asAction = true, *a
+	r.events <- ev
+	return nil
+}
+
+// quiet takes n steps of the block at hand.
+func (r *relay) quiet(step, n int, states []results.DeviceState) error {
+	r.flush()
+	ev, err := r.next()
+	if err != nil {
+		return err
+	}
+	a := r.e.ahead
+	ev.quiet, ev.lane, ev.block, ev.number, ev.arrived = n, step%vector.Lanes, a.lanes.Block, a.number, a.arrived
+	ev.start, _ = r.e.in.axis.Bounds(step)
+	copy(ev.devices[:len(states)], states)
+	ev.devices = ev.devices[:len(states)]
+	copy(ev.taps, r.e.state.Taps)
+	copy(ev.closed, r.e.state.Closed)
+	r.events <- ev
+	return nil
+}
+
+// refresh takes over a new device state, when everything of the old one has been taken in.
+func (r *relay) refresh() {
+	r.flush()
+	r.state = r.e.flow.DeviceState()
+	if ev, err := r.next(); err == nil {
+		ev.wait = make(chan struct{})
+		r.events <- ev
+		<-ev.wait
+		r.currents.Refresh()
+	}
+}
+
+// exchange gives the lanes another block to be solved in: the one at hand is still lent.
+func (r *relay) exchange() error {
+	r.flush()
+	ev, err := r.next()
+	if err != nil {
+		return err
+	}
+	next := <-r.blocks
+	ev.retired = r.e.ahead.lanes.Exchange(next)
+	r.events <- ev
+	return nil
+}
+
+// close ends the receiving and returns the error of the recorder that failed.
+func (r *relay) close() error {
+	r.flush()
+	close(r.events)
+	<-r.done
+	return r.err
+}
+
+func (r *relay) receive() {
+	defer close(r.done)
+	for ev := range r.events {
+		if r.err == nil {
+			began := r.now()
+			if r.err = r.take(ev); r.err != nil {
+				r.failed.Store(true)
+			}
+			if r.timed {
+				r.busy += time.Since(began)
+			}
+		}
+		if ev.retired != nil {
+			r.blocks <- ev.retired
+		}
+		if ev.wait != nil {
+			close(ev.wait)
+		}
+		r.free <- ev
+	}
+}
+
+func (r *relay) now() (t time.Time) {
+	if r.timed {
+		t = time.Now()
+	}
+	return t
+}
+
+// take hands an event to every recorder.
+func (r *relay) take(ev *event) error {
+	if ev.quiet > 0 {
+		r.read(ev)
+	}
+	for _, rec := range r.recorders {
+		var err error
+		switch {
+		case ev.action:
+			err = rec.Action(&ev.asAction)
+		case ev.quiet > 0:
+			err = rec.Quiet(&r.out)
+		default:
+			if ev.interval {
+				err = rec.Interval(&ev.asInterval)
+			}
+			if err == nil && ev.step {
+				err = rec.Step(&ev.asStep)
+			}
+		}
+		if err != nil {
+			return err
+		}
+	}
+	return nil
+}
+
+// read reads what quiet steps are made of from their block.
+func (r *relay) read(ev *event) {
+	e, b := r.e, ev.block
+	if r.solved != ev.number {
+		r.solved = ev.number
+		r.currents.Read(b, ev.arrived)
+		for f, x := range e.net.Fixed {
+			at := 3*x.Source + int(x.Phase)
+			copy(r.lanes.Source[at*vector.Width:(at+1)*vector.Width], r.currents.Source[f*vector.Width:])
+		}
+		r.lanes.V, r.lanes.Slot = b.Voltages()
+	}
+	r.lanes.Taps, r.lanes.Closed = ev.taps, ev.closed
+	r.out.Start, r.out.First, r.out.Count, r.out.Devices = ev.start, ev.lane, ev.quiet, ev.devices
+	hours := float64(e.in.axis.Step) / float64(3600*devices.Second)
+	for i := range ev.quiet {
+		k := (ev.lane + i) % vector.Lanes
+		generation := 0.0
+		for g := range r.tally.generated {
+			watts, curtailed := e.deliveredIn(b, g, k)
+			generation += watts
+			r.tally.generated[g] += watts / 1000 * hours
+			r.tally.curtailed[g] += curtailed * hours
+		}
+		r.lanes.Generation[k] = generation
+		r.lanes.Load[k] = r.currents.Drawn[k] + generation
+	}
+}
+
+// deliveredIn is what a generator delivers in a lane of a block, W, and what its function
+// takes from what it could, kW.
+func (e *Engine) deliveredIn(b *powerflow.Block, generator, k int) (watts, curtailed float64) {
+	for _, v := range e.plants.inverters {
+		if v.generator == generator {
+			available := -b.Power(int(e.in.groups[v.group].Members[0]), k) / 1000 * v.law.members
+			o := v.law.output(available, b.GroupVoltage(v.group, k))
+			return o.P * 1000, o.Curtailed
+		}
+	}
+	for _, m := range e.in.branchesOf[generator] {
+		watts -= b.Power(m, k)
+	}
+	return watts, 0
+}
