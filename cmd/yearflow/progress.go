@@ -37,11 +37,24 @@ func (p *progress) Interval(*results.Interval) error { return nil }
 func (p *progress) Action(*results.Action) error     { return nil }
 
 func (p *progress) Step(*results.Step) error {
-	p.done++
-	if p.done%64 == 0 || p.done == p.total {
+	p.count(1)
+	return nil
+}
+
+// Whole: no step need come by itself.
+func (p *progress) Whole(start, end int64) bool { return false }
+
+func (p *progress) Quiet(q *results.Quiet) error {
+	p.count(q.Count)
+	return nil
+}
+
+func (p *progress) count(steps int) {
+	before := p.done / 64
+	p.done += steps
+	if p.done/64 != before || p.done == p.total {
 		p.show()
 	}
-	return nil
 }
 
 // show tells how far it is, if it is time to.

@@ -146,6 +146,8 @@ var _ sim.Recorder = (*tally)(nil)
 
 func (t *tally) Interval(*results.Interval) error { return nil }
 func (t *tally) Action(*results.Action) error     { return nil }
+func (t *tally) Whole(start, end int64) bool      { return false }
+func (t *tally) Quiet(*results.Quiet) error       { return nil }
 
 func (t *tally) Step(s *results.Step) error {
 	switch s.Status {
