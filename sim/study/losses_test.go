@@ -217,7 +217,7 @@ func TestLossesOfOneStep(t *testing.T) {
 	if f := at(t, l.factors().Rows, "loss factor", "all", "exact"); parse(f) != 1 {
 		t.Errorf("loss factor of one step %s, want 1", f)
 	}
-	if !said(l.Cautions, "", "1 steps") {
+	if !said(l.Cautions, "", "single step") {
 		t.Errorf("nobody says how short it is: %v", l.Cautions)
 	}
 	if c := compared(t, p, "wide"); len(c.Ranking) != 2 {
