@@ -144,7 +144,11 @@ func quietFeeder(t testing.TB, seed uint64) *tiny {
 	if seed%4 == 1 {
 		set.Limits.Own, set.Limits.Low, set.Limits.High, set.Limits.OuterLow, set.Limits.OuterHigh = true, 0.98, 1.01, 0.96, 1.03
 	}
-	x.plan.Model.Sections[1].Rating = 2
+	m := x.plan.Model
+	m.Sections[1].Rating = 2
+	if seed%2 == 0 {
+		m.Constructions[0].Rating, m.Sections[0].Emergency = math.NaN(), 60
+	}
 	return x
 }
 
@@ -154,7 +158,7 @@ var about = cmp.Comparer(func(a, b float64) bool {
 })
 
 func TestQuietStepsAreSteps(t *testing.T) {
-	for seed := range uint64(60) {
+	for seed := range uint64(24) {
 		t.Run(fmt.Sprint(seed), func(t *testing.T) {
 			x := quietFeeder(t, seed)
 			rnd := rand.New(rand.NewPCG(seed, 21))
@@ -304,7 +308,7 @@ func withoutHashes(t *testing.T, data []byte) []byte {
 }
 
 func TestQuietStepsAreStepsToTotalsAndTally(t *testing.T) {
-	for seed := range uint64(40) {
+	for seed := range uint64(12) {
 		x := quietFeeder(t, seed)
 		rnd := rand.New(rand.NewPCG(seed, 22))
 		s := calm(x, rnd)
@@ -416,7 +420,7 @@ func TestUnbalanceLiesBetween(t *testing.T) {
 	var far, ratio [vector.Lanes]float64
 	var triples vector.Triples
 	triples.Row(0, 1, 2)
-	for range 200_000 {
+	for range 50_000 {
 		size := math.Exp(-12 * rnd.Float64())
 		var u [3]complex128
 		for p := range u {

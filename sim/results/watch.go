@@ -258,14 +258,26 @@ func (w *watch) boundSquare(row int, scale float64, loading func(square float64)
 	if math.IsInf(s, 1) {
 		return s
 	}
-	for s > 0 && loading(s) > high {
-		s = math.Nextafter(s, 0)
+	// The last digits; a bound that is too low costs a look, no more.
+	for range roundings {
+		if loading(s) <= high {
+			break
+		}
+		s = math.Nextafter(s, -1)
 	}
-	for {
+	if loading(s) > high {
+		return -1
+	}
+	for range roundings {
 		next := math.Nextafter(s, math.Inf(1))
 		if loading(next) > high {
-			return s
+			break
 		}
 		s = next
 	}
+	return s
 }
+
+// roundings is more than the units in the last place by which the square of a root may
+// miss.
+const roundings = 20
