@@ -38,6 +38,11 @@ func (e *Engine) solve(tol powerflow.Tolerance) (bool, error) {
 		e.lap(&e.timing.Solving)
 		return false, nil
 	}
+	if e.sense != nil {
+		e.sensed()
+		e.lap(&e.timing.Solving)
+		return true, nil
+	}
 	e.flow.Flows(e.state.Flow, e.state.V)
 	e.flow.Couplings(e.state.Coupling, e.source, &e.input, e.state.V, e.state.Flow)
 	e.flow.Drawn(e.drawn, &e.input, e.state.V)
@@ -54,6 +59,35 @@ func (e *Engine) solve(tol powerflow.Tolerance) (bool, error) {
 	e.sources()
 	e.lap(&e.timing.Solving)
 	return true, nil
+}
+
+// sensed reads what controls look at and what generators deliver; the rest is read by who
+// takes the state in (complete).
+func (e *Engine) sensed() {
+	e.sense.Read(e.state.Flow, e.state.Coupling, e.source, &e.input, e.state.V)
+	e.sources()
+	for g, branches := range e.in.branchesOf {
+		e.state.Generation[g] = 0
+		for _, k := range branches {
+			e.state.Generation[g] -= e.flow.DrawnBy(k, e.input.Power[k], e.state.V)
+		}
+	}
+}
+
+// complete reads everything else of a state that sensed has begun, for the powers that
+// injections are asked for. It may be called while the engine is at work.
+func (e *Engine) complete(s *results.State, power []complex128) {
+	e.flow.FlowsWith(s.Flow, s.V, s.Closed)
+	clear(s.Load)
+	clear(s.Generation)
+	for k := range e.in.injections {
+		x := e.flow.DrawnBy(k, power[k], s.V)
+		if l := e.in.loadOf[k]; l >= 0 {
+			s.Load[l] += x
+		} else if g := e.in.generator[k]; g >= 0 {
+			s.Generation[g] -= x
+		}
+	}
 }
 
 // sources sets what each source sends into its node: the current of the voltage that

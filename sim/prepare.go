@@ -68,6 +68,8 @@ type Engine struct {
 	ahead     *ahead // nil: a step's input depends on the steps before it
 	quiet     *quiet // nil: every step is gone through by itself
 	relay     *relay // nil: a recorder looks at the engine itself, and is called by it
+	// sense, where it is not nil, reads what controls look at; the relay reads the rest.
+	sense     *powerflow.Sense
 	stepwise  string // why there is no ahead
 	speculate bool   // a run is going through its steps in order
 	step      int    // whose inputs are at hand

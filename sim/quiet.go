@@ -67,23 +67,30 @@ func newQuiet(e *Engine) *quiet {
 		return nil
 	}
 	q := &quiet{number: -1, coarse: make([]float64, len(e.devices)*vector.Lanes), states: make([]results.DeviceState, len(e.devices))}
-	flows := []int{}
 	for _, d := range e.devices {
 		c, ok := d.Controller.(idler)
 		if !ok {
 			return nil
 		}
 		q.controls = append(q.controls, c)
+	}
+	q.currents = e.ahead.lanes.NewLaneCurrents(e.watchedFlows())
+	return q
+}
+
+// watchedFlows are the places in State.Flow that devices look at.
+func (e *Engine) watchedFlows() []int {
+	flows := []int{}
+	for _, d := range e.devices {
 		if d.tap != nil {
 			flows = append(flows, d.tap.source.flows...)
-		} else {
-			for _, w := range d.cap.watched {
-				flows = append(flows, w.flows...)
-			}
+			continue
+		}
+		for _, w := range d.cap.watched {
+			flows = append(flows, w.flows...)
 		}
 	}
-	q.currents = e.ahead.lanes.NewLaneCurrents(flows)
-	return q
+	return flows
 }
 
 // lane is an instant that was solved ahead.

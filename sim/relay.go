@@ -41,6 +41,7 @@ type relay struct {
 type event struct {
 	interval, step, action bool
 	state                  results.State
+	power                  []complex128 // of the state, where it is to be completed
 	devices                []results.DeviceState
 	asInterval             results.Interval
 	asStep                 results.Step
@@ -103,6 +104,7 @@ func (r *relay) next() (*event, error) {
 		return nil, errRecorder
 	}
 	ev := <-r.free
+	ev.power = ev.power[:0]
 	ev.interval, ev.step, ev.action, ev.quiet, ev.block, ev.retired, ev.wait = false, false, false, 0, nil, nil, nil
 	return ev, nil
 }
@@ -123,12 +125,22 @@ func (r *relay) Interval(iv *results.Interval) error {
 		return err
 	}
 	ev.interval = true
-	ev.state.Copy(iv.State)
+	r.copy(ev, iv.State)
 	ev.devices = append(ev.devices[:0], iv.Devices...)
 	ev.asInterval = *iv
 	ev.asInterval.State, ev.asInterval.Devices = &ev.state, ev.devices
 	r.last = ev
 	return nil
+}
+
+// copy takes a state over, and what it takes to complete it.
+func (r *relay) copy(ev *event, s *results.State) {
+	if r.e.sense == nil {
+		ev.state.Copy(s)
+		return
+	}
+	ev.state.CopyBut(s)
+	ev.power = append(ev.power[:0], r.e.input.Power...)
 }
 
 // Step takes a step. Its last state is that of its last interval, but for what plants
@@ -141,7 +153,7 @@ func (r *relay) Step(s *results.Step) error {
 			return err
 		}
 		if s.Last != nil {
-			ev.state.Copy(s.Last)
+			r.copy(ev, s.Last)
 		}
 		r.last = ev
 	}
@@ -250,6 +262,9 @@ func (r *relay) now() (t time.Time) {
 func (r *relay) take(ev *event) error {
 	if ev.quiet > 0 {
 		r.read(ev)
+	}
+	if len(ev.power) > 0 {
+		r.e.complete(&ev.state, ev.power)
 	}
 	for _, rec := range r.recorders {
 		var err error

@@ -79,11 +79,15 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 // walk goes through the steps. Recorders that need not look at the engine work beside it.
 func (r *runner) walk(ctx context.Context) (err error) {
 	e := r.Engine
-	e.quiet, e.relay = nil, nil
+	e.quiet, e.relay, e.sense = nil, nil, nil
 	if beside := detached(r.recorders); beside != nil && e.allocation == nil {
 		e.quiet, e.relay = newQuiet(e), newRelay(e, beside)
 		r.recorders = []Recorder{e.relay}
+		if e.ahead != nil && len(e.in.groups) == 0 {
+			e.sense = e.flow.NewSense(e.watchedFlows())
+		}
 		defer func() {
+			e.sense = nil
 			failed := e.relay.close()
 			if failed != nil {
 				err = failed

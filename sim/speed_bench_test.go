@@ -2,10 +2,12 @@ package sim_test
 
 import (
 	"context"
+	"path/filepath"
 	"testing"
 	"time"
 
 	"yearflow/sim"
+	"yearflow/sim/demo"
 	"yearflow/sim/results"
 	"yearflow/sim/synthetic"
 )
@@ -54,5 +56,25 @@ func BenchmarkEngine(b *testing.B) {
 			t := e.Timing()
 			b.ReportMetric(float64(t.Iterations)/float64(t.Solutions), "iterations")
 		})
+	}
+}
+
+// BenchmarkDemoYear is the year of the demonstration study with all its files but the
+// figures.
+func BenchmarkDemoYear(b *testing.B) {
+	e := prepare(b, demo.Study(), "", sim.Options{})
+	dir := b.TempDir()
+	for b.Loop() {
+		w, err := results.Create(filepath.Join(dir, "r"), e.Plan)
+		if err != nil {
+			b.Fatal(err)
+		}
+		out, err := e.Run(context.Background(), w)
+		if err != nil {
+			b.Fatal(err)
+		}
+		if err := w.Finish(out, results.RunInfo{}); err != nil {
+			b.Fatal(err)
+		}
 	}
 }

@@ -9,8 +9,13 @@ func (s *State) Like() State {
 
 // Copy takes over another state; its room is used where it suffices.
 func (s *State) Copy(from *State) {
-	s.V = append(s.V[:0], from.V...)
 	s.Flow = append(s.Flow[:0], from.Flow...)
+	s.CopyBut(from)
+}
+
+// CopyBut takes over all but Flow.
+func (s *State) CopyBut(from *State) {
+	s.V = append(s.V[:0], from.V...)
 	s.Coupling = append(s.Coupling[:0], from.Coupling...)
 	s.Source = append(s.Source[:0], from.Source...)
 	s.Load = append(s.Load[:0], from.Load...)
