@@ -185,7 +185,7 @@ func (l *lossesDocument) marginalMap(st *style, m marginalSpots) (*page, Figure,
 		}
 		n.c.DrawGlyphNoClip(draw.GlyphStyle{Color: black, Radius: vg.Points(6), Shape: draw.RingGlyph{}}, at)
 		words := m.l.Cell(i, "node") + ", " + l.marginal.Rounded(i, marginalColumn, 1).Show + " %"
-		x, y := roomForWords(at, small.Width(words), vg.Rectangle{Min: n.body.Min, Max: vg.Point{X: n.body.Max.X - 122, Y: n.body.Max.Y}}, lines)
+		x, y := roomForWords(at, 9, small.Width(words), vg.Rectangle{Min: n.body.Min, Max: vg.Point{X: n.body.Max.X - 122, Y: n.body.Max.Y}}, lines)
 		n.haloed(small, x, y, text.XLeft, text.YCenter, words)
 	}
 	l.marginalScale(n, k)
@@ -284,10 +284,10 @@ func (l *lossesDocument) marginalDistance(st *style, m marginalSpots, column, fi
 	return p, f, caption
 }
 
-// roomForWords finds where words of a width stand beside a point: within room, and over as
+// roomForWords finds where words of a width stand at a distance beside a point: within room, and over as
 // few of the lines as can be. It returns their left end and middle.
-func roomForWords(at vg.Point, wide vg.Length, room vg.Rectangle, lines [][2]vg.Point) (x, y vg.Length) {
-	const away, high = vg.Length(9), vg.Length(12)
+func roomForWords(at vg.Point, away, wide vg.Length, room vg.Rectangle, lines [][2]vg.Point) (x, y vg.Length) {
+	const high = vg.Length(12)
 	fewest := math.MaxInt
 	for _, dy := range []vg.Length{0, 11, -11, 18, -18} {
 		for _, left := range []vg.Length{at.X + away, at.X - away - wide, at.X - wide/2} {

@@ -41,6 +41,17 @@ func criterionKind(name string) string {
 	return "unbalance, operations, other"
 }
 
+// bindingWord is the kind in few words, for the end of a bar.
+func bindingWord(name string) string {
+	switch criterionColor(name) {
+	case blue:
+		return "rapid change"
+	case purple:
+		return name
+	}
+	return criterionKind(name)
+}
+
 // bindingKeys is the legend of what binds.
 func (h *hostingDocument) bindingKeys() (items []key) {
 	seen := map[string]bool{}
@@ -114,7 +125,12 @@ func (h *hostingDocument) placesFigure(st *style) (*page, Figure, error) {
 			a.c.StrokeLine2(draw.LineStyle{Color: tone, Width: vg.Points(1)}, a.x(keeps), y, end, y)
 			a.c.StrokeLine2(draw.LineStyle{Color: black, Width: vg.Points(1.8)}, end, y-6, end, y+6)
 		}
-		a.label(small, end+4, y, text.XLeft, text.YCenter, number(keeps, 0))
+		// What binds in words too, for those who read in grey.
+		words := number(keeps, 0)
+		if c := h.places.Cell(i, "criterion"); c != "" && end+4+small.Width(words+", "+bindingWord(c)) < p.body.Max.X {
+			words += ", " + bindingWord(c)
+		}
+		a.haloed(small, end+4, y, text.XLeft, text.YCenter, words)
 	}
 	a.keys(items, p.body.Min.X, a.rect.Min.Y-46)
 	return p, f, nil
@@ -212,24 +228,8 @@ func (h *hostingDocument) drawHostingMap(s *survey, st *style) (*page, Figure, e
 		n.dot(x, y, r+0.8, white)
 		n.dot(x, y, r, criterionColor(h.places.Cell(i, "criterion")))
 	}
+	h.mapWords(n, l, s, top)
 	small := n.text(smallSize, black)
-	for i := range h.places.Rows {
-		if xy, ok := l.at[h.places.Cell(i, "place")]; ok {
-			keeps := numberIn(h.places.Cell(i, "keeps"))
-			r := vg.Length(3.5 + 8.5*math.Sqrt(keeps/math.Max(top, 1)))
-			words := h.places.Cell(i, "place") + " " + number(keeps, 0)
-			x, side := n.x(xy[0])+r+3, text.XLeft
-			// At the height of the legend there is less room.
-			edge := n.body.Max.X
-			if n.y(xy[1]) > n.body.Max.Y-24-30*vg.Length(len(h.bindingKeys())) {
-				edge -= 118
-			}
-			if x+small.Width(words) > edge {
-				x, side = n.x(xy[0])-r-3, text.XRight
-			}
-			n.haloed(small, x, n.y(xy[1]), side, text.YCenter, words)
-		}
-	}
 	y := n.body.Max.Y - 14
 	n.label(n.text(labelSize, black), n.body.Max.X-112, y, text.XLeft, text.YBottom, "What binds")
 	for _, k := range h.bindingKeys() {
@@ -243,4 +243,47 @@ func (h *hostingDocument) drawHostingMap(s *survey, st *style) (*page, Figure, e
 		}
 	}
 	return p, f, nil
+}
+
+// mapWords names the places beside their discs, clear of lines, of other discs and of the
+// legend where there is room.
+func (h *hostingDocument) mapWords(n *panel, l layout, s *survey, top float64) {
+	var lines [][2]vg.Point
+	for _, b := range s.Branches {
+		a, ok1 := l.at[b.From]
+		z, ok2 := l.at[b.To]
+		if ok1 && ok2 {
+			lines = append(lines, [2]vg.Point{{X: n.x(a[0]), Y: n.y(a[1])}, {X: n.x(z[0]), Y: n.y(z[1])}})
+		}
+	}
+	radius := func(i int) vg.Length {
+		return vg.Length(3.5 + 8.5*math.Sqrt(numberIn(h.places.Cell(i, "keeps"))/math.Max(top, 1)))
+	}
+	for i := range h.places.Rows { // a disc weighs more than a line
+		if xy, ok := l.at[h.places.Cell(i, "place")]; ok {
+			x, y, r := n.x(xy[0]), n.y(xy[1]), radius(i)
+			for _, d := range []vg.Length{-0.6, 0, 0.6} {
+				lines = append(lines, [2]vg.Point{{X: x - r, Y: y + d*r}, {X: x + r, Y: y + d*r}})
+			}
+		}
+	}
+	small := n.text(smallSize, black)
+	for i := range h.places.Rows {
+		xy, ok := l.at[h.places.Cell(i, "place")]
+		if !ok {
+			continue
+		}
+		words := h.places.Cell(i, "place") + " " + number(numberIn(h.places.Cell(i, "keeps")), 0)
+		at := vg.Point{X: n.x(xy[0]), Y: n.y(xy[1])}
+		// At the height of the legend there is less room.
+		room := n.body
+		if at.Y > n.body.Max.Y-24-30*vg.Length(len(h.bindingKeys())) {
+			room.Max.X -= 118
+		}
+		x, y := roomForWords(at, radius(i)+3, small.Width(words), room, lines)
+		n.haloed(small, x, y, text.XLeft, text.YCenter, words)
+		for _, d := range []vg.Length{-4, 0, 4} { // the next words keep clear of these
+			lines = append(lines, [2]vg.Point{{X: x, Y: y + d}, {X: x + small.Width(words), Y: y + d}})
+		}
+	}
 }
