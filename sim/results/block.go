@@ -26,6 +26,7 @@ type block struct {
 	// Of the Quiet at hand. Powers are W.
 	mask                 uint8
 	seen, left           uint8 // lanes in which some voltage is beyond its bounds, or has left its bin
+	over                 uint8 // lanes in which some current of a line is
 	flagged              [lossKinds]uint8
 	least, most          [vector.Lanes]float64 // p.u.
 	byKind               [lossKinds][vector.Lanes]float64
@@ -86,9 +87,6 @@ func (b *block) place(l *Lanes) {
 	for i := range m.caps {
 		b.caps.Row(m.caps[i].pairs(l.Slot)...)
 	}
-	for i := range m.caps {
-		b.caps.Rows[i].High = math.Inf(1)
-	}
 }
 
 // pairs are the voltages and the currents of an element's terminals.
@@ -118,7 +116,11 @@ func (b *block) read(q *Quiet) {
 	}
 	b.seen, b.left = b.points.Watch(b.pu, l.V, b.mask, &b.least, &b.most)
 	for k := range b.parts {
-		b.flagged[k] = b.parts[k].Watch(b.power[k], l.V, l.Flow, b.mask, &b.byKind[k])
+		var over uint8
+		b.flagged[k], over = b.parts[k].Watch(b.power[k], l.V, l.Flow, b.mask, &b.byKind[k])
+		if LossKind(k) == LineLoss {
+			b.over = over
+		}
 	}
 	b.caps.Watch(b.capW, l.V, l.Flow, b.mask, &b.condenser)
 	b.losses, b.source, b.sourceVar = [vector.Lanes]float64{}, [vector.Lanes]float64{}, [vector.Lanes]float64{}

@@ -51,7 +51,9 @@ func calm(x *tiny, rnd *rand.Rand) *script {
 			continue
 		}
 		if len(pool) < 5 {
-			pool = append(pool, x.state(randomLevels(rnd), taps, closed))
+			levels := randomLevels(rnd)
+			levels["n1.A"] = 0.04 + 0.01*rnd.Float64() // an unbalance about 3 %
+			pool = append(pool, x.state(levels, taps, closed))
 		}
 		start := p.Start + int64(k)*p.Step
 		iv := &Interval{Start: start, End: start + p.Step, Settled: true, State: pool[rnd.IntN(len(pool))], Devices: slices.Clone(devices)}
@@ -387,6 +389,36 @@ func TestAQuietAllocatesNothing(t *testing.T) {
 	}
 	if n := testing.AllocsPerRun(400, do); n != 0 {
 		t.Errorf("a row of quiet steps allocates %g times, want 0", n)
+	}
+}
+
+// Point by point, an extreme is that of instant by instant: of equal ones the first in
+// time, then the first point.
+func TestExtremesPointByPoint(t *testing.T) {
+	rnd := rand.New(rand.NewPCG(9, 9))
+	for range 2000 {
+		var v [3][4]float64
+		for i := range v {
+			for k := range v[i] {
+				v[i][k] = float64(rnd.IntN(4))
+			}
+		}
+		var low, high, wantLow, wantHigh extreme
+		for k := range v[0] {
+			for i := range v {
+				wantLow.low(v[i][k], i, int64(k))
+				wantHigh.high(v[i][k], i, int64(k))
+			}
+		}
+		for i := range v {
+			for k := range v[i] {
+				low.lower(v[i][k], i, int64(k))
+				high.higher(v[i][k], i, int64(k))
+			}
+		}
+		if low != wantLow || high != wantHigh {
+			t.Fatalf("%v: %v and %v, want %v and %v", v, low, high, wantLow, wantHigh)
+		}
 	}
 }
 

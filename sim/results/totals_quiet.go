@@ -1,8 +1,6 @@
 package results
 
 import (
-	"math"
-
 	"yearflow/sim/powerflow/vector"
 )
 
@@ -60,11 +58,6 @@ func (b *totalsBlock) bound(s *Sums) {
 		r.Low, r.High = c.LowA-limitSlack, c.HighA+limitSlack
 		if b.judge.judged[i] {
 			r.Low, r.High = max(r.Low, b.low), min(r.High, b.high)
-		}
-	}
-	for kind := range b.parts {
-		for i := range b.parts[kind].Rows {
-			b.parts[kind].Rows[i].High = math.Inf(1)
 		}
 	}
 }

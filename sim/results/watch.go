@@ -20,12 +20,14 @@ type watch struct {
 	bare   []int // rows without a part: their loss is 0
 	bareAt bool  // it has been booked
 
-	sections, couplings   vector.Squares
-	sectionRow, coupleRow []int // into Meter.loading
-	banks                 vector.Banks
-	bankRow               []int
-	bankFlow              vector.Rows // sums of currents
-	bankAmps              []float64
+	sections  []sectionEnds
+	ofPart    [][]int // sections of a line's part
+	couplings vector.Squares
+	coupleRow []int // into Meter.loading
+	banks     vector.Banks
+	bankRow   []int
+	bankFlow  vector.Rows // sums of currents
+	bankAmps  []float64
 
 	triples      vector.Triples
 	triple       []float64
@@ -45,6 +47,10 @@ type watch struct {
 	taps  []int // that the bounds are drawn for
 }
 
+// sectionEnds is a phase of a section: its row of Meter.loading, and the currents of its
+// two ends among the pairs of the lines' losses.
+type sectionEnds struct{ row, from, to int }
+
 // sharedLoss is a row of losses.csv of several parts.
 type sharedLoss struct {
 	row   int
@@ -56,13 +62,15 @@ func newWatch(s *statistics) *watch {
 	m := s.meter
 	w := &watch{block: newBlock(m, s.judge), s: s, stale: true}
 	w.nameParts()
+	part, pair := w.linePairs()
 	phases := 0
 	for i := range m.loading {
 		row := &m.loading[i]
 		switch row.kind {
 		case network.Section:
-			w.sectionRow = append(w.sectionRow, i)
-			w.sections.Row(row.from, row.to)
+			p := part[row.from]
+			w.ofPart[p] = append(w.ofPart[p], len(w.sections))
+			w.sections = append(w.sections, sectionEnds{i, pair[row.from], pair[row.to]})
 		case network.Transformer:
 			w.bankRow = append(w.bankRow, i)
 			for k := range row.flows.phases {
@@ -83,6 +91,24 @@ func newWatch(s *statistics) *watch {
 	n := len(m.Points)
 	w.bins, w.bin, w.since = make([]int32, n*vector.Lanes), make([]int32, n), make([]int64, n)
 	return w
+}
+
+// linePairs finds the part and the pair of each current, by State.Flow, of a line.
+func (w *watch) linePairs() (part, pair map[int]int) {
+	part, pair = map[int]int{}, map[int]int{}
+	for i := range w.meter.parts {
+		p := &w.meter.parts[i]
+		if p.kind != LineLoss {
+			continue
+		}
+		for k, t := range p.terminals {
+			if t >= 0 {
+				part[p.flow+k], pair[p.flow+k] = len(w.ofPart), len(pair)
+			}
+		}
+		w.ofPart = append(w.ofPart, nil)
+	}
+	return part, pair
 }
 
 // nameParts finds the rows that parts are summed into.
@@ -195,7 +221,7 @@ func (w *watch) bound() {
 			w.parts[kind].Rows[i].High = high
 		}
 	}
-	for i := range w.sectionRow {
+	for i := range w.sections {
 		w.boundSection(i)
 	}
 	for i := range w.coupleRow {
@@ -220,7 +246,9 @@ func (w *watch) boundPoint(i int) {
 }
 
 func (w *watch) boundSection(i int) {
-	w.sections.High[i] = w.boundSquare(w.sectionRow[i], 1, math.Sqrt)
+	x, limit := &w.sections[i], w.parts[LineLoss].Limit
+	limit[x.from] = w.boundSquare(x.row, 1, math.Sqrt)
+	limit[x.to] = limit[x.from]
 }
 
 func (w *watch) boundBank(i int) {

@@ -74,11 +74,24 @@ func (w *watch) distribute(q *Quiet) {
 	if w.left == 0 {
 		return
 	}
-	vector.Bins(w.bins, w.pu, binWidth, lastBin)
+	few := 0
+	for _, left := range w.points.Left {
+		if left != 0 {
+			few++
+		}
+	}
+	all := few > len(w.bin)/4
+	if all {
+		vector.Bins(w.bins, w.pu, binWidth, lastBin)
+	}
 	last := q.lane(q.Count - 1)
 	for i, left := range w.points.Left {
 		if left == 0 {
 			continue
+		}
+		if !all {
+			at := i * vector.Lanes
+			vector.Bins(w.bins[at:at+vector.Lanes], w.pu[at:at+vector.Lanes], binWidth, lastBin)
 		}
 		h, b := &d.bins[i], (*[vector.Lanes]int32)(w.bins[i*vector.Lanes:])
 		if ns := then - w.since[i]; ns > 0 {
@@ -228,10 +241,13 @@ func (w *watch) lossPeaks(q *Quiet) {
 
 func (w *watch) loadings(q *Quiet) {
 	l := q.State
-	if w.sections.Watch(l.Flow, w.mask) != 0 {
-		for i, flag := range w.sections.Flags {
-			if flag != 0 {
-				w.loading(q, w.sectionRow[i])
+	if w.over != 0 {
+		for part, flag := range w.parts[LineLoss].Over {
+			if flag == 0 {
+				continue
+			}
+			for _, i := range w.ofPart[part] {
+				w.loading(q, w.sections[i].row)
 				w.boundSection(i)
 			}
 		}

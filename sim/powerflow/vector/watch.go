@@ -1,5 +1,7 @@
 package vector
 
+import "math"
+
 //go:generate go run -tags avo ./generate -part watch -out watch_amd64.s -stubs watch_stubs_amd64.go
 
 // What follows looks at solved instants and points at what is worth a closer look: each
@@ -59,16 +61,23 @@ type Dots struct {
 	wideV, wideI int
 	Rows         []DotRow
 	Flags        []uint8
+	// Limit has, by pair, the largest square of the current, re² + im², that is within its
+	// bounds; Over are the flags of rows with a current beyond.
+	Limit []float64
+	Over  []uint8
 }
 
 // DotRow has the upper bound of a power and its sum over all lanes and calls.
 type DotRow struct{ High, Sum float64 }
 
-// Row appends a power.
+// Row appends a power without bounds.
 func (d *Dots) Row(pairs ...[2]int) {
 	d.index = appendPairs(d.index, pairs, &d.wideV, &d.wideI)
-	d.Rows = append(d.Rows, DotRow{})
-	d.Flags = append(d.Flags, 0)
+	d.Rows = append(d.Rows, DotRow{High: math.Inf(1)})
+	d.Flags, d.Over = append(d.Flags, 0), append(d.Over, 0)
+	for range pairs {
+		d.Limit = append(d.Limit, math.Inf(1))
+	}
 }
 
 func appendPairs(index []int32, pairs [][2]int, wideV, wideI *int) []int32 {
@@ -81,18 +90,19 @@ func appendPairs(index []int32, pairs [][2]int, wideV, wideI *int) []int32 {
 }
 
 // Watch sets out to the powers, Lanes numbers a row, and total to their sums by lane,
-// whatever the mask. It returns all flags in one. Every operation is rounded: Σ in order
-// of re·re + im·im.
-func (d *Dots) Watch(out, v, i []float64, mask uint8, total *[Lanes]float64) uint8 {
+// whatever the mask. It returns all flags in one, beyond those of powers and over those
+// of currents. Every operation is rounded: Σ in order of re·re + im·im.
+func (d *Dots) Watch(out, v, i []float64, mask uint8, total *[Lanes]float64) (beyond, over uint8) {
 	*total = [Lanes]float64{}
 	n := len(d.Rows)
 	if n == 0 {
-		return 0
+		return 0, 0
 	}
-	if len(v) < d.wideV*Width || len(i) < d.wideI*Width || len(out) < n*Lanes || len(d.Flags) != n {
+	if len(v) < d.wideV*Width || len(i) < d.wideI*Width || len(out) < n*Lanes || len(d.Flags) != n || len(d.Over) != n || len(d.index) != n+2*len(d.Limit) {
 		panic("vector: powers reach beyond the values")
 	}
-	return uint8(dots(&out[0], &v[0], first(i), &d.index[0], &d.Rows[0].High, &d.Flags[0], &masks[mask][0], &total[0], n))
+	found := dots(&out[0], &v[0], first(i), &d.index[0], &d.Rows[0].High, first(d.Limit), &d.Flags[0], &d.Over[0], &masks[mask][0], &total[0], n)
+	return uint8(found), uint8(found >> 8)
 }
 
 // Squares is a list of squares of magnitudes, re² + im², each the larger one of two

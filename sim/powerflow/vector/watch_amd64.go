@@ -12,14 +12,14 @@ func lengths(out, v *float64, index *int32, rows *float64, flags, left *uint8, m
 	return plainLengths(out, v, index, rows, flags, left, mask, least, most, n)
 }
 
-func dots(out, v, i *float64, index *int32, rows *float64, flags *uint8, mask *uint64, total *float64, n int) uint64 {
+func dots(out, v, i *float64, index *int32, rows, limits *float64, flags, over *uint8, mask *uint64, total *float64, n int) uint64 {
 	switch kernel {
 	case 2:
-		return dots512(out, v, i, index, rows, flags, mask, total, n)
+		return dots512(out, v, i, index, rows, limits, flags, over, mask, total, n)
 	case 1:
-		return dots256(out, v, i, index, rows, flags, mask, total, n)
+		return dots256(out, v, i, index, rows, limits, flags, over, mask, total, n)
 	}
-	return plainDots(out, v, i, index, rows, flags, mask, total, n)
+	return plainDots(out, v, i, index, rows, limits, flags, over, mask, total, n)
 }
 
 func squares(x *float64, index *int32, high *float64, flags *uint8, mask *uint64, n int) uint64 {

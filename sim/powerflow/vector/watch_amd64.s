@@ -136,17 +136,17 @@ ground:
 	VZEROUPPER
 	RET
 
-// func dots256(out *float64, v *float64, i *float64, index *int32, rows *float64, flags *uint8, mask *uint64, total *float64, n int) uint64
+// func dots256(out *float64, v *float64, i *float64, index *int32, rows *float64, limits *float64, flags *uint8, over *uint8, mask *uint64, total *float64, n int) uint64
 // Requires: AVX
-TEXT ·dots256(SB), NOSPLIT, $0-80
+TEXT ·dots256(SB), NOSPLIT, $0-96
 	MOVQ      out+0(FP), AX
 	MOVQ      v+8(FP), CX
 	MOVQ      i+16(FP), DX
 	MOVQ      index+24(FP), BX
 	MOVQ      rows+32(FP), SI
-	MOVQ      n+64(FP), DI
-	MOVQ      flags+40(FP), R9
-	MOVQ      mask+48(FP), R8
+	MOVQ      limits+40(FP), DI
+	MOVQ      flags+48(FP), R9
+	MOVQ      mask+64(FP), R8
 	XORQ      R11, R11
 	XORQ      R10, R10
 	VMOVUPD   (R8), Y0
@@ -164,39 +164,67 @@ row:
 	ADDQ    $0x04, BX
 	XORQ    R12, R12
 	VXORPD  Y2, Y2, Y2
+	VXORPD  Y9, Y9, Y9
 	VXORPD  Y3, Y3, Y3
+	VXORPD  Y10, Y10, Y10
 	TESTQ   R15, R15
 	JZ      end
 
 pair:
-	MOVLQSX (BX), R13
-	MOVLQSX 4(BX), R14
-	ADDQ    $0x08, BX
-	VMOVUPD (CX)(R13*1), Y4
-	VMULPD  (DX)(R14*1), Y4, Y4
-	VMOVUPD 64(CX)(R13*1), Y5
-	VMULPD  64(DX)(R14*1), Y5, Y5
-	VADDPD  Y5, Y4, Y4
-	VADDPD  Y4, Y2, Y2
-	VMOVUPD 32(CX)(R13*1), Y4
-	VMULPD  32(DX)(R14*1), Y4, Y4
-	VMOVUPD 96(CX)(R13*1), Y5
-	VMULPD  96(DX)(R14*1), Y5, Y5
-	VADDPD  Y5, Y4, Y4
-	VADDPD  Y4, Y3, Y3
-	DECQ    R15
-	JNZ     pair
+	MOVLQSX      (BX), R13
+	MOVLQSX      4(BX), R14
+	ADDQ         $0x08, BX
+	VBROADCASTSD (DI), Y6
+	ADDQ         $0x08, DI
+	VMOVUPD      (DX)(R14*1), Y7
+	VMOVUPD      64(DX)(R14*1), Y8
+	VMULPD       (CX)(R13*1), Y7, Y4
+	VMULPD       64(CX)(R13*1), Y8, Y5
+	VADDPD       Y5, Y4, Y4
+	VADDPD       Y4, Y2, Y2
+	VMULPD       Y7, Y7, Y7
+	VMULPD       Y8, Y8, Y8
+	VADDPD       Y8, Y7, Y7
+	VCMPPD       $0x06, Y6, Y7, Y7
+	VORPD        Y7, Y9, Y9
+	VMOVUPD      32(DX)(R14*1), Y7
+	VMOVUPD      96(DX)(R14*1), Y8
+	VMULPD       32(CX)(R13*1), Y7, Y4
+	VMULPD       96(CX)(R13*1), Y8, Y5
+	VADDPD       Y5, Y4, Y4
+	VADDPD       Y4, Y3, Y3
+	VMULPD       Y7, Y7, Y7
+	VMULPD       Y8, Y8, Y8
+	VADDPD       Y8, Y7, Y7
+	VCMPPD       $0x06, Y6, Y7, Y7
+	VORPD        Y7, Y10, Y10
+	DECQ         R15
+	JNZ          pair
 
 end:
-	VBROADCASTSD (SI), Y4
+	VMOVMSKPD    Y9, R13
+	ORQ          R13, R12
+	VMOVMSKPD    Y10, R13
+	SHLL         $0x04, R13
+	ORQ          R13, R12
+	ANDQ         R10, R12
+	MOVQ         over+56(FP), R13
+	MOVQ         n+80(FP), R14
+	MOVB         R12, (R13)
+	INCQ         R13
+	MOVQ         R13, over+56(FP)
+	SHLQ         $0x08, R12
+	ORQ          R12, R11
+	XORQ         R12, R12
+	VBROADCASTSD (SI), Y6
 	VMOVUPD      Y2, (AX)
 	VADDPD       Y2, Y0, Y0
-	VCMPPD       $0x06, Y4, Y2, Y5
-	VMOVMSKPD    Y5, R13
+	VCMPPD       $0x06, Y6, Y2, Y4
+	VMOVMSKPD    Y4, R13
 	ORQ          R13, R12
 	VMOVUPD      Y3, 32(AX)
 	VADDPD       Y3, Y1, Y1
-	VCMPPD       $0x06, Y4, Y3, Y4
+	VCMPPD       $0x06, Y6, Y3, Y4
 	VMOVMSKPD    Y4, R13
 	SHLL         $0x04, R13
 	ORQ          R13, R12
@@ -215,12 +243,13 @@ end:
 	INCQ         R9
 	ADDQ         $0x10, SI
 	ADDQ         $0x40, AX
-	DECQ         DI
+	DECQ         R14
+	MOVQ         R14, n+80(FP)
 	JNZ          row
-	MOVQ         total+56(FP), R13
+	MOVQ         total+72(FP), R13
 	VMOVUPD      Y0, (R13)
 	VMOVUPD      Y1, 32(R13)
-	MOVQ         R11, ret+72(FP)
+	MOVQ         R11, ret+88(FP)
 	VZEROUPPER
 	RET
 
@@ -628,17 +657,17 @@ ground:
 	VZEROUPPER
 	RET
 
-// func dots512(out *float64, v *float64, i *float64, index *int32, rows *float64, flags *uint8, mask *uint64, total *float64, n int) uint64
+// func dots512(out *float64, v *float64, i *float64, index *int32, rows *float64, limits *float64, flags *uint8, over *uint8, mask *uint64, total *float64, n int) uint64
 // Requires: AVX, AVX512DQ, AVX512F
-TEXT ·dots512(SB), NOSPLIT, $0-80
+TEXT ·dots512(SB), NOSPLIT, $0-96
 	MOVQ     out+0(FP), AX
 	MOVQ     v+8(FP), CX
 	MOVQ     i+16(FP), DX
 	MOVQ     index+24(FP), BX
 	MOVQ     rows+32(FP), SI
-	MOVQ     n+64(FP), DI
-	MOVQ     flags+40(FP), R9
-	MOVQ     mask+48(FP), R8
+	MOVQ     limits+40(FP), DI
+	MOVQ     flags+48(FP), R9
+	MOVQ     mask+64(FP), R8
 	XORQ     R11, R11
 	XORQ     R10, R10
 	VMOVUPD  (R8), Z0
@@ -651,27 +680,45 @@ row:
 	ADDQ    $0x04, BX
 	XORQ    R12, R12
 	VPXORQ  Z2, Z2, Z2
+	KXORB   K2, K2, K2
 	TESTQ   R15, R15
 	JZ      end
 
 pair:
-	MOVLQSX (BX), R13
-	MOVLQSX 4(BX), R14
-	ADDQ    $0x08, BX
-	VMOVUPD (CX)(R13*1), Z0
-	VMULPD  (DX)(R14*1), Z0, Z0
-	VMOVUPD 64(CX)(R13*1), Z3
-	VMULPD  64(DX)(R14*1), Z3, Z3
-	VADDPD  Z3, Z0, Z0
-	VADDPD  Z0, Z2, Z2
-	DECQ    R15
-	JNZ     pair
+	MOVLQSX      (BX), R13
+	MOVLQSX      4(BX), R14
+	ADDQ         $0x08, BX
+	VBROADCASTSD (DI), Z4
+	ADDQ         $0x08, DI
+	VMOVUPD      (DX)(R14*1), Z5
+	VMOVUPD      64(DX)(R14*1), Z6
+	VMULPD       (CX)(R13*1), Z5, Z0
+	VMULPD       64(CX)(R13*1), Z6, Z3
+	VADDPD       Z3, Z0, Z0
+	VADDPD       Z0, Z2, Z2
+	VMULPD       Z5, Z5, Z5
+	VMULPD       Z6, Z6, Z6
+	VADDPD       Z6, Z5, Z5
+	VCMPPD       $0x06, Z4, Z5, K1
+	KORB         K1, K2, K2
+	DECQ         R15
+	JNZ          pair
 
 end:
-	VBROADCASTSD  (SI), Z0
+	KMOVB         K2, R12
+	ANDQ          R10, R12
+	MOVQ          over+56(FP), R13
+	MOVQ          n+80(FP), R14
+	MOVB          R12, (R13)
+	INCQ          R13
+	MOVQ          R13, over+56(FP)
+	SHLQ          $0x08, R12
+	ORQ           R12, R11
+	XORQ          R12, R12
+	VBROADCASTSD  (SI), Z4
 	VMOVUPD       Z2, (AX)
 	VADDPD        Z2, Z1, Z1
-	VCMPPD        $0x06, Z0, Z2, K1
+	VCMPPD        $0x06, Z4, Z2, K1
 	KMOVB         K1, R13
 	ORQ           R13, R12
 	VPANDQ        (R8), Z2, Z2
@@ -689,11 +736,12 @@ end:
 	INCQ          R9
 	ADDQ          $0x10, SI
 	ADDQ          $0x40, AX
-	DECQ          DI
+	DECQ          R14
+	MOVQ          R14, n+80(FP)
 	JNZ           row
-	MOVQ          total+56(FP), R13
+	MOVQ          total+72(FP), R13
 	VMOVUPD       Z1, (R13)
-	MOVQ          R11, ret+72(FP)
+	MOVQ          R11, ret+88(FP)
 	VZEROUPPER
 	RET
 

@@ -75,22 +75,25 @@ func put(flags *uint8, k int, flag uint8) uint64 {
 	return uint64(flag)
 }
 
-func plainDots(out, v, i *float64, index *int32, rows *float64, flags *uint8, mask *uint64, total *float64, n int) (found uint64) {
+func plainDots(out, v, i *float64, index *int32, rows, limits *float64, flags, over *uint8, mask *uint64, total *float64, n int) (found uint64) {
 	m := (*[Lanes]uint64)(unsafe.Pointer(mask))
 	alive := live(m)
 	sum := numbers(total, 0)
-	r := reader{index, nil}
+	r := reader{index, limits}
 	for k := range n {
 		row := (*DotRow)(unsafe.Add(unsafe.Pointer(rows), k*int(unsafe.Sizeof(DotRow{}))))
 		var x [Lanes]float64
+		flag, high := uint8(0), uint8(0)
 		for range r.next() {
-			a, b := value(v, r.next()), value(i, r.next())
+			a, b, limit := value(v, r.next()), value(i, r.next()), r.number()
 			for l := range Lanes {
 				x[l] += float64(a[l]*b[l]) + float64(a[Lanes+l]*b[Lanes+l])
+				if !(float64(b[l]*b[l])+float64(b[Lanes+l]*b[Lanes+l]) <= limit) {
+					high |= 1 << l
+				}
 			}
 		}
 		*numbers(out, k) = x
-		flag := uint8(0)
 		for l := range Lanes {
 			sum[l] += x[l]
 			if !(x[l] <= row.High) {
@@ -98,7 +101,7 @@ func plainDots(out, v, i *float64, index *int32, rows *float64, flags *uint8, ma
 			}
 		}
 		row.Sum += gather(&x, m)
-		found |= put(flags, k, flag&alive)
+		found |= put(flags, k, flag&alive) | put(over, k, high&alive)<<8
 	}
 	return found
 }

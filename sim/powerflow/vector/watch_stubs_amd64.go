@@ -12,7 +12,7 @@ func lengths256(out *float64, v *float64, index *int32, rows *float64, flags *ui
 // dots256 is the kernel of Dots.Watch.
 //
 //go:noescape
-func dots256(out *float64, v *float64, i *float64, index *int32, rows *float64, flags *uint8, mask *uint64, total *float64, n int) uint64
+func dots256(out *float64, v *float64, i *float64, index *int32, rows *float64, limits *float64, flags *uint8, over *uint8, mask *uint64, total *float64, n int) uint64
 
 // squares256 is the kernel of Squares.Watch.
 //
@@ -42,7 +42,7 @@ func lengths512(out *float64, v *float64, index *int32, rows *float64, flags *ui
 // dots512 is the kernel of Dots.Watch.
 //
 //go:noescape
-func dots512(out *float64, v *float64, i *float64, index *int32, rows *float64, flags *uint8, mask *uint64, total *float64, n int) uint64
+func dots512(out *float64, v *float64, i *float64, index *int32, rows *float64, limits *float64, flags *uint8, over *uint8, mask *uint64, total *float64, n int) uint64
 
 // squares512 is the kernel of Squares.Watch.
 //

@@ -79,14 +79,17 @@ func watchers(random func() *rand.Rand, wild bool) (out []twin) {
 			d.Row(pairs(rng)...)
 			d.Rows[k] = DotRow{rng.NormFloat64(), rng.Float64()}
 		}
+		for k := range d.Limit {
+			d.Limit[k] = 4 * rng.ExpFloat64()
+		}
 		var total [Lanes]float64
-		f := []func(out, v, i *float64, index *int32, rows *float64, flags *uint8, mask *uint64, total *float64, n int) uint64{plainDots, dots256, dots512}[kind]
-		found := f(&x[0], &v[0], &i[0], &d.index[0], &d.Rows[0].High, &d.Flags[0], &masks[mask][0], &total[0], n)
+		f := []func(out, v, i *float64, index *int32, rows, limits *float64, flags, over *uint8, mask *uint64, total *float64, n int) uint64{plainDots, dots256, dots512}[kind]
+		found := f(&x[0], &v[0], &i[0], &d.index[0], &d.Rows[0].High, &d.Limit[0], &d.Flags[0], &d.Over[0], &masks[mask][0], &total[0], n)
 		sums := []float64{float64(found)}
 		for _, r := range d.Rows {
 			sums = append(sums, r.High, r.Sum)
 		}
-		return [][]float64{whole, total[:], bytes(d.Flags), sums}
+		return [][]float64{whole, total[:], bytes(d.Flags), bytes(d.Over), sums}
 	}})
 	out = append(out, twin{"squares", func(t *testing.T, kind int) [][]float64 {
 		rng := random()

@@ -219,14 +219,21 @@ func (m machine) lengths() {
 }
 
 func (m machine) dots() {
-	begin("dots"+m.name, "Dots.Watch", "func(out, v, i *float64, index *int32, rows *float64, flags *uint8, mask *uint64, total *float64, n int) uint64")
+	begin("dots"+m.name, "Dots.Watch", "func(out, v, i *float64, index *int32, rows, limits *float64, flags, over *uint8, mask *uint64, total *float64, n int) uint64")
 	out, v, i := Load(Param("out"), GP64()), Load(Param("v"), GP64()), Load(Param("i"), GP64())
 	index, rows := Load(Param("index"), GP64()), Load(Param("rows"), GP64())
-	n := Load(Param("n"), GP64())
+	limits := Load(Param("limits"), GP64())
 	w := m.newWatcher()
 	a, c, k := GP64(), GP64(), GP64()
 	total, x, y, z := m.vecs(), m.vecs(), m.vecs(), m.vecs()
-	b := m.vec()
+	b, re, im := m.vec(), m.vec(), m.vec()
+	var high []reg.VecVirtual
+	var above, one reg.OpmaskVirtual
+	if m.bytes == 32 {
+		high = m.vecs()
+	} else {
+		above, one = K(), K()
+	}
 	for p := range total {
 		zero(total[p])
 	}
@@ -236,6 +243,12 @@ func (m machine) dots() {
 	XORQ(w.row, w.row)
 	for p := range x {
 		zero(x[p])
+		if high != nil {
+			zero(high[p])
+		}
+	}
+	if high == nil {
+		KXORB(above, above, above)
 	}
 	TESTQ(k, k)
 	JZ(LabelRef("end"))
@@ -243,17 +256,45 @@ func (m machine) dots() {
 	MOVLQSX(Mem{Base: index}, a)
 	MOVLQSX(Mem{Base: index, Disp: 4}, c)
 	ADDQ(U8(8), index)
+	VBROADCASTSD(Mem{Base: limits}, b)
+	ADDQ(U8(8), limits)
 	for p := range x {
-		VMOVUPD(m.re(v, a, p), y[p])
-		VMULPD(m.re(i, c, p), y[p], y[p])
-		VMOVUPD(m.im(v, a, p), z[p])
-		VMULPD(m.im(i, c, p), z[p], z[p])
+		VMOVUPD(m.re(i, c, p), re)
+		VMOVUPD(m.im(i, c, p), im)
+		VMULPD(m.re(v, a, p), re, y[p])
+		VMULPD(m.im(v, a, p), im, z[p])
 		VADDPD(z[p], y[p], y[p])
 		VADDPD(y[p], x[p], x[p])
+		VMULPD(re, re, re)
+		VMULPD(im, im, im)
+		VADDPD(im, re, re)
+		if high != nil {
+			VCMPPD(U8(notBelowOrEqual), b, re, re)
+			VORPD(re, high[p], high[p])
+		} else {
+			VCMPPD(U8(notBelowOrEqual), b, re, one)
+			KORB(one, above, above)
+		}
 	}
 	DECQ(k)
 	JNZ(LabelRef("pair"))
 	Label("end")
+	if high != nil {
+		for p := range high {
+			w.bits(high[p], w.row, p)
+		}
+	} else {
+		KMOVB(above, w.row.As32())
+	}
+	ANDQ(w.live, w.row)
+	Load(Param("over"), a)
+	Load(Param("n"), c)
+	MOVB(w.row.As8(), Mem{Base: a})
+	INCQ(a)
+	Store(a, Param("over"))
+	SHLQ(U8(8), w.row)
+	ORQ(w.row, w.any)
+	XORQ(w.row, w.row)
 	VBROADCASTSD(Mem{Base: rows}, b)
 	for p := range x {
 		VMOVUPD(x[p], Mem{Base: out, Disp: p * m.bytes})
@@ -264,7 +305,8 @@ func (m machine) dots() {
 	w.flag()
 	ADDQ(U8(16), rows)
 	ADDQ(U8(8*lanes), out)
-	DECQ(n)
+	DECQ(c)
+	Store(c, Param("n"))
 	JNZ(LabelRef("row"))
 	Load(Param("total"), a)
 	for p := range total {
