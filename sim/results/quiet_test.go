@@ -3,6 +3,7 @@ package results
 import (
 	"encoding/json"
 	"fmt"
+	"maps"
 	"math"
 	"math/cmplx"
 	"math/rand/v2"
@@ -26,6 +27,7 @@ func calm(x *tiny, rnd *rand.Rand) *script {
 	p := x.plan.Settings.Period
 	taps, closed := [3]int{}, true
 	var pool []*State
+	var levels map[string]float64
 	devices := make([]DeviceState, len(x.plan.Devices))
 	rough := chance(x, rnd)
 	for k := range p.Steps() {
@@ -51,8 +53,15 @@ func calm(x *tiny, rnd *rand.Rand) *script {
 			continue
 		}
 		if len(pool) < 5 {
-			levels := randomLevels(rnd)
-			levels["n1.A"] = 0.04 + 0.01*rnd.Float64() // an unbalance about 3 %
+			// Some differ by less than a bin of a histogram from those before.
+			if len(pool) == 0 || rnd.IntN(3) == 0 {
+				levels = randomLevels(rnd)
+				levels["n1.A"] = 0.04 + 0.01*rnd.Float64() // an unbalance about 3 %
+			}
+			levels = maps.Clone(levels)
+			for _, name := range slices.Sorted(maps.Keys(levels)) {
+				levels[name] += 5e-5 * rnd.Float64()
+			}
 			pool = append(pool, x.state(levels, taps, closed))
 		}
 		start := p.Start + int64(k)*p.Step
