@@ -78,60 +78,6 @@ func newPattern(n int, entries [][2]int32) *pattern {
 	return p
 }
 
-// levels returns, by place in the elimination order, the place in another that gives the
-// same factor: level by level of the elimination tree from its leaves on, so that the
-// rows of a level do not wait for each other, and within a level in postorder, so that
-// what a row depends on is near what its neighbour does (Liu, The role of elimination
-// trees in sparse factorization, SIAM J. Matrix Anal. Appl. 11(1), 1990).
-func (p *pattern) levels() []int32 {
-	child, sibling := make([]int32, p.n), make([]int32, p.n)
-	height := make([]int32, p.n)
-	for k := range child {
-		child[k] = -1
-	}
-	roots := int32(-1)
-	for k := int32(p.n) - 1; k >= 0; k-- {
-		first := &roots
-		if p.start[k] < p.start[k+1] { // the first row below the diagonal is the parent
-			first = &child[p.row[p.start[k]-int32(p.n)]]
-		}
-		sibling[k], *first = *first, k
-	}
-	for k := range p.n {
-		if p.start[k] < p.start[k+1] {
-			parent := p.row[p.start[k]-int32(p.n)]
-			height[parent] = max(height[parent], height[k]+1)
-		}
-	}
-	var levels [][]int32
-	var stack []int32
-	for r := roots; r >= 0; r = sibling[r] {
-		stack = append(stack[:0], r)
-		for len(stack) > 0 {
-			k := stack[len(stack)-1]
-			if c := child[k]; c >= 0 {
-				child[k] = sibling[c] // come back for the next one
-				stack = append(stack, c)
-				continue
-			}
-			for len(levels) <= int(height[k]) {
-				levels = append(levels, nil)
-			}
-			levels[height[k]] = append(levels[height[k]], k)
-			stack = stack[:len(stack)-1]
-		}
-	}
-	out := make([]int32, p.n)
-	next := int32(0)
-	for _, level := range levels {
-		for _, k := range level {
-			out[k] = next
-			next++
-		}
-	}
-	return out
-}
-
 // slots is the number of values of a matrix with the pattern.
 func (p *pattern) slots() int { return p.n + len(p.row) }
 

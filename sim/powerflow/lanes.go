@@ -23,22 +23,26 @@ type Lanes struct {
 	s       *Solver
 	version int // of the solver's factor that the coefficients are of
 
-	// Values: the independent unknowns in elimination order, the dependent ones, then two
-	// of each fixed voltage. Of v the first of these two is the voltage that injections
-	// see, of x the second that of the equations; the first of x takes the current that
-	// is put into a fixed voltage.
+	// Values: the independent unknowns level by level of the factor, the dependent ones,
+	// then two of each fixed voltage. Of v the first of these two is the voltage that
+	// injections see, of x the second that of the equations; the first of x takes the
+	// current that is put into a fixed voltage. x has currents there, and behind them the
+	// voltages that follow.
 	*Block
 	x         []float64
 	slot      []int32 // by unknown, into v
+	order     []int32 // of the factor's groups
 	rank      []int32 // of an independent unknown's place in the elimination order among the values
 	free, all int     // independent ones, and those with the dependent ones
 	held      int     // the second value of the first fixed voltage
+	found     int     // first of the voltages in x
 	weight    []float64
 
 	pull, gather, expand, forward, backward vector.Rows
 	pulls                                   [][]fixedStamp
 	gathers, expands                        []int32 // coefficients
-	down, up                                []int32 // slots of the factor
+	blocks                                  *blocks
+	down, up                                []int32 // places in W; in M, and below zero −1 − place in W
 
 	loads  [4]*vector.Loads
 	drives [4]vector.Drives
@@ -105,7 +109,16 @@ func NewLanes(s *Solver, largest []float64) *Lanes {
 func (l *Lanes) place() {
 	s := l.s
 	l.slot = make([]int32, len(s.Net.Unknowns))
-	l.rank = s.pat.levels()
+	l.blocks = newBlocks(s.pat)
+	l.rank = make([]int32, l.free)
+	next := int32(0)
+	for _, g := range l.blocks.levels() {
+		l.order = append(l.order, g)
+		for _, c := range l.blocks.groups[g].columns {
+			l.rank[c] = next
+			next++
+		}
+	}
 	l.all = l.free
 	for u, terms := range s.red.terms {
 		if !plainTerm(terms) {
@@ -126,8 +139,8 @@ func (l *Lanes) place() {
 		}
 		l.weight[l.slot[u]] = s.perUnit[u] * s.perUnit[u]
 	}
-	n := l.held + len(s.Net.Fixed)
-	l.x = vector.Make(n)
+	l.found = l.held + len(s.Net.Fixed)
+	l.x = vector.Make(l.found + l.all)
 }
 
 // plainTerm tells whether an unknown is an independent or a fixed one.
@@ -165,11 +178,12 @@ func (l *Lanes) rows() {
 				from = int(l.rank[s.pat.place[t.col]])
 				into[from] = append(into[from], int(l.slot[u]))
 				coef[from] = append(coef[from], t.coef)
+				from += l.found
 			}
 			src = append(src, from)
 			l.expands = append(l.expands, t.coef)
 		}
-		l.expand.Row(int(l.slot[u]), src...)
+		l.expand.Row(l.found+int(l.slot[u]), src...)
 	}
 	for row, src := range into {
 		if len(src) > 0 {
@@ -182,40 +196,44 @@ func (l *Lanes) rows() {
 
 // sweep lists the rows of the two substitutions, each row with what it depends on.
 func (l *Lanes) sweep() {
-	p := l.s.pat
-	n := p.n
-	type entry struct{ row, slot int32 }
-	left := make([][]entry, n) // of each row
-	for k := range n {
-		for s := p.start[k]; s < p.start[k+1]; s++ {
-			r := p.row[s-int32(n)]
-			left[r] = append(left[r], entry{int32(k), s})
+	type entry struct{ column, w int }
+	left := make([][]entry, l.free) // of each row
+	for i := range l.blocks.groups {
+		g := &l.blocks.groups[i]
+		for r, row := range g.rows {
+			for c, col := range g.columns {
+				left[row] = append(left[row], entry{int(l.rank[col]), g.w + r*len(g.columns) + c})
+			}
 		}
 	}
-	order := make([]int, n) // elimination place by rank
-	for k, r := range l.rank {
-		order[r] = k
+	for _, o := range l.order {
+		for _, k := range l.blocks.groups[o].columns {
+			if len(left[k]) == 0 {
+				continue
+			}
+			var src []int
+			for _, e := range left[k] {
+				src = append(src, e.column)
+				l.down = append(l.down, int32(e.w))
+			}
+			l.forward.Row(int(l.rank[k]), src...)
+		}
 	}
-	for _, k := range order {
-		if len(left[k]) == 0 {
-			continue
+	for i := len(l.order) - 1; i >= 0; i-- {
+		g := &l.blocks.groups[l.order[i]]
+		n := len(g.columns)
+		for c, k := range g.columns {
+			var src []int
+			for d, col := range g.columns {
+				src = append(src, int(l.rank[col]))
+				l.up = append(l.up, int32(g.m+c*n+d))
+			}
+			for r, row := range g.rows {
+				src = append(src, l.found+int(l.rank[row]))
+				l.up = append(l.up, int32(-1-(g.w+r*n+c)))
+			}
+			l.backward.Row(l.found+int(l.rank[k]), src...)
 		}
-		var src []int
-		for _, e := range left[k] {
-			src = append(src, int(l.rank[e.row]))
-			l.down = append(l.down, e.slot)
-		}
-		l.forward.Row(int(l.rank[k]), src...)
-	}
-	for r := n - 1; r >= 0; r-- {
-		k := order[r]
-		var src []int
-		l.up = append(l.up, int32(k))
-		for s := p.start[k]; s < p.start[k+1]; s++ {
-			src = append(src, int(l.rank[p.row[s-int32(n)]]))
-			l.up = append(l.up, s)
-		}
-		l.backward.Row(int(l.rank[k]), src...)
 	}
 }
 
@@ -297,16 +315,18 @@ func (l *Lanes) refresh() {
 	for _, c := range l.expands {
 		put(&l.expand, complex(s.coef(c), 0))
 	}
+	b := l.blocks
+	b.update(s.pat, s.f)
 	l.forward.Coef = l.forward.Coef[:0]
 	for _, at := range l.down {
-		put(&l.forward, -s.f[at])
+		put(&l.forward, -b.w[at])
 	}
 	l.backward.Coef = l.backward.Coef[:0]
 	for _, at := range l.up {
-		if int(at) < s.pat.n {
-			put(&l.backward, s.f[at])
+		if at >= 0 {
+			put(&l.backward, b.m[at])
 		} else {
-			put(&l.backward, -s.f[at])
+			put(&l.backward, -b.w[-1-at])
 		}
 	}
 }
@@ -440,9 +460,9 @@ func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) 
 	below = l.draw(l.x, l.Block, mask)
 	l.gather.Add(l.x, l.x)
 	l.forward.Add(l.x, l.x)
-	l.backward.Solve(l.x, l.x)
+	l.backward.Set(l.x, l.x)
 	l.expand.Set(l.x, l.x)
-	vector.Advance(l.v, l.x, l.weight, mask&^below, moved)
+	vector.Advance(l.v, l.x[l.found*vector.Width:], l.weight, mask&^below, moved)
 	return below
 }
 

@@ -40,17 +40,6 @@ func rowsAdd(dst, src *float64, index *int32, coef *float64, rows int) {
 	}
 }
 
-func rowsSolve(dst, src *float64, index *int32, coef *float64, rows int) {
-	switch kernel {
-	case 2:
-		rowsSolve512(dst, src, index, coef, rows)
-	case 1:
-		rowsSolve256(dst, src, index, coef, rows)
-	default:
-		plainRows(dst, src, index, coef, rows, solveRow)
-	}
-}
-
 func drawWye(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
 	switch kernel {
 	case 2:

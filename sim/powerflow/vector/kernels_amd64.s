@@ -122,72 +122,6 @@ end:
 	VZEROUPPER
 	RET
 
-// func rowsSolve256(dst *float64, src *float64, index *int32, coef *float64, rows int)
-// Requires: AVX, FMA3
-TEXT ·rowsSolve256(SB), NOSPLIT, $0-40
-	MOVQ dst+0(FP), AX
-	MOVQ src+8(FP), CX
-	MOVQ index+16(FP), DX
-	MOVQ coef+24(FP), BX
-	MOVQ rows+32(FP), SI
-
-row:
-	MOVLQSX      (DX), DI
-	MOVLQSX      4(DX), R8
-	ADDQ         $0x08, DX
-	VBROADCASTSD (BX), Y10
-	VBROADCASTSD 8(BX), Y11
-	ADDQ         $0x10, BX
-	VMOVUPD      (AX)(DI*1), Y8
-	VMOVUPD      64(AX)(DI*1), Y9
-	VMULPD       Y8, Y10, Y0
-	VMULPD       Y9, Y11, Y2
-	VMULPD       Y9, Y10, Y4
-	VMULPD       Y8, Y11, Y6
-	VMOVUPD      32(AX)(DI*1), Y8
-	VMOVUPD      96(AX)(DI*1), Y9
-	VMULPD       Y8, Y10, Y1
-	VMULPD       Y9, Y11, Y3
-	VMULPD       Y9, Y10, Y5
-	VMULPD       Y8, Y11, Y7
-	TESTQ        R8, R8
-	JZ           end
-
-entry:
-	MOVLQSX      (DX), R9
-	ADDQ         $0x04, DX
-	VBROADCASTSD (BX), Y10
-	VBROADCASTSD 8(BX), Y11
-	ADDQ         $0x10, BX
-	VMOVUPD      (CX)(R9*1), Y8
-	VMOVUPD      64(CX)(R9*1), Y9
-	VFMADD231PD  Y8, Y10, Y0
-	VFMADD231PD  Y9, Y11, Y2
-	VFMADD231PD  Y9, Y10, Y4
-	VFMADD231PD  Y8, Y11, Y6
-	VMOVUPD      32(CX)(R9*1), Y8
-	VMOVUPD      96(CX)(R9*1), Y9
-	VFMADD231PD  Y8, Y10, Y1
-	VFMADD231PD  Y9, Y11, Y3
-	VFMADD231PD  Y9, Y10, Y5
-	VFMADD231PD  Y8, Y11, Y7
-	DECQ         R8
-	JNZ          entry
-
-end:
-	VSUBPD  Y2, Y0, Y0
-	VADDPD  Y6, Y4, Y4
-	VMOVUPD Y0, (AX)(DI*1)
-	VMOVUPD Y4, 64(AX)(DI*1)
-	VSUBPD  Y3, Y1, Y1
-	VADDPD  Y7, Y5, Y5
-	VMOVUPD Y1, 32(AX)(DI*1)
-	VMOVUPD Y5, 96(AX)(DI*1)
-	DECQ    SI
-	JNZ     row
-	VZEROUPPER
-	RET
-
 // func drawWye256(into *float64, v *float64, power *float64, index *int32, shape *float64, n int) (below uint64)
 // Requires: AVX, AVX2, FMA3, SSE2
 TEXT ·drawWye256(SB), NOSPLIT, $0-56
@@ -767,56 +701,6 @@ row:
 	VPXORQ  Z3, Z3, Z3
 	TESTQ   R8, R8
 	JZ      end
-
-entry:
-	MOVLQSX      (DX), R9
-	ADDQ         $0x04, DX
-	VBROADCASTSD (BX), Z6
-	VBROADCASTSD 8(BX), Z7
-	ADDQ         $0x10, BX
-	VMOVUPD      (CX)(R9*1), Z4
-	VMOVUPD      64(CX)(R9*1), Z5
-	VFMADD231PD  Z4, Z6, Z0
-	VFMADD231PD  Z5, Z7, Z1
-	VFMADD231PD  Z5, Z6, Z2
-	VFMADD231PD  Z4, Z7, Z3
-	DECQ         R8
-	JNZ          entry
-
-end:
-	VSUBPD  Z1, Z0, Z0
-	VADDPD  Z3, Z2, Z2
-	VMOVUPD Z0, (AX)(DI*1)
-	VMOVUPD Z2, 64(AX)(DI*1)
-	DECQ    SI
-	JNZ     row
-	VZEROUPPER
-	RET
-
-// func rowsSolve512(dst *float64, src *float64, index *int32, coef *float64, rows int)
-// Requires: AVX, AVX512F
-TEXT ·rowsSolve512(SB), NOSPLIT, $0-40
-	MOVQ dst+0(FP), AX
-	MOVQ src+8(FP), CX
-	MOVQ index+16(FP), DX
-	MOVQ coef+24(FP), BX
-	MOVQ rows+32(FP), SI
-
-row:
-	MOVLQSX      (DX), DI
-	MOVLQSX      4(DX), R8
-	ADDQ         $0x08, DX
-	VBROADCASTSD (BX), Z6
-	VBROADCASTSD 8(BX), Z7
-	ADDQ         $0x10, BX
-	VMOVUPD      (AX)(DI*1), Z4
-	VMOVUPD      64(AX)(DI*1), Z5
-	VMULPD       Z4, Z6, Z0
-	VMULPD       Z5, Z7, Z1
-	VMULPD       Z5, Z6, Z2
-	VMULPD       Z4, Z7, Z3
-	TESTQ        R8, R8
-	JZ           end
 
 entry:
 	MOVLQSX      (DX), R9

@@ -13,10 +13,6 @@ func rowsAdd(dst, src *float64, index *int32, coef *float64, rows int) {
 	plainRows(dst, src, index, coef, rows, addRow)
 }
 
-func rowsSolve(dst, src *float64, index *int32, coef *float64, rows int) {
-	plainRows(dst, src, index, coef, rows, solveRow)
-}
-
 func drawWye(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
 	return plainDraw(into, v, power, index, shape, n, false, false)
 }

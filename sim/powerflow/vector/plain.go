@@ -33,7 +33,6 @@ func (r *reader) number() float64 {
 const (
 	setRow = iota
 	addRow
-	solveRow
 )
 
 func plainRows(dst, src *float64, index *int32, coef *float64, rows, kind int) {
@@ -43,16 +42,9 @@ func plainRows(dst, src *float64, index *int32, coef *float64, rows, kind int) {
 		n := r.next()
 		// re = rr − ii, im = ri + ir
 		var rr, ii, ri, ir [Lanes]float64
-		switch kind {
-		case addRow:
+		if kind == addRow {
 			copy(rr[:], d[:Lanes])
 			copy(ri[:], d[Lanes:])
-		case solveRow:
-			cr, ci := r.number(), r.number()
-			for l := range Lanes {
-				rr[l], ii[l] = cr*d[l], ci*d[Lanes+l]
-				ri[l], ir[l] = cr*d[Lanes+l], ci*d[l]
-			}
 		}
 		for range n {
 			s := value(src, r.next())

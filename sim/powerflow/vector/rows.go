@@ -1,9 +1,8 @@
 package vector
 
 // Rows is a sparse matrix as a list of rows to be worked off in order: of each its
-// target, the number of its entries, and the value that each entry takes. Set and Add
-// have one coefficient for each entry; Solve has one more, the first of each row, for
-// the target itself.
+// target, the number of its entries, and the value that each entry takes. There is one
+// coefficient for each entry.
 type Rows struct {
 	index []int32   // by row: offset of the target, entries, offsets of the sources
 	Coef  []float64 // real and imaginary part by entry
@@ -29,15 +28,16 @@ func (r *Rows) Row(target int, sources ...int) {
 func (r *Rows) Len() int     { return r.rows }
 func (r *Rows) Entries() int { return r.entries }
 
-func (r *Rows) check(dst, src []float64, coefs int) {
-	if len(dst) < r.far*Width || len(src) < r.wide*Width || len(r.Coef) != 2*coefs {
+func (r *Rows) check(dst, src []float64) {
+	if len(dst) < r.far*Width || len(src) < r.wide*Width || len(r.Coef) != 2*r.entries {
 		panic("vector: rows reach beyond the values, or their coefficients are not all there")
 	}
 }
 
-// Set sets every target to Σ coef·source. Sources must not be targets.
+// Set sets every target to Σ coef·source. A row's sources may be targets of rows before
+// it.
 func (r *Rows) Set(dst, src []float64) {
-	r.check(dst, src, r.entries)
+	r.check(dst, src)
 	if r.rows > 0 {
 		rowsSet(&dst[0], &src[0], &r.index[0], first(r.Coef), r.rows)
 	}
@@ -46,18 +46,9 @@ func (r *Rows) Set(dst, src []float64) {
 // Add adds Σ coef·source to every target. A row's sources may be targets of rows
 // before it.
 func (r *Rows) Add(dst, src []float64) {
-	r.check(dst, src, r.entries)
+	r.check(dst, src)
 	if r.rows > 0 {
 		rowsAdd(&dst[0], &src[0], &r.index[0], first(r.Coef), r.rows)
-	}
-}
-
-// Solve replaces every target by its own coefficient times itself plus Σ coef·source.
-// A row's sources may be targets of rows before it.
-func (r *Rows) Solve(dst, src []float64) {
-	r.check(dst, src, r.entries+r.rows)
-	if r.rows > 0 {
-		rowsSolve(&dst[0], &src[0], &r.index[0], first(r.Coef), r.rows)
 	}
 }
 

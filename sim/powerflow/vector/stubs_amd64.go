@@ -14,11 +14,6 @@ func rowsSet256(dst *float64, src *float64, index *int32, coef *float64, rows in
 //go:noescape
 func rowsAdd256(dst *float64, src *float64, index *int32, coef *float64, rows int)
 
-// rowsSolve256 is the kernel of Rows.Solve.
-//
-//go:noescape
-func rowsSolve256(dst *float64, src *float64, index *int32, coef *float64, rows int)
-
 // drawWye256 is a kernel of Loads.Draw.
 //
 //go:noescape
@@ -63,11 +58,6 @@ func rowsSet512(dst *float64, src *float64, index *int32, coef *float64, rows in
 //
 //go:noescape
 func rowsAdd512(dst *float64, src *float64, index *int32, coef *float64, rows int)
-
-// rowsSolve512 is the kernel of Rows.Solve.
-//
-//go:noescape
-func rowsSolve512(dst *float64, src *float64, index *int32, coef *float64, rows int)
 
 // drawWye512 is a kernel of Loads.Draw.
 //

@@ -25,7 +25,6 @@ func main() {
 		}
 		m.rows("Set")
 		m.rows("Add")
-		m.rows("Solve")
 		m.draw("Wye", false, false)
 		m.draw("Pair", true, false)
 		m.draw("WyeZIP", false, true)
@@ -110,18 +109,7 @@ func (m machine) rows(kind string) {
 			zero(ii[p])
 			zero(ir[p])
 		}
-	case "Solve":
-		VBROADCASTSD(Mem{Base: coef}, cr)
-		VBROADCASTSD(Mem{Base: coef, Disp: 8}, ci)
-		ADDQ(U8(16), coef)
-		for p := range rr {
-			VMOVUPD(m.re(dst, d, p), xr[p])
-			VMOVUPD(m.im(dst, d, p), xi[p])
-			VMULPD(xr[p], cr, rr[p])
-			VMULPD(xi[p], ci, ii[p])
-			VMULPD(xi[p], cr, ri[p])
-			VMULPD(xr[p], ci, ir[p])
-		}
+
 	}
 	TESTQ(n, n)
 	JZ(LabelRef("end"))
