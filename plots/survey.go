@@ -153,7 +153,7 @@ func (s *survey) okOnly(column string) []float64 {
 	return v
 }
 
-// readVoltages goes through voltages.csv once. Where it has all judged places, what
+// readVoltages goes through the voltages of every step once. Where it has all judged places, what
 // is lowest and highest is taken from them.
 func (s *survey) readVoltages(all bool) error {
 	if len(s.VoltageNames) == 0 {
@@ -251,7 +251,7 @@ func (s *survey) readVoltages(all bool) error {
 		return err
 	}
 	if row != rows {
-		return fmt.Errorf("voltages.csv has %d rows, steps.csv %d: half a folder; run the study again", row, rows)
+		return fmt.Errorf("%s has %d rows, steps.csv %d: half a folder; run the study again", s.VoltageFile(), row, rows)
 	}
 	s.atLow, s.atHigh = named(s.VoltageNames, low), named(s.VoltageNames, high)
 	if all {

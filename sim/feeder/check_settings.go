@@ -293,6 +293,7 @@ func (r *settingsReader) run(p Period) RunSettings {
 		s.Voltages = r.word("run.voltages", d.Voltages, "auto", "all", "none")
 	}
 	s.Flows = r.list("run.flows", d.Flows)
+	s.Parquet = r.word("run.series", d.Series, "csv", "parquet") == "parquet"
 	if t, ok := d.Log.(string); d.Log != nil && !(ok && strings.EqualFold(t, "step")) {
 		if l, ok := r.duration("run.log", d.Log); ok {
 			if l > day || day%l != 0 || int64(l)%p.Step != 0 {

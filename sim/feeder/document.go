@@ -57,6 +57,7 @@ type runDocument struct {
 	Voltages any `toml:"voltages"`
 	Flows    any `toml:"flows"`
 	Log      any `toml:"log"`
+	Series   any `toml:"series"`
 }
 
 type limitsDocument struct {

@@ -52,6 +52,7 @@ type RunSettings struct {
 	Places   []string // voltages = [...]: node.phase
 	Flows    []string // names of elements to log
 	Log      int64    // length of a row of steps.csv in ns; 0: a row a step
+	Parquet  bool     // series = "parquet": voltages and flows are written as Parquet files
 }
 
 // Limits is [limits] of study.toml. Where Own is false the limits of a node are the

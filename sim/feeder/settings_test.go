@@ -26,6 +26,7 @@ start = "given"
 voltages = ["n2.A", "n3.B"]
 flows = ["s1", "sub", "reg"]
 log = "1h"
+series = "Parquet"
 [limits]
 range = { low = 0.95, high = 1.05, "outer low" = 0.9, outer_high = 1.06 }
 judge = "all"
@@ -54,7 +55,7 @@ seed = 3
 		p[1].Files[0] != "one.csv" || p[1].Stamped != "start" || p[1].Repeat != "none" || p[1].Zone.String() != "America/Denver" || p[1].At.Line != 15 {
 		t.Errorf("profiles: %+v", p)
 	}
-	if r := g.Run; !r.Given || r.Voltages != "list" || strings.Join(r.Places, " ") != "n2.A n3.B" || strings.Join(r.Flows, " ") != "s1 sub reg" || r.Log != int64(time.Hour) {
+	if r := g.Run; !r.Given || r.Voltages != "list" || strings.Join(r.Places, " ") != "n2.A n3.B" || strings.Join(r.Flows, " ") != "s1 sub reg" || r.Log != int64(time.Hour) || !r.Parquet {
 		t.Errorf("run: %+v", r)
 	}
 	if l := g.Limits; l != (Limits{true, 0.95, 1.05, 0.9, 1.06, true, 2.5}) {
@@ -70,7 +71,7 @@ seed = 3
 	if at := s.Place("run.log").String(); at != "study.toml:21:1" {
 		t.Errorf("run.log stands at %s", at)
 	}
-	if u := s.ProfileUses(); u[len(u)-2].Want != WantPrice || u[len(u)-2].Name != "tariff" || u[len(u)-1].Pos.String() != "study.toml:30:1" {
+	if u := s.ProfileUses(); u[len(u)-2].Want != WantPrice || u[len(u)-2].Name != "tariff" || u[len(u)-1].Pos.String() != "study.toml:31:1" {
 		t.Errorf("profile uses: %+v", u)
 	}
 }
@@ -78,7 +79,7 @@ seed = 3
 func TestSettingsDefaults(t *testing.T) {
 	s := opened(t, with(small(), "study.toml", "[period]\nstart = 2025-01-01\nend = 2025-01-02T06:30:00\n"), "")
 	g := s.Settings
-	if g.Frequency != 60 || g.Period.Step != int64(time.Hour) || g.Period.Zone != time.UTC || g.Run.Given || g.Run.Voltages != "auto" || g.Run.Log != 0 ||
+	if g.Frequency != 60 || g.Period.Step != int64(time.Hour) || g.Period.Zone != time.UTC || g.Run.Given || g.Run.Voltages != "auto" || g.Run.Log != 0 || g.Run.Parquet ||
 		g.Limits != (Limits{}) || g.Prices.Currency != "USD" || !math.IsNaN(g.Prices.Energy) || g.Prices.Years != 20 {
 		t.Errorf("got %+v", g)
 	}
@@ -113,6 +114,8 @@ func TestSettingsFaults(t *testing.T) {
 		{"list of numbers", period + "[run]\nflows = [1]\n", "study.toml:7:1", "want a list of texts"},
 		{"flag", period + "[[profiles]]\nfiles = []\ninterpolate = 1\n", "study.toml:8:1", "want true or false, got 1"},
 		{"log", period + "[run]\nlog = \"20min\"\n", "study.toml:7:1", "is no whole number of steps that divides a day"},
+		{"series", period + "[run]\nseries = \"feather\"\n", "study.toml:7:1", `run.series: "feather" is not one of csv, parquet`},
+		{"series as a flag", period + "[run]\nseries = true\n", "study.toml:7:1", "want a text in quotation marks, got true"},
 		{"node.phase", period + "[run]\nvoltages = [\"n3.A\"]\n", "study.toml:7:1", `there is no node.phase "n3.A"`},
 		{"flow", period + "[run]\nflows = [\"s9\"]\n", "study.toml:7:1", `there is no section, transformer or regulator "s9"`},
 		{"range", period + "[limits]\nrange = \"EN 50160\"\n", "study.toml:7:1", `"EN 50160" is not known`},

@@ -24,14 +24,46 @@ func appendFigure(dst []byte, x float64) []byte {
 	if math.IsNaN(x) {
 		return dst
 	}
+	decimals := figureDecimals(x)
+	if decimals < 0 {
+		return append(dst, "0.0000"...)
+	}
+	return appendFixed(dst, x, decimals)
+}
+
+// figureDecimals is the number of decimals of appendFigure; −1 stands for zero.
+func figureDecimals(x float64) int {
 	decimals, a := 4, math.Abs(x)
 	if a < 1e-12 {
-		return append(dst, "0.0000"...)
+		return -1
 	}
 	for limit := 10.0; a < limit && decimals < 17; limit /= 10 {
 		decimals++
 	}
-	return appendFixed(dst, x, decimals)
+	return decimals
+}
+
+// roundPU and roundFigure return the number that appendPU and appendFigure print, as it
+// is read from the text.
+func roundPU(x float64) float64 { return roundFixed(x, 6) }
+
+func roundFigure(x float64) float64 {
+	decimals := figureDecimals(x)
+	if decimals < 0 {
+		return 0
+	}
+	return roundFixed(x, decimals)
+}
+
+func roundFixed(x float64, decimals int) float64 {
+	scaled := math.Round(math.Abs(x) * powersOfTen[decimals])
+	switch {
+	case scaled == 0:
+		return 0
+	case !(scaled < 1<<53):
+		return x // its own nearest number with these decimals, or none
+	}
+	return math.Copysign(scaled/powersOfTen[decimals], x)
 }
 
 var powersOfTen = [...]float64{1, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9,

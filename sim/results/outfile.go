@@ -6,6 +6,7 @@ import (
 	"fmt"
 	"hash"
 	"io"
+	"math"
 	"os"
 	"path/filepath"
 )
@@ -20,12 +21,15 @@ type sink interface {
 const flushAt = 64 << 10
 
 // outFile is one file of a results folder. Rows are appended to row and closed by
-// end; what has been written is hashed on the way.
+// end; what has been written is hashed on the way. Where columns is not nil rows are
+// figures of a Parquet file, and row holds what it gave to be written.
 type outFile struct {
-	name string
-	row  []byte
-	out  sink
-	sum  hash.Hash
+	name    string
+	row     []byte
+	out     sink
+	sum     hash.Hash
+	columns *columnFile
+	err     error // of out
 }
 
 func createFile(dir, name string) (*outFile, error) {
@@ -57,12 +61,48 @@ func (f *outFile) rows(rows [][]string) error {
 	return nil
 }
 
-func (f *outFile) comma()           { f.row = append(f.row, ',') }
-func (f *outFile) text(s string)    { f.row = appendText(f.row, s) }
-func (f *outFile) pu(x float64)     { f.row = appendPU(append(f.row, ','), x) }
-func (f *outFile) figure(x float64) { f.row = appendFigure(append(f.row, ','), x) }
-func (f *outFile) count(n int)      { f.row = appendFixed(append(f.row, ','), float64(n), 0) }
-func (f *outFile) hours(ns int64)   { f.figure(float64(ns) / float64(hour)) }
+func (f *outFile) comma()         { f.row = append(f.row, ',') }
+func (f *outFile) text(s string)  { f.row = appendText(f.row, s) }
+func (f *outFile) count(n int)    { f.row = appendFixed(append(f.row, ','), float64(n), 0) }
+func (f *outFile) hours(ns int64) { f.figure(float64(ns) / float64(hour)) }
+
+// begin begins a row of a series.
+func (f *outFile) begin(c *zoneClock, ns int64) {
+	if f.columns != nil {
+		f.columns.begin(ns)
+		return
+	}
+	f.row = c.append(f.row, ns)
+}
+
+// pu writes a voltage in p.u.
+func (f *outFile) pu(x float64) {
+	if f.columns != nil {
+		f.columns.figure(roundPU(x))
+		return
+	}
+	f.row = appendPU(append(f.row, ','), x)
+}
+
+// figure writes a power, a current, an energy or a share.
+func (f *outFile) figure(x float64) {
+	if f.columns != nil {
+		f.columns.figure(roundFigure(x))
+		return
+	}
+	f.row = appendFigure(append(f.row, ','), x)
+}
+
+// empty writes cells without a figure.
+func (f *outFile) empty(n int) {
+	for range n {
+		if f.columns != nil {
+			f.columns.figure(math.NaN())
+			continue
+		}
+		f.comma()
+	}
+}
 
 // next writes a comma and a text.
 func (f *outFile) next(s string) {
@@ -80,11 +120,34 @@ func (f *outFile) at(c *zoneClock, ns int64, known bool) {
 
 // end closes the row. An error names the file.
 func (f *outFile) end() error {
+	if f.columns != nil {
+		return f.named(f.columns.end())
+	}
 	f.row = append(f.row, '\n')
 	if len(f.row) < flushAt {
 		return nil
 	}
 	return f.flush()
+}
+
+// Write takes what columns give to be written.
+func (f *outFile) Write(p []byte) (int, error) {
+	f.row = append(f.row, p...)
+	if len(f.row) < flushAt {
+		return len(p), nil
+	}
+	if f.err = f.flush(); f.err != nil {
+		return 0, f.err
+	}
+	return len(p), nil
+}
+
+// named puts the name of the file to an error of columns.
+func (f *outFile) named(err error) error {
+	if err == nil || f.err != nil {
+		return f.err
+	}
+	return fmt.Errorf("write %s: %w", f.name, err)
 }
 
 func (f *outFile) flush() error {
@@ -102,7 +165,14 @@ func (f *outFile) flush() error {
 
 // finish hands everything to the disk and closes the file.
 func (f *outFile) finish() error {
-	if err := f.flush(); err != nil {
+	var err error
+	if f.columns != nil {
+		err = f.named(f.columns.close())
+	}
+	if err == nil {
+		err = f.flush()
+	}
+	if err != nil {
 		f.out.Close()
 		return err
 	}

@@ -27,7 +27,7 @@ type Folder struct {
 	Summary    []SummaryRow
 	Places     []PlaceRow
 	Branches   []BranchRow // network.csv
-	// VoltageNames are the columns of voltages.csv (node.phase); nil where the run
+	// VoltageNames are the columns of voltages.csv or voltages.parquet (node.phase); nil where the run
 	// kept no voltages.
 	VoltageNames []string
 	// Measured and Swaps are how the model met its measurements; empty without any.
@@ -120,7 +120,7 @@ type BranchRow struct {
 
 // ReadFolder reads the results folder that fsys holds, and reports everything wrong
 // with it together (tables.Faults): files that are missing, cut off, of another
-// version, or do not agree with each other. The wide voltages.csv is only looked at;
+// version, or do not agree with each other. The wide voltages are only looked at;
 // EachVoltage reads it, so fsys must stay usable as long as the Folder is.
 func ReadFolder(fsys fs.FS) (*Folder, error) {
 	f := &Folder{files: fsys}

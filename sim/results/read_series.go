@@ -9,6 +9,7 @@ import (
 	"io"
 	"io/fs"
 	"math"
+	"slices"
 	"strconv"
 	"time"
 
@@ -152,6 +153,16 @@ func (rd *reader) series(name string) Series {
 }
 
 func (f *Folder) readVoltageHeader(rd *reader) {
+	if f.columnar() {
+		c, err := openColumns(f.files, f.VoltageFile())
+		if err != nil {
+			*rd.faults = append(*rd.faults, asFaults(err)...)
+			return
+		}
+		defer c.close()
+		f.VoltageNames = append([]string{}, c.names...)
+		return
+	}
 	stop := errors.New("header read")
 	err := rd.scan("voltages.csv", func(header []string) error {
 		f.VoltageNames = append([]string{}, header[1:]...)
@@ -162,13 +173,35 @@ func (f *Folder) readVoltageHeader(rd *reader) {
 	}
 }
 
-// EachVoltage calls do with every row of voltages.csv: the start of the row in ns
+// columnar tells whether the run wrote its series as Parquet files.
+func (f *Folder) columnar() bool { return slices.Contains(f.Run.Files, "voltages"+parquetEnding) }
+
+// VoltageFile is the name of the file that EachVoltage reads.
+func (f *Folder) VoltageFile() string {
+	if f.columnar() {
+		return "voltages" + parquetEnding
+	}
+	return "voltages.csv"
+}
+
+// EachVoltage calls do with every row of voltages.csv or voltages.parquet: the start of the row in ns
 // since 1970 UTC and the voltages in p.u. by VoltageNames, NaN where blank. The slice
 // is used again for the next row. It stops at the first error. Where the run kept no
 // voltages do is never called.
 func (f *Folder) EachVoltage(do func(at int64, pu []float64) error) error {
 	if f.VoltageNames == nil {
 		return nil
+	}
+	if f.columnar() {
+		c, err := openColumns(f.files, f.VoltageFile())
+		if err != nil {
+			return err
+		}
+		defer c.close()
+		if !slices.Equal(c.names, f.VoltageNames) {
+			return c.broken(errors.New("its columns have changed"))
+		}
+		return c.each(do)
 	}
 	var faults tables.Faults
 	rd := reader{files: f.files, faults: &faults, zone: f.Run.Location}

@@ -53,6 +53,7 @@ type runOut struct {
 	Profiles    []profilesOut     `json:"profiles"`
 	Voltages    string            `json:"voltages"`
 	Flows       []string          `json:"flows"`
+	Series      string            `json:"series"` // csv or parquet
 	Counts      countsOut         `json:"counts"`
 	Positions   []positionOut     `json:"positions_after_start_up"`
 	StillMoving []string          `json:"still_moving_at_start_up"`
@@ -167,7 +168,7 @@ func (w *Writer) writeRun(o *Outcome, run RunInfo) error {
 		Frequency: set.Frequency, Begins: "settled",
 		Limits: w.limitsOut(), Percentiles: w.stats.dist.method(),
 		Scale: scaleOut{set.ScaleLoad, set.ScaleGeneration}, Prices: w.pricesOut(), Profiles: []profilesOut{},
-		Voltages: set.Run.Voltages, Flows: append([]string{}, set.Run.Flows...),
+		Voltages: set.Run.Voltages, Flows: append([]string{}, set.Run.Flows...), Series: "csv",
 		Counts:    w.countsOut(),
 		Positions: w.positionsOut(o), StillMoving: append([]string{}, o.StillMoving...),
 		StepsBy: w.solver, SolutionsBy: notNil(o.Paths), Speed: o.Speed,
@@ -178,6 +179,9 @@ func (w *Writer) writeRun(o *Outcome, run RunInfo) error {
 	r.Speed.StepByStep = notNil(o.Speed.StepByStep)
 	if set.Run.Given {
 		r.Begins = "given"
+	}
+	if set.Run.Parquet {
+		r.Series = "parquet"
 	}
 	if t.steps > 0 && w.balance.worst > 0 {
 		r.Balance.At = w.clock.text(w.balance.at)

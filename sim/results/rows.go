@@ -1,6 +1,9 @@
 package results
 
-import "math"
+import (
+	"math"
+	"time"
+)
 
 var stepsColumns = [...]string{"time", "status", "source real [kW]", "source reactive [kvar]", "load real [kW]", "load reactive [kvar]",
 	"generation real [kW]", "generation reactive [kvar]", "losses real [kW]", "losses reactive [kvar]", "capacitors reactive [kvar]",
@@ -62,6 +65,10 @@ func (f *flowReading) read(e *endFlow, s *State) {
 // writeRow writes the open row to every log. voltages.csv and flows.csv have no
 // rows where nothing was chosen for them.
 func (w *Writer) writeRow() error {
+	if w.timed {
+		began := time.Now()
+		defer func() { w.writing += time.Since(began) }()
+	}
 	err := w.writeStep()
 	if err == nil && len(w.places) > 0 {
 		err = w.writeVoltages()
@@ -147,7 +154,7 @@ func (w *Writer) writeInstant(f *outFile) {
 
 func (w *Writer) writeVoltages() error {
 	f := w.voltages
-	f.row = w.clock.append(f.row, w.row.start)
+	f.begin(w.clock, w.row.start)
 	if !w.row.last {
 		f.empty(len(w.places))
 		return f.end()
@@ -160,7 +167,7 @@ func (w *Writer) writeVoltages() error {
 
 func (w *Writer) writeFlows() error {
 	f := w.flows
-	f.row = w.clock.append(f.row, w.row.start)
+	f.begin(w.clock, w.row.start)
 	for i := range w.flowNow {
 		x := &w.flowNow[i]
 		if !w.row.last {
@@ -209,11 +216,4 @@ func (w *Writer) writeOperation(a *Action, d *Device) error {
 func (f *outFile) power(va complex128) {
 	f.figure(real(va) / 1000)
 	f.figure(imag(va) / 1000)
-}
-
-// empty writes cells without a figure.
-func (f *outFile) empty(n int) {
-	for range n {
-		f.comma()
-	}
 }

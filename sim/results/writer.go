@@ -9,6 +9,8 @@ import (
 	"os"
 	"path/filepath"
 	"slices"
+	"strings"
+	"time"
 )
 
 // autoVoltages is the number of voltages up to which voltages = "auto" keeps all.
@@ -52,6 +54,9 @@ type Writer struct {
 
 	more []*outFile    // of measurements
 	met  []MeasuredRow // how the model met them
+
+	timed   bool
+	writing time.Duration
 }
 
 // balanceCheck is how well the balance of power closed over all solved intervals.
@@ -178,8 +183,8 @@ func (w *Writer) open() (err error) {
 		header []string
 	}{
 		{&w.steps, "steps.csv", stepsHeader()},
-		{&w.voltages, "voltages.csv", w.voltagesHeader()},
-		{&w.flows, "flows.csv", w.flowsHeader()},
+		{&w.voltages, w.series("voltages"), w.voltagesHeader()},
+		{&w.flows, w.series("flows"), w.flowsHeader()},
 		{&w.devices, "devices.csv", w.devicesHeader()},
 		{&w.operations, "operations.csv", operationsHeader[:]},
 		{&w.storage, "storage.csv", w.storageHeader()},
@@ -191,11 +196,26 @@ func (w *Writer) open() (err error) {
 		if *x.file, err = createFile(w.folder.temp, x.name); err != nil {
 			return err
 		}
-		if err := (*x.file).header(x.header...); err != nil {
+		if strings.HasSuffix(x.name, parquetEnding) {
+			if (*x.file).columns, err = newColumnFile(*x.file, x.header); err != nil {
+				return fmt.Errorf("%s: %w", x.name, err)
+			}
+		} else {
+			err = (*x.file).header(x.header...)
+		}
+		if err != nil {
 			return err
 		}
 	}
 	return nil
+}
+
+// series is the name of a file that [run] series has a say in.
+func (w *Writer) series(name string) string {
+	if w.plan.Settings.Run.Parquet {
+		return name + parquetEnding
+	}
+	return name + ".csv"
 }
 
 var errClosed = errors.New("results: the folder is finished or given up")
@@ -301,6 +321,12 @@ func (w *Writer) rowEnds(s *Step) bool {
 	}
 	return (s.End-p.Start)/length > (s.Start-p.Start)/length
 }
+
+// Time has the writer measure how long it writes rows of the logs.
+func (w *Writer) Time() { w.timed = true }
+
+// Writing is how long it wrote rows of the logs so far, where Time was called.
+func (w *Writer) Writing() time.Duration { return w.writing }
 
 // Abort removes what has been written; an older folder stays.
 func (w *Writer) Abort() error {
