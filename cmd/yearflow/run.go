@@ -23,6 +23,8 @@ type runOptions struct {
 	caseName, out string
 	strict        bool
 	noFigures     bool
+	timing        bool
+	reference     bool
 	csv, json     string
 	study         string // as the user named it
 }
@@ -46,6 +48,8 @@ violated; 2 the input is wrong; 3 the machine failed.`,
 	f.StringVar(&o.out, "out", "", "the results folder `DIR` (default: results/<case> in the study's folder)")
 	f.BoolVar(&o.strict, "strict", false, "exit status 1 where a voltage limit was violated")
 	f.BoolVar(&o.noFigures, "no-figures", false, "draw no figures, and a report without them (\"yearflow report\" draws them later)")
+	f.BoolVar(&o.timing, "timing", false, "say at the end where the time went")
+	f.BoolVar(&o.reference, "reference", false, "solve every step by itself, slowly: the judge of the faster path")
 	f.StringVar(&o.csv, "csv", "", "write the summary to this `FILE` too; - for standard output")
 	f.StringVar(&o.json, "json", "", "write it to this `FILE` as JSON; - for standard output")
 	return cmd
@@ -60,7 +64,7 @@ func (c *console) run(ctx context.Context, args []string, o *runOptions) error {
 	if err != nil {
 		return err
 	}
-	e, err := st.prepare(o.caseName)
+	e, err := st.prepareWith(o.caseName, sim.Options{Timing: o.timing, Reference: o.reference})
 	if err != nil {
 		return err
 	}
@@ -80,6 +84,9 @@ func (c *console) run(ctx context.Context, args []string, o *runOptions) error {
 	w, err := results.Create(dir, e.Plan)
 	if err != nil {
 		return machineOr(err)
+	}
+	if o.timing {
+		w.Time()
 	}
 	bar := newProgress(c.errs, e.Steps())
 	counts := &tally{}
@@ -102,12 +109,30 @@ func (c *console) run(ctx context.Context, args []string, o *runOptions) error {
 	ran := time.Now()
 	info := results.RunInfo{Version: version, Inputs: inputs, Wall: []results.WallTime{
 		{Part: "reading", Seconds: read.Sub(began).Seconds()}, {Part: "run", Seconds: ran.Sub(read).Seconds()}}}
+	if o.timing {
+		info.Wall = append(info.Wall, wallOf(e.Timing(), w.Writing())...)
+	}
 	info.Warnings, info.Settings = e.Warnings, study.SettingsInForce(e.Study)
-	info.Figures = func(dir string) ([]string, results.WallTime, error) { return picturesInto(dir, !o.noFigures) }
+	var drawing results.WallTime
+	info.Figures = func(dir string) (names []string, _ results.WallTime, err error) {
+		names, drawing, err = picturesInto(dir, !o.noFigures)
+		return names, drawing, err
+	}
 	if err := w.Finish(outcome, info); err != nil {
 		return machineOr(err)
 	}
-	return c.tellRun(e, outcome, counts, dir, o)
+	finished := time.Now()
+	if err := c.tellRun(e, outcome, counts, dir, o); err != nil || !o.timing {
+		return err
+	}
+	p := runProfile{timing: e.Timing(), speed: outcome.Speed, paths: outcome.Paths, steps: e.Steps(), rows: w.Writing(), drawing: drawing,
+		reading: read.Sub(began), files: finished.Sub(ran), total: finished.Sub(began)}
+	where := c.quiet(o.csv, o.json)
+	if where == io.Discard {
+		where = c.errs
+	}
+	p.write(where)
+	return nil
 }
 
 // replaceable refuses to put results in the place of something else.

@@ -66,11 +66,16 @@ func (o *opened) results(caseName string) string {
 
 // prepare reads a study and makes an engine of it.
 func (o *opened) prepare(caseName string) (*sim.Engine, error) {
+	return o.prepareWith(caseName, sim.Options{})
+}
+
+// prepareWith does the same with options of a run.
+func (o *opened) prepareWith(caseName string, options sim.Options) (*sim.Engine, error) {
 	st, err := feeder.Open(o.fs, caseName)
 	if err != nil {
 		return nil, inputError{err}
 	}
-	options := sim.Options{Demo: o.demo}
+	options.Demo = o.demo
 	if !o.demo {
 		options.Cache = filepath.Join(o.dir, "results", ".meters")
 	}
