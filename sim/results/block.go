@@ -37,7 +37,7 @@ type block struct {
 	// above A, below B, above B, a byte each.
 	outside []uint32
 	touched []int
-	any     uint32 // some judged point
+	some    uint32 // of any judged point
 }
 
 const (
@@ -206,7 +206,7 @@ func (b *block) look(i int) uint32 {
 		b.outside[i] = out
 		b.touched = append(b.touched, i)
 		if b.judge.judged[i] {
-			b.any |= out
+			b.some |= out
 		}
 	}
 	return out
@@ -218,7 +218,7 @@ func (b *block) settleOutside(ns int64) (out outsideTimes) {
 	if len(b.touched) == 0 {
 		return out
 	}
-	below, above, belowB, aboveB := times(b.any, ns)
+	below, above, belowB, aboveB := times(b.some, ns)
 	out.belowA, out.aboveA, out.belowB, out.aboveB = below, above, belowB, aboveB
 	for i := range b.judge.services {
 		v := &b.judge.services[i]
@@ -239,7 +239,7 @@ func (b *block) settleOutside(ns int64) (out outsideTimes) {
 	for _, i := range b.touched {
 		b.outside[i] = 0
 	}
-	b.touched, b.any = b.touched[:0], 0
+	b.touched, b.some = b.touched[:0], 0
 	return out
 }
 
