@@ -114,6 +114,9 @@ func (e *Engine) keep() {
 
 // low returns the place of a load below the corner, or blank.
 func (e *Engine) low() string {
+	if e.solution.Path == powerflow.InLanes {
+		return "" // what falls below is left to the solver
+	}
 	k := e.flow.LowAt(e.state.V)
 	if k < 0 {
 		return ""

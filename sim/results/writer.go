@@ -42,9 +42,14 @@ type Writer struct {
 
 	pend pending
 	row  row
-	now  *Reading // at the end of the last step
-	taps []int    // positions as far as they are known
-	caps []bool
+	now  *Reading // at the end of the last step: own, or that of its last interval
+	own  *Reading
+	// The state of the last interval, its end, and what was read of it.
+	seen    *State
+	seenEnd int64
+	reading *Reading
+	taps    []int // positions as far as they are known
+	caps    []bool
 
 	solver  map[string]int // steps by the path of their last solution
 	trouble []troubleOut   // the first steps that are not OK, at most troubleKept
@@ -100,7 +105,8 @@ func create(dir string, p *Plan, exact int) (*Writer, error) {
 	w.stats = newStatistics(p, w.meter, exact)
 	w.pend = newPending(w.meter, len(w.stats.judge.services), len(p.Devices))
 	w.duty = make([]duty, len(p.Devices))
-	w.now = w.meter.NewReading()
+	w.own = w.meter.NewReading()
+	w.now = w.own
 	w.startPositions()
 	f, err := createFolder(dir)
 	if err != nil {
@@ -261,6 +267,7 @@ func (w *Writer) Interval(iv *Interval) error {
 	x := w.pend.sample()
 	x.start, x.end = iv.Start, iv.End
 	w.meter.Read(iv.State, x.reading)
+	w.seen, w.seenEnd, w.reading = iv.State, iv.End, x.reading
 	w.balance.take(x.reading, iv.Start)
 	w.pend.take(x, iv, w.stats.judge)
 	return nil
@@ -293,7 +300,12 @@ func (w *Writer) Step(s *Step) error {
 		}
 	}
 	if s.Last != nil {
-		w.meter.Read(s.Last, w.now)
+		w.now = w.own
+		if s.Last == w.seen && s.End == w.seenEnd {
+			w.now = w.reading // of the interval that the step ends with
+		} else {
+			w.meter.Read(s.Last, w.now)
+		}
 		w.balance.take(w.now, s.Start)
 		copy(w.taps, s.Last.Taps)
 		copy(w.caps, s.Last.Closed)
