@@ -1,5 +1,7 @@
 package powerflow
 
+import "yearflow/sim/powerflow/vector"
+
 // blocks are the columns of a factor L·D·Lᵀ in groups that are eliminated at once, such as
 // the phases of a node. For a group S with the rows R below it
 //
@@ -27,7 +29,7 @@ type columnGroup struct {
 	height        int
 }
 
-const mostColumns = 4
+const mostColumns = vector.GroupRows
 
 // newBlocks finds the groups of a pattern.
 func newBlocks(p *pattern) *blocks {
@@ -75,6 +77,7 @@ func newBlocks(p *pattern) *blocks {
 			above.height = max(above.height, b.groups[g].height+1)
 		}
 	}
+	b.w = append(b.w, 0) // of rows that a column does not reach
 	return b
 }
 

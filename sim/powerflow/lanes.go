@@ -38,11 +38,12 @@ type Lanes struct {
 	found     int     // first of the voltages in x
 	weight    []float64
 
-	pull, gather, expand, forward, backward vector.Rows
-	pulls                                   [][]fixedStamp
-	gathers, expands                        []int32 // coefficients
-	blocks                                  *blocks
-	down, up                                []int32 // places in W; in M, and below zero −1 − place in W
+	pull, gather, expand vector.Rows
+	forward, backward    vector.Groups
+	pulls                [][]fixedStamp
+	gathers, expands     []int32 // coefficients
+	blocks               *blocks
+	down, up             []int32 // places in W; in M, and below zero −1 − place in W
 
 	loads  [4]*vector.Loads
 	drives [4]vector.Drives
@@ -194,46 +195,65 @@ func (l *Lanes) rows() {
 	l.sweep()
 }
 
-// sweep lists the rows of the two substitutions, each row with what it depends on.
+// sweep lists the groups of the two substitutions, each with what it depends on.
 func (l *Lanes) sweep() {
-	type entry struct{ column, w int }
-	left := make([][]entry, l.free) // of each row
-	for i := range l.blocks.groups {
-		g := &l.blocks.groups[i]
-		for r, row := range g.rows {
-			for c, col := range g.columns {
-				left[row] = append(left[row], entry{int(l.rank[col]), g.w + r*len(g.columns) + c})
+	b := l.blocks
+	type entry struct {
+		column int
+		w      [mostColumns]int32 // by row of the group
+	}
+	left := make([][]entry, len(b.groups)) // of each group
+	for i := range b.groups {
+		g := &b.groups[i]
+		for c, col := range g.columns {
+			for r, row := range g.rows {
+				to := b.of[row]
+				if n := len(left[to]); n == 0 || left[to][n-1].column != int(l.rank[col]) {
+					e := entry{column: int(l.rank[col])}
+					for k := range e.w {
+						e.w[k] = int32(len(b.w) - 1)
+					}
+					left[to] = append(left[to], e)
+				}
+				at := int32(0)
+				for k, x := range b.groups[to].columns {
+					if x == row {
+						at = int32(k)
+					}
+				}
+				left[to][len(left[to])-1].w[at] = int32(g.w + r*len(g.columns) + c)
 			}
 		}
 	}
 	for _, o := range l.order {
-		for _, k := range l.blocks.groups[o].columns {
-			if len(left[k]) == 0 {
-				continue
-			}
-			var src []int
-			for _, e := range left[k] {
-				src = append(src, e.column)
-				l.down = append(l.down, int32(e.w))
-			}
-			l.forward.Row(int(l.rank[k]), src...)
+		if len(left[o]) == 0 {
+			continue
 		}
+		columns := b.groups[o].columns
+		var src []int
+		for _, e := range left[o] {
+			src = append(src, e.column)
+			l.down = append(l.down, e.w[:len(columns)]...)
+		}
+		l.forward.Group(int(l.rank[columns[0]]), len(columns), src...)
 	}
 	for i := len(l.order) - 1; i >= 0; i-- {
-		g := &l.blocks.groups[l.order[i]]
+		g := &b.groups[l.order[i]]
 		n := len(g.columns)
-		for c, k := range g.columns {
-			var src []int
-			for d, col := range g.columns {
-				src = append(src, int(l.rank[col]))
+		var src []int
+		for d, col := range g.columns {
+			src = append(src, int(l.rank[col]))
+			for c := range n {
 				l.up = append(l.up, int32(g.m+c*n+d))
 			}
-			for r, row := range g.rows {
-				src = append(src, l.found+int(l.rank[row]))
+		}
+		for r, row := range g.rows {
+			src = append(src, l.found+int(l.rank[row]))
+			for c := range n {
 				l.up = append(l.up, int32(-1-(g.w+r*n+c)))
 			}
-			l.backward.Row(l.found+int(l.rank[k]), src...)
 		}
+		l.backward.Group(l.found+int(l.rank[g.columns[0]]), n, src...)
 	}
 }
 
@@ -301,6 +321,7 @@ func (l *Lanes) refresh() {
 	}
 	l.version = s.version
 	put := func(r *vector.Rows, z complex128) { r.Coef = append(r.Coef, real(z), imag(z)) }
+	lay := func(g *vector.Groups, z complex128) { g.Coef = append(g.Coef, real(z), imag(z)) }
 	l.pull.Coef = l.pull.Coef[:0]
 	for _, row := range l.pulls {
 		for _, st := range row {
@@ -319,14 +340,14 @@ func (l *Lanes) refresh() {
 	b.update(s.pat, s.f)
 	l.forward.Coef = l.forward.Coef[:0]
 	for _, at := range l.down {
-		put(&l.forward, -b.w[at])
+		lay(&l.forward, -b.w[at])
 	}
 	l.backward.Coef = l.backward.Coef[:0]
 	for _, at := range l.up {
 		if at >= 0 {
-			put(&l.backward, b.m[at])
+			lay(&l.backward, b.m[at])
 		} else {
-			put(&l.backward, -b.w[-1-at])
+			lay(&l.backward, -b.w[-1-at])
 		}
 	}
 }

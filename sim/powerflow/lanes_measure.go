@@ -22,10 +22,11 @@ type LaneCurrents struct {
 	all     bool      // everything is read
 	rest    []float64 // values: what dependent unknowns, then fixed ones, still have to receive
 
-	elements, capacitors, sum, less, own, source vector.Rows
-	switched                                     []int32 // capacitor bank by entry of capacitors
-	admittance                                   []complex128
-	owns, sources                                []func() float64
+	elements, capacitors   vector.Groups
+	sum, less, own, source vector.Rows
+	switched               []int32 // capacitor bank by entry of capacitors
+	admittance             []complex128
+	owns, sources          []func() float64
 }
 
 // NewLaneCurrents prepares the reading of currents: of all of them, or, where flows is not
@@ -37,30 +38,11 @@ func (l *Lanes) NewLaneCurrents(flows []int) *LaneCurrents {
 		Flow: vector.Make(n.Offsets[len(n.Elements)]), Coupling: vector.Make(len(n.Couplings)), put: vector.Make(l.held)}
 	at := map[int32][]int{} // flows that leave an unknown
 	for e := range n.Elements {
-		el := &n.Elements[e]
-		w := len(el.Terminals)
-		for p, u := range el.Terminals {
+		for p, u := range n.Elements[e].Terminals {
 			at[u] = append(at[u], n.Offsets[e]+p)
-			if wanted != nil && !wanted[n.Offsets[e]+p] {
-				continue
-			}
-			var src []int
-			rows := &c.elements
-			if el.Kind == network.Capacitor {
-				rows = &c.capacitors
-			}
-			for q, y := range el.Y[p*w : p*w+w] {
-				if y == 0 {
-					continue
-				}
-				src = append(src, int(l.slot[el.Terminals[q]]))
-				if el.Kind == network.Capacitor {
-					c.switched, c.admittance = append(c.switched, int32(el.Index)), append(c.admittance, y)
-				} else {
-					rows.Coef = append(rows.Coef, real(y), imag(y))
-				}
-			}
-			rows.Row(n.Offsets[e]+p, src...)
+		}
+		for p := 0; p < len(n.Elements[e].Terminals); p += vector.GroupRows {
+			c.element(e, p, wanted)
 		}
 	}
 	for k := range s.Injections {
@@ -114,6 +96,38 @@ func (l *Lanes) NewLaneCurrents(flows []int) *LaneCurrents {
 		}
 	}
 	return c
+}
+
+// element lists the flows of an element from terminal first on, as many as a group holds.
+func (c *LaneCurrents) element(e, first int, wanted []bool) {
+	n := c.l.s.Net
+	el := &n.Elements[e]
+	w := len(el.Terminals)
+	rows := min(vector.GroupRows, w-first)
+	read := wanted == nil
+	for p := first; p < first+rows; p++ {
+		read = read || wanted[n.Offsets[e]+p]
+	}
+	if !read {
+		return
+	}
+	var src []int
+	for q, u := range el.Terminals {
+		src = append(src, int(c.l.slot[u]))
+		for p := first; p < first+rows; p++ {
+			y := el.Y[p*w+q]
+			if el.Kind == network.Capacitor {
+				c.switched, c.admittance = append(c.switched, int32(el.Index)), append(c.admittance, y)
+			} else {
+				c.elements.Coef = append(c.elements.Coef, real(y), imag(y))
+			}
+		}
+	}
+	if el.Kind == network.Capacitor {
+		c.capacitors.Group(n.Offsets[e]+first, rows, src...)
+	} else {
+		c.elements.Group(n.Offsets[e]+first, rows, src...)
+	}
 }
 
 // wanted tells which flows are read: those at the given places, and those that leave

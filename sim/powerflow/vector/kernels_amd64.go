@@ -112,3 +112,25 @@ func predict(v, curve, when *float64, n int) {
 		plainPredict(v, curve, when, n)
 	}
 }
+
+func groupsSet(dst, src *float64, index *int32, coef *float64, groups int) {
+	switch kernel {
+	case 2:
+		groupsSet512(dst, src, index, coef, groups)
+	case 1:
+		groupsSet256(dst, src, index, coef, groups)
+	default:
+		plainGroups(dst, src, index, coef, groups, false)
+	}
+}
+
+func groupsAdd(dst, src *float64, index *int32, coef *float64, groups int) {
+	switch kernel {
+	case 2:
+		groupsAdd512(dst, src, index, coef, groups)
+	case 1:
+		groupsAdd256(dst, src, index, coef, groups)
+	default:
+		plainGroups(dst, src, index, coef, groups, true)
+	}
+}

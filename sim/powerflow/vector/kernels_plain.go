@@ -38,3 +38,11 @@ func scale(power, values *float64, index *int32, share *float64, n int) {
 }
 
 func predict(v, curve, when *float64, n int) { plainPredict(v, curve, when, n) }
+
+func groupsSet(dst, src *float64, index *int32, coef *float64, groups int) {
+	plainGroups(dst, src, index, coef, groups, false)
+}
+
+func groupsAdd(dst, src *float64, index *int32, coef *float64, groups int) {
+	plainGroups(dst, src, index, coef, groups, true)
+}

@@ -141,6 +141,42 @@ func twins(random func() *rand.Rand, wild bool) (out []twin) {
 			return [][]float64{whole, {float64(below)}}
 		}})
 	}
+	for kind, name := range []string{"groups Set", "groups Add"} {
+		out = append(out, twin{name, func(t *testing.T, k int) [][]float64 {
+			rng := random()
+			whole, x := fence(n, rng)
+			from, y := fence(n, rng)
+			if wild {
+				odd(x, rng)
+				odd(y, rng)
+			}
+			var g Groups
+			for i := 0; i < n-3; {
+				rows := 1 + rng.IntN(3)
+				src := []int{rng.IntN(n)}
+				for range rng.IntN(7) {
+					src = append(src, rng.IntN(n))
+				}
+				g.Group(i, rows, src...)
+				i += rows
+			}
+			for range 2 * g.coefs {
+				g.Coef = append(g.Coef, rng.NormFloat64())
+			}
+			d, s, i, c := &x[0], &y[0], &g.index[0], &g.Coef[0]
+			f := [][2]func(dst, src *float64, index *int32, coef *float64, groups int){
+				{nil, nil},
+				{groupsSet256, groupsAdd256},
+				{groupsSet512, groupsAdd512},
+			}[k][kind]
+			if f == nil {
+				plainGroups(d, s, i, c, g.groups, kind == 1)
+			} else {
+				f(d, s, i, c, g.groups)
+			}
+			return [][]float64{whole, from}
+		}})
+	}
 	out = append(out, twin{"scale", func(t *testing.T, k int) [][]float64 {
 		rng := random()
 		whole, power := fence(n, rng)

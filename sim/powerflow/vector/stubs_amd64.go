@@ -49,6 +49,16 @@ func scale256(power *float64, values *float64, index *int32, share *float64, n i
 //go:noescape
 func predict256(v *float64, curve *float64, when *float64, n int)
 
+// groupsSet256 is the kernel of Groups.Set.
+//
+//go:noescape
+func groupsSet256(dst *float64, src *float64, index *int32, coef *float64, groups int)
+
+// groupsAdd256 is the kernel of Groups.Add.
+//
+//go:noescape
+func groupsAdd256(dst *float64, src *float64, index *int32, coef *float64, groups int)
+
 // rowsSet512 is the kernel of Rows.Set.
 //
 //go:noescape
@@ -93,3 +103,13 @@ func scale512(power *float64, values *float64, index *int32, share *float64, n i
 //
 //go:noescape
 func predict512(v *float64, curve *float64, when *float64, n int)
+
+// groupsSet512 is the kernel of Groups.Set.
+//
+//go:noescape
+func groupsSet512(dst *float64, src *float64, index *int32, coef *float64, groups int)
+
+// groupsAdd512 is the kernel of Groups.Add.
+//
+//go:noescape
+func groupsAdd512(dst *float64, src *float64, index *int32, coef *float64, groups int)

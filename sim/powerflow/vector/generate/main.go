@@ -32,6 +32,8 @@ func main() {
 		m.advance()
 		m.scale()
 		m.predict()
+		m.groups("Set")
+		m.groups("Add")
 	}
 	Generate()
 }
