@@ -105,11 +105,11 @@ func (s *Sampler) Step(dst []float64, i int) {
 // series goes over all steps.
 func (s *Sampler) Max(k int) float64 { return s.max[k]() }
 
-// Spacing returns the least time, ns, from one value to the next of those series that
-// are drawn as straight lines between values further apart than a step; 0: there is none.
+// Spacing returns the least time, ns, from one value to the next over all series; 0:
+// there is none.
 func (s *Sampler) Spacing() (spacing int64) {
 	for i := range s.groups {
-		if g := &s.groups[i]; g.lines && g.step > s.axis.Step && (spacing == 0 || g.step < spacing) {
+		if g := &s.groups[i]; spacing == 0 || g.step < spacing {
 			spacing = g.step
 		}
 	}

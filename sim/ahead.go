@@ -17,19 +17,21 @@ import (
 // in place stay there when a device moves. All lanes start from the voltages that the
 // step at hand starts from; none runs past the end of the local day.
 type ahead struct {
-	lanes   *powerflow.Lanes
-	values  []float64         // of the series, in one step
-	rows    []float64         // ones, then the values of each series, by lane
-	month   int               // that the shares of loads known by their energy are of
-	loaded  [vector.Lanes]int // step, −1 none
-	first   int               // step; of no block: −1
-	end     int
-	number  int // of the block
-	arrived uint8
-	taken   uint8
-	window  window
-	state   int // device state that the block was solved with
-	dayEnd  int // first step of the next day
+	lanes               *powerflow.Lanes
+	values              []float64         // of the series, in one step
+	rows                []float64         // ones, then the values of each series, by lane
+	month               int               // that the shares of loads known by their energy are of
+	loaded              [vector.Lanes]int // step, −1 none
+	first               int               // step; of no block: −1
+	end                 int
+	number              int          // of the block
+	near                []complex128 // voltages at the step nearStep, of the device state nearState
+	nearStep, nearState int
+	arrived             uint8
+	taken               uint8
+	window              window
+	state               int // device state that the block was solved with
+	dayEnd              int // first step of the next day
 }
 
 // prepareAhead makes the lanes, where a step's input is a function of the step alone:
@@ -83,7 +85,7 @@ func (e *Engine) whyStepwise() string {
 // begin forgets what was solved before a run.
 func (a *ahead) begin() {
 	a.first, a.end, a.dayEnd, a.month = -1, -1, -1, -1
-	a.window.first, a.window.end = -1, -1
+	a.window.first, a.window.end, a.nearStep = -1, -1, -1
 	for lane := range a.loaded {
 		a.loaded[lane] = -1
 	}
@@ -108,6 +110,7 @@ func (e *Engine) solveAhead() bool {
 // solveLanes solves the step at hand and those behind it.
 func (e *Engine) solveLanes() {
 	a := e.ahead
+	near := a.nearest(e)
 	a.number++
 	if e.quiet != nil && e.quiet.lent {
 		e.quiet.lent = false
@@ -137,6 +140,8 @@ func (e *Engine) solveLanes() {
 	switch {
 	case curved:
 		a.window.start(a)
+	case near && e.anchored:
+		a.lanes.StartAt(a.near)
 	case e.anchored:
 		a.lanes.Start(mask, e.anchor, &e.input)
 	default:
@@ -152,6 +157,19 @@ func (e *Engine) solveLanes() {
 
 // load puts the inputs of a step into a lane.
 func (a *ahead) load(in *inputs, k, step int) { in.loadLane(a.lanes, a.rows, a.values, k, step) }
+
+// nearest keeps the solution of the last step that is one less than a multiple of the
+// number of lanes, and reports whether it holds: it is of the device state and of the day
+// at hand.
+func (a *ahead) nearest(e *Engine) bool {
+	last := e.step - 1
+	last -= (last + 1) % vector.Lanes
+	if last >= a.first && last < a.end && a.arrived>>(vector.Lanes-1)&1 == 1 {
+		a.near = a.lanes.Block.Keep(a.near, vector.Lanes-1)
+		a.nearStep, a.nearState = last, a.state
+	}
+	return a.nearStep == last && last >= 0 && a.nearState == e.flow.DeviceState() && e.anchored
+}
 
 // loadLane puts the inputs of a step into a lane of lanes, its values into rows.
 func (in *inputs) loadLane(lanes *powerflow.Lanes, rows, values []float64, k, step int) {

@@ -43,7 +43,7 @@ func BenchmarkEngine(b *testing.B) {
 			if err != nil {
 				b.Fatal(err)
 			}
-			e := prepare(b, study, "", sim.Options{Timing: true})
+			e := prepare(b, study, "", sim.Options{})
 			n := &nothing{}
 			began := time.Now()
 			for b.Loop() {
@@ -54,6 +54,8 @@ func BenchmarkEngine(b *testing.B) {
 			b.ReportMetric(float64(time.Since(began).Microseconds())/float64(n.quiet+n.steps), "µs/step")
 			b.ReportMetric(float64(n.quiet)/float64(n.quiet+n.steps), "quiet")
 			t := e.Timing()
+			b.ReportMetric(float64(t.LanesUsed)/float64(t.Blocks), "lanes/block")
+			b.ReportMetric(float64(t.Solutions)/float64(e.Steps()), "solutions/step")
 			b.ReportMetric(float64(t.Iterations)/float64(t.Solutions), "iterations")
 		})
 	}

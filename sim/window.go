@@ -1,16 +1,14 @@
 package sim
 
 import (
-	"yearflow/devices"
 	"yearflow/sim/powerflow"
 	"yearflow/sim/powerflow/vector"
 )
 
 // window is a row of steps between two instants of the calendar, or from the last action
-// to such an instant. Its first, middle and last step are solved before the others, which
-// start from a curve through the three. Between two values of interpolated profiles
-// inputs are straight lines, so that windows which end with them have starts that are
-// nearly solutions.
+// to such an instant, over which inputs are straight lines or constant. Its first, middle
+// and last step are solved before the others, which start from a curve through the three:
+// nearly a solution.
 type window struct {
 	length     int // steps from one instant of the calendar to the next; 0: no windows
 	first, end int // steps that the curve is of
@@ -21,30 +19,22 @@ type window struct {
 	last       *powerflow.Solution // at its last step
 }
 
-// Windows are windowSteps long where profiles say nothing else, and at least leastWindow.
-// Steps of longestWindowStep and more change too much from one to the next.
-const (
-	windowSteps       = 60
-	leastWindow       = 8
-	longestWindowStep = 600 * devices.Second
-)
+// A window is as long as it is from one value of the profiles to the next, or a part of
+// that about mostWindow long; below leastWindow steps it would gain nothing.
+const leastWindow, mostWindow = 8, 120
 
 // prepareWindow chooses the length of windows.
 func (e *Engine) prepareWindow() {
-	axis := &e.in.axis
-	if axis.Step >= longestWindowStep {
+	a, axis := e.ahead, &e.in.axis
+	spacing := e.in.sampler.Spacing()
+	n := int(spacing / axis.Step)
+	if spacing%axis.Step != 0 || n < leastWindow {
 		return
 	}
-	a := e.ahead
 	w := &a.window
-	w.length = windowSteps
-	if spacing := e.in.sampler.Spacing(); spacing%axis.Step == 0 {
-		switch n := int(spacing / axis.Step); {
-		case n >= leastWindow && n <= 2*windowSteps:
-			w.length = n
-		case n%windowSteps != 0 && n > windowSteps:
-			for w.length = windowSteps; n%w.length != 0 && w.length > windowSteps/2; w.length-- {
-			}
+	for parts := 1; w.length == 0; parts++ {
+		if n%parts == 0 && n/parts <= mostWindow || n/parts < mostWindow/2 {
+			w.length = n / parts
 		}
 	}
 	w.lanes = powerflow.NewLanes(e.flow, e.in.largest())

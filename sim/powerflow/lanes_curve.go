@@ -28,3 +28,19 @@ func (l *Lanes) Fit(c *Curve, middle float64) {
 
 // Predict starts all lanes on a curve, each at its own w.
 func (l *Lanes) Predict(c *Curve, when *[vector.Lanes]float64) { vector.Predict(l.v, c.coef, when) }
+
+// Keep returns the voltages of a lane for StartAt, in the room of another lane's.
+func (b *Block) Keep(room []complex128, lane int) []complex128 {
+	room = room[:0]
+	for at := range b.l.all {
+		room = append(room, vector.At(b.v, at, lane))
+	}
+	return room
+}
+
+// StartAt starts all lanes from what Keep returned.
+func (l *Lanes) StartAt(kept []complex128) {
+	for at, z := range kept {
+		vector.Fill(l.v, at, z)
+	}
+}
