@@ -17,13 +17,15 @@ import (
 type relay struct {
 	e         *Engine
 	recorders []quietRecorder
-	events    chan *event
+	events    chan []*event
+	batch     []*event // not sent yet
 	free      chan *event
 	blocks    chan *powerflow.Block // to be solved in
 	done      chan struct{}
 	failed    atomic.Bool
 	err       error // of a recorder, to be read after done
 	last      *event
+	sent      int // events at a time
 	state     int // device state that currents are read with
 
 	// What the receiving side works with.
@@ -74,7 +76,7 @@ const (
 func newRelay(e *Engine, recorders []quietRecorder) *relay {
 	numbers := len(e.state.V) + len(e.state.Flow)
 	n := max(4, min(relayEvents, relayNumbers/max(numbers, 1)))
-	r := &relay{e: e, recorders: recorders, events: make(chan *event, n), free: make(chan *event, n), done: make(chan struct{}), timed: e.timed, solved: -1,
+	r := &relay{e: e, recorders: recorders, events: make(chan []*event, n), free: make(chan *event, n), done: make(chan struct{}), timed: e.timed, solved: -1, sent: max(1, n/4),
 		tally: plantTally{make([]float64, len(e.state.Generation)), make([]float64, len(e.state.Generation))}}
 	for range n {
 		r.free <- &event{state: e.state.Like(), devices: make([]results.DeviceState, len(e.devices)), taps: make([]int, len(e.state.Taps)), closed: make([]bool, len(e.state.Closed))}
@@ -103,17 +105,40 @@ func (r *relay) next() (*event, error) {
 	if r.failed.Load() {
 		return nil, errRecorder
 	}
-	ev := <-r.free
+	var ev *event
+	select {
+	case ev = <-r.free:
+	default:
+		r.send()
+		ev = <-r.free
+	}
 	ev.power = ev.power[:0]
 	ev.interval, ev.step, ev.action, ev.quiet, ev.block, ev.retired, ev.wait = false, false, false, 0, nil, nil, nil
 	return ev, nil
 }
 
-// flush sends the interval that waited for the end of its step.
+// flush queues the interval that waited for the end of its step.
 func (r *relay) flush() {
 	if r.last != nil {
-		r.events <- r.last
+		r.queue(r.last)
 		r.last = nil
+	}
+}
+
+// queue puts an event behind the others. They are sent several at a time: to wake the
+// receiver takes longer than most of them.
+func (r *relay) queue(ev *event) {
+	r.batch = append(r.batch, ev)
+	if len(r.batch) >= r.sent {
+		r.send()
+	}
+}
+
+// send sends what has been queued.
+func (r *relay) send() {
+	if len(r.batch) > 0 {
+		r.events <- r.batch
+		r.batch = make([]*event, 0, r.sent)
 	}
 }
 
@@ -174,7 +199,7 @@ func (r *relay) Action(a *results.Action) error {
 		return err
 	}
 	ev.action, ev.asAction = true, *a
-	r.events <- ev
+	r.queue(ev)
 	return nil
 }
 
@@ -192,7 +217,7 @@ func (r *relay) quiet(step, n int, states []results.DeviceState) error {
 	ev.devices = ev.devices[:len(states)]
 	copy(ev.taps, r.e.state.Taps)
 	copy(ev.closed, r.e.state.Closed)
-	r.events <- ev
+	r.queue(ev)
 	return nil
 }
 
@@ -202,7 +227,8 @@ func (r *relay) refresh() {
 	r.state = r.e.flow.DeviceState()
 	if ev, err := r.next(); err == nil {
 		ev.wait = make(chan struct{})
-		r.events <- ev
+		r.queue(ev)
+		r.send()
 		<-ev.wait
 		r.currents.Refresh()
 	}
@@ -215,15 +241,22 @@ func (r *relay) exchange() error {
 	if err != nil {
 		return err
 	}
-	next := <-r.blocks
+	var next *powerflow.Block
+	select {
+	case next = <-r.blocks:
+	default:
+		r.send()
+		next = <-r.blocks
+	}
 	ev.retired = r.e.ahead.lanes.Exchange(next)
-	r.events <- ev
+	r.queue(ev)
 	return nil
 }
 
 // close ends the receiving and returns the error of the recorder that failed.
 func (r *relay) close() error {
 	r.flush()
+	r.send()
 	close(r.events)
 	<-r.done
 	return r.err
@@ -231,24 +264,31 @@ func (r *relay) close() error {
 
 func (r *relay) receive() {
 	defer close(r.done)
-	for ev := range r.events {
-		if r.err == nil {
-			began := r.now()
-			if r.err = r.take(ev); r.err != nil {
-				r.failed.Store(true)
-			}
-			if r.timed {
-				r.busy += time.Since(began)
-			}
+	for batch := range r.events {
+		for _, ev := range batch {
+			r.handle(ev)
 		}
-		if ev.retired != nil {
-			r.blocks <- ev.retired
-		}
-		if ev.wait != nil {
-			close(ev.wait)
-		}
-		r.free <- ev
 	}
+}
+
+// handle takes an event in and gives back what was lent with it.
+func (r *relay) handle(ev *event) {
+	if r.err == nil {
+		began := r.now()
+		if r.err = r.take(ev); r.err != nil {
+			r.failed.Store(true)
+		}
+		if r.timed {
+			r.busy += time.Since(began)
+		}
+	}
+	if ev.retired != nil {
+		r.blocks <- ev.retired
+	}
+	if ev.wait != nil {
+		close(ev.wait)
+	}
+	r.free <- ev
 }
 
 func (r *relay) now() (t time.Time) {

@@ -97,16 +97,27 @@ func (s *Solver) refactor() error {
 		s.singular = s.red.clusters[k].dep[0]
 		return fmt.Errorf("the taps of the regulators make the network's equations singular at %s: look at regulators in a loop", s.Net.Unknowns[s.singular].Name)
 	}
-	copy(s.y, s.base)
+	u := s.update
+	for _, slot := range u.moving {
+		s.next[slot] = s.base[slot]
+	}
 	for _, st := range s.moving {
 		el := &s.Net.Elements[st.element]
 		if el.Kind == network.Capacitor && !s.closed[el.Index] {
 			continue
 		}
-		s.y[st.slot] += el.Y[st.entry] * complex(s.coef(st.a)*s.coef(st.b), 0)
+		s.next[st.slot] += el.Y[st.entry] * complex(s.coef(st.a)*s.coef(st.b), 0)
 	}
-	copy(s.f, s.y)
-	if row := s.pat.factor(s.f); row >= 0 {
+	if !u.valid {
+		copy(s.y, s.base)
+	}
+	for _, slot := range u.moving {
+		if z := s.next[slot]; z != s.y[slot] || !u.valid {
+			s.y[slot] = z
+			u.stale[u.columnOf(slot)] = true
+		}
+	}
+	if row := u.factor(s.pat, s.f, s.y, s.version); row >= 0 {
 		s.singular = s.unknownAt(row)
 		return fmt.Errorf("the network's equations are singular at %s: some part of the feeder has nothing to hold its voltage, or a capacitor resonates with a line", s.Net.Unknowns[s.singular].Name)
 	}

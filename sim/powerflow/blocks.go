@@ -122,55 +122,63 @@ func (b *blocks) levels() (order []int32) {
 	return order
 }
 
-// update computes W and M of every group from a factor, whose diagonal is 1/D.
-func (b *blocks) update(p *pattern, f []complex128) {
+// stale tells whether a column of a group was computed after a version.
+func (b *blocks) stale(group int, changed []int, version int) bool {
+	for _, c := range b.groups[group].columns {
+		if changed[c] > version {
+			return true
+		}
+	}
+	return false
+}
+
+// update computes W and M of a group from a factor, whose diagonal is 1/D.
+func (b *blocks) update(group int, p *pattern, f []complex128) {
 	var l, inv [mostColumns][mostColumns]complex128 // L_SS and its inverse, below the diagonal
-	for i := range b.groups {
-		g := &b.groups[i]
-		k := len(g.columns)
-		for c, col := range g.columns {
-			at := p.start[col]
-			for r := c + 1; r < k; r++ {
-				l[r][c] = f[at+int32(r-c-1)]
-			}
+	g := &b.groups[group]
+	k := len(g.columns)
+	for c, col := range g.columns {
+		at := p.start[col]
+		for r := c + 1; r < k; r++ {
+			l[r][c] = f[at+int32(r-c-1)]
 		}
-		// L·X = 1, column by column of X.
-		for c := range k {
-			for r := c + 1; r < k; r++ {
-				s := -l[r][c]
-				for j := c + 1; j < r; j++ {
-					s -= l[r][j] * inv[j][c]
-				}
-				inv[r][c] = s
+	}
+	// L·X = 1, column by column of X.
+	for c := range k {
+		for r := c + 1; r < k; r++ {
+			s := -l[r][c]
+			for j := c + 1; j < r; j++ {
+				s -= l[r][j] * inv[j][c]
 			}
+			inv[r][c] = s
 		}
-		m := b.m[g.m : g.m+k*k]
-		for r := range k {
-			for c := r; c < k; c++ {
-				// Σ over j ≥ c of X_jr·X_jc/D_j, X_cc = 1
-				s := f[g.columns[c]]
-				if c > r {
-					s *= inv[c][r]
-				}
-				for j := c + 1; j < k; j++ {
-					s += inv[j][r] * inv[j][c] * f[g.columns[j]]
-				}
-				m[r*k+c], m[c*k+r] = s, s
+	}
+	m := b.m[g.m : g.m+k*k]
+	for r := range k {
+		for c := r; c < k; c++ {
+			// Σ over j ≥ c of X_jr·X_jc/D_j, X_cc = 1
+			s := f[g.columns[c]]
+			if c > r {
+				s *= inv[c][r]
 			}
-		}
-		w := b.w[g.w : g.w+len(g.rows)*k]
-		for c, col := range g.columns {
-			at := p.start[col] + int32(k-c-1)
-			for r := range g.rows {
-				w[r*k+c] = f[at+int32(r)]
+			for j := c + 1; j < k; j++ {
+				s += inv[j][r] * inv[j][c] * f[g.columns[j]]
 			}
+			m[r*k+c], m[c*k+r] = s, s
 		}
+	}
+	w := b.w[g.w : g.w+len(g.rows)*k]
+	for c, col := range g.columns {
+		at := p.start[col] + int32(k-c-1)
 		for r := range g.rows {
-			row := w[r*k : r*k+k]
-			for c := range k {
-				for j := c + 1; j < k; j++ {
-					row[c] += row[j] * inv[j][c]
-				}
+			w[r*k+c] = f[at+int32(r)]
+		}
+	}
+	for r := range g.rows {
+		row := w[r*k : r*k+k]
+		for c := range k {
+			for j := c + 1; j < k; j++ {
+				row[c] += row[j] * inv[j][c]
 			}
 		}
 	}

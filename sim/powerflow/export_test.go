@@ -1,12 +1,29 @@
 package powerflow
 
-// Refactor assembles the matrix for the devices at hand and factors it.
-func (s *Solver) Refactor() error { return s.refactor() }
+// Refactor assembles and factors the whole matrix for the devices at hand.
+func (s *Solver) Refactor() error {
+	s.update.valid = false
+	return s.refactor()
+}
 
 // Factor factors the matrix that was assembled last.
 func (s *Solver) Factor() bool {
-	copy(s.f, s.y)
-	return s.pat.factor(s.f) < 0
+	s.update.valid = false
+	return s.update.factor(s.pat, s.f, s.y, s.version) < 0
+}
+
+// SameFactor tells whether the factor is, to the bit, that of all columns computed anew.
+func (s *Solver) SameFactor() bool {
+	was := append([]complex128(nil), s.f...)
+	if !s.Factor() {
+		return false
+	}
+	for i, z := range s.f {
+		if z != was[i] {
+			return false
+		}
+	}
+	return true
 }
 
 // Substitute solves once with the factor at hand.

@@ -100,33 +100,6 @@ func (p *pattern) at(i, j int32) int32 {
 // slot returns the slot of two unknowns.
 func (p *pattern) slot(u, v int32) int32 { return p.at(p.place[u], p.place[v]) }
 
-// factor turns the values a of a symmetric matrix into L·D·Lᵀ in place: the
-// diagonal slots hold 1/D. It returns the row, in elimination order, of a pivot that
-// vanishes, or −1.
-func (p *pattern) factor(a []complex128) int {
-	d := 0
-	for k := range p.n {
-		piv := a[k]
-		if piv == 0 || piv != piv {
-			return k
-		}
-		inv := 1 / piv
-		a[k] = inv
-		col := a[p.start[k]:p.start[k+1]]
-		for x := range col {
-			l := col[x] * inv
-			for _, y := range col[x:] {
-				a[p.dest[d]] -= l * y
-				d++
-			}
-		}
-		for x := range col {
-			col[x] *= inv
-		}
-	}
-	return -1
-}
-
 // solve replaces x, in elimination order, by the solution with a factored matrix.
 func (p *pattern) solve(a, x []complex128) {
 	n := int32(p.n)

@@ -43,7 +43,9 @@ type Lanes struct {
 	pulls                [][]fixedStamp
 	gathers, expands     []int32 // coefficients
 	blocks               *blocks
-	down, up             []int32 // places in W; in M, and below zero −1 − place in W
+	down, up             []int32   // places in W; in M, and below zero −1 − place in W
+	downs                [][]int32 // by group of columns: places in down of its W
+	ups                  [][2]int  // by group of columns: its part of up
 
 	loads  [4]*vector.Loads
 	drives [4]vector.Drives
@@ -237,9 +239,23 @@ func (l *Lanes) sweep() {
 		}
 		l.forward.Group(int(l.rank[columns[0]]), len(columns), src...)
 	}
+	l.downs, l.ups = make([][]int32, len(b.groups)), make([][2]int, len(b.groups))
+	owner := make([]int32, len(b.w))
+	for i := range b.groups {
+		g := &b.groups[i]
+		for k := range len(g.rows) * len(g.columns) {
+			owner[g.w+k] = int32(i)
+		}
+	}
+	for k, at := range l.down {
+		if int(at) < len(b.w)-1 {
+			l.downs[owner[at]] = append(l.downs[owner[at]], int32(k))
+		}
+	}
 	for i := len(l.order) - 1; i >= 0; i-- {
 		g := &b.groups[l.order[i]]
 		n := len(g.columns)
+		begin := len(l.up)
 		var src []int
 		for d, col := range g.columns {
 			src = append(src, int(l.rank[col]))
@@ -254,7 +270,9 @@ func (l *Lanes) sweep() {
 			}
 		}
 		l.backward.Group(l.found+int(l.rank[g.columns[0]]), n, src...)
+		l.ups[l.order[i]] = [2]int{begin, len(l.up)}
 	}
+	l.forward.Coef, l.backward.Coef = make([]float64, 2*len(l.down)), make([]float64, 2*len(l.up))
 }
 
 // branches sorts the injections into lists.
@@ -319,9 +337,9 @@ func (l *Lanes) refresh() {
 	if l.version == s.version {
 		return
 	}
+	before := l.version
 	l.version = s.version
 	put := func(r *vector.Rows, z complex128) { r.Coef = append(r.Coef, real(z), imag(z)) }
-	lay := func(g *vector.Groups, z complex128) { g.Coef = append(g.Coef, real(z), imag(z)) }
 	l.pull.Coef = l.pull.Coef[:0]
 	for _, row := range l.pulls {
 		for _, st := range row {
@@ -337,17 +355,23 @@ func (l *Lanes) refresh() {
 		put(&l.expand, complex(s.coef(c), 0))
 	}
 	b := l.blocks
-	b.update(s.pat, s.f)
-	l.forward.Coef = l.forward.Coef[:0]
-	for _, at := range l.down {
-		lay(&l.forward, -b.w[at])
-	}
-	l.backward.Coef = l.backward.Coef[:0]
-	for _, at := range l.up {
-		if at >= 0 {
-			lay(&l.backward, b.m[at])
-		} else {
-			lay(&l.backward, -b.w[-1-at])
+	for i := range b.groups {
+		if !b.stale(i, s.update.changed, before) {
+			continue
+		}
+		b.update(i, s.pat, s.f)
+		for _, k := range l.downs[i] {
+			z := b.w[l.down[k]]
+			l.forward.Coef[2*k], l.forward.Coef[2*k+1] = -real(z), -imag(z)
+		}
+		for k := l.ups[i][0]; k < l.ups[i][1]; k++ {
+			at := l.up[k]
+			if at >= 0 {
+				l.backward.Coef[2*k], l.backward.Coef[2*k+1] = real(b.m[at]), imag(b.m[at])
+			} else {
+				z := b.w[-1-at]
+				l.backward.Coef[2*k], l.backward.Coef[2*k+1] = -real(z), -imag(z)
+			}
 		}
 	}
 }

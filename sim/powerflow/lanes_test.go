@@ -179,3 +179,38 @@ func BenchmarkLanes(b *testing.B) {
 		})
 	}
 }
+
+// After any row of device states the factor is, to the bit, that of the last one alone.
+func TestTheFactorDoesNotDependOnTheWay(t *testing.T) {
+	for seed := range uint64(60) {
+		m, inj, _ := randomFeeder(seed)
+		n, err := network.Build(m)
+		if err != nil {
+			t.Fatal(err)
+		}
+		s, err := powerflow.New(n, inj)
+		if err != nil {
+			t.Fatalf("seed %d: %v", seed, err)
+		}
+		r := rand.New(rand.NewPCG(seed, 5))
+		ratio := make([]float64, len(n.Couplings))
+		for k := range ratio {
+			ratio[k] = 1
+		}
+		closed := []bool{true, true}
+		for move := range 12 {
+			for k, c := range n.Couplings {
+				if c.Unit >= 0 && r.IntN(3) == 0 {
+					ratio[k] = 1 + 0.00625*float64(r.IntN(33)-16)
+				}
+			}
+			closed[r.IntN(2)] = r.IntN(2) == 0
+			if err := s.SetDevices(ratio, closed); err != nil {
+				t.Fatal(err)
+			}
+			if !s.SameFactor() {
+				t.Fatalf("seed %d, move %d: the factor differs from that of all columns", seed, move)
+			}
+		}
+	}
+}

@@ -79,6 +79,8 @@ type Solver struct {
 	ratio        []float64
 	closed       []bool
 	base         []complex128 // values without the moving stamps
+	next         []complex128 // values at the slots that devices change
+	update       *update
 	y, f         []complex128 // values of the reduced matrix, and its factor
 	x, rhs, pull []complex128 // in elimination order; pull is that of the fixed voltages
 	inject, old  []complex128 // current that injections put into each unknown, A
@@ -132,6 +134,7 @@ func New(n *network.Network, injections []Injection, groups ...Group) (*Solver, 
 	s.pat = newPattern(red.free, entries)
 	s.plan()
 	k := s.pat.slots()
+	s.update, s.next = newUpdate(s), make([]complex128, k)
 	s.base, s.y, s.f = make([]complex128, k), make([]complex128, k), make([]complex128, k)
 	s.x, s.rhs, s.pull = make([]complex128, red.free), make([]complex128, red.free), make([]complex128, red.free)
 	u := len(n.Unknowns)
