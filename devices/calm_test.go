@@ -37,3 +37,32 @@ func TestCalmChangesNothing(t *testing.T) {
 		t.Errorf("only %d readings were calm", calm)
 	}
 }
+
+// The same of a capacitor's control by voltage.
+func TestCalmRangeOfACapacitor(t *testing.T) {
+	r := rand.New(rand.NewPCG(3, 4))
+	calm := 0
+	for range 100_000 {
+		c := CapacitorControl{Kind: CapacitorVoltage, On: 117 + r.Float64(), Off: 120 + 4*r.Float64(), OverrideOn: math.NaN(), OverrideOff: math.NaN(), Delay: 30 * Second, Lockout: 300 * Second}
+		if r.IntN(5) == 0 {
+			c.Kind = CapacitorHeld
+		}
+		if r.IntN(5) == 0 {
+			c.DailyLimit = 3
+		}
+		s := CapacitorState{Closed: r.IntN(2) == 0, Locked: r.IntN(5) == 0}
+		low, high, ok := c.CalmRange()
+		v := 119 + 3*r.NormFloat64()
+		if !ok || !c.Rests(s) || !(v > low && v < high) {
+			continue
+		}
+		calm++
+		reading := CapacitorReading{V120: v}
+		if now := 10 * Second; c.Observe(s, reading, now) != s || c.Edge(s, reading) || c.Standing(s) {
+			t.Fatalf("%+v, %+v, %g V: not calm", c, s, v)
+		}
+	}
+	if calm < 1000 {
+		t.Errorf("only %d readings were calm", calm)
+	}
+}

@@ -119,6 +119,21 @@ func (c *CapacitorControl) Observe(s CapacitorState, r CapacitorReading, now Tim
 	return s
 }
 
+// CalmRange returns the voltages, V on the 120 V base, between which a control that Rests
+// is left as it is, and stands near no edge: ok is false where there is no such range, of
+// any control but one by voltage.
+func (c *CapacitorControl) CalmRange() (low, high float64, ok bool) {
+	if c.Kind == CapacitorHeld {
+		return math.Inf(-1), math.Inf(1), true
+	}
+	return c.On + 2*Near, c.Off - 2*Near, c.Kind == CapacitorVoltage && c.On < c.Off && c.DailyLimit <= 0
+}
+
+// Rests tells whether nothing is asked, locked out or latched.
+func (c *CapacitorControl) Rests(s CapacitorState) bool {
+	return s.Ask == 0 && !s.Locked && s.Latch == None && s.Reason == None
+}
+
 // calendar brings what depends on the local clock up to date.
 func (c *CapacitorControl) calendar(s CapacitorState, clock Time) CapacitorState {
 	if c.Kind != CapacitorTime && c.DailyLimit <= 0 || s.From <= clock && clock < s.Switch {

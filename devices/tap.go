@@ -76,16 +76,23 @@ func (c *TapChanger) Measure(v, i complex128) TapReading {
 	return r
 }
 
-// Calm tells of most readings that leave a control at rest that they do: nothing is
-// remembered, there are no limits, and the voltage is inside the band by more than Near.
-// Observe then changes nothing and Edge is false; where Calm is false, they say.
-func (c *TapChanger) Calm(s TapState, r TapReading) bool {
-	if s.Ask != 0 || s.Side != 0 || s.Rest != 0 || s.Sequence {
-		return false
-	}
-	half := c.Bandwidth/2 - Near
-	return c.Held || c.LimitHigh != c.LimitHigh && c.LimitLow != c.LimitLow && r.Relay > c.Set-half && r.Relay < c.Set+half
+// CalmRange returns the relay voltages, V, between which a control that Rests is left as
+// it is, and stands near no edge; ok is false where there is no such range, of a held
+// control or one with limits.
+func (c *TapChanger) CalmRange() (low, high float64, ok bool) {
+	half := c.Bandwidth/2 - 2*Near
+	return c.Set - half, c.Set + half, !c.Held && c.LimitHigh != c.LimitHigh && c.LimitLow != c.LimitLow
 }
+
+// Calm tells of most readings that leave a control at rest that they do: Observe changes
+// nothing and Edge is false. Where Calm is false, they say.
+func (c *TapChanger) Calm(s TapState, r TapReading) bool {
+	low, high, ok := c.CalmRange()
+	return s.Rests() && (c.Held || ok && r.Relay > low && r.Relay < high)
+}
+
+// Rests tells whether nothing is asked and no clock shows anything.
+func (s TapState) Rests() bool { return s.Ask == 0 && s.Side == 0 && s.Rest == 0 && !s.Sequence }
 
 // TapState is the state of a tap changer and its control. The zero value, with a
 // position, is that of a control that has seen nothing yet.

@@ -53,6 +53,7 @@ func (c *capacitorControl) Idle(r Reading, now devices.Time) (s results.DeviceSt
 // each is one settled interval.
 type quiet struct {
 	controls []idler // by device
+	glance   *glance
 	currents *powerflow.LaneCurrents
 	number   int       // of the block that currents are of
 	lent     bool      // the block at hand has been handed on
@@ -75,6 +76,7 @@ func newQuiet(e *Engine) *quiet {
 		q.controls = append(q.controls, c)
 	}
 	q.currents = e.ahead.lanes.NewLaneCurrents(e.watchedFlows())
+	q.glance = newGlance(e)
 	return q
 }
 
@@ -155,21 +157,41 @@ func (q *quiet) read(e *Engine, k int, now devices.Time, first bool) bool {
 		q.currents.Refresh()
 		q.currents.Read(a.lanes.Block, a.arrived)
 		e.lap(&e.timing.Solving)
+		q.glance.look(q.currents.Coupling)
 	}
-	for i, d := range e.devices {
-		x := read(e, lane{e, k}, d, now)
-		s, watched, idle := q.controls[i].Idle(x, now)
-		if !idle {
+	if g := q.glance; g.rests && g.rough>>k&1 == 0 {
+		if !g.calm(k, first, now, q.states, q.coarse) {
 			return false
 		}
-		s.Hunting = d.hunting.Hunts(now)
-		if first {
-			q.states[i] = s
-		} else if q.states[i] != s {
+		for _, i := range g.slow {
+			if !q.look(e, i, k, now, first) {
+				return false
+			}
+		}
+		return true
+	}
+	for i := range e.devices {
+		if !q.look(e, i, k, now, first) {
 			return false
 		}
-		q.coarse[i*vector.Lanes+k] = watched
 	}
+	return true
+}
+
+// look looks at a lane with one device.
+func (q *quiet) look(e *Engine, i, k int, now devices.Time, first bool) bool {
+	d := e.devices[i]
+	s, watched, idle := q.controls[i].Idle(read(e, lane{e, k}, d, now), now)
+	if !idle {
+		return false
+	}
+	s.Hunting = d.hunting.Hunts(now)
+	if first {
+		q.states[i] = s
+	} else if q.states[i] != s {
+		return false
+	}
+	q.coarse[i*vector.Lanes+k] = watched
 	return true
 }
 

@@ -44,3 +44,6 @@ func (l *Lanes) StartAt(kept []complex128) {
 		vector.Fill(l.v, at, z)
 	}
 }
+
+// Slot is where an unknown's voltage stands among the values of a block.
+func (l *Lanes) Slot(u int32) int { return int(l.slot[u]) }
