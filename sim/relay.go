@@ -67,15 +67,15 @@ type plantTally struct{ generated, curtailed []float64 }
 
 // relayed bounds what is under way, in events and in numbers of their states.
 const (
-	relayEvents  = 32
+	relayEvents  = 128
+	relayBlocks  = 32
 	relayNumbers = 4 << 20
-	relayBlocks  = 8
 )
 
 // newRelay begins to receive. Close ends it.
 func newRelay(e *Engine, recorders []quietRecorder) *relay {
 	numbers := len(e.state.V) + len(e.state.Flow)
-	n := max(4, min(relayEvents, relayNumbers/max(numbers, 1)))
+	n := max(8, min(relayEvents, relayNumbers/max(numbers, 1)))
 	r := &relay{e: e, recorders: recorders, events: make(chan []*event, n), free: make(chan *event, n), done: make(chan struct{}), timed: e.timed, solved: -1, sent: max(1, n/4),
 		tally: plantTally{make([]float64, len(e.state.Generation)), make([]float64, len(e.state.Generation))}}
 	for range n {
@@ -89,8 +89,10 @@ func newRelay(e *Engine, recorders []quietRecorder) *relay {
 		r.lanes.Flow, r.lanes.Coupling = r.currents.Flow, r.currents.Coupling
 		r.lanes.Source = vector.Make(3 * len(e.net.Model.Sources))
 		r.out.State, r.out.Solver, r.out.Step = &r.lanes, powerflow.InLanes.String(), e.in.axis.Step
-		r.blocks = make(chan *powerflow.Block, relayBlocks+1)
-		for range relayBlocks {
+		v, _ := l.Voltages()
+		blocks := max(4, min(relayBlocks, relayNumbers/len(v)))
+		r.blocks = make(chan *powerflow.Block, blocks+1)
+		for range blocks {
 			r.blocks <- l.NewBlock()
 		}
 	}

@@ -1,6 +1,8 @@
 package powerflow
 
 import (
+	"math"
+
 	"yearflow/sim/network"
 	"yearflow/sim/powerflow/vector"
 )
@@ -17,9 +19,11 @@ type LaneCurrents struct {
 
 	l       *Lanes
 	version int
-	put     []float64 // values, as Lanes.x: currents that injections put in
-	draws   bool      // put matters
-	all     bool      // everything is read
+	put     []float64   // values, as Lanes.x: currents that injections put in
+	draws   bool        // put matters
+	all     bool        // everything is read
+	power   vector.Dots // what is put in, in one row
+	drawn   []float64
 	rest    []float64 // values: what dependent unknowns, then fixed ones, still have to receive
 
 	elements, capacitors   vector.Groups
@@ -45,11 +49,22 @@ func (l *Lanes) NewLaneCurrents(flows []int) *LaneCurrents {
 			c.element(e, p, wanted)
 		}
 	}
+	drawing := make([]bool, l.held)
 	for k := range s.Injections {
 		for _, u := range s.Injections[k].ends() {
+			drawing[l.slot[u]] = true
 			c.draws = c.draws || int(l.slot[u]) >= l.free
 		}
 	}
+	var pairs [][2]int
+	for at, is := range drawing {
+		if is {
+			pairs = append(pairs, [2]int{at, at})
+		}
+	}
+	c.power.Row(pairs...)
+	c.power.Rows[0].High = math.Inf(1)
+	c.drawn = make([]float64, vector.Lanes)
 	place := map[int32]int{} // of dependent unknowns in rest
 	receive := func(u int32, to int) {
 		c.sum.Row(to, at[u]...)
@@ -189,13 +204,10 @@ func (c *LaneCurrents) Read(b *Block, mask uint8) {
 	c.less.Add(c.rest, c.put)
 	c.own.Set(c.Coupling, c.rest)
 	c.source.Add(c.Source, c.Coupling)
-	c.Drawn = [vector.Lanes]float64{}
 	if c.all {
-		for at := 0; at < l.held; at++ {
-			v, j := (*[vector.Width]float64)(b.v[at*vector.Width:]), (*[vector.Width]float64)(c.put[at*vector.Width:])
-			for lane := range vector.Lanes {
-				c.Drawn[lane] -= v[lane]*j[lane] + v[vector.Lanes+lane]*j[vector.Lanes+lane]
-			}
+		c.power.Watch(c.drawn, b.v, c.put, mask, &c.Drawn)
+		for lane, w := range c.Drawn {
+			c.Drawn[lane] = -w
 		}
 	}
 }
