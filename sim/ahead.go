@@ -24,8 +24,8 @@ type ahead struct {
 	loaded              [vector.Lanes]int // step, −1 none
 	first               int               // step; of no block: −1
 	end                 int
-	number              int          // of the block
-	near                []complex128 // voltages at the step nearStep, of the device state nearState
+	number              int              // of the block
+	near                *powerflow.Curve // voltages at the step nearStep, of the device state nearState
 	nearStep, nearState int
 	arrived             uint8
 	taken               uint8
@@ -47,6 +47,7 @@ func (e *Engine) prepareAhead() {
 		rows:   make([]float64, (len(e.in.values)+1)*vector.Lanes),
 		first:  -1,
 	}
+	e.ahead.near = e.ahead.lanes.NewCurve()
 	e.in.still(e.ahead.lanes, e.ahead.rows)
 	e.prepareWindow()
 }
@@ -143,9 +144,9 @@ func (e *Engine) solveLanes() {
 	case near && e.anchored:
 		a.lanes.StartAt(a.near)
 	case e.anchored:
-		a.lanes.Start(mask, e.anchor, &e.input)
+		a.lanes.StartAll(e.anchor, &e.input)
 	default:
-		a.lanes.Start(mask, nil, &e.input)
+		a.lanes.StartAll(nil, &e.input)
 	}
 	e.lap(&e.timing.Assembling)
 	e.timing.Blocks++
@@ -165,7 +166,7 @@ func (a *ahead) nearest(e *Engine) bool {
 	last := e.step - 1
 	last -= (last + 1) % vector.Lanes
 	if last >= a.first && last < a.end && a.arrived>>(vector.Lanes-1)&1 == 1 {
-		a.near = a.lanes.Block.Keep(a.near, vector.Lanes-1)
+		a.lanes.Block.Keep(a.near, vector.Lanes-1)
 		a.nearStep, a.nearState = last, a.state
 	}
 	return a.nearStep == last && last >= 0 && a.nearState == e.flow.DeviceState() && e.anchored

@@ -52,13 +52,14 @@ func (c *capacitorControl) Idle(r Reading, now devices.Time) (s results.DeviceSt
 // quiet finds runs of steps in which no device acts, asks or changes what it remembers:
 // each is one settled interval.
 type quiet struct {
-	controls []idler // by device
-	glance   *glance
-	currents *powerflow.LaneCurrents
-	number   int       // of the block that currents are of
-	lent     bool      // the block at hand has been handed on
-	coarse   []float64 // by device and lane: what coarse watches
-	states   []results.DeviceState
+	controls  []idler // by device
+	glance    *glance
+	currents  *powerflow.LaneCurrents
+	positions powerflow.LaneDevices
+	number    int       // of the block that currents are of
+	lent      bool      // the block at hand has been handed on
+	coarse    []float64 // by device and lane: what coarse watches
+	states    []results.DeviceState
 }
 
 // newQuiet returns nil where steps are solved one by one or a control cannot do without
@@ -154,7 +155,9 @@ func (q *quiet) read(e *Engine, k int, now devices.Time, first bool) bool {
 	if a := e.ahead; q.number != a.number {
 		q.number = a.number
 		e.lap(&e.timing.Controls)
-		q.currents.Refresh()
+		if q.currents.Devices(&q.positions) {
+			q.currents.Use(&q.positions)
+		}
 		q.currents.Read(a.lanes.Block, a.arrived)
 		e.lap(&e.timing.Solving)
 		q.glance.look(q.currents.Coupling)
@@ -208,9 +211,6 @@ func (r *runner) hand(step, n int) error {
 	e.timing.Solutions += n
 	e.timing.QuietSteps += n
 	e.lap(&e.timing.Controls)
-	if r.relay.state != e.ahead.state {
-		r.relay.refresh()
-	}
 	q.lent = true
 	err := r.relay.quiet(step, n, q.states)
 	e.lap(&e.timing.Waiting)

@@ -26,7 +26,8 @@ type relay struct {
 	err       error // of a recorder, to be read after done
 	last      *event
 	sent      int // events at a time
-	state     int // device state that currents are read with
+	state     int
+	devices   *powerflow.LaneDevices // positions of the blocks that are handed on
 
 	// What the receiving side works with.
 	currents *powerflow.LaneCurrents
@@ -58,8 +59,9 @@ type event struct {
 	taps    []int
 	closed  []bool
 
+	positions *powerflow.LaneDevices
+
 	retired *powerflow.Block // nothing after this event is of the block
-	wait    chan struct{}    // closed when everything before has been taken in
 }
 
 // plantTally is what generators delivered and did not, kWh.
@@ -84,8 +86,6 @@ func newRelay(e *Engine, recorders []quietRecorder) *relay {
 	if e.ahead != nil {
 		l := e.ahead.lanes
 		r.currents = l.NewLaneCurrents(nil)
-		r.currents.Refresh()
-		r.state = e.flow.DeviceState()
 		r.lanes.Flow, r.lanes.Coupling = r.currents.Flow, r.currents.Coupling
 		r.lanes.Source = vector.Make(3 * len(e.net.Model.Sources))
 		r.out.State, r.out.Solver, r.out.Step = &r.lanes, powerflow.InLanes.String(), e.in.axis.Step
@@ -115,7 +115,7 @@ func (r *relay) next() (*event, error) {
 		ev = <-r.free
 	}
 	ev.power = ev.power[:0]
-	ev.interval, ev.step, ev.action, ev.quiet, ev.block, ev.retired, ev.wait = false, false, false, 0, nil, nil, nil
+	ev.interval, ev.step, ev.action, ev.quiet, ev.block, ev.retired = false, false, false, 0, nil, nil
 	return ev, nil
 }
 
@@ -215,25 +215,17 @@ func (r *relay) quiet(step, n int, states []results.DeviceState) error {
 	a := r.e.ahead
 	ev.quiet, ev.lane, ev.block, ev.number, ev.arrived = n, step%vector.Lanes, a.lanes.Block, a.number, a.arrived
 	ev.start, _ = r.e.in.axis.Bounds(step)
+	if r.devices == nil || r.state != a.state { // those before may still be in use
+		r.state, r.devices = a.state, &powerflow.LaneDevices{}
+		r.currents.Devices(r.devices)
+	}
+	ev.positions = r.devices
 	copy(ev.devices[:len(states)], states)
 	ev.devices = ev.devices[:len(states)]
 	copy(ev.taps, r.e.state.Taps)
 	copy(ev.closed, r.e.state.Closed)
 	r.queue(ev)
 	return nil
-}
-
-// refresh takes over a new device state, when everything of the old one has been taken in.
-func (r *relay) refresh() {
-	r.flush()
-	r.state = r.e.flow.DeviceState()
-	if ev, err := r.next(); err == nil {
-		ev.wait = make(chan struct{})
-		r.queue(ev)
-		r.send()
-		<-ev.wait
-		r.currents.Refresh()
-	}
 }
 
 // exchange gives the lanes another block to be solved in: the one at hand is still lent.
@@ -287,9 +279,6 @@ func (r *relay) handle(ev *event) {
 	if ev.retired != nil {
 		r.blocks <- ev.retired
 	}
-	if ev.wait != nil {
-		close(ev.wait)
-	}
 	r.free <- ev
 }
 
@@ -335,6 +324,7 @@ func (r *relay) read(ev *event) {
 	e, b := r.e, ev.block
 	if r.solved != ev.number {
 		r.solved = ev.number
+		r.currents.Use(ev.positions)
 		r.currents.Read(b, ev.arrived)
 		for f, x := range e.net.Fixed {
 			at := 3*x.Source + int(x.Phase)

@@ -34,7 +34,7 @@ func BenchmarkEngine(b *testing.B) {
 		{"S/seconds-noise", synthetic.S(), func(o *synthetic.Options) { o.Step, o.Inputs = time.Second, synthetic.Seconds }},
 		{"S/minutes", synthetic.S(), func(o *synthetic.Options) { o.Step, o.Days, o.Inputs = time.Minute, 7, synthetic.HeldMinutes }},
 		{"S/hours", synthetic.S(), func(o *synthetic.Options) { o.Step, o.Days, o.Inputs = time.Hour, 365, synthetic.Hours }},
-		{"M/minutes", synthetic.M(), func(o *synthetic.Options) { o.Step, o.Inputs = time.Minute, synthetic.HeldMinutes }},
+		{"M/minutes", synthetic.M(), func(o *synthetic.Options) { o.Step, o.Days, o.Inputs = time.Minute, 7, synthetic.HeldMinutes }},
 		{"L/hours", synthetic.L(), func(o *synthetic.Options) { o.Step, o.Days, o.Inputs = time.Hour, 20, synthetic.Hours }},
 	} {
 		b.Run(c.name, func(b *testing.B) {

@@ -73,7 +73,7 @@ func (w *window) prepare(e *Engine) bool {
 	if known && w.end == step {
 		start = w.last.V
 	}
-	w.lanes.Start(7, start, &e.input)
+	w.lanes.StartAll(start, &e.input)
 	if w.lanes.Solve(7, powerflow.Contract) != 7 {
 		w.first, w.end = -1, -1
 		return false

@@ -29,6 +29,7 @@ type Lanes struct {
 	// current that is put into a fixed voltage. x has currents there, and behind them the
 	// voltages that follow.
 	*Block
+	flat      *Curve // of the voltages that all lanes start from
 	x         []float64
 	slot      []int32 // by unknown, into v
 	order     []int32 // of the factor's groups
@@ -47,11 +48,12 @@ type Lanes struct {
 	downs                [][]int32 // by group of columns: places in down of its W
 	ups                  [][2]int  // by group of columns: its part of up
 
-	loads  [4]*vector.Loads
-	drives [4]vector.Drives
-	lead   []drive // by group: how its first member's power follows the series
-	list   []int8  // by injection: its list, −1: it is one of a group
-	member []int32 // by injection: its place in the list
+	loads  [lists]*vector.Loads
+	drives [lists]vector.Drives
+	lead   []drive  // by group: how its first member's power follows the series
+	blank  [][2]int // parts of values at which no list begins
+	list   []int8   // by injection: its list, −1: it is one of a group
+	member []int32  // by injection: its place in the list
 
 	least float64 // change that keeps every node's mismatch, where loads are at their largest
 }
@@ -61,7 +63,7 @@ type Lanes struct {
 type Block struct {
 	l     *Lanes
 	v     []float64
-	power [4][]float64
+	power [lists][]float64
 	given []complex128 // by group and lane
 }
 
@@ -105,6 +107,7 @@ func NewLanes(s *Solver, largest []float64) *Lanes {
 	l.rows()
 	l.branches()
 	l.tolerate(largest)
+	l.flat = l.NewCurve()
 	return l
 }
 
@@ -281,6 +284,8 @@ func (l *Lanes) branches() {
 	for i := range l.loads {
 		l.loads[i] = vector.NewLoads(i&1 == 1, i&2 == 2)
 	}
+	l.loads[firstWye], l.loads[firstZIP] = vector.NewFirstLoads(false), vector.NewFirstLoads(true)
+	begun := make([]bool, l.held)
 	l.list, l.member = make([]int8, len(s.Injections)), make([]int32, len(s.Injections))
 	for k := range s.Injections {
 		j := &s.Injections[k]
@@ -292,8 +297,15 @@ func (l *Lanes) branches() {
 		if j.To != network.Ground {
 			list, to = 1, int(l.slot[j.To])
 		}
-		if j.PC != 1 || j.QC != 1 || j.PI != 0 || j.QI != 0 || j.PZ != 0 || j.QZ != 0 {
+		zip := j.PC != 1 || j.QC != 1 || j.PI != 0 || j.QI != 0 || j.PZ != 0 || j.QZ != 0
+		if zip {
 			list += 2
+		}
+		if at := l.slot[j.From]; j.To == network.Ground && !begun[at] {
+			begun[at] = true
+			if list = firstWye; zip {
+				list = firstZIP
+			}
 		}
 		least := 0.0
 		if j.Bent() {
@@ -304,6 +316,15 @@ func (l *Lanes) branches() {
 		l.loads[list].Branch(int(l.slot[j.From]), to, least, [6]float64{j.PC, j.PI / n, j.PZ / (n * n), j.QC, j.QI / n, j.QZ / (n * n)})
 	}
 	l.Block = l.NewBlock()
+	for at := 0; at < l.held; at++ {
+		switch {
+		case begun[at]:
+		case at > 0 && !begun[at-1]:
+			l.blank[len(l.blank)-1][1] = (at + 1) * vector.Width
+		default:
+			l.blank = append(l.blank, [2]int{at * vector.Width, (at + 1) * vector.Width})
+		}
+	}
 }
 
 // tolerate finds how small a change must be for the mismatch at every node to be within
@@ -379,7 +400,7 @@ func (l *Lanes) refresh() {
 // Follow says how every injection's power follows the rows of values that Drive gets:
 // P row p and Q row q, times its share, VA.
 func (l *Lanes) Follow(p, q []int, share []complex128) {
-	l.drives = [4]vector.Drives{}
+	l.drives = [lists]vector.Drives{}
 	l.lead = make([]drive, len(l.s.Groups))
 	for k := range l.s.Injections { // in the order in which branches lists them
 		if list := l.list[k]; list >= 0 {
@@ -435,10 +456,6 @@ func (l *Lanes) Start(mask uint8, start []complex128, in *Input) {
 	}
 	for u, at := range l.slot {
 		if int(at) >= l.all {
-			continue
-		}
-		if mask == vector.All {
-			vector.Fill(l.v, int(at), start[u])
 			continue
 		}
 		for lane := range vector.Lanes {
@@ -500,9 +517,8 @@ func (l *Lanes) Solve(mask uint8, tol Tolerance) (arrived uint8) {
 // iterate moves the lanes of a mask by one iteration, and returns those that had a
 // load below the corner before it.
 func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) {
-	clear(l.x[:l.held*vector.Width])
-	l.pull.Set(l.x, l.x)
 	below = l.draw(l.x, l.Block, mask)
+	l.pull.Add(l.x, l.x)
 	l.gather.Add(l.x, l.x)
 	l.forward.Add(l.x, l.x)
 	l.backward.Set(l.x, l.x)
@@ -511,11 +527,22 @@ func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) 
 	return below
 }
 
-// draw takes what the injections draw in a block off the currents that are put in, and
-// returns the lanes with a load below the corner.
+// The lists of injections: by whether they stand across a pair (1) and are not of constant
+// power alone (2), and those that are the first at their value.
+const (
+	firstWye = 4
+	firstZIP = 5
+	lists    = 6
+)
+
+// draw sets the currents that are put in to what the injections of a block draw, negative,
+// and returns the lanes with a load below the corner.
 func (l *Lanes) draw(into []float64, b *Block, mask uint8) (below uint8) {
-	for i, list := range l.loads {
-		below |= list.Draw(into, b.v, b.power[i])
+	for _, part := range l.blank {
+		clear(into[part[0]:part[1]])
+	}
+	for i := lists - 1; i >= 0; i-- { // those that begin come first
+		below |= l.loads[i].Draw(into, b.v, b.power[i])
 	}
 	for g := range l.s.Groups {
 		below |= l.drawGroup(into, b, g, mask)

@@ -29,20 +29,31 @@ func (l *Lanes) Fit(c *Curve, middle float64) {
 // Predict starts all lanes on a curve, each at its own w.
 func (l *Lanes) Predict(c *Curve, when *[vector.Lanes]float64) { vector.Predict(l.v, c.coef, when) }
 
-// Keep returns the voltages of a lane for StartAt, in the room of another lane's.
-func (b *Block) Keep(room []complex128, lane int) []complex128 {
-	room = room[:0]
+// Keep makes c the voltages of a lane, whatever w.
+func (b *Block) Keep(c *Curve, lane int) {
 	for at := range b.l.all {
-		room = append(room, vector.At(b.v, at, lane))
+		z := vector.At(b.v, at, lane)
+		c.coef[6*at], c.coef[6*at+1] = real(z), imag(z)
 	}
-	return room
 }
 
-// StartAt starts all lanes from what Keep returned.
-func (l *Lanes) StartAt(kept []complex128) {
-	for at, z := range kept {
-		vector.Fill(l.v, at, z)
+// StartAt starts all lanes from what Keep kept, in a curve that Fit was never laid into.
+func (l *Lanes) StartAt(c *Curve) { vector.Predict(l.v, c.coef, &[vector.Lanes]float64{}) }
+
+// StartAll starts all lanes from the voltages start, by Network.Unknowns, or from the
+// no-load voltages of their device state at the inputs in where start is nil.
+func (l *Lanes) StartAll(start []complex128, in *Input) {
+	if start == nil {
+		l.s.setPull(in)
+		l.s.ensureNoLoad(in)
+		start = l.s.noLoad
 	}
+	for u, at := range l.slot {
+		if int(at) < l.all {
+			l.flat.coef[6*at], l.flat.coef[6*at+1] = real(start[u]), imag(start[u])
+		}
+	}
+	l.StartAt(l.flat)
 }
 
 // Slot is where an unknown's voltage stands among the values of a block.

@@ -17,14 +17,13 @@ type LaneCurrents struct {
 	// negative.
 	Drawn [vector.Lanes]float64
 
-	l       *Lanes
-	version int
-	put     []float64   // values, as Lanes.x: currents that injections put in
-	draws   bool        // put matters
-	all     bool        // everything is read
-	power   vector.Dots // what is put in, in one row
-	drawn   []float64
-	rest    []float64 // values: what dependent unknowns, then fixed ones, still have to receive
+	l     *Lanes
+	put   []float64   // values, as Lanes.x: currents that injections put in
+	draws bool        // put matters
+	all   bool        // everything is read
+	power vector.Dots // what is put in, in one row
+	drawn []float64
+	rest  []float64 // values: what dependent unknowns, then fixed ones, still have to receive
 
 	elements, capacitors   vector.Groups
 	sum, less, own, source vector.Rows
@@ -38,7 +37,7 @@ type LaneCurrents struct {
 func (l *Lanes) NewLaneCurrents(flows []int) *LaneCurrents {
 	s, n := l.s, l.s.Net
 	wanted := l.wanted(flows)
-	c := &LaneCurrents{l: l, version: -1, draws: wanted == nil, all: wanted == nil,
+	c := &LaneCurrents{l: l, draws: wanted == nil, all: wanted == nil,
 		Flow: vector.Make(n.Offsets[len(n.Elements)]), Coupling: vector.Make(len(n.Couplings)), put: vector.Make(l.held)}
 	at := map[int32][]int{} // flows that leave an unknown
 	for e := range n.Elements {
@@ -166,28 +165,41 @@ func (l *Lanes) wanted(flows []int) []bool {
 	return out
 }
 
-// Refresh takes over the coefficients of the solver's device state, which must be that of
-// the blocks read next.
-func (c *LaneCurrents) Refresh() {
+// LaneDevices is what currents depend on beside voltages and powers: the positions of the
+// devices.
+type LaneDevices struct {
+	version                 int
+	capacitors, own, source []float64
+}
+
+// Devices reads the positions that the solver has now into room, and reports whether they
+// are others than room's.
+func (c *LaneCurrents) Devices(room *LaneDevices) bool {
 	s := c.l.s
-	if c.version == s.version {
-		return
+	if room.version == s.version {
+		return false
 	}
-	c.version = s.version
-	c.capacitors.Coef = c.capacitors.Coef[:0]
+	room.version = s.version
+	room.capacitors, room.own, room.source = room.capacitors[:0], room.own[:0], room.source[:0]
 	for i, y := range c.admittance {
 		if !s.closed[c.switched[i]] {
 			y = 0
 		}
-		c.capacitors.Coef = append(c.capacitors.Coef, real(y), imag(y))
+		room.capacitors = append(room.capacitors, real(y), imag(y))
 	}
-	c.own.Coef, c.source.Coef = c.own.Coef[:0], c.source.Coef[:0]
 	for _, f := range c.owns {
-		c.own.Coef = append(c.own.Coef, f(), 0)
+		room.own = append(room.own, f(), 0)
 	}
 	for _, f := range c.sources {
-		c.source.Coef = append(c.source.Coef, f(), 0)
+		room.source = append(room.source, f(), 0)
 	}
+	return true
+}
+
+// Use takes over positions, those of the blocks read next. They must not change until
+// others are taken.
+func (c *LaneCurrents) Use(d *LaneDevices) {
+	c.capacitors.Coef, c.own.Coef, c.source.Coef = d.capacitors, d.own, d.source
 }
 
 // Read reads the currents of a block's lanes of a mask, which must have arrived; those of
@@ -195,7 +207,6 @@ func (c *LaneCurrents) Refresh() {
 func (c *LaneCurrents) Read(b *Block, mask uint8) {
 	l := c.l
 	if c.draws {
-		clear(c.put)
 		l.draw(c.put, b, mask)
 	}
 	c.elements.Set(c.Flow, b.v)

@@ -21,7 +21,9 @@ func lanesOf(states []*State, first int, other complex128) *Lanes {
 		Source: vector.Make(3 * len(s.Source)), Taps: s.Taps, Closed: s.Closed}
 	for _, x := range [][]float64{l.V, l.Flow, l.Coupling, l.Source} {
 		for i := range len(x) / vector.Width {
-			vector.Fill(x, i, other)
+			for k := range vector.Lanes {
+				vector.Put(x, i, k, other)
+			}
 		}
 	}
 	for x := range vector.Lanes {

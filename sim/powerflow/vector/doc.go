@@ -46,10 +46,3 @@ func Put(x []float64, value, lane int, z complex128) {
 	x[value*Width+lane] = real(z)
 	x[value*Width+Lanes+lane] = imag(z)
 }
-
-// Fill sets every lane of a value.
-func Fill(x []float64, value int, z complex128) {
-	for l := range Lanes {
-		Put(x, value, l, z)
-	}
-}

@@ -47,7 +47,7 @@ func drawWye(into, v, power *float64, index *int32, shape *float64, n int) uint6
 	case 1:
 		return drawWye256(into, v, power, index, shape, n)
 	}
-	return plainDraw(into, v, power, index, shape, n, false, false)
+	return plainDraw(into, v, power, index, shape, n, false, false, false)
 }
 
 func drawPair(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
@@ -57,7 +57,7 @@ func drawPair(into, v, power *float64, index *int32, shape *float64, n int) uint
 	case 1:
 		return drawPair256(into, v, power, index, shape, n)
 	}
-	return plainDraw(into, v, power, index, shape, n, true, false)
+	return plainDraw(into, v, power, index, shape, n, true, false, false)
 }
 
 func drawWyeZIP(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
@@ -67,7 +67,7 @@ func drawWyeZIP(into, v, power *float64, index *int32, shape *float64, n int) ui
 	case 1:
 		return drawWyeZIP256(into, v, power, index, shape, n)
 	}
-	return plainDraw(into, v, power, index, shape, n, false, true)
+	return plainDraw(into, v, power, index, shape, n, false, true, false)
 }
 
 func drawPairZIP(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
@@ -77,7 +77,7 @@ func drawPairZIP(into, v, power *float64, index *int32, shape *float64, n int) u
 	case 1:
 		return drawPairZIP256(into, v, power, index, shape, n)
 	}
-	return plainDraw(into, v, power, index, shape, n, true, true)
+	return plainDraw(into, v, power, index, shape, n, true, true, false)
 }
 
 func advance(v, x, weight *float64, mask *uint64, moved *float64, n int) {
@@ -133,4 +133,24 @@ func groupsAdd(dst, src *float64, index *int32, coef *float64, groups int) {
 	default:
 		plainGroups(dst, src, index, coef, groups, true)
 	}
+}
+
+func drawWyeFirst(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
+	switch kernel {
+	case 2:
+		return drawWyeFirst512(into, v, power, index, shape, n)
+	case 1:
+		return drawWyeFirst256(into, v, power, index, shape, n)
+	}
+	return plainDraw(into, v, power, index, shape, n, false, false, true)
+}
+
+func drawWyeZIPFirst(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
+	switch kernel {
+	case 2:
+		return drawWyeZIPFirst512(into, v, power, index, shape, n)
+	case 1:
+		return drawWyeZIPFirst256(into, v, power, index, shape, n)
+	}
+	return plainDraw(into, v, power, index, shape, n, false, true, true)
 }

@@ -500,6 +500,182 @@ branch:
 	VZEROUPPER
 	RET
 
+// func drawWyeFirst256(into *float64, v *float64, power *float64, index *int32, shape *float64, n int) (below uint64)
+// Requires: AVX, AVX2, FMA3, SSE2
+TEXT ·drawWyeFirst256(SB), NOSPLIT, $0-56
+	MOVQ         into+0(FP), AX
+	MOVQ         v+8(FP), CX
+	MOVQ         power+16(FP), DX
+	MOVQ         index+24(FP), BX
+	MOVQ         shape+32(FP), SI
+	MOVQ         n+40(FP), DI
+	MOVQ         $0x3ff0000000000000, R8
+	MOVQ         R8, X0
+	VBROADCASTSD X0, Y0
+	VXORPD       Y1, Y1, Y1
+	VXORPD       Y2, Y2, Y2
+
+branch:
+	MOVLQSX      (BX), R8
+	ADDQ         $0x04, BX
+	VBROADCASTSD (SI), Y3
+	VMOVUPD      (CX)(R8*1), Y4
+	VMOVUPD      64(CX)(R8*1), Y5
+	VMULPD       Y5, Y5, Y6
+	VFMADD231PD  Y4, Y4, Y6
+	VCMPPD       $0x09, Y3, Y6, Y3
+	VORPD        Y3, Y1, Y1
+	VDIVPD       Y6, Y0, Y6
+	VMOVUPD      (DX), Y3
+	VMOVUPD      64(DX), Y7
+	VMULPD       Y7, Y5, Y8
+	VFMADD231PD  Y3, Y4, Y8
+	VMULPD       Y7, Y4, Y4
+	VFMSUB231PD  Y3, Y5, Y4
+	VMULPD       Y6, Y8, Y8
+	VMULPD       Y6, Y4, Y4
+	VXORPD       Y3, Y3, Y3
+	VSUBPD       Y8, Y3, Y3
+	VMOVUPD      Y3, (AX)(R8*1)
+	VXORPD       Y3, Y3, Y3
+	VSUBPD       Y4, Y3, Y3
+	VMOVUPD      Y3, 64(AX)(R8*1)
+	VBROADCASTSD (SI), Y3
+	VMOVUPD      32(CX)(R8*1), Y4
+	VMOVUPD      96(CX)(R8*1), Y5
+	VMULPD       Y5, Y5, Y6
+	VFMADD231PD  Y4, Y4, Y6
+	VCMPPD       $0x09, Y3, Y6, Y3
+	VORPD        Y3, Y2, Y2
+	VDIVPD       Y6, Y0, Y6
+	VMOVUPD      32(DX), Y3
+	VMOVUPD      96(DX), Y7
+	VMULPD       Y7, Y5, Y8
+	VFMADD231PD  Y3, Y4, Y8
+	VMULPD       Y7, Y4, Y4
+	VFMSUB231PD  Y3, Y5, Y4
+	VMULPD       Y6, Y8, Y8
+	VMULPD       Y6, Y4, Y4
+	VXORPD       Y3, Y3, Y3
+	VSUBPD       Y8, Y3, Y3
+	VMOVUPD      Y3, 32(AX)(R8*1)
+	VXORPD       Y3, Y3, Y3
+	VSUBPD       Y4, Y3, Y3
+	VMOVUPD      Y3, 96(AX)(R8*1)
+	ADDQ         $0x08, SI
+	ADDQ         $0x00000080, DX
+	DECQ         DI
+	JNZ          branch
+	XORQ         AX, AX
+	VMOVMSKPD    Y1, CX
+	SHLQ         $0x00, CX
+	ORQ          CX, AX
+	VMOVMSKPD    Y2, CX
+	SHLQ         $0x04, CX
+	ORQ          CX, AX
+	MOVQ         AX, below+48(FP)
+	VZEROUPPER
+	RET
+
+// func drawWyeZIPFirst256(into *float64, v *float64, power *float64, index *int32, shape *float64, n int) (below uint64)
+// Requires: AVX, AVX2, FMA3, SSE2
+TEXT ·drawWyeZIPFirst256(SB), NOSPLIT, $0-56
+	MOVQ         into+0(FP), AX
+	MOVQ         v+8(FP), CX
+	MOVQ         power+16(FP), DX
+	MOVQ         index+24(FP), BX
+	MOVQ         shape+32(FP), SI
+	MOVQ         n+40(FP), DI
+	MOVQ         $0x3ff0000000000000, R8
+	MOVQ         R8, X0
+	VBROADCASTSD X0, Y0
+	VXORPD       Y1, Y1, Y1
+	VXORPD       Y2, Y2, Y2
+
+branch:
+	MOVLQSX      (BX), R8
+	ADDQ         $0x04, BX
+	VBROADCASTSD (SI), Y3
+	VMOVUPD      (CX)(R8*1), Y4
+	VMOVUPD      64(CX)(R8*1), Y5
+	VMULPD       Y5, Y5, Y6
+	VFMADD231PD  Y4, Y4, Y6
+	VCMPPD       $0x09, Y3, Y6, Y9
+	VORPD        Y9, Y1, Y1
+	VDIVPD       Y6, Y0, Y6
+	VMOVUPD      (DX), Y3
+	VMOVUPD      64(DX), Y7
+	VSQRTPD      Y6, Y8
+	VBROADCASTSD 24(SI), Y9
+	VBROADCASTSD 16(SI), Y10
+	VFMADD231PD  Y8, Y10, Y9
+	VBROADCASTSD 8(SI), Y10
+	VFMADD231PD  Y6, Y10, Y9
+	VMULPD       Y9, Y3, Y3
+	VBROADCASTSD 48(SI), Y9
+	VBROADCASTSD 40(SI), Y10
+	VFMADD231PD  Y8, Y10, Y9
+	VBROADCASTSD 32(SI), Y10
+	VFMADD231PD  Y6, Y10, Y9
+	VMULPD       Y9, Y7, Y7
+	VMULPD       Y7, Y5, Y6
+	VFMADD231PD  Y3, Y4, Y6
+	VMULPD       Y7, Y4, Y4
+	VFMSUB231PD  Y3, Y5, Y4
+	VXORPD       Y9, Y9, Y9
+	VSUBPD       Y6, Y9, Y9
+	VMOVUPD      Y9, (AX)(R8*1)
+	VXORPD       Y9, Y9, Y9
+	VSUBPD       Y4, Y9, Y9
+	VMOVUPD      Y9, 64(AX)(R8*1)
+	VBROADCASTSD (SI), Y3
+	VMOVUPD      32(CX)(R8*1), Y4
+	VMOVUPD      96(CX)(R8*1), Y5
+	VMULPD       Y5, Y5, Y6
+	VFMADD231PD  Y4, Y4, Y6
+	VCMPPD       $0x09, Y3, Y6, Y9
+	VORPD        Y9, Y2, Y2
+	VDIVPD       Y6, Y0, Y6
+	VMOVUPD      32(DX), Y3
+	VMOVUPD      96(DX), Y7
+	VSQRTPD      Y6, Y8
+	VBROADCASTSD 24(SI), Y9
+	VBROADCASTSD 16(SI), Y10
+	VFMADD231PD  Y8, Y10, Y9
+	VBROADCASTSD 8(SI), Y10
+	VFMADD231PD  Y6, Y10, Y9
+	VMULPD       Y9, Y3, Y3
+	VBROADCASTSD 48(SI), Y9
+	VBROADCASTSD 40(SI), Y10
+	VFMADD231PD  Y8, Y10, Y9
+	VBROADCASTSD 32(SI), Y10
+	VFMADD231PD  Y6, Y10, Y9
+	VMULPD       Y9, Y7, Y7
+	VMULPD       Y7, Y5, Y6
+	VFMADD231PD  Y3, Y4, Y6
+	VMULPD       Y7, Y4, Y4
+	VFMSUB231PD  Y3, Y5, Y4
+	VXORPD       Y9, Y9, Y9
+	VSUBPD       Y6, Y9, Y9
+	VMOVUPD      Y9, 32(AX)(R8*1)
+	VXORPD       Y9, Y9, Y9
+	VSUBPD       Y4, Y9, Y9
+	VMOVUPD      Y9, 96(AX)(R8*1)
+	ADDQ         $0x38, SI
+	ADDQ         $0x00000080, DX
+	DECQ         DI
+	JNZ          branch
+	XORQ         AX, AX
+	VMOVMSKPD    Y1, CX
+	SHLQ         $0x00, CX
+	ORQ          CX, AX
+	VMOVMSKPD    Y2, CX
+	SHLQ         $0x04, CX
+	ORQ          CX, AX
+	MOVQ         AX, below+48(FP)
+	VZEROUPPER
+	RET
+
 // func advance256(v *float64, x *float64, weight *float64, mask *uint64, moved *float64, n int)
 // Requires: AVX, FMA3
 TEXT ·advance256(SB), NOSPLIT, $0-48
@@ -1511,6 +1687,117 @@ branch:
 	JNZ          branch
 	XORQ         AX, AX
 	ORQ          R10, AX
+	MOVQ         AX, below+48(FP)
+	VZEROUPPER
+	RET
+
+// func drawWyeFirst512(into *float64, v *float64, power *float64, index *int32, shape *float64, n int) (below uint64)
+// Requires: AVX, AVX512BW, AVX512F, SSE2
+TEXT ·drawWyeFirst512(SB), NOSPLIT, $0-56
+	MOVQ         into+0(FP), AX
+	MOVQ         v+8(FP), CX
+	MOVQ         power+16(FP), DX
+	MOVQ         index+24(FP), BX
+	MOVQ         shape+32(FP), SI
+	MOVQ         n+40(FP), DI
+	MOVQ         $0x3ff0000000000000, R8
+	MOVQ         R8, X0
+	VBROADCASTSD X0, Z0
+	XORQ         R9, R9
+
+branch:
+	MOVLQSX      (BX), R8
+	ADDQ         $0x04, BX
+	VBROADCASTSD (SI), Z1
+	VMOVUPD      (CX)(R8*1), Z2
+	VMOVUPD      64(CX)(R8*1), Z3
+	VMULPD       Z3, Z3, Z4
+	VFMADD231PD  Z2, Z2, Z4
+	VCMPPD       $0x09, Z1, Z4, K1
+	KMOVQ        K1, R10
+	ORQ          R10, R9
+	VDIVPD       Z4, Z0, Z4
+	VMOVUPD      (DX), Z1
+	VMOVUPD      64(DX), Z6
+	VMULPD       Z6, Z3, Z7
+	VFMADD231PD  Z1, Z2, Z7
+	VMULPD       Z6, Z2, Z2
+	VFMSUB231PD  Z1, Z3, Z2
+	VMULPD       Z4, Z7, Z7
+	VMULPD       Z4, Z2, Z2
+	VPXORQ       Z5, Z5, Z5
+	VSUBPD       Z7, Z5, Z5
+	VMOVUPD      Z5, (AX)(R8*1)
+	VPXORQ       Z5, Z5, Z5
+	VSUBPD       Z2, Z5, Z5
+	VMOVUPD      Z5, 64(AX)(R8*1)
+	ADDQ         $0x08, SI
+	ADDQ         $0x00000080, DX
+	DECQ         DI
+	JNZ          branch
+	XORQ         AX, AX
+	ORQ          R9, AX
+	MOVQ         AX, below+48(FP)
+	VZEROUPPER
+	RET
+
+// func drawWyeZIPFirst512(into *float64, v *float64, power *float64, index *int32, shape *float64, n int) (below uint64)
+// Requires: AVX, AVX512BW, AVX512F, SSE2
+TEXT ·drawWyeZIPFirst512(SB), NOSPLIT, $0-56
+	MOVQ         into+0(FP), AX
+	MOVQ         v+8(FP), CX
+	MOVQ         power+16(FP), DX
+	MOVQ         index+24(FP), BX
+	MOVQ         shape+32(FP), SI
+	MOVQ         n+40(FP), DI
+	MOVQ         $0x3ff0000000000000, R8
+	MOVQ         R8, X0
+	VBROADCASTSD X0, Z0
+	XORQ         R9, R9
+
+branch:
+	MOVLQSX      (BX), R8
+	ADDQ         $0x04, BX
+	VBROADCASTSD (SI), Z1
+	VMOVUPD      (CX)(R8*1), Z2
+	VMOVUPD      64(CX)(R8*1), Z3
+	VMULPD       Z3, Z3, Z4
+	VFMADD231PD  Z2, Z2, Z4
+	VCMPPD       $0x09, Z1, Z4, K1
+	KMOVQ        K1, R10
+	ORQ          R10, R9
+	VDIVPD       Z4, Z0, Z4
+	VMOVUPD      (DX), Z1
+	VMOVUPD      64(DX), Z5
+	VSQRTPD      Z4, Z6
+	VBROADCASTSD 24(SI), Z7
+	VBROADCASTSD 16(SI), Z8
+	VFMADD231PD  Z6, Z8, Z7
+	VBROADCASTSD 8(SI), Z8
+	VFMADD231PD  Z4, Z8, Z7
+	VMULPD       Z7, Z1, Z1
+	VBROADCASTSD 48(SI), Z7
+	VBROADCASTSD 40(SI), Z8
+	VFMADD231PD  Z6, Z8, Z7
+	VBROADCASTSD 32(SI), Z8
+	VFMADD231PD  Z4, Z8, Z7
+	VMULPD       Z7, Z5, Z5
+	VMULPD       Z5, Z3, Z4
+	VFMADD231PD  Z1, Z2, Z4
+	VMULPD       Z5, Z2, Z2
+	VFMSUB231PD  Z1, Z3, Z2
+	VPXORQ       Z7, Z7, Z7
+	VSUBPD       Z4, Z7, Z7
+	VMOVUPD      Z7, (AX)(R8*1)
+	VPXORQ       Z7, Z7, Z7
+	VSUBPD       Z2, Z7, Z7
+	VMOVUPD      Z7, 64(AX)(R8*1)
+	ADDQ         $0x38, SI
+	ADDQ         $0x00000080, DX
+	DECQ         DI
+	JNZ          branch
+	XORQ         AX, AX
+	ORQ          R9, AX
 	MOVQ         AX, below+48(FP)
 	VZEROUPPER
 	RET

@@ -14,19 +14,19 @@ func rowsAdd(dst, src *float64, index *int32, coef *float64, rows int) {
 }
 
 func drawWye(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
-	return plainDraw(into, v, power, index, shape, n, false, false)
+	return plainDraw(into, v, power, index, shape, n, false, false, false)
 }
 
 func drawPair(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
-	return plainDraw(into, v, power, index, shape, n, true, false)
+	return plainDraw(into, v, power, index, shape, n, true, false, false)
 }
 
 func drawWyeZIP(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
-	return plainDraw(into, v, power, index, shape, n, false, true)
+	return plainDraw(into, v, power, index, shape, n, false, true, false)
 }
 
 func drawPairZIP(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
-	return plainDraw(into, v, power, index, shape, n, true, true)
+	return plainDraw(into, v, power, index, shape, n, true, true, false)
 }
 
 func advance(v, x, weight *float64, mask *uint64, moved *float64, n int) {
@@ -45,4 +45,12 @@ func groupsSet(dst, src *float64, index *int32, coef *float64, groups int) {
 
 func groupsAdd(dst, src *float64, index *int32, coef *float64, groups int) {
 	plainGroups(dst, src, index, coef, groups, true)
+}
+
+func drawWyeFirst(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
+	return plainDraw(into, v, power, index, shape, n, false, false, true)
+}
+
+func drawWyeZIPFirst(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
+	return plainDraw(into, v, power, index, shape, n, false, true, true)
 }

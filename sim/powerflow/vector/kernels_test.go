@@ -114,7 +114,7 @@ func twins(random func() *rand.Rand, wild bool) (out []twin) {
 			return [][]float64{whole, from}
 		}})
 	}
-	for mode, name := range []string{"wye", "pair", "wye ZIP", "pair ZIP"} {
+	for mode, name := range []string{"wye", "pair", "wye ZIP", "pair ZIP", "first wye", "first wye ZIP"} {
 		out = append(out, twin{name, func(t *testing.T, k int) [][]float64 {
 			rng := random()
 			whole, into := fence(n, rng)
@@ -125,16 +125,19 @@ func twins(random func() *rand.Rand, wild bool) (out []twin) {
 				odd(s, rng)
 			}
 			l := NewLoads(mode&1 == 1, mode >= 2)
+			if mode >= 4 {
+				l = NewFirstLoads(mode == 5)
+			}
 			for range 2 * n {
 				l.Branch(rng.IntN(n), rng.IntN(n), rng.Float64(), [6]float64{rng.Float64(), rng.Float64(), rng.Float64(), rng.Float64(), rng.Float64(), rng.Float64()})
 			}
 			var below uint64
 			if k == 0 {
-				below = plainDraw(&into[0], &v[0], &s[0], &l.index[0], &l.shape[0], l.n, l.pair, l.zi)
+				below = plainDraw(&into[0], &v[0], &s[0], &l.index[0], &l.shape[0], l.n, l.pair, l.zi, l.begins)
 			} else {
-				f := [][4]func(into, v, power *float64, index *int32, shape *float64, n int) uint64{
-					{drawWye256, drawPair256, drawWyeZIP256, drawPairZIP256},
-					{drawWye512, drawPair512, drawWyeZIP512, drawPairZIP512},
+				f := [][6]func(into, v, power *float64, index *int32, shape *float64, n int) uint64{
+					{drawWye256, drawPair256, drawWyeZIP256, drawPairZIP256, drawWyeFirst256, drawWyeZIPFirst256},
+					{drawWye512, drawPair512, drawWyeZIP512, drawPairZIP512, drawWyeFirst512, drawWyeZIPFirst512},
 				}[k-1][mode]
 				below = f(&into[0], &v[0], &s[0], &l.index[0], &l.shape[0], l.n)
 			}

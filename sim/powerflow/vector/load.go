@@ -16,12 +16,17 @@ type Loads struct {
 	n        int
 	wide     int
 	pair, zi bool
+	begins   bool
 }
 
 // NewLoads returns a list of branches between two values (pair), or between one and
 // ground; with parts of constant current and impedance (zip), or of constant power
 // alone.
 func NewLoads(pair, zip bool) *Loads { return &Loads{pair: pair, zi: zip} }
+
+// NewFirstLoads returns a list of branches to ground each of which is the first to draw at
+// its value: what stood there before does not count.
+func NewFirstLoads(zip bool) *Loads { return &Loads{zi: zip, begins: true} }
 
 // Branch appends a branch. to counts in lists of pairs only, zip (C, I, Z of P, then
 // of Q) in lists with one. least is the least |V|², V².
@@ -54,6 +59,10 @@ func (b *Loads) Draw(into, v, power []float64) uint8 {
 	}
 	f := drawWye
 	switch {
+	case b.begins && b.zi:
+		f = drawWyeZIPFirst
+	case b.begins:
+		f = drawWyeFirst
 	case b.pair && b.zi:
 		f = drawPairZIP
 	case b.pair:

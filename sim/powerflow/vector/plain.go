@@ -62,7 +62,7 @@ func plainRows(dst, src *float64, index *int32, coef *float64, rows, kind int) {
 	}
 }
 
-func plainDraw(into, v, power *float64, index *int32, shape *float64, n int, pair, zip bool) (below uint64) {
+func plainDraw(into, v, power *float64, index *int32, shape *float64, n int, pair, zip, begins bool) (below uint64) {
 	r := reader{index, shape}
 	var ground [Width]float64
 	for k := range n {
@@ -103,6 +103,9 @@ func plainDraw(into, v, power *float64, index *int32, shape *float64, n int, pai
 			} else {
 				ir = math.FMA(p, re, q*im) * g
 				ii = math.FMA(p, im, -(q*re)) * g
+			}
+			if begins {
+				a[l], a[Lanes+l] = 0, 0
 			}
 			a[l] -= ir
 			a[Lanes+l] -= ii

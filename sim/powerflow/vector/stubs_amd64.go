@@ -34,6 +34,16 @@ func drawWyeZIP256(into *float64, v *float64, power *float64, index *int32, shap
 //go:noescape
 func drawPairZIP256(into *float64, v *float64, power *float64, index *int32, shape *float64, n int) (below uint64)
 
+// drawWyeFirst256 is a kernel of Loads.Draw.
+//
+//go:noescape
+func drawWyeFirst256(into *float64, v *float64, power *float64, index *int32, shape *float64, n int) (below uint64)
+
+// drawWyeZIPFirst256 is a kernel of Loads.Draw.
+//
+//go:noescape
+func drawWyeZIPFirst256(into *float64, v *float64, power *float64, index *int32, shape *float64, n int) (below uint64)
+
 // advance256 is the kernel of Advance.
 //
 //go:noescape
@@ -88,6 +98,16 @@ func drawWyeZIP512(into *float64, v *float64, power *float64, index *int32, shap
 //
 //go:noescape
 func drawPairZIP512(into *float64, v *float64, power *float64, index *int32, shape *float64, n int) (below uint64)
+
+// drawWyeFirst512 is a kernel of Loads.Draw.
+//
+//go:noescape
+func drawWyeFirst512(into *float64, v *float64, power *float64, index *int32, shape *float64, n int) (below uint64)
+
+// drawWyeZIPFirst512 is a kernel of Loads.Draw.
+//
+//go:noescape
+func drawWyeZIPFirst512(into *float64, v *float64, power *float64, index *int32, shape *float64, n int) (below uint64)
 
 // advance512 is the kernel of Advance.
 //

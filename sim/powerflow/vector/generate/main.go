@@ -25,10 +25,12 @@ func main() {
 		}
 		m.rows("Set")
 		m.rows("Add")
-		m.draw("Wye", false, false)
-		m.draw("Pair", true, false)
-		m.draw("WyeZIP", false, true)
-		m.draw("PairZIP", true, true)
+		m.draw("Wye", false, false, false)
+		m.draw("Pair", true, false, false)
+		m.draw("WyeZIP", false, true, false)
+		m.draw("PairZIP", true, true, false)
+		m.draw("WyeFirst", false, false, true)
+		m.draw("WyeZIPFirst", false, true, true)
 		m.advance()
 		m.scale()
 		m.predict()
@@ -147,7 +149,7 @@ func (m machine) rows(kind string) {
 }
 
 // draw has one part of a component after another: each needs nearly all registers.
-func (m machine) draw(kind string, pair, zip bool) {
+func (m machine) draw(kind string, pair, zip, begins bool) {
 	name := "draw" + kind + m.name
 	TEXT(name, NOSPLIT, "func(into, v, power *float64, index *int32, shape *float64, n int) (below uint64)")
 	Pragma("noescape")
@@ -228,12 +230,16 @@ func (m machine) draw(kind string, pair, zip bool) {
 			VMULPD(g, ir, ir)
 			VMULPD(g, ii, ii)
 		}
-		VMOVUPD(m.re(into, from, p), a)
-		VSUBPD(ir, a, a)
-		VMOVUPD(a, m.re(into, from, p))
-		VMOVUPD(m.im(into, from, p), a)
-		VSUBPD(ii, a, a)
-		VMOVUPD(a, m.im(into, from, p))
+		for c, i := range []reg.VecVirtual{ir, ii} {
+			at := m.re(into, from, p).Offset(8 * lanes * c)
+			if begins {
+				zero(a)
+			} else {
+				VMOVUPD(at, a)
+			}
+			VSUBPD(i, a, a)
+			VMOVUPD(a, at)
+		}
 		if pair {
 			VADDPD(m.re(into, to, p), ir, ir)
 			VMOVUPD(ir, m.re(into, to, p))
