@@ -18,6 +18,9 @@ import (
 // step at hand starts from; none runs past the end of the local day.
 type ahead struct {
 	lanes               *powerflow.Lanes
+	last                []float64 // values in the last step of the block
+	held                bool      // no input has changed since the block before
+	still               *powerflow.Curve
 	values              []float64         // of the series, in one step
 	rows                []float64         // ones, then the values of each series, by lane
 	month               int               // that the shares of loads known by their energy are of
@@ -47,7 +50,8 @@ func (e *Engine) prepareAhead() {
 		rows:   make([]float64, (len(e.in.values)+1)*vector.Lanes),
 		first:  -1,
 	}
-	e.ahead.near = e.ahead.lanes.NewCurve()
+	e.ahead.near, e.ahead.still = e.ahead.lanes.NewCurve(), e.ahead.lanes.NewCurve()
+	e.ahead.last = make([]float64, len(e.in.values))
 	e.in.still(e.ahead.lanes, e.ahead.rows)
 	e.prepareWindow()
 }
@@ -112,6 +116,7 @@ func (e *Engine) solveAhead() bool {
 func (e *Engine) solveLanes() {
 	a := e.ahead
 	near := a.nearest(e)
+	before := a.solvedLast()
 	a.number++
 	if e.quiet != nil && e.quiet.lent {
 		e.quiet.lent = false
@@ -120,25 +125,30 @@ func (e *Engine) solveLanes() {
 	a.first, a.state = e.step, e.flow.DeviceState()
 	a.end = min(a.first+vector.Lanes, e.in.axis.Steps(), e.dayEnd(a.first))
 	if month := e.in.monthOf(a.first); month != a.month { // months begin with days, and blocks end with them
-		a.month = month
+		a.month, before.block = month, nil
 		a.lanes.Follow(e.in.follow(month))
 		a.window.follow(e.in, month)
 	}
-	curved := e.anchored && a.window.prepare(e)
+	for step := a.first; step < a.end; step++ {
+		if k := step % vector.Lanes; a.loaded[k] != step {
+			a.loaded[k] = step
+			a.load(e.in, k, step)
+		}
+	}
+	held := e.anchored && before.block != nil && before.state == a.state && a.unchanged()
+	curved := !held && e.anchored && a.window.prepare(e)
 	if curved {
 		a.end = min(a.end, a.window.end)
 	}
 	mask := uint8(0)
 	for step := a.first; step < a.end; step++ {
-		k := step % vector.Lanes
-		mask |= 1 << k
-		if a.loaded[k] != step {
-			a.loaded[k] = step
-			a.load(e.in, k, step)
-		}
+		mask |= 1 << (step % vector.Lanes)
 	}
 	a.lanes.Drive(a.rows)
 	switch {
+	case held:
+		before.block.Keep(a.still, before.lane)
+		a.lanes.StartAt(a.still)
 	case curved:
 		a.window.start(a)
 	case near && e.anchored:
@@ -152,7 +162,14 @@ func (e *Engine) solveLanes() {
 	e.timing.Blocks++
 	e.timing.LanesSolved += bits.OnesCount8(mask)
 	a.taken = 0
-	a.arrived = a.lanes.Solve(mask, powerflow.Contract)
+	if held {
+		a.arrived = a.lanes.Hold(mask)
+	} else {
+		a.arrived = a.lanes.Solve(mask, powerflow.Contract)
+	}
+	for i := range a.values {
+		a.last[i] = a.rows[(i+1)*vector.Lanes+(a.end-1)%vector.Lanes]
+	}
 	e.lap(&e.timing.Solving)
 }
 
@@ -170,6 +187,35 @@ func (a *ahead) nearest(e *Engine) bool {
 		a.nearStep, a.nearState = last, a.state
 	}
 	return a.nearStep == last && last >= 0 && a.nearState == e.flow.DeviceState() && e.anchored
+}
+
+// solvedLane is where a solution stands.
+type solvedLane struct {
+	block *powerflow.Block
+	lane  int
+	state int
+}
+
+// solvedLast is the last step of the block at hand; without a block where it did not
+// arrive.
+func (a *ahead) solvedLast() (s solvedLane) {
+	if lane := (a.end - 1) % vector.Lanes; a.first >= 0 && a.arrived>>lane&1 == 1 {
+		s = solvedLane{a.lanes.Block, lane, a.state}
+	}
+	return s
+}
+
+// unchanged tells whether the inputs of all steps of the block are those of the last step
+// of the block before.
+func (a *ahead) unchanged() bool {
+	for i, v := range a.last {
+		for step := a.first; step < a.end; step++ {
+			if a.rows[(i+1)*vector.Lanes+step%vector.Lanes] != v {
+				return false
+			}
+		}
+	}
+	return true
 }
 
 // loadLane puts the inputs of a step into a lane of lanes, its values into rows.

@@ -175,3 +175,19 @@ func TestSolvingAheadChangesNothingOfSyntheticFeeders(t *testing.T) {
 		}
 	}
 }
+
+// Steps whose inputs and devices have not changed are not solved again.
+func TestHeldInputsAreSolvedOnce(t *testing.T) {
+	study, err := synthetic.Study(synthetic.Options{Buses: 100, Seed: 2, Step: 15 * time.Second, Days: 1, Inputs: synthetic.Hours})
+	if err != nil {
+		t.Fatal(err)
+	}
+	sameRun(t, study, "")
+	e := prepare(t, study, "", sim.Options{})
+	if _, err := e.Run(context.Background(), &quietTrail{}); err != nil {
+		t.Fatal(err)
+	}
+	if n := e.Timing(); n.Iterations > n.Solutions/5 {
+		t.Errorf("%d iterations for %d solutions, most of inputs that stand still", n.Iterations, n.Solutions)
+	}
+}

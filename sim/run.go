@@ -92,6 +92,7 @@ func (r *runner) walk(ctx context.Context) (err error) {
 			if failed != nil {
 				err = failed
 			}
+			e.timing.Beside = true
 			e.timing.Waiting += e.timing.Statistics
 			e.timing.Statistics = e.relay.busy
 			for g := range r.generated {

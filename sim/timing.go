@@ -16,9 +16,10 @@ type Timing struct {
 	// everything that devices, plants and the event loop do, Statistics that of the
 	// recorders, the writing of files included.
 	//
-	// Recorders that work beside the run take time of another core: what Statistics says is
-	// then not part of the run's own, and Waiting is the time that it waited for them.
+	// Recorders that work Beside the run take time of another core: what Statistics says is
+	// then not part of the run's own, and Waiting is the time that handing over took.
 	Assembling, Solving, Controls, Statistics, Waiting time.Duration
+	Beside                                             bool
 
 	Blocks                 int // of steps solved at once
 	LanesSolved, LanesUsed int // instants solved in blocks, and those taken from there

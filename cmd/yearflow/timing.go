@@ -16,7 +16,8 @@ import (
 // rows of the logs.
 func wallOf(t sim.Timing, rows time.Duration) []results.WallTime {
 	var out []results.WallTime
-	for _, p := range partsOf(t, rows) {
+	own, beside := partsOf(t, rows)
+	for _, p := range append(own, beside...) {
 		out = append(out, results.WallTime{Part: "run: " + p.name, Seconds: p.took.Seconds()})
 	}
 	return out
@@ -27,9 +28,15 @@ type timedPart struct {
 	took time.Duration
 }
 
-func partsOf(t sim.Timing, rows time.Duration) []timedPart {
-	return []timedPart{{"assembling", t.Assembling}, {"solving", t.Solving}, {"controls", t.Controls},
-		{"statistics", t.Statistics - rows}, {"writing", rows}}
+// partsOf are the parts of the run's own time, then those of recorders that worked beside
+// it, on another core.
+func partsOf(t sim.Timing, rows time.Duration) (own, beside []timedPart) {
+	own = []timedPart{{"assembling", t.Assembling}, {"solving", t.Solving}, {"controls", t.Controls}}
+	records := []timedPart{{"statistics", t.Statistics - rows}, {"writing", rows}}
+	if t.Beside {
+		return append(own, timedPart{"handing over", t.Waiting}), records
+	}
+	return append(own, records...), nil
 }
 
 // runProfile is what run --timing prints.
@@ -47,18 +54,25 @@ type runProfile struct {
 
 func (p *runProfile) write(w io.Writer) {
 	drawing := time.Duration(p.drawing.Seconds * float64(time.Second))
-	parts := append([]timedPart{{"reading", p.reading}}, partsOf(p.timing, p.rows)...)
-	parts[len(parts)-1].took += p.files - drawing
-	parts = append(parts, timedPart{p.drawing.Part, drawing})
+	own, beside := partsOf(p.timing, p.rows)
+	parts := append([]timedPart{{"reading", p.reading}}, own...)
+	parts = append(parts, timedPart{"other files", p.files - drawing}, timedPart{p.drawing.Part, drawing})
 	fmt.Fprint(w, "\nWhere the time went\n")
 	s := sheet{left: 1}
 	rest := p.total
+	share := func(x timedPart) {
+		s.add(x.name, fmt.Sprintf("%.3f", x.took.Seconds()), "s", fmt.Sprintf("%.1f", 100*x.took.Seconds()/p.total.Seconds()), "%")
+	}
 	for _, x := range append(parts, timedPart{"the rest", 0}, timedPart{"all", p.total}) {
 		if x.name == "the rest" {
 			x.took = rest
 		}
 		rest -= x.took
-		s.add(x.name, fmt.Sprintf("%.3f", x.took.Seconds()), "s", fmt.Sprintf("%.1f", 100*x.took.Seconds()/p.total.Seconds()), "%")
+		share(x)
+	}
+	for _, x := range beside {
+		x.name = "beside it: " + x.name
+		share(x)
 	}
 	s.write(w)
 	fmt.Fprintf(w, "%s, %s, %.2f iterations each", count(p.steps, "step"), count(p.timing.Solutions, "solution"), per(p.timing.Iterations, p.timing.Solutions))

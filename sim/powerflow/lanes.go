@@ -514,6 +514,13 @@ func (l *Lanes) Solve(mask uint8, tol Tolerance) (arrived uint8) {
 	return arrived
 }
 
+// Hold takes the lanes of a mask as solved where they start: their inputs are those of the
+// solution that they start from.
+func (l *Lanes) Hold(mask uint8) (arrived uint8) {
+	l.Iterations, l.Change = [vector.Lanes]int{}, [vector.Lanes]float64{}
+	return mask
+}
+
 // iterate moves the lanes of a mask by one iteration, and returns those that had a
 // load below the corner before it.
 func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) {
