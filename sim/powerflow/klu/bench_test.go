@@ -28,7 +28,7 @@ var contestants = []func(testing.TB, *synthetic.Circuit) klu.Stepper{
 		return klu.NewReference(c.Solver, c.Level(0))
 	},
 	func(_ testing.TB, c *synthetic.Circuit) klu.Stepper {
-		return klu.NewLaneRun(c.Solver, c.Level(0))
+		return klu.NewLaneRun(c.Solver, c.Source, c.Power, c.Shape)
 	},
 }
 

@@ -107,3 +107,27 @@ func TestSameVoltagesAsTheReference(t *testing.T) {
 		})
 	}
 }
+
+// The lanes find the voltages of the reference solver.
+func TestLanesHaveTheSameVoltages(t *testing.T) {
+	for name, o := range map[string]synthetic.Options{"S": synthetic.S(), "M": synthetic.M()} {
+		c := circuit(t, o)
+		steps, start := minutes(t, c, o, 20)
+		want, got := make([]complex128, len(start)), make([]complex128, len(start))
+		for s, v := range map[klu.Stepper][]complex128{
+			klu.NewReference(c.Solver, c.Level(0)):               want,
+			klu.NewLaneRun(c.Solver, c.Source, c.Power, c.Shape): got,
+		} {
+			s.Prepare(steps, start)
+			if _, err := s.Run(1e-10); err != nil {
+				t.Fatal(name, err)
+			}
+			s.Voltages(v)
+		}
+		for u := range got {
+			if d := cmplx.Abs(got[u]-want[u]) / c.Net.Unknowns[u].Nominal; !(d <= 1e-8) {
+				t.Fatalf("%s, %s: %v, the reference %v", name, c.Net.Unknowns[u].Name, got[u], want[u])
+			}
+		}
+	}
+}
