@@ -32,6 +32,7 @@ type relay struct {
 	// What the receiving side works with.
 	currents *powerflow.LaneCurrents
 	solved   int // number of the block that currents are of
+	month    int // whose shares the currents have
 	lanes    results.Lanes
 	out      results.Quiet
 	tally    plantTally // of quiet steps
@@ -54,7 +55,9 @@ type event struct {
 	lane    int
 	start   int64
 	block   *powerflow.Block
-	number  int // of the block
+	number  int       // of the block
+	rows    []float64 // values of the series in the block's steps
+	month   int       // of the block
 	arrived uint8
 	taps    []int
 	closed  []bool
@@ -70,7 +73,7 @@ type plantTally struct{ generated, curtailed []float64 }
 // relayed bounds what is under way, in events and in numbers of their states.
 const (
 	relayEvents  = 128
-	relayBlocks  = 32
+	relayBlocks  = 48
 	relayNumbers = 4 << 20
 )
 
@@ -78,7 +81,7 @@ const (
 func newRelay(e *Engine, recorders []quietRecorder) *relay {
 	numbers := len(e.state.V) + len(e.state.Flow)
 	n := max(8, min(relayEvents, relayNumbers/max(numbers, 1)))
-	r := &relay{e: e, recorders: recorders, events: make(chan []*event, n), free: make(chan *event, n), done: make(chan struct{}), timed: e.timed, solved: -1, sent: max(1, n/4),
+	r := &relay{e: e, recorders: recorders, events: make(chan []*event, n), free: make(chan *event, n), done: make(chan struct{}), timed: e.timed, solved: -1, month: -1, sent: max(1, 12),
 		tally: plantTally{make([]float64, len(e.state.Generation)), make([]float64, len(e.state.Generation))}}
 	for range n {
 		r.free <- &event{state: e.state.Like(), devices: make([]results.DeviceState, len(e.devices)), taps: make([]int, len(e.state.Taps)), closed: make([]bool, len(e.state.Closed))}
@@ -222,6 +225,7 @@ func (r *relay) quiet(step, n int, states []results.DeviceState) error {
 	ev.positions = r.devices
 	copy(ev.devices[:len(states)], states)
 	ev.devices = ev.devices[:len(states)]
+	ev.rows, ev.month = append(ev.rows[:0], a.rows...), a.month
 	copy(ev.taps, r.e.state.Taps)
 	copy(ev.closed, r.e.state.Closed)
 	r.queue(ev)
@@ -324,6 +328,11 @@ func (r *relay) read(ev *event) {
 	e, b := r.e, ev.block
 	if r.solved != ev.number {
 		r.solved = ev.number
+		if r.month != ev.month {
+			r.month = ev.month
+			r.currents.Follow(e.in.follow(ev.month))
+		}
+		r.currents.Drive(ev.rows)
 		r.currents.Use(ev.positions)
 		r.currents.Read(b, ev.arrived)
 		for f, x := range e.net.Fixed {
@@ -339,7 +348,7 @@ func (r *relay) read(ev *event) {
 		k := (ev.lane + i) % vector.Lanes
 		generation := 0.0
 		for g := range r.tally.generated {
-			watts, curtailed := e.deliveredIn(b, g, k)
+			watts, curtailed := r.delivered(b, g, k)
 			generation += watts
 			r.tally.generated[g] += watts / 1000 * hours
 			r.tally.curtailed[g] += curtailed * hours
@@ -349,18 +358,19 @@ func (r *relay) read(ev *event) {
 	}
 }
 
-// deliveredIn is what a generator delivers in a lane of a block, W, and what its function
+// delivered is what a generator delivers in a lane of a block, W, and what its function
 // takes from what it could, kW.
-func (e *Engine) deliveredIn(b *powerflow.Block, generator, k int) (watts, curtailed float64) {
+func (r *relay) delivered(b *powerflow.Block, generator, k int) (watts, curtailed float64) {
+	e := r.e
 	for _, v := range e.plants.inverters {
 		if v.generator == generator {
-			available := -b.Power(int(e.in.groups[v.group].Members[0]), k) / 1000 * v.law.members
+			available := -r.currents.Power(int(e.in.groups[v.group].Members[0]), k) / 1000 * v.law.members
 			o := v.law.output(available, b.GroupVoltage(v.group, k))
 			return o.P * 1000, o.Curtailed
 		}
 	}
 	for _, m := range e.in.branchesOf[generator] {
-		watts -= b.Power(m, k)
+		watts -= r.currents.Power(m, k)
 	}
 	return watts, 0
 }

@@ -50,8 +50,7 @@ type Lanes struct {
 	ups                  [][2]int  // by group of columns: its part of up
 
 	loads  [lists]*vector.Loads
-	drives [lists]vector.Drives
-	lead   []drive  // by group: how its first member's power follows the series
+	asked  *powers
 	blank  [][2]int // parts of values at which no list begins
 	listed []int32  // injections in the order of the lists
 	list   []int8   // by injection: its list, −1: it is one of a group
@@ -60,23 +59,15 @@ type Lanes struct {
 	least float64 // change that keeps every node's mismatch, where loads are at their largest
 }
 
-// Block is what lanes were given and what they found: who takes it out of a Lanes, by
-// Exchange, can read it while the next one is solved.
+// Block is the voltages that lanes found: who takes it out of a Lanes, by Exchange, can
+// read it while the next one is solved.
 type Block struct {
-	l     *Lanes
-	v     []float64
-	power [lists][]float64
-	given []complex128 // by group and lane
+	l *Lanes
+	v []float64
 }
 
 // NewBlock makes room for a block.
-func (l *Lanes) NewBlock() *Block {
-	b := &Block{l: l, v: vector.Make(l.held + len(l.s.Net.Fixed)), given: make([]complex128, len(l.s.Groups)*vector.Lanes)}
-	for i := range l.loads {
-		b.power[i] = vector.Make(l.loads[i].Len())
-	}
-	return b
-}
+func (l *Lanes) NewBlock() *Block { return &Block{l: l, v: vector.Make(l.held + len(l.s.Net.Fixed))} }
 
 // Exchange returns the block at hand and goes on with another. Fixed voltages stay.
 func (l *Lanes) Exchange(next *Block) *Block {
@@ -84,12 +75,6 @@ func (l *Lanes) Exchange(next *Block) *Block {
 	copy(next.v[l.all*vector.Width:], old.v[l.all*vector.Width:])
 	l.Block = next
 	return old
-}
-
-// drive says how a power follows rows of values: P the first, Q the second.
-type drive struct {
-	p, q  int
-	share complex128
 }
 
 // sensitivity bounds how much of its power an injection's current moves by, as power,
@@ -325,7 +310,7 @@ func (l *Lanes) branches() {
 		l.list[k], l.member[k] = int8(list), int32(l.loads[list].Len())
 		l.loads[list].Branch(int(l.slot[j.From]), to, least, [6]float64{j.PC, j.PI / n, j.PZ / (n * n), j.QC, j.QI / n, j.QZ / (n * n)})
 	}
-	l.Block = l.NewBlock()
+	l.Block, l.asked = l.NewBlock(), l.newPowers()
 	for at := 0; at < l.held; at++ {
 		switch {
 		case begun[at]:
@@ -409,31 +394,10 @@ func (l *Lanes) refresh() {
 
 // Follow says how every injection's power follows the rows of values that Drive gets:
 // P row p and Q row q, times its share, VA.
-func (l *Lanes) Follow(p, q []int, share []complex128) {
-	l.drives = [lists]vector.Drives{}
-	l.lead = make([]drive, len(l.s.Groups))
-	for _, k := range l.listed {
-		if list := l.list[k]; list >= 0 {
-			l.drives[list].Drive(p[k], q[k], share[k])
-		}
-	}
-	for g := range l.lead {
-		k := l.s.Groups[g].Members[0]
-		l.lead[g] = drive{p[k], q[k], share[k]}
-	}
-}
+func (l *Lanes) Follow(p, q []int, share []complex128) { l.asked.follow(l, p, q, share) }
 
 // Drive sets the powers of all lanes from rows of vector.Lanes values.
-func (l *Lanes) Drive(values []float64) {
-	for i := range l.drives {
-		l.drives[i].Scale(l.power[i], values)
-	}
-	for g, d := range l.lead {
-		for lane := range vector.Lanes {
-			l.given[g*vector.Lanes+lane] = complex(real(d.share)*values[d.p*vector.Lanes+lane], imag(d.share)*values[d.q*vector.Lanes+lane])
-		}
-	}
-}
+func (l *Lanes) Drive(values []float64) { l.asked.drive(values) }
 
 // Source sets what a fixed voltage is in a lane, V.
 func (l *Lanes) Source(lane, fixed int, z complex128) {
@@ -448,11 +412,11 @@ func (l *Lanes) Input(lane int, in *Input) {
 	}
 	for k, z := range in.Power {
 		if list := l.list[k]; list >= 0 {
-			vector.Put(l.power[list], int(l.member[k]), lane, z)
+			vector.Put(l.asked.power[list], int(l.member[k]), lane, z)
 		}
 	}
 	for g := range l.s.Groups {
-		l.given[g*vector.Lanes+lane] = in.Power[l.s.Groups[g].Members[0]]
+		l.asked.given[g*vector.Lanes+lane] = in.Power[l.s.Groups[g].Members[0]]
 	}
 }
 
@@ -534,7 +498,7 @@ func (l *Lanes) Hold(mask uint8) (arrived uint8) {
 // iterate moves the lanes of a mask by one iteration, and returns those that had a
 // load below the corner before it.
 func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) {
-	below = l.draw(l.x, l.Block, mask)
+	below = l.draw(l.x, l.Block, l.asked, mask)
 	l.pull.Add(l.x, l.x)
 	l.gather.Add(l.x, l.x)
 	l.forward.Add(l.x, l.x)
@@ -552,23 +516,23 @@ const (
 	lists    = 6
 )
 
-// draw sets the currents that are put in to what the injections of a block draw, negative,
-// and returns the lanes with a load below the corner.
-func (l *Lanes) draw(into []float64, b *Block, mask uint8) (below uint8) {
+// draw sets the currents that are put in to what the injections draw at the voltages of a
+// block, negative, and returns the lanes with a load below the corner.
+func (l *Lanes) draw(into []float64, b *Block, a *powers, mask uint8) (below uint8) {
 	for _, part := range l.blank {
 		clear(into[part[0]:part[1]])
 	}
 	for i := lists - 1; i >= 0; i-- { // those that begin come first
-		below |= l.loads[i].Draw(into, b.v, b.power[i])
+		below |= l.loads[i].Draw(into, b.v, a.power[i])
 	}
 	for g := range l.s.Groups {
-		below |= l.drawGroup(into, b, g, mask)
+		below |= l.drawGroup(into, b, a, g, mask)
 	}
 	return below
 }
 
 // drawGroup does so for a group, lane by lane.
-func (l *Lanes) drawGroup(into []float64, b *Block, g int, mask uint8) (below uint8) {
+func (l *Lanes) drawGroup(into []float64, b *Block, a *powers, g int, mask uint8) (below uint8) {
 	s := l.s
 	group := &s.Groups[g]
 	n := float64(len(group.Members))
@@ -581,7 +545,7 @@ func (l *Lanes) drawGroup(into []float64, b *Block, g int, mask uint8) (below ui
 			below |= 1 << lane
 			continue
 		}
-		p, _ := group.Law.Draws(b.given[g*vector.Lanes+lane], mean)
+		p, _ := group.Law.Draws(a.given[g*vector.Lanes+lane], mean)
 		p = complex(real(p)/n, -imag(p)/n)
 		for _, k := range group.Members {
 			j := &s.Injections[k]
@@ -621,16 +585,6 @@ func (b *Block) V(u int32, lane int) complex128 { return vector.At(b.v, int(b.l.
 
 // Voltages are the values, and where each unknown's stands among them.
 func (b *Block) Voltages() (v []float64, slot []int32) { return b.v, b.l.slot }
-
-// Power is the real power, W at 1 p.u., that an injection is asked for in a lane: of one
-// in a group what the group is given.
-func (b *Block) Power(injection, lane int) float64 {
-	list := b.l.list[injection]
-	if list < 0 {
-		return real(b.given[int(b.l.s.Injections[injection].Group-1)*vector.Lanes+lane])
-	}
-	return real(vector.At(b.power[list], int(b.l.member[injection]), lane))
-}
 
 // Take sets out to the solution of a lane that arrived.
 func (l *Lanes) Take(lane int, out *Solution) {

@@ -18,6 +18,7 @@ type LaneCurrents struct {
 	Drawn [vector.Lanes]float64
 
 	l     *Lanes
+	asked *powers
 	put   []float64   // values, as Lanes.x: currents that injections put in
 	draws bool        // put matters
 	all   bool        // everything is read
@@ -32,12 +33,17 @@ type LaneCurrents struct {
 	owns, sources          []func() float64
 }
 
-// NewLaneCurrents prepares the reading of currents: of all of them, or, where flows is not
-// nil, of couplings, sources and the flows at these places; Drawn is not read then.
+// NewLaneCurrents prepares the reading of currents: of all of them, for powers that Follow
+// and Drive say; or, where flows is not nil, of couplings, sources and the flows at these
+// places, for the powers that the lanes have. Drawn is not read then.
 func (l *Lanes) NewLaneCurrents(flows []int) *LaneCurrents {
 	s, n := l.s, l.s.Net
 	wanted := l.wanted(flows)
-	c := &LaneCurrents{l: l, draws: wanted == nil, all: wanted == nil,
+	asked := l.asked
+	if wanted == nil {
+		asked = l.newPowers()
+	}
+	c := &LaneCurrents{l: l, asked: asked, draws: wanted == nil, all: wanted == nil,
 		Flow: vector.Make(n.Offsets[len(n.Elements)]), Coupling: vector.Make(len(n.Couplings)), put: vector.Make(l.held)}
 	at := map[int32][]int{} // flows that leave an unknown
 	for e := range n.Elements {
@@ -202,12 +208,21 @@ func (c *LaneCurrents) Use(d *LaneDevices) {
 	c.capacitors.Coef, c.own.Coef, c.source.Coef = d.capacitors, d.own, d.source
 }
 
+// Follow and Drive say, as those of Lanes do, what the injections were asked for in the
+// blocks read next.
+func (c *LaneCurrents) Follow(p, q []int, share []complex128) { c.asked.follow(c.l, p, q, share) }
+func (c *LaneCurrents) Drive(values []float64)                { c.asked.drive(values) }
+
+// Power is the real power, W at 1 p.u., that an injection is asked for in a lane: of one in
+// a group what the group is given.
+func (c *LaneCurrents) Power(injection, lane int) float64 { return c.asked.of(injection, lane) }
+
 // Read reads the currents of a block's lanes of a mask, which must have arrived; those of
 // others mean nothing.
 func (c *LaneCurrents) Read(b *Block, mask uint8) {
 	l := c.l
 	if c.draws {
-		l.draw(c.put, b, mask)
+		l.draw(c.put, b, c.asked, mask)
 	}
 	c.elements.Set(c.Flow, b.v)
 	c.capacitors.Set(c.Flow, b.v)
