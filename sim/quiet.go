@@ -18,17 +18,21 @@ type quietRecorder interface {
 	Quiet(*results.Quiet) error
 }
 
-// idler is a control that can tell whether a reading leaves it as it is: it asks for
-// nothing, starts or stops no clock, and stands near no edge. Then it says how the device
-// stands, and, of a tap changer, what coarse watches.
+// idler is a control that can tell whether a reading leaves it as it is: no request comes
+// or goes, no clock starts or stops, and it stands near no edge. Then it says how the
+// device stands, and, of a tap changer, what coarse watches.
 type idler interface {
 	Idle(r Reading, now devices.Time) (s results.DeviceState, watched float64, idle bool)
 }
 
 func (c *tapControl) Idle(r Reading, now devices.Time) (s results.DeviceState, watched float64, idle bool) {
 	m := c.sheet.Measure(r.Volts, r.Amperes)
-	if !c.sheet.Calm(c.state, m) && (c.sheet.Standing(c.state) || c.sheet.Edge(c.state, m) || c.sheet.Observe(c.state, m, now) != c.state) {
-		return s, 0, false
+	if !c.sheet.Calm(c.state, m) {
+		next := c.sheet.Observe(c.state, m, now)
+		next.Measured = c.state.Measured // it is seen again before an action
+		if c.sheet.Edge(c.state, m) || next != c.state {
+			return s, 0, false
+		}
 	}
 	s = results.DeviceState{OutOfBand: c.sheet.OutOfBand(m), AtStop: c.sheet.AtStop(c.state), Reverse: c.reverse(r)}
 	return s, coarseOf(&c.sheet, c.state.Position, m), true
@@ -36,7 +40,9 @@ func (c *tapControl) Idle(r Reading, now devices.Time) (s results.DeviceState, w
 
 func (c *reverseControl) Idle(r Reading, now devices.Time) (s results.DeviceState, watched float64, idle bool) {
 	m := c.see(r)
-	if c.sheet.Standing(c.state) || c.sheet.Edge(c.state, m) || c.sheet.Observe(c.state, m, now) != c.state {
+	next := c.sheet.Observe(c.state, m, now)
+	next.Measured = c.state.Measured
+	if c.sheet.Edge(c.state, m) || next != c.state {
 		return s, 0, false
 	}
 	s, _ = c.State(r)
@@ -45,12 +51,13 @@ func (c *reverseControl) Idle(r Reading, now devices.Time) (s results.DeviceStat
 
 func (c *capacitorControl) Idle(r Reading, now devices.Time) (s results.DeviceState, watched float64, idle bool) {
 	m := c.reading(r)
-	idle = !c.sheet.Standing(c.state) && !c.sheet.Edge(c.state, m) && c.sheet.Observe(c.state, m, now) == c.state
-	return s, math.NaN(), idle
+	next := c.sheet.Observe(c.state, m, now)
+	next.Measured = c.state.Measured
+	return s, math.NaN(), !c.sheet.Edge(c.state, m) && next == c.state
 }
 
-// quiet finds runs of steps in which no device acts, asks or changes what it remembers:
-// each is one settled interval.
+// quiet finds runs of steps in which no device acts or changes what it remembers, though
+// requests may stand that are due later: each step is one interval.
 type quiet struct {
 	controls  []idler // by device
 	glance    *glance
@@ -113,7 +120,7 @@ func (l lane) value(series int) float64  { return l.ahead.rows[(series+1)*vector
 func (r *runner) quietFrom(step int) (int, error) {
 	e, q := r.Engine, r.quiet
 	a := e.ahead
-	if q == nil || r.relay == nil || !r.started || r.acted || step >= a.dayEnd || e.due() != devices.Never {
+	if q == nil || r.relay == nil || !r.started || r.acted || step >= a.dayEnd {
 		return 0, nil
 	}
 	if step < a.first || step >= a.end || a.state != e.flow.DeviceState() {
@@ -124,7 +131,10 @@ func (r *runner) quietFrom(step int) (int, error) {
 		e.solveLanes()
 	}
 	start, _ := e.in.axis.Bounds(step)
-	turn := e.nextSwitch(start)
+	turn := min(e.due(), e.nextSwitch(start))
+	if turn <= start {
+		return 0, nil
+	}
 	n := 0
 	for ; step+n < a.end; n++ {
 		k := (step + n) % vector.Lanes
@@ -144,6 +154,16 @@ func (r *runner) quietFrom(step int) (int, error) {
 		return 0, nil
 	}
 	return n, r.hand(step, n)
+}
+
+// standing tells whether some request stands.
+func (e *Engine) standing() bool {
+	for _, d := range e.devices {
+		if d.Due() != devices.Never {
+			return true
+		}
+	}
+	return false
 }
 
 // noQuiet is the step, ns, from which on runs of quiet steps are too rare to look for.
@@ -212,7 +232,7 @@ func (r *runner) hand(step, n int) error {
 	e.timing.QuietSteps += n
 	e.lap(&e.timing.Controls)
 	q.lent = true
-	err := r.relay.quiet(step, n, q.states)
+	err := r.relay.quiet(step, n, q.states, e.standing())
 	e.lap(&e.timing.Waiting)
 	return err
 }

@@ -51,16 +51,17 @@ type event struct {
 	asStep                 results.Step
 	asAction               results.Action
 
-	quiet   int // steps, beginning at lane and at start
-	lane    int
-	start   int64
-	block   *powerflow.Block
-	number  int       // of the block
-	rows    []float64 // values of the series in the block's steps
-	month   int       // of the block
-	arrived uint8
-	taps    []int
-	closed  []bool
+	quiet    int // steps, beginning at lane and at start
+	lane     int
+	start    int64
+	block    *powerflow.Block
+	number   int       // of the block
+	rows     []float64 // values of the series in the block's steps
+	month    int       // of the block
+	settling bool
+	arrived  uint8
+	taps     []int
+	closed   []bool
 
 	positions *powerflow.LaneDevices
 
@@ -209,13 +210,14 @@ func (r *relay) Action(a *results.Action) error {
 }
 
 // quiet takes n steps of the block at hand.
-func (r *relay) quiet(step, n int, states []results.DeviceState) error {
+func (r *relay) quiet(step, n int, states []results.DeviceState, settling bool) error {
 	r.flush()
 	ev, err := r.next()
 	if err != nil {
 		return err
 	}
 	a := r.e.ahead
+	ev.settling = settling
 	ev.quiet, ev.lane, ev.block, ev.number, ev.arrived = n, step%vector.Lanes, a.lanes.Block, a.number, a.arrived
 	ev.start, _ = r.e.in.axis.Bounds(step)
 	if r.devices == nil || r.state != a.state { // those before may still be in use
@@ -342,7 +344,7 @@ func (r *relay) read(ev *event) {
 		r.lanes.V, r.lanes.Slot = b.Voltages()
 	}
 	r.lanes.Taps, r.lanes.Closed = ev.taps, ev.closed
-	r.out.Start, r.out.First, r.out.Count, r.out.Devices = ev.start, ev.lane, ev.quiet, ev.devices
+	r.out.Start, r.out.First, r.out.Count, r.out.Devices, r.out.Settling = ev.start, ev.lane, ev.quiet, ev.devices, ev.settling
 	hours := float64(e.in.axis.Step) / float64(3600*devices.Second)
 	for i := range ev.quiet {
 		k := (ev.lane + i) % vector.Lanes

@@ -114,7 +114,11 @@ func (b *block) read(q *Quiet) {
 	for k := range q.Count {
 		b.mask |= 1 << q.lane(k)
 	}
-	b.seen, b.left = b.points.Watch(b.pu, l.V, b.mask, &b.least, &b.most)
+	settled := b.mask // the mean of a voltage is that of settled intervals, energies are of all
+	if q.Settling {
+		settled = 0
+	}
+	b.seen, b.left = b.points.Watch(b.pu, l.V, settled, &b.least, &b.most)
 	for k := range b.parts {
 		var over uint8
 		b.flagged[k], over = b.parts[k].Watch(b.power[k], l.V, l.Flow, b.mask, &b.byKind[k])

@@ -35,6 +35,8 @@ type Quiet struct {
 	State   *Lanes
 	Devices []DeviceState // the same in all of them
 	Solver  string        // path of the solutions
+	// Settling: some request stands in all of them, so that they are settling intervals.
+	Settling bool
 }
 
 // lane is that of the k-th step.
@@ -73,7 +75,7 @@ func (w *Writer) quiet(q *Quiet) error {
 		w.row.quiet(&part, r, &energies)
 	}
 	for i, d := range q.Devices {
-		w.duty[i].hours.add(d, int64(q.Count)*q.Step, true)
+		w.duty[i].hours.add(d, int64(q.Count)*q.Step, !q.Settling)
 	}
 	return nil
 }

@@ -21,8 +21,8 @@ import (
 	"yearflow/sim/powerflow/vector"
 )
 
-// calm makes a run of which most steps could come in a Quiet: one settled interval each,
-// of few different states, so that many values are equal. The others are those of chance.
+// calm makes a run of which most steps could come in a Quiet: one interval each, settled or
+// settling, of few different states, so that many values are equal. The others are those of chance.
 func calm(x *tiny, rnd *rand.Rand) *script {
 	s := &script{}
 	p := x.plan.Settings.Period
@@ -31,6 +31,7 @@ func calm(x *tiny, rnd *rand.Rand) *script {
 	var levels map[string]float64
 	devices := make([]DeviceState, len(x.plan.Devices))
 	rough := chance(x, rnd)
+	settled := true
 	for k := range p.Steps() {
 		if rnd.IntN(20) == 0 {
 			// The steps of chance stand at positions of their own: none may follow from
@@ -48,6 +49,7 @@ func calm(x *tiny, rnd *rand.Rand) *script {
 				taps[i] = rnd.IntN(33) - 16
 			}
 			closed = rnd.IntN(2) == 0
+			settled = rnd.IntN(3) > 0
 			for i := range devices {
 				devices[i] = DeviceState{rnd.IntN(2) == 0, rnd.IntN(3) == 0, rnd.IntN(4) == 0, rnd.IntN(5) == 0}
 			}
@@ -66,7 +68,7 @@ func calm(x *tiny, rnd *rand.Rand) *script {
 			pool = append(pool, x.state(levels, taps, closed))
 		}
 		start := p.Start + int64(k)*p.Step
-		iv := &Interval{Start: start, End: start + p.Step, Settled: true, State: pool[rnd.IntN(len(pool))], Devices: slices.Clone(devices)}
+		iv := &Interval{Start: start, End: start + p.Step, Settled: settled, State: pool[rnd.IntN(len(pool))], Devices: slices.Clone(devices)}
 		s.steps = append(s.steps, scriptStep{Step: Step{Start: start, End: start + p.Step, Last: iv.State, Solver: "in lanes"}, intervals: []*Interval{iv}})
 	}
 	return s
@@ -94,6 +96,7 @@ func (s *script) playQuiet(t testing.TB, w quieter, rnd *rand.Rand) (quiet int) 
 				break
 			}
 			if k > i && (&st.Last.Taps[0] != &states[0].Taps[0] && !slices.Equal(st.Last.Taps, states[0].Taps) || st.Last.Closed[0] != states[0].Closed[0] ||
+				st.intervals[0].Settled != s.steps[i].intervals[0].Settled ||
 				!slices.Equal(st.intervals[0].Devices, s.steps[i].intervals[0].Devices)) {
 				break
 			}
@@ -109,7 +112,8 @@ func (s *script) playQuiet(t testing.TB, w quieter, rnd *rand.Rand) (quiet int) 
 			continue
 		}
 		st := &s.steps[i]
-		q := &Quiet{Start: st.Start, Step: st.End - st.Start, First: rnd.IntN(vector.Lanes), Count: len(states), Devices: st.intervals[0].Devices, Solver: st.Solver}
+		q := &Quiet{Start: st.Start, Step: st.End - st.Start, First: rnd.IntN(vector.Lanes), Count: len(states), Devices: st.intervals[0].Devices, Solver: st.Solver,
+			Settling: !st.intervals[0].Settled}
 		q.State = lanesOf(states, q.First, cmplx.NaN())
 		if rnd.IntN(20) > 0 && slot != nil {
 			q.State.Slot = slot // the same array: the lists are kept

@@ -37,7 +37,7 @@ func (t *Totals) Quiet(q *Quiet) error {
 	}
 	ns := int64(q.Count) * q.Step
 	for _, d := range q.Devices {
-		if d.AtStop {
+		if d.AtStop && !q.Settling {
 			t.sums.StopHours += float64(ns) / float64(hour)
 		}
 		if d.Hunting {
@@ -65,6 +65,13 @@ func (b *totalsBlock) bound(s *Sums) {
 func (t *Totals) quiet(q *Quiet, month *peak) {
 	b, total := t.block, &t.stats.total
 	b.read(q)
+	if q.Settling {
+		e := b.energies(q)
+		total.energies.merge(&e)
+		total.steps += q.Count
+		total.settling += int64(q.Count) * q.Step
+		return
+	}
 	if b.seen != 0 {
 		for i, flag := range b.points.Flags {
 			if flag == 0 {

@@ -14,21 +14,10 @@ const gatherEvery = 4096
 
 // quiet takes a Quiet whose steps lie in one month.
 func (s *statistics) quiet(q *Quiet, month *bucket) {
-	if s.watch == nil {
-		s.watch = newWatch(s)
-	}
-	w := s.watch
-	if !w.fits(q.State) {
-		w.place(q.State)
-	}
-	if w.step != q.Step || w.calls >= gatherEvery {
-		w.gather()
-		w.step = q.Step
-	}
-	w.calls++
-	if w.stale || !slices.Equal(w.taps, q.State.Taps) {
-		w.taps = append(w.taps[:0], q.State.Taps...)
-		w.bound()
+	w := s.watching(q)
+	if q.Settling {
+		s.settling(q, month)
+		return
 	}
 	w.read(q)
 	w.distribute(q)
@@ -51,6 +40,60 @@ func (s *statistics) quiet(q *Quiet, month *bucket) {
 	w.lossPeaks(q)
 	w.loadings(q)
 	w.unbalances(q)
+}
+
+// watching has the watch ready for steps.
+func (s *statistics) watching(q *Quiet) *watch {
+	if s.watch == nil {
+		s.watch = newWatch(s)
+	}
+	w := s.watch
+	if !w.fits(q.State) {
+		w.place(q.State)
+	}
+	if w.step != q.Step || w.calls >= gatherEvery {
+		w.gather()
+		w.step = q.Step
+	}
+	w.calls++
+	if w.stale || !slices.Equal(w.taps, q.State.Taps) {
+		w.taps = append(w.taps[:0], q.State.Taps...)
+		w.bound()
+	}
+	return w
+}
+
+// settling takes steps of settling intervals: their energies, and how far and how long
+// places are outside meanwhile.
+func (s *statistics) settling(q *Quiet, month *bucket) {
+	w := s.watch
+	w.read(q)
+	energies := w.energies(q)
+	for _, b := range [...]*bucket{&s.total, month} {
+		b.steps += q.Count
+		b.settling += int64(q.Count) * q.Step
+		b.energies.merge(&energies)
+	}
+	for i := range s.points {
+		p := &s.points[i]
+		v := (*[vector.Lanes]float64)(w.pu[i*vector.Lanes:])
+		outside := int64(0)
+		for k := range q.Count {
+			x := v[q.lane(k)]
+			p.lowestSettling, p.highestSettling = min(p.lowestSettling, x), max(p.highestSettling, x)
+			if s.judge.outsideA(i, x, x) {
+				outside += q.Step
+			}
+		}
+		if outside == 0 {
+			continue
+		}
+		p.settlingOutside += outside
+		if s.judge.judged[i] {
+			s.total.settlingOutside += outside
+			month.settlingOutside += outside
+		}
+	}
 }
 
 // distribute enters the voltages into the percentiles.
