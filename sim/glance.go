@@ -170,7 +170,7 @@ func (g *glance) calm(k int, first bool, now int64, states []results.DeviceState
 		c := x.tap
 		if first {
 			states[x.device] = results.DeviceState{AtStop: c.sheet.AtStop(c.state), Reverse: back, Hunting: g.e.devices[x.device].hunting.Hunts(now)}
-		} else if states[x.device].Reverse != back {
+		} else if s := &states[x.device]; s.Reverse != back || s.OutOfBand { // the first lane may have been looked at by itself
 			return false
 		}
 		coarse[x.device*vector.Lanes+k] = g.size[j*vector.Lanes+k] / c.sheet.Ratio(c.state.Position)
