@@ -133,10 +133,9 @@ func (g *glance) refresh() {
 	}
 }
 
-// look looks at the block at hand.
-func (g *glance) look(coupling []float64) {
-	a := g.e.ahead
-	g.refresh()
+// rest takes over whether all devices rest. They do not change while quiet steps are
+// found, but may in the midst of a block, by a step of the event loop.
+func (g *glance) rest() {
 	g.rests = true
 	for _, x := range g.taps {
 		g.rests = g.rests && x.tap.state.Rests()
@@ -144,9 +143,16 @@ func (g *glance) look(coupling []float64) {
 	for _, x := range g.caps {
 		g.rests = g.rests && x.cap.sheet.Rests(x.cap.state)
 	}
-	if !g.rests {
+}
+
+// look looks at the block at hand, once.
+func (g *glance) look(coupling []float64) {
+	a := g.e.ahead
+	if g.number == a.number {
 		return
 	}
+	g.number = a.number
+	g.refresh()
 	v, _ := a.lanes.Voltages()
 	g.fromV.Set(g.phasors, v)
 	g.fromI.Add(g.phasors, coupling)

@@ -180,9 +180,15 @@ func (q *quiet) read(e *Engine, k int, now devices.Time, first bool) bool {
 		}
 		q.currents.Read(a.lanes.Block, a.arrived)
 		e.lap(&e.timing.Solving)
-		q.glance.look(q.currents.Coupling)
 	}
-	if g := q.glance; g.rests && g.rough>>k&1 == 0 {
+	g := q.glance
+	if first {
+		g.rest()
+	}
+	if g.rests {
+		g.look(q.currents.Coupling)
+	}
+	if g.rests && g.rough>>k&1 == 0 {
 		if !g.calm(k, first, now, q.states, q.coarse) {
 			return false
 		}
