@@ -23,8 +23,14 @@ import (
 // folderOf runs a study and returns its folder.
 func folderOf(t *testing.T, study fs.FS, o sim.Options) string {
 	t.Helper()
+	return folderOfCase(t, study, "", o)
+}
+
+// folderOfCase runs a case and returns its folder.
+func folderOfCase(t *testing.T, study fs.FS, caseName string, o sim.Options) string {
+	t.Helper()
 	dir := filepath.Join(t.TempDir(), "r")
-	e := prepare(t, study, "", o)
+	e := prepare(t, study, caseName, o)
 	w, err := results.Create(dir, e.Plan)
 	if err != nil {
 		t.Fatal(err)
