@@ -54,6 +54,17 @@ func wild(seed uint64) fstest.MapFS {
 	put("study.toml", fmt.Sprintf("title = \"wild\"\n[period]\nstart = %s\nend = %s\nstep = %q\nzone = %q\n[[profiles]]\nfiles = [\"profiles/a.csv\"]\nrepeat = \"day\"\ninterpolate = %s\nzone = \"UTC\"\n[[profiles]]\nfiles = [\"profiles/b.csv\"]\nrepeat = \"day\"\nzone = \"UTC\"\n[run]\nstart = %q\nvoltages = %s\nflows = [\"L1\", \"T2\", \"R1\"]\n%s[limits]\nrange = \"ANSI C84.1\"\njudge = %q\n",
 		when.start, when.end, when.step, when.zone, interpolate, pick("given", "settled"), pick(`"all"`, `"none"`, `["W.A"]`, `"auto"`), log, pick("customers", "all")))
 
+	// Logs and limits that ask for every step; with numbers of their own, so that the rest
+	// of a seed stays as it is.
+	own := rand.New(rand.NewPCG(seed, 5))
+	toml := string(f["study.toml"].Data)
+	if own.IntN(4) == 0 {
+		toml = strings.Replace(toml, "[limits]", "series = \"parquet\"\n[limits]", 1)
+	}
+	if own.IntN(8) == 0 {
+		toml += "allowance = \"2 V\"\n"
+	}
+	put("study.toml", toml)
 	for file, columns := range map[string][]string{"a": {"volts [pu]", "load [pu]", "sun [pu]", "works [kW]", "works [kvar]"}, "b": {"house [pu]", "heat [degC]", "odd [kW]"}} {
 		spacing, _ := time.ParseDuration(map[string]string{"10min": "10m", "1h": "1h", "5min": "5m"}[spaced])
 		if file == "b" {
