@@ -1,0 +1,258 @@
+package powerflow
+
+import (
+	"math"
+	"sort"
+
+	"yearflow/sim/network"
+	"yearflow/sim/powerflow/vector"
+)
+
+// place gives every unknown its value.
+func (l *Lanes) place() {
+	s := l.s
+	l.slot = make([]int32, len(s.Net.Unknowns))
+	l.blocks = newBlocks(s.pat)
+	l.rank = make([]int32, l.free)
+	next := int32(0)
+	for _, g := range l.blocks.levels() {
+		l.order = append(l.order, g)
+		for _, c := range l.blocks.groups[g].columns {
+			l.rank[c] = next
+			next++
+		}
+	}
+	l.all = l.free
+	for u, terms := range s.red.terms {
+		if !plainTerm(terms) {
+			l.slot[u] = int32(l.all)
+			l.all++
+		}
+	}
+	l.held = l.all + len(s.Net.Fixed)
+	l.weight = make([]float64, l.all)
+	for u, terms := range s.red.terms {
+		if plainTerm(terms) {
+			if c := terms[0].col; c >= 0 {
+				l.slot[u] = l.rank[s.pat.place[c]]
+			} else {
+				l.slot[u] = int32(l.all) + (-1 - c)
+				continue
+			}
+		}
+		l.weight[l.slot[u]] = s.perUnit[u] * s.perUnit[u]
+	}
+	l.found = l.held + len(s.Net.Fixed)
+	l.x = vector.Make(l.found + l.all)
+}
+
+// plainTerm tells whether an unknown is an independent or a fixed one.
+func plainTerm(t []term) bool { return len(t) == 1 && t[0].coef < 0 }
+
+// rows lists the sparse matrices of an iteration.
+func (l *Lanes) rows() {
+	s := l.s
+	fixedOf := map[int32][]fixedStamp{}
+	for _, st := range s.toFixed {
+		fixedOf[st.row] = append(fixedOf[st.row], st)
+	}
+	for row := range int32(l.free) {
+		st := fixedOf[row]
+		if len(st) == 0 {
+			continue
+		}
+		var src []int
+		for _, x := range st {
+			src = append(src, l.held+int(x.fixed))
+		}
+		l.pull.Row(int(l.rank[row]), src...)
+		l.pulls = append(l.pulls, st)
+	}
+	into := make([][]int, l.free)
+	coef := make([][]int32, l.free)
+	for u, terms := range s.red.terms {
+		if plainTerm(terms) {
+			continue
+		}
+		var src []int
+		for _, t := range terms {
+			from := l.held + int(-1-t.col)
+			if t.col >= 0 {
+				from = int(l.rank[s.pat.place[t.col]])
+				into[from] = append(into[from], int(l.slot[u]))
+				coef[from] = append(coef[from], t.coef)
+				from += l.found
+			}
+			src = append(src, from)
+			l.expands = append(l.expands, t.coef)
+		}
+		l.expand.Row(l.found+int(l.slot[u]), src...)
+	}
+	for row, src := range into {
+		if len(src) > 0 {
+			l.gather.Row(row, src...)
+			l.gathers = append(l.gathers, coef[row]...)
+		}
+	}
+	l.sweep()
+}
+
+// sweep lists the groups of the two substitutions, each with what it depends on.
+func (l *Lanes) sweep() {
+	b := l.blocks
+	type entry struct {
+		column int
+		w      [mostColumns]int32 // by row of the group
+	}
+	left := make([][]entry, len(b.groups)) // of each group
+	for i := range b.groups {
+		g := &b.groups[i]
+		for c, col := range g.columns {
+			for r, row := range g.rows {
+				to := b.of[row]
+				if n := len(left[to]); n == 0 || left[to][n-1].column != int(l.rank[col]) {
+					e := entry{column: int(l.rank[col])}
+					for k := range e.w {
+						e.w[k] = int32(len(b.w) - 1)
+					}
+					left[to] = append(left[to], e)
+				}
+				at := int32(0)
+				for k, x := range b.groups[to].columns {
+					if x == row {
+						at = int32(k)
+					}
+				}
+				left[to][len(left[to])-1].w[at] = int32(g.w + r*len(g.columns) + c)
+			}
+		}
+	}
+	for _, o := range l.order {
+		if len(left[o]) == 0 {
+			continue
+		}
+		columns := b.groups[o].columns
+		var src []int
+		for _, e := range left[o] {
+			src = append(src, e.column)
+			l.down = append(l.down, e.w[:len(columns)]...)
+		}
+		l.forward.Group(int(l.rank[columns[0]]), len(columns), src...)
+	}
+	l.downs, l.ups = make([][]int32, len(b.groups)), make([][2]int, len(b.groups))
+	owner := make([]int32, len(b.w))
+	for i := range b.groups {
+		g := &b.groups[i]
+		for k := range len(g.rows) * len(g.columns) {
+			owner[g.w+k] = int32(i)
+		}
+	}
+	for k, at := range l.down {
+		if int(at) < len(b.w)-1 {
+			l.downs[owner[at]] = append(l.downs[owner[at]], int32(k))
+		}
+	}
+	for i := len(l.order) - 1; i >= 0; i-- {
+		g := &b.groups[l.order[i]]
+		n := len(g.columns)
+		begin := len(l.up)
+		var src []int
+		for d, col := range g.columns {
+			src = append(src, int(l.rank[col]))
+			for c := range n {
+				l.up = append(l.up, int32(g.m+c*n+d))
+			}
+		}
+		for r, row := range g.rows {
+			src = append(src, l.found+int(l.rank[row]))
+			for c := range n {
+				l.up = append(l.up, int32(-1-(g.w+r*n+c)))
+			}
+		}
+		l.backward.Group(l.found+int(l.rank[g.columns[0]]), n, src...)
+		l.ups[l.order[i]] = [2]int{begin, len(l.up)}
+	}
+	l.forward.Coef, l.backward.Coef = make([]float64, 2*len(l.down)), make([]float64, 2*len(l.up))
+}
+
+// branches sorts the injections into lists.
+func (l *Lanes) branches() {
+	s := l.s
+	for i := range l.loads {
+		l.loads[i] = vector.NewLoads(i&1 == 1, i&2 == 2)
+	}
+	l.loads[firstWye], l.loads[firstZIP] = vector.NewFirstLoads(false), vector.NewFirstLoads(true)
+	begun := make([]bool, l.held)
+	l.list, l.member = make([]int8, len(s.Injections)), make([]int32, len(s.Injections))
+	l.listed = make([]int32, len(s.Injections))
+	for k := range l.listed {
+		l.listed[k] = int32(k)
+	}
+	// In the order of their values, which then pass through the cache in a row.
+	sort.SliceStable(l.listed, func(a, b int) bool {
+		return l.slot[s.Injections[l.listed[a]].From] < l.slot[s.Injections[l.listed[b]].From]
+	})
+	for _, k := range l.listed {
+		j := &s.Injections[k]
+		if j.Group != 0 {
+			l.list[k] = -1
+			continue
+		}
+		list, to := 0, 0
+		if j.To != network.Ground {
+			list, to = 1, int(l.slot[j.To])
+		}
+		zip := j.PC != 1 || j.QC != 1 || j.PI != 0 || j.QI != 0 || j.PZ != 0 || j.QZ != 0
+		if zip {
+			list += 2
+		}
+		if at := l.slot[j.From]; j.To == network.Ground && !begun[at] {
+			begun[at] = true
+			if list = firstWye; zip {
+				list = firstZIP
+			}
+		}
+		least := 0.0
+		if j.Bent() {
+			least = Corner * Corner * j.Nominal * j.Nominal
+		}
+		n := j.Nominal
+		l.list[k], l.member[k] = int8(list), int32(l.loads[list].Len())
+		l.loads[list].Branch(int(l.slot[j.From]), to, least, [6]float64{j.PC, j.PI / n, j.PZ / (n * n), j.QC, j.QI / n, j.QZ / (n * n)})
+	}
+	l.Block, l.asked = l.NewBlock(), l.newPowers()
+	for at := 0; at < l.held; at++ {
+		switch {
+		case begun[at]:
+		case at > 0 && !begun[at-1]:
+			l.blank[len(l.blank)-1][1] = (at + 1) * vector.Width
+		default:
+			l.blank = append(l.blank, [2]int{at * vector.Width, (at + 1) * vector.Width})
+		}
+	}
+}
+
+// tolerate finds how small a change must be for the mismatch at every node to be within
+// a tolerance of 1, whatever the instant.
+func (l *Lanes) tolerate(largest []float64) {
+	s := l.s
+	at := make([]float64, len(s.nodeSize))
+	for k := range s.Injections {
+		j := &s.Injections[k]
+		moved := sensitivity * largest[k]
+		if j.Group != 0 {
+			moved *= groupSteepness
+		}
+		for _, u := range j.ends() {
+			if node := s.Net.Unknowns[u].Node; node >= 0 {
+				at[node] += moved
+			}
+		}
+	}
+	l.least = math.Inf(1)
+	for node, moved := range at {
+		if moved > 0 {
+			l.least = min(l.least, max(1000, s.nodeSize[node])/moved)
+		}
+	}
+}
