@@ -3,6 +3,7 @@ package plots
 import (
 	"fmt"
 	"math"
+	"slices"
 	"sort"
 
 	"gonum.org/v1/plot/text"
@@ -113,34 +114,95 @@ func (n *panel) duration(values []float64, style draw.LineStyle) {
 	n.add(l)
 }
 
-// tagCurves writes which family is which, where the curves leave room.
-func (n *panel) tagCurves(curves []phaseVoltages) {
-	var lows, highs [][]float64
+// curveFamily is a group of duration curves that go by one name.
+type curveFamily struct {
+	name   string
+	sorted [][]float64 // values in falling order, no NaN
+}
+
+// at returns the lowest and the highest value that the family exceeds for a share of the
+// time.
+func (f curveFamily) at(share float64) (lo, hi float64) {
+	lo, hi = math.Inf(1), math.Inf(-1)
+	for _, v := range f.sorted {
+		x := v[int(math.Round(min(max(share, 0), 1)*float64(len(v)-1)))]
+		lo, hi = min(lo, x), max(hi, x)
+	}
+	return lo, hi
+}
+
+// families groups the curves: lowest and highest voltages, and those from line to line
+// apart where there are voltages to ground too. Two groups that run together are one.
+func families(curves []phaseVoltages) []curveFamily {
+	groups := []curveFamily{{name: "highest"}, {name: "lowest"}, {name: "line to line, highest"}, {name: "line to line, lowest"}}
 	for _, c := range curves {
-		lows, highs = append(lows, c.min), append(highs, c.max)
-	}
-	t := n.bold(labelSize, black)
-	_, top := extremes(lows...)
-	_, high := extremes(highs...)
-	if math.IsInf(top, 0) || math.IsInf(high, 0) {
-		return
-	}
-	at := func(series [][]float64) float64 { // the middle of the family
-		sum, k := 0.0, 0
-		for _, s := range series {
-			v := append([]float64(nil), s...)
-			sort.Float64s(v) // NaN first
-			for len(v) > 0 && math.IsNaN(v[0]) {
-				v = v[1:]
+		for k, series := range [][]float64{c.max, c.min} {
+			v := slices.DeleteFunc(slices.Clone(series), math.IsNaN)
+			if len(v) == 0 {
+				continue
 			}
-			if len(v) > 0 {
-				sum += v[len(v)/5] // exceeded for 80 % of the time
-				k++
+			sort.Sort(sort.Reverse(sort.Float64Slice(v)))
+			if isPair(c.phase) {
+				k += 2
+			}
+			groups[k].sorted = append(groups[k].sorted, v)
+		}
+	}
+	if len(groups[0].sorted) == 0 { // pairs alone need no name of their own
+		groups = groups[2:]
+		groups[0].name, groups[1].name = "highest", "lowest"
+	}
+	if n := len(groups) - 2; n == 2 && len(groups[2].sorted) > 0 && len(groups[3].sorted) > 0 {
+		_, hi := groups[2].at(0.5)
+		if lo, _ := groups[3].at(0.5); hi-lo < 0.006 {
+			groups[2] = curveFamily{"line to line", append(groups[2].sorted, groups[3].sorted...)}
+			groups = groups[:3]
+		}
+	}
+	return slices.DeleteFunc(groups, func(f curveFamily) bool { return len(f.sorted) == 0 })
+}
+
+// isPair tells a voltage from line to line.
+func isPair(phase string) bool { return phase == "AB" || phase == "BC" || phase == "CA" }
+
+// tagCurves writes which family is which: above or below it, where the other curves and
+// the frame leave most room.
+func (n *panel) tagCurves(curves []phaseVoltages) {
+	t := n.bold(labelSize, black)
+	groups := families(curves)
+	const clear = vg.Length(3)
+	for i, f := range groups {
+		half := float64(t.Width(f.name)/2+clear) / float64(n.width())
+		most, x, y, align := vg.Length(math.Inf(-1)), vg.Length(0), vg.Length(0), text.YBottom
+		for share := 0.12; share < 0.9; share += 0.02 {
+			if share-half < 0.01 || share+half > 0.99 {
+				continue
+			}
+			left, right := share-half, share+half // the curves fall: their highest is at the left
+			_, hi := f.at(left)
+			lo, _ := f.at(right)
+			above, below := n.rect.Max.Y-n.y(hi), n.y(lo)-n.rect.Min.Y
+			for k, g := range groups {
+				if k == i {
+					continue
+				}
+				glo, _ := g.at(right)
+				_, ghi := g.at(left)
+				if _, mid := g.at(share); mid > hi {
+					above = min(above, n.y(glo)-n.y(hi))
+				} else {
+					below = min(below, n.y(lo)-n.y(ghi))
+				}
+			}
+			if above > most {
+				most, x, y, align = above, n.x(100*share), n.y(hi)+clear, text.YBottom
+			}
+			if below > most {
+				most, x, y, align = below, n.x(100*share), n.y(lo)-clear, text.YTop
 			}
 		}
-		return sum / float64(max(k, 1))
+		if most > 0 {
+			n.haloed(t, x, y, text.XCenter, align, f.name)
+		}
 	}
-	x := n.x(80)
-	n.haloed(t, x, min(n.yIn(at(highs))+8, n.rect.Max.Y-14), text.XCenter, text.YBottom, "highest")
-	n.haloed(t, x, max(n.yIn(at(lows))-19, n.rect.Min.Y+2), text.XCenter, text.YBottom, "lowest")
 }

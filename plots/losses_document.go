@@ -125,6 +125,12 @@ func (l *lossesDocument) where() (Section, error) {
 	s := Section{Heading: "Where the losses are"}
 	if n > 0 {
 		s.Blocks = append(s.Blocks, Paragraph{Say(fmt.Sprintf("The first %d of %d rows of losses-by-element.csv make {} of all losses.", n, len(l.element.Rows)), l.element.Value(n-1, "share of it and those before [%]"))})
+	}
+	// The table goes first: its rows fill the page that the figure would leave empty.
+	t := l.element.Table(fmt.Sprintf("The %d elements that lose most", n), append([]string{"element", "kind", "rank", "energy [kWh]", "share [%]", "share of it and those before [%]"}, l.money(l.element)...), rows)
+	t.Note = Plain("A transformer has a row for its load losses and one for its no-load losses. All elements: losses-by-element.csv.")
+	s.Blocks = append(s.Blocks, t)
+	if n > 0 {
 		p, f := l.elementFigure(newStyle(200), rows)
 		b, err := l.picture(p, f)
 		if err != nil {
@@ -132,9 +138,6 @@ func (l *lossesDocument) where() (Section, error) {
 		}
 		s.Blocks = append(s.Blocks, b)
 	}
-	t := l.element.Table(fmt.Sprintf("The %d elements that lose most", n), append([]string{"element", "kind", "rank", "energy [kWh]", "share [%]", "share of it and those before [%]"}, l.money(l.element)...), rows)
-	t.Note = Plain("A transformer has a row for its load losses and one for its no-load losses. All elements: losses-by-element.csv.")
-	s.Blocks = append(s.Blocks, t)
 	return s, nil
 }
 
@@ -190,7 +193,6 @@ func (l *lossesDocument) marginalSection() (Section, error) {
 	if err != nil {
 		return s, err
 	}
-	s.Blocks = append(s.Blocks, figures...)
 	rows := make([]int, 0, 2*shownElements)
 	for i := range n {
 		if i < shownElements || i >= n-5 {
@@ -209,6 +211,7 @@ func (l *lossesDocument) marginalSection() (Section, error) {
 		}
 	}
 	s.Blocks = append(s.Blocks, l.marginal.Table(caption, losses, slices.Clip(rows), "phases"))
+	s.Blocks = append(s.Blocks, figures...)
 	if len(money) == 0 {
 		return s, nil
 	}

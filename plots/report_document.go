@@ -8,6 +8,7 @@ import (
 	"html/template"
 	"image/png"
 	"io"
+	"slices"
 	"strings"
 )
 
@@ -225,6 +226,12 @@ func (b blockView) Shape() string {
 		return "square"
 	}
 	return ""
+}
+
+// Placed tells whether a criterion of the table says where and when it is worst; a column
+// in which none does is left out.
+func (b blockView) Placed() bool {
+	return slices.ContainsFunc(b.Block.(Verdicts).Rows, func(v Verdict) bool { return v.Where.Show != "" })
 }
 
 // Cells joins the values of a row with their columns.

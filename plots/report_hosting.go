@@ -32,26 +32,20 @@ func HostingDocument(dir, runs string) (*Document, error) {
 	d := &Document{Kind: "Hosting capacity", Title: s.record.Title, Subtitle: s.period(), Demo: s.record.Demo, Case: "base"}
 	st := newStyle(200)
 	d.Lead = h.lead()
-	for _, draw := range []func(*style) (*page, Figure, error){h.placesFigure, func(st *style) (*page, Figure, error) { return h.mapFigure(st, runs) }} {
-		p, f, err := draw(st)
-		if err != nil {
-			return nil, err
-		}
-		if p == nil {
-			continue
-		}
-		b, err := h.picture(p, f)
-		if err != nil {
-			return nil, err
-		}
-		d.Lead = append(d.Lead, b)
+	bars, err := h.drawn(h.placesFigure(st))
+	if err != nil {
+		return nil, err
 	}
-	d.Lead = append(d.Lead, Disclaimer())
+	d.Lead = append(append(d.Lead, bars...), Disclaimer())
+	places, err := h.placesSection(st, runs)
+	if err != nil {
+		return nil, err
+	}
 	rollout, err := h.rolloutSection(st)
 	if err != nil {
 		return nil, err
 	}
-	d.Sections = append(d.Sections, h.placesSection(), rollout, h.triedSection())
+	d.Sections = append(d.Sections, places, rollout, h.triedSection())
 	if _, there := s.record.Files["cautions.csv"]; there {
 		var items []Text
 		for l, i := s.ledger("cautions.csv", 1), 0; i < len(l.Rows); i++ {
@@ -97,7 +91,16 @@ func (h *hostingDocument) lead() []Block {
 	return out
 }
 
-func (h *hostingDocument) placesSection() Section {
+// drawn makes a block of a figure, none where there is nothing to draw.
+func (h *hostingDocument) drawn(p *page, f Figure, err error) ([]Block, error) {
+	if err != nil || p == nil {
+		return nil, err
+	}
+	b, err := h.picture(p, f)
+	return []Block{b}, err
+}
+
+func (h *hostingDocument) placesSection(st *style, runs string) (Section, error) {
 	s := Section{Heading: "What each place takes"}
 	t := h.places.Table("The largest size kept and the smallest that breaks a criterion, by place", []string{"place", "distance", "keeps", "breaks at", "criterion", "value", "limit", "unit", "where"}, nil, "criterion", "unit", "where")
 	for i := range t.Rows {
@@ -109,8 +112,12 @@ func (h *hostingDocument) placesSection() Section {
 		limit := Rounded(h.criteria.Cell(i, "limit"), h.criteria.Cell(i, "unit"), SourceOf(h.criteria.File, "limit", h.criteria.Rows[i][0]), -1)
 		c.Rows = append(c.Rows, Fact{h.criteria.Cell(i, "criterion"), Say("at most {}: "+h.criteria.Cell(i, "source"), limit)})
 	}
-	s.Blocks = []Block{t, Heading("Criteria and limits"), c, Paragraph{Plain("Hours are those more than the base has. Voltage limits: " + h.said("limits") + ". Penetration is the rating of the new units alone, in kW.")}}
-	return s
+	where, err := h.drawn(h.mapFigure(st, runs))
+	if err != nil {
+		return s, err
+	}
+	s.Blocks = append([]Block{t, Heading("Criteria and limits"), c, Paragraph{Plain("Hours are those more than the base has. Voltage limits: " + h.said("limits") + ". Penetration is the rating of the new units alone, in kW.")}}, where...)
+	return s, nil
 }
 
 func (h *hostingDocument) rolloutSection(st *style) (Section, error) {

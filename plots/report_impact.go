@@ -127,9 +127,18 @@ func (c *impactDocument) lead() ([]Block, error) {
 		}
 		out = append(out, Finding{Bad: true, Text: Plain(fmt.Sprintf("%d of %s that have a limit fail with the units; %d of these pass in the base: %s%s.", failed, count(judged, "criterion", "criteria"), fresh, strings.Join(shown, "; "), more))})
 	}
+	if names := c.tried(); len(names) > 0 && failed > 0 {
+		out = append(out, Finding{Text: Plain("Of " + count(len(names), "remedy", "remedies") + " tried: " + lower(c.remedyFinding(names)) + " They are compared below.")})
+	}
+	notPassed := 0
 	for i := range c.screens.Rows {
 		if c.screens.Cell(i, "verdict") == "fail" {
-			out = append(out, Finding{Bad: true, Text: Say("Screen not passed, "+c.screens.Cell(i, "section")+": "+c.screens.Cell(i, "screen")+", {} of {} against a limit of {}.",
+			notPassed++
+		}
+	}
+	for i := range c.screens.Rows {
+		if c.screens.Cell(i, "verdict") == "fail" {
+			out = append(out, Finding{Bad: true, Text: Say(fmt.Sprintf("%d of %s not passed; the first, ", notPassed, count(len(c.screens.Rows), "screen", "screens"))+c.screens.Cell(i, "section")+": "+c.screens.Cell(i, "screen")+", {} of {} against a limit of {}.",
 				c.screens.Value(i, "with DER [%]"), c.screens.Value(i, "load"), c.screens.Value(i, "limit"))})
 			break
 		}
@@ -276,9 +285,6 @@ func (c *impactDocument) mitigationSection() (Section, error) {
 	}
 	t.Note = Plain("Mended: fails without the remedy and passes with it. Newly failed: the other way round. Counted are the criteria of mitigations.csv, in which the loss and return of other units than the case's are left out.")
 	s.Blocks = append(s.Blocks, what, t)
-	for _, x := range c.remedyTables() {
-		s.Blocks = append(s.Blocks, x)
-	}
 	if p, f := c.remedyFigure(newStyle(200)); p != nil {
 		b, err := c.picture(p, f)
 		if err != nil {
@@ -286,21 +292,29 @@ func (c *impactDocument) mitigationSection() (Section, error) {
 		}
 		s.Blocks = append(s.Blocks, b)
 	}
+	for _, x := range c.remedyTables() {
+		s.Blocks = append(s.Blocks, x)
+	}
 	return s, nil
 }
 
 // remedyColumns is how many remedies stand side by side in a printed table.
 const remedyColumns = 5
 
-// remedyTables hold the tried remedies side by side: the criteria that one of them changes,
-// with the value of each and who fails.
-func (c *impactDocument) remedyTables() (out []Table) {
-	var names []string
+// tried names the remedies that were run.
+func (c *impactDocument) tried() (names []string) {
 	for i := range c.list.Rows {
 		if c.list.Cell(i, "tried") == "yes" {
 			names = append(names, c.list.Cell(i, "mitigation"))
 		}
 	}
+	return names
+}
+
+// remedyTables hold the tried remedies side by side: the criteria that one of them changes,
+// with the value of each and who fails.
+func (c *impactDocument) remedyTables() (out []Table) {
+	names := c.tried()
 	if len(names) == 0 {
 		return nil
 	}
@@ -400,6 +414,14 @@ func (c *impactDocument) cautionSection() Section {
 		items = append(items, Plain(upper(c.cautions.Cell(i, "caution"))+"."))
 	}
 	return Section{Heading: "Cautions", Blocks: []Block{Caution{Title: "Of this report", Items: items}}}
+}
+
+// lower is a sentence that goes on after a colon.
+func lower(s string) string {
+	if s == "" {
+		return s
+	}
+	return strings.ToLower(s[:1]) + s[1:]
 }
 
 // upper begins a sentence with a capital.

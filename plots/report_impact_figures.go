@@ -94,12 +94,7 @@ func besideLimit(x, wide, limit vg.Length) vg.Length {
 
 // remedyFigure compares the remedies in what they are chosen by.
 func (c *impactDocument) remedyFigure(st *style) (*page, Figure) {
-	var names []string
-	for i := range c.list.Rows {
-		if c.list.Cell(i, "tried") == "yes" {
-			names = append(names, c.list.Cell(i, "mitigation"))
-		}
-	}
+	names := c.tried()
 	if len(names) == 0 {
 		return nil, Figure{}
 	}

@@ -122,8 +122,21 @@ func (t *tuneDocument) leadFindings() []Block {
 	}
 	if t.better() {
 		out = append(out, Paragraph{t.changes()})
+		if names := t.onBound(); len(names) > 0 {
+			out = append(out, Finding{Text: Plain("The best lies on a bound of " + joined(names) + ": a better one may lie beyond. Where the bounds are not those of the equipment or of the standard, widen them and search again."), Bad: true})
+		}
 	}
 	return out
+}
+
+// onBound names the settings whose best value is the first or the last that was allowed.
+func (t *tuneDocument) onBound() (names []string) {
+	for i := range t.sensitivity.Rows {
+		if t.sensitivity.Cell(i, "at bound") != "" {
+			names = append(names, joinSetting(t.sensitivity.Cell(i, "device"), t.sensitivity.Cell(i, "phase"), t.sensitivity.Cell(i, "setting"))+" ("+t.sensitivity.Cell(i, "at bound")+")")
+		}
+	}
+	return names
 }
 
 // brokenBy lists the limits that the base or the best breaks.

@@ -73,6 +73,22 @@ func TestTuneFindings(t *testing.T) {
 	}
 }
 
+// A best on a bound is told on the first page: the bandwidth's 2 is the lowest allowed.
+func TestTuneTellsOfBounds(t *testing.T) {
+	d := inventedSearch()
+	d.search.Rows = append(d.search.Rows, []string{"candidate-years", "5", "1"})
+	d.limits = ledgerOf("limits.csv", 1, "quantity,sense,value,unit,kept by the base,kept by the best")
+	var said string
+	for _, b := range d.leadFindings() {
+		if f, is := b.(Finding); is && f.Bad {
+			said += f.Text.String()
+		}
+	}
+	if want := "The best lies on a bound of R1 bandwidth (low): a better one may lie beyond."; !strings.HasPrefix(said, want) {
+		t.Errorf("got %q, want %q", said, want)
+	}
+}
+
 // Findings of searches that found little do not claim more.
 func TestTuneFindingsOfLittle(t *testing.T) {
 	d := inventedSearch()

@@ -1,6 +1,7 @@
 package plots
 
 import (
+	"fmt"
 	"math"
 	"strconv"
 
@@ -131,8 +132,9 @@ func (r *runReport) wrongSection() Section {
 	add(r.overloads()...)
 	add(r.picture("loading")...)
 	add(Heading("Devices"))
-	add(r.deviceTrouble()...)
 	add(r.picture("operations")...)
+	add(r.deviceTrouble()...)
+	add(r.reversed()...)
 	add(Heading("Unbalance"))
 	if h := r.sumNumber("hours with unbalance above 3 %"); h > 0 {
 		add(Finding{Bad: true, Text: Say("Unbalance stands above 3 % for {}; the highest is {} at {}, {}.", r.sum("hours with unbalance above 3 %"), r.sum("highest unbalance"), r.sum("highest unbalance place"), r.sum("highest unbalance time"))})
@@ -195,6 +197,35 @@ func (r *runReport) deviceTrouble() []Block {
 		return []Block{Paragraph{Plain("No device stands at the end of its range while it asks for more, and none hunts.")}}
 	}
 	return []Block{r.duty.Table("At a stop, or hunting", existing(r.duty, "device", "phase", "hours at a stop", "hunting", "lowest position", "highest position", "operations"), rows)}
+}
+
+// reversed says through which regulators power flows back, and what their controls make of
+// it: the usual one knows no direction, and turns against the voltage that it should hold
+// where the field's has a mode that the sheet does not tell.
+func (r *runReport) reversed() []Block {
+	rows := r.order(r.duty, func(i int) float64 { return zeroNaN(r.Duty[i].HoursReverse) }, len(r.duty.Rows))
+	if len(rows) == 0 {
+		return nil
+	}
+	units := "a regulator unit"
+	if len(rows) > 1 {
+		units = fmt.Sprintf("%d regulator units", len(rows))
+	}
+	text := Say("Power flows back through "+units+" at some time, the longest through "+placeOf(r.duty.Cell(rows[0], "device"), r.duty.Cell(rows[0], "phase"))+", for {}.", r.duty.Value(rows[0], "hours reverse"))
+	blind := 0
+	for _, i := range rows {
+		if r.settings != nil && r.settings.Cell(r.settings.Row(r.duty.Cell(i, "device"), r.duty.Cell(i, "phase"), "reverse mode"), "value") == "none" {
+			blind++
+		}
+	}
+	switch {
+	case blind == len(rows):
+		text = append(text, Word(" No control of these looks at the direction (reverse mode none)."))
+	case blind > 0:
+		text = append(text, Word(fmt.Sprintf(" The controls of %d of these do not look at the direction (reverse mode none).", blind)))
+	}
+	text = append(text, Word(" Hold the mode of the controls in the field against that of the sheets: a control that takes the side towards the source for the one to regulate runs to the end of its range."))
+	return []Block{Finding{Bad: true, Text: text}}
 }
 
 func zeroNaN(x float64) float64 {

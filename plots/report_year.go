@@ -124,14 +124,14 @@ func (r *runReport) yearSection() Section {
 			"customers", "customers ever outside A", "customers outside A for more than 1 h", "customers outside A for more than 5 % of the time",
 			"customer-hours below A", "customer-hours above A", "settling place-hours outside A", "highest unbalance", "hours with unbalance above 3 %", "highest negative sequence"))
 	add(r.picture("voltage-envelope", "voltage-duration")...)
-	add(Heading("Operations"),
-		r.quantities("Counts of the period", "operations", "tap operations", "tap raises", "tap lowers", "capacitor operations", "capacitor closings", "capacitor openings", "device-hours at a stop", "device-hours hunting"))
+	add(Heading("Operations"))
+	add(r.picture("taps")...)
+	add(r.quantities("Counts of the period", "operations", "tap operations", "tap raises", "tap lowers", "capacitor operations", "capacitor closings", "capacitor openings", "device-hours at a stop", "device-hours hunting"))
 	if len(r.duty.Rows) > 0 {
 		t := r.duty.Table("Operations of each device", existing(r.duty, "device", "phase", "operations", "raises", "lowers", "reversals", "busiest day", "operations that day", "lowest position", "highest position", "hours at a stop", "hours out of band", "hours reverse", "hunting"), nil, "busiest day")
 		t.Note = Plain("Start-up is not counted. Raises of a capacitor are closings.")
 		add(t)
 	}
-	add(r.picture("taps")...)
 	add(Heading("Loading"), r.quantities("The highest loading", "highest loading", "element phases above rating"))
 	if t, ok := r.months(); ok {
 		add(Heading("Month by month"), t)

@@ -10,7 +10,6 @@ import (
 
 	"yearflow/plots"
 	"yearflow/sim/feeder"
-	"yearflow/sim/results"
 	"yearflow/sim/study"
 )
 
@@ -104,7 +103,7 @@ func (c *console) tellHosting(h *study.Hosting, dir string, o *manyOptions) {
 	} else {
 		fmt.Fprintf(out, "\nRoll-out of %g kW a customer in %d random orders (seed %d):\n", r.PerCustomer, len(r.Deployments), r.Seed)
 		for _, l := range r.Levels {
-			fmt.Fprintf(out, "  %s kW: %s %% of the runs violate\n", results.FigureText(l.KW), results.FigureText(l.Share))
+			fmt.Fprintf(out, "  %6.0f kW: %5.1f %% of the runs violate\n", l.KW, l.Share)
 		}
 	}
 	fmt.Fprintf(out, "\nThe document: %s\n", filepath.Join(dir, "hosting.html"))
