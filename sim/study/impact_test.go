@@ -66,9 +66,9 @@ func impactOf(t *testing.T, p study.Place, name string, workers int) (*study.Imp
 }
 
 // A generator that delivers nothing changes nothing: the difference of every row of every
-// table is zero.
+// table is zero, and it is not the largest unit, whatever its rating.
 func TestImpactOfNothing(t *testing.T) {
-	p := shortDemo(t, map[string]string{"cases/nothing/generators.csv": "generator,node,phases,kind,rating [kVA],real [kW]\nnew,M12,ABC,other,500,0\n"})
+	p := shortDemo(t, map[string]string{"cases/nothing/generators.csv": "generator,node,phases,kind,rating [kVA],real [kW]\nnew,M12,ABC,other,5000,0\n"})
 	im, err := impactOf(t, p, "nothing", 2)
 	if err != nil {
 		t.Fatal(err)

@@ -72,13 +72,24 @@ func allUnits(m *feeder.Model) units {
 	return u
 }
 
-// largestUnit is the one of the highest rating in kVA; of equal ones the first.
+// mostOf is the apparent power in kVA that a generator can have: its rating, or less where
+// its real power is constant and no function moves its reactive power.
+func mostOf(g *feeder.Generator) float64 {
+	if feeder.Unknown(g.KW) || g.Function >= 0 || g.PF == 0 {
+		return g.KVA
+	}
+	return math.Min(g.KVA, math.Abs(g.KW/g.PF))
+}
+
+// largestUnit is the one that can have the highest apparent power; of equal ones the first.
+// A unit whose rating stands in the table but whose power is nothing is not it: its loss
+// would hide that of the one that matters.
 func largestUnit(m *feeder.Model) (u units, name string) {
 	u = newUnits()
 	most, battery := math.Inf(-1), false
 	for i := range m.Generators {
-		if g := &m.Generators[i]; g.KVA > most {
-			most, name = g.KVA, g.Name
+		if g := &m.Generators[i]; mostOf(g) > most {
+			most, name = mostOf(g), g.Name
 		}
 	}
 	for i := range m.Batteries {
