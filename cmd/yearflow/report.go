@@ -59,7 +59,11 @@ func (c *console) report(dir string) error {
 
 // reportRun draws beside the old figures and report and exchanges them when all are there.
 func (c *console) reportRun(dir string) error {
-	if _, err := results.ReadFolder(os.DirFS(dir)); err != nil {
+	_, err := results.ReadFolder(os.DirFS(dir))
+	if err == nil {
+		err = plots.Intact(os.DirFS(dir))
+	}
+	if err != nil {
 		var faults tables.Faults
 		if !errors.As(err, &faults) {
 			return inputError{fmt.Errorf("%s is no whole results folder: %w", dir, err)}

@@ -63,6 +63,7 @@ func TestReportOfDocuments(t *testing.T) {
 	documentStudy(t)
 	t.Run("again", reportAgain)
 	t.Run("half", reportOfHalf)
+	t.Run("half of a run", reportOfHalfRun)
 	t.Run("without the runs", reportWithoutRuns)
 }
 
@@ -134,6 +135,26 @@ func reportOfHalf(t *testing.T) {
 				}
 			})
 		}
+	}
+}
+
+// A table of a run that was changed, or is gone, is told, and nothing is drawn.
+func reportOfHalfRun(t *testing.T) {
+	table := filepath.Join("results", "base", "duty.csv")
+	for _, x := range []struct {
+		spoil func()
+		want  string
+	}{
+		{func() { write(t, table, strings.Replace(read(t, table), ",0,", ",1,", 1)) }, table + ": has changed"},
+		{func() { remove(t, table) }, table + ": is missing"},
+	} {
+		whole := read(t, table)
+		x.spoil()
+		before := tree(t, filepath.Join("results", "base"))
+		_, errs := must(t, exitInput, "report", filepath.Join("results", "base"))
+		contains(t, errs, x.want, "run the study again")
+		sameTree(t, "the refused folder", tree(t, filepath.Join("results", "base")), before)
+		write(t, table, whole)
 	}
 }
 
