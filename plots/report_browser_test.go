@@ -62,14 +62,16 @@ func browserFolder(t *testing.T) string {
 	return dir
 }
 
-// Every document opens without an error on the console, and nothing but a table's own
-// scrolling is wider than the window.
-func TestBrowserOpensEveryDocument(t *testing.T) {
+// Every document opens and prints.
+func TestBrowserTakesEveryDocument(t *testing.T) {
 	for name, page := range everyDocument(t) {
-		t.Run(name, func(t *testing.T) { opensInBrowser(t, name, page) })
+		t.Run(name+" opens", func(t *testing.T) { opensInBrowser(t, name, page) })
+		t.Run(name+" prints", func(t *testing.T) { printsFromBrowser(t, name, page) })
 	}
 }
 
+// opensInBrowser wants no error on the console, and nothing wider than the window but a
+// table, which scrolls by itself.
 func opensInBrowser(t *testing.T, name, page string) {
 	dir := browserFolder(t)
 	plain := writePage(t, dir, name+".html", page, "")
@@ -98,13 +100,8 @@ document.title = "asked"; document.body.textContent = d.join(" ");`
 	}
 }
 
-// On paper no page is empty, every page has its number, and those of a run name the case.
-func TestBrowserPrintsEveryDocument(t *testing.T) {
-	for name, page := range everyDocument(t) {
-		t.Run(name, func(t *testing.T) { printsFromBrowser(t, name, page) })
-	}
-}
-
+// printsFromBrowser wants no empty page, a number on every page, and the case on those of
+// a run.
 func printsFromBrowser(t *testing.T, document, page string) {
 	dir := browserFolder(t)
 	for name, size := range map[string]string{"a4": "A4", "letter": "Letter"} {
