@@ -108,11 +108,13 @@ func newInputs(st *feeder.Study, net *network.Network, cache string) (*inputs, e
 	in.months, in.monthOf = months(in.axis)
 	in.shared.begin(st, find, use, &faults)
 	in.meters = newMetering(st, in.axis, cache, &faults, &in.odd)
-	for i := range m.Loads {
+	// In the order of names: what several draw at a node is added up in the order of the
+	// injections, and that of the rows must not reach the last digit.
+	for _, i := range byName(len(m.Loads), func(i int) string { return m.Loads[i].Name }) {
 		in.load(i, &m.Loads[i], net, find, use, &faults, st.Settings.ScaleLoad)
 	}
 	sky := newSky(st, in.axis, &faults, &in.odd)
-	for i := range m.Generators {
+	for _, i := range byName(len(m.Generators), func(i int) string { return m.Generators[i].Name }) {
 		in.sunlit = nil
 		if m.Generators[i].Solar != nil && sky != nil {
 			in.sunlit = sky.series(&m.Generators[i], &faults)
@@ -186,6 +188,16 @@ func branches(net *network.Network, node int, c feeder.Connection, phases []feed
 	for _, p := range phases {
 		out = append(out, powerflow.Injection{From: at[p], To: network.Ground, Nominal: net.Unknowns[at[p]].Nominal})
 	}
+	return out
+}
+
+// byName returns the positions of n rows in the order of their names.
+func byName(n int, name func(int) string) []int {
+	out := make([]int, n)
+	for i := range out {
+		out[i] = i
+	}
+	sort.SliceStable(out, func(a, b int) bool { return name(out[a]) < name(out[b]) })
 	return out
 }
 
