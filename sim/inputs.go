@@ -114,7 +114,7 @@ func newInputs(st *feeder.Study, net *network.Network, cache string) (*inputs, e
 		in.load(i, &m.Loads[i], net, find, use, &faults, st.Settings.ScaleLoad)
 	}
 	sky := newSky(st, in.axis, &faults, &in.odd)
-	for _, i := range byName(len(m.Generators), func(i int) string { return m.Generators[i].Name }) {
+	for i := range m.Generators {
 		in.sunlit = nil
 		if m.Generators[i].Solar != nil && sky != nil {
 			in.sunlit = sky.series(&m.Generators[i], &faults)
