@@ -6,7 +6,7 @@ import (
 )
 
 func plainScale(power, values *float64, index *int32, share *float64, n int) {
-	r := reader{index, share}
+	r := reader{index: index, coef: share}
 	for k := range n {
 		re := (*[Lanes]float64)(unsafe.Add(unsafe.Pointer(values), int(r.next())))
 		im := (*[Lanes]float64)(unsafe.Add(unsafe.Pointer(values), int(r.next())))

@@ -3,7 +3,7 @@ package vector
 import "math"
 
 func plainGroups(dst, src *float64, index *int32, coef *float64, groups int, add bool) {
-	r := reader{index, coef}
+	r := reader{index: index, coef: coef}
 	for range groups {
 		d, rows, n := r.next(), r.next(), r.next()
 		// re = rr − ii, im = ri + ir

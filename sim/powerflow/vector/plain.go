@@ -12,20 +12,23 @@ func value(p *float64, offset int32) *[Width]float64 {
 	return (*[Width]float64)(unsafe.Add(unsafe.Pointer(p), int(offset)))
 }
 
+// reader reads what a kernel reads in a row. It counts: a pointer must not be moved past the
+// end of what it points into, which the last number would do.
 type reader struct {
-	index *int32
-	coef  *float64
+	index           *int32
+	coef            *float64
+	indices, coeffs int
 }
 
 func (r *reader) next() int32 {
-	x := *r.index
-	r.index = (*int32)(unsafe.Add(unsafe.Pointer(r.index), 4))
+	x := *(*int32)(unsafe.Add(unsafe.Pointer(r.index), 4*r.indices))
+	r.indices++
 	return x
 }
 
 func (r *reader) number() float64 {
-	x := *r.coef
-	r.coef = (*float64)(unsafe.Add(unsafe.Pointer(r.coef), 8))
+	x := *(*float64)(unsafe.Add(unsafe.Pointer(r.coef), 8*r.coeffs))
+	r.coeffs++
 	return x
 }
 
@@ -36,7 +39,7 @@ const (
 )
 
 func plainRows(dst, src *float64, index *int32, coef *float64, rows, kind int) {
-	r := reader{index, coef}
+	r := reader{index: index, coef: coef}
 	for range rows {
 		d := value(dst, r.next())
 		n := r.next()
@@ -63,7 +66,7 @@ func plainRows(dst, src *float64, index *int32, coef *float64, rows, kind int) {
 }
 
 func plainDraw(into, v, power *float64, index *int32, shape *float64, n int, pair, zip, begins bool) (below uint64) {
-	r := reader{index, shape}
+	r := reader{index: index, coef: shape}
 	var ground [Width]float64
 	for k := range n {
 		from, to := r.next(), int32(0)

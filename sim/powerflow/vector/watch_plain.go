@@ -37,7 +37,7 @@ func plainLengths(out, v *float64, index *int32, rows *float64, flags, left *uin
 	for l := range Lanes {
 		low[l], high[l] = math.Inf(1), math.Inf(-1)
 	}
-	r := reader{index, nil}
+	r := reader{index: index, coef: nil}
 	for k := range n {
 		row := (*LengthRow)(unsafe.Add(unsafe.Pointer(rows), k*int(unsafe.Sizeof(LengthRow{}))))
 		a, to := value(v, r.next()), r.next()
@@ -79,7 +79,7 @@ func plainDots(out, v, i *float64, index *int32, rows, limits *float64, flags, o
 	m := (*[Lanes]uint64)(unsafe.Pointer(mask))
 	alive := live(m)
 	sum := numbers(total, 0)
-	r := reader{index, limits}
+	r := reader{index: index, coef: limits}
 	for k := range n {
 		row := (*DotRow)(unsafe.Add(unsafe.Pointer(rows), k*int(unsafe.Sizeof(DotRow{}))))
 		var x [Lanes]float64
@@ -108,7 +108,7 @@ func plainDots(out, v, i *float64, index *int32, rows, limits *float64, flags, o
 
 func plainSquares(x *float64, index *int32, high *float64, flags *uint8, mask *uint64, n int) (found uint64) {
 	alive := live((*[Lanes]uint64)(unsafe.Pointer(mask)))
-	r := reader{index, high}
+	r := reader{index: index, coef: high}
 	for k := range n {
 		a, b, bound := value(x, r.next()), value(x, r.next()), r.number()
 		flag := uint8(0)
@@ -128,7 +128,7 @@ func plainSquares(x *float64, index *int32, high *float64, flags *uint8, mask *u
 
 func plainBanks(v, i *float64, index *int32, high *float64, flags *uint8, mask *uint64, n int) (found uint64) {
 	alive := live((*[Lanes]uint64)(unsafe.Pointer(mask)))
-	r := reader{index, high}
+	r := reader{index: index, coef: high}
 	for k := range n {
 		var re, im [Lanes]float64
 		for range r.next() {
@@ -168,7 +168,7 @@ func below(a, b float64) float64 {
 func plainTriples(out, v *float64, index *int32, constants, far, ratio *float64, n int) {
 	c := (*[3]float64)(unsafe.Pointer(constants))
 	f, q := numbers(far, 0), numbers(ratio, 0)
-	r := reader{index, nil}
+	r := reader{index: index, coef: nil}
 	for k := range n {
 		a, b, d := value(v, r.next()), value(v, r.next()), value(v, r.next())
 		o := value(out, int32(k*Stride))
