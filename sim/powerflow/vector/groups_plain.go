@@ -2,10 +2,14 @@ package vector
 
 import "math"
 
-func plainGroups(dst, src *float64, index *int32, coef *float64, groups int, add bool) {
-	r := reader{index: index, coef: coef}
+func plainGroups(dst, src *float64, index *int32, coef, lanes *float64, groups int, add bool) {
+	r, own := reader{index: index, coef: coef}, int32(0)
 	for range groups {
 		d, rows, n := r.next(), r.next(), r.next()
+		each := rows > GroupRows
+		if each {
+			rows -= GroupRows
+		}
 		// re = rr − ii, im = ri + ir
 		var rr, ii, ri, ir [GroupRows][Lanes]float64
 		for k := range rows {
@@ -18,8 +22,18 @@ func plainGroups(dst, src *float64, index *int32, coef *float64, groups int, add
 		for range n {
 			s := value(src, r.next())
 			for k := range rows {
-				cr, ci := r.number(), r.number()
+				var c [Width]float64
+				if each {
+					c = *value(lanes, own)
+					own += Stride
+				} else {
+					cr, ci := r.number(), r.number()
+					for l := range Lanes {
+						c[l], c[Lanes+l] = cr, ci
+					}
+				}
 				for l := range Lanes {
+					cr, ci := c[l], c[Lanes+l]
 					rr[k][l] = math.FMA(cr, s[l], rr[k][l])
 					ii[k][l] = math.FMA(ci, s[Lanes+l], ii[k][l])
 					ri[k][l] = math.FMA(cr, s[Lanes+l], ri[k][l])

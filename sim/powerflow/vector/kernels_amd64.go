@@ -113,25 +113,25 @@ func predict(v, curve, when *float64, n int) {
 	}
 }
 
-func groupsSet(dst, src *float64, index *int32, coef *float64, groups int) {
+func groupsSet(dst, src *float64, index *int32, coef, lanes *float64, groups int) {
 	switch kernel {
 	case 2:
-		groupsSet512(dst, src, index, coef, groups)
+		groupsSet512(dst, src, index, coef, lanes, groups)
 	case 1:
-		groupsSet256(dst, src, index, coef, groups)
+		groupsSet256(dst, src, index, coef, lanes, groups)
 	default:
-		plainGroups(dst, src, index, coef, groups, false)
+		plainGroups(dst, src, index, coef, lanes, groups, false)
 	}
 }
 
-func groupsAdd(dst, src *float64, index *int32, coef *float64, groups int) {
+func groupsAdd(dst, src *float64, index *int32, coef, lanes *float64, groups int) {
 	switch kernel {
 	case 2:
-		groupsAdd512(dst, src, index, coef, groups)
+		groupsAdd512(dst, src, index, coef, lanes, groups)
 	case 1:
-		groupsAdd256(dst, src, index, coef, groups)
+		groupsAdd256(dst, src, index, coef, lanes, groups)
 	default:
-		plainGroups(dst, src, index, coef, groups, true)
+		plainGroups(dst, src, index, coef, lanes, groups, true)
 	}
 }
 
@@ -153,4 +153,15 @@ func drawWyeZIPFirst(into, v, power *float64, index *int32, shape *float64, n in
 		return drawWyeZIPFirst256(into, v, power, index, shape, n)
 	}
 	return plainDraw(into, v, power, index, shape, n, false, true, true)
+}
+
+func products(x *float64, index *int32, rows int) {
+	switch kernel {
+	case 2:
+		products512(x, index, rows)
+	case 1:
+		products256(x, index, rows)
+	default:
+		plainProducts(x, index, rows)
+	}
 }

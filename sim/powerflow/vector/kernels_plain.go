@@ -39,12 +39,12 @@ func scale(power, values *float64, index *int32, share *float64, n int) {
 
 func predict(v, curve, when *float64, n int) { plainPredict(v, curve, when, n) }
 
-func groupsSet(dst, src *float64, index *int32, coef *float64, groups int) {
-	plainGroups(dst, src, index, coef, groups, false)
+func groupsSet(dst, src *float64, index *int32, coef, lanes *float64, groups int) {
+	plainGroups(dst, src, index, coef, lanes, groups, false)
 }
 
-func groupsAdd(dst, src *float64, index *int32, coef *float64, groups int) {
-	plainGroups(dst, src, index, coef, groups, true)
+func groupsAdd(dst, src *float64, index *int32, coef, lanes *float64, groups int) {
+	plainGroups(dst, src, index, coef, lanes, groups, true)
 }
 
 func drawWyeFirst(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
@@ -54,3 +54,5 @@ func drawWyeFirst(into, v, power *float64, index *int32, shape *float64, n int) 
 func drawWyeZIPFirst(into, v, power *float64, index *int32, shape *float64, n int) uint64 {
 	return plainDraw(into, v, power, index, shape, n, false, true, true)
 }
+
+func products(x *float64, index *int32, rows int) { plainProducts(x, index, rows) }

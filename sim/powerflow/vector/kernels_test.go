@@ -160,22 +160,30 @@ func twins(random func() *rand.Rand, wild bool) (out []twin) {
 				for range rng.IntN(7) {
 					src = append(src, rng.IntN(n))
 				}
-				g.Group(i, rows, src...)
+				if rng.IntN(2) == 0 {
+					g.Group(i, rows, src...)
+				} else {
+					g.LaneGroup(i, rows, src...)
+				}
 				i += rows
 			}
 			for range 2 * g.coefs {
 				g.Coef = append(g.Coef, rng.NormFloat64())
 			}
-			d, s, i, c := &x[0], &y[0], &g.index[0], &g.Coef[0]
-			f := [][2]func(dst, src *float64, index *int32, coef *float64, groups int){
+			_, g.LaneCoef = fence(g.laneCoefs, rng)
+			if wild {
+				odd(g.LaneCoef, rng)
+			}
+			d, s, i, c, o := &x[0], &y[0], &g.index[0], first(g.Coef), first(g.LaneCoef)
+			f := [][2]func(dst, src *float64, index *int32, coef, lanes *float64, groups int){
 				{nil, nil},
 				{groupsSet256, groupsAdd256},
 				{groupsSet512, groupsAdd512},
 			}[k][kind]
 			if f == nil {
-				plainGroups(d, s, i, c, g.groups, kind == 1)
+				plainGroups(d, s, i, c, o, g.groups, kind == 1)
 			} else {
-				f(d, s, i, c, g.groups)
+				f(d, s, i, c, o, g.groups)
 			}
 			return [][]float64{whole, from}
 		}})
@@ -206,6 +214,24 @@ func twins(random func() *rand.Rand, wild bool) (out []twin) {
 		}
 		f := []func(v, curve, when *float64, n int){plainPredict, predict256, predict512}[k]
 		f(&v[0], &curve[0], &when[0], n)
+		return [][]float64{whole}
+	}})
+	out = append(out, twin{"products", func(t *testing.T, k int) [][]float64 {
+		rng := random()
+		whole, x := fence(n, rng)
+		if wild {
+			odd(x, rng)
+		}
+		var p Products
+		for range n {
+			var pairs [][2]int
+			for range rng.IntN(5) {
+				pairs = append(pairs, [2]int{rng.IntN(n), rng.IntN(n)})
+			}
+			p.Row(Kind(rng.IntN(8)), rng.IntN(n), rng.IntN(n+1)-1, pairs...)
+		}
+		f := []func(x *float64, index *int32, rows int){plainProducts, products256, products512}[k]
+		f(&x[0], &p.index[0], p.rows)
 		return [][]float64{whole}
 	}})
 	return append(out, twin{"advance", func(t *testing.T, k int) [][]float64 {

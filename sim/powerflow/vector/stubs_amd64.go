@@ -62,12 +62,17 @@ func predict256(v *float64, curve *float64, when *float64, n int)
 // groupsSet256 is the kernel of Groups.Set.
 //
 //go:noescape
-func groupsSet256(dst *float64, src *float64, index *int32, coef *float64, groups int)
+func groupsSet256(dst *float64, src *float64, index *int32, coef *float64, lanes *float64, groups int)
 
 // groupsAdd256 is the kernel of Groups.Add.
 //
 //go:noescape
-func groupsAdd256(dst *float64, src *float64, index *int32, coef *float64, groups int)
+func groupsAdd256(dst *float64, src *float64, index *int32, coef *float64, lanes *float64, groups int)
+
+// products256 is the kernel of Products.
+//
+//go:noescape
+func products256(x *float64, index *int32, rows int)
 
 // rowsSet512 is the kernel of Rows.Set.
 //
@@ -127,9 +132,14 @@ func predict512(v *float64, curve *float64, when *float64, n int)
 // groupsSet512 is the kernel of Groups.Set.
 //
 //go:noescape
-func groupsSet512(dst *float64, src *float64, index *int32, coef *float64, groups int)
+func groupsSet512(dst *float64, src *float64, index *int32, coef *float64, lanes *float64, groups int)
 
 // groupsAdd512 is the kernel of Groups.Add.
 //
 //go:noescape
-func groupsAdd512(dst *float64, src *float64, index *int32, coef *float64, groups int)
+func groupsAdd512(dst *float64, src *float64, index *int32, coef *float64, lanes *float64, groups int)
+
+// products512 is the kernel of Products.
+//
+//go:noescape
+func products512(x *float64, index *int32, rows int)

@@ -11,15 +11,16 @@ import (
 )
 
 // groups is rows for one, two or three targets in a row that have the same sources: each
-// source is loaded once. Registers suffice for one part of a component after another.
+// source is loaded once. Registers suffice for one part of a component after another. From
+// four on the number of rows is three too large and each lane has its own coefficients.
 func (m machine) groups(kind string) {
 	name := "groups" + kind + m.name
-	TEXT(name, NOSPLIT, "func(dst, src *float64, index *int32, coef *float64, groups int)")
+	TEXT(name, NOSPLIT, "func(dst, src *float64, index *int32, coef, lanes *float64, groups int)")
 	Pragma("noescape")
 	Doc(name + " is the kernel of Groups." + kind + ".")
 	dst, src := Load(Param("dst"), GP64()), Load(Param("src"), GP64())
 	index, coef := Load(Param("index"), GP64()), Load(Param("coef"), GP64())
-	groups := Load(Param("groups"), GP64())
+	own, groups := Load(Param("lanes"), GP64()), Load(Param("groups"), GP64())
 	d, n, r := GP64(), GP64(), GP64()
 	at, c, left, s := GP64(), GP64(), GP64(), GP64()
 	xr, xi, cr, ci := m.vec(), m.vec(), m.vec(), m.vec()
@@ -38,11 +39,21 @@ func (m machine) groups(kind string) {
 	CMPQ(r, U8(2))
 	JLT(LabelRef("rows1"))
 	JEQ(LabelRef("rows2"))
-	for t := 3; t >= 1; t-- {
-		Label(fmt.Sprintf("rows%d", t))
+	CMPQ(r, U8(4))
+	JLT(LabelRef("rows3"))
+	JEQ(LabelRef("rows4"))
+	CMPQ(r, U8(5))
+	JEQ(LabelRef("rows5"))
+	JMP(LabelRef("rows6"))
+	for code := 6; code >= 1; code-- {
+		t, from, wide := code, coef, 16
+		if code > 3 {
+			t, from, wide = code-3, own, stride
+		}
+		Label(fmt.Sprintf("rows%d", code))
 		for p := range m.parts() {
 			MOVQ(index, at)
-			MOVQ(coef, c)
+			MOVQ(from, c)
 			MOVQ(n, left)
 			for k := range t {
 				a := acc[k]
@@ -56,7 +67,7 @@ func (m machine) groups(kind string) {
 					zero(a[2])
 				}
 			}
-			loop := fmt.Sprintf("columns%d_%d", t, p)
+			loop := fmt.Sprintf("columns%d_%d", code, p)
 			Label(loop)
 			MOVLQSX(Mem{Base: at}, s)
 			ADDQ(U8(4), at)
@@ -64,14 +75,20 @@ func (m machine) groups(kind string) {
 			VMOVUPD(m.im(src, s, p), xi)
 			for k := range t {
 				a := acc[k]
-				VBROADCASTSD(Mem{Base: c, Disp: 16 * k}, cr)
-				VBROADCASTSD(Mem{Base: c, Disp: 16*k + 8}, ci)
+				if code > 3 {
+					at := Mem{Base: c, Disp: stride*k + p*m.bytes}
+					VMOVUPD(at, cr)
+					VMOVUPD(at.Offset(8*lanes), ci)
+				} else {
+					VBROADCASTSD(Mem{Base: c, Disp: 16 * k}, cr)
+					VBROADCASTSD(Mem{Base: c, Disp: 16*k + 8}, ci)
+				}
 				VFMADD231PD(xr, cr, a[0])
 				VFMADD231PD(xi, ci, a[1])
 				VFMADD231PD(xi, cr, a[2])
 				VFMADD231PD(xr, ci, a[3])
 			}
-			ADDQ(U8(16*t), c)
+			ADDQ(U32(wide*t), c)
 			DECQ(left)
 			JNZ(LabelRef(loop))
 			for k := range t {
@@ -83,8 +100,8 @@ func (m machine) groups(kind string) {
 			}
 		}
 		MOVQ(at, index)
-		MOVQ(c, coef)
-		if t > 1 {
+		MOVQ(c, from)
+		if code > 1 {
 			JMP(LabelRef("next"))
 		}
 	}
