@@ -39,14 +39,17 @@ type Lanes struct {
 	found     int     // first of the voltages in x
 	weight    []float64
 
-	pull, gather, expand vector.Rows
-	forward, backward    vector.Groups
-	pulls                [][]fixedStamp
-	gathers, expands     []int32 // coefficients
-	blocks               *blocks
-	down, up             []int32   // places in W; in M, and below zero −1 − place in W
-	downs                [][]int32 // by group of columns: places in down of its W
-	ups                  [][2]int  // by group of columns: its part of up
+	pull, gather, expand       vector.Rows
+	pullBy, gatherBy, expandBy vector.Groups // the same in lanes of their own positions
+	forward, backward          vector.Groups
+	states                     *states // of lanes of their own positions
+	pulls                      [][]fixedStamp
+	gathers, expands           []int32 // coefficients
+	blocks                     *blocks
+	down, up                   []int32   // places in W; in M, and below zero −1 − place in W
+	downs                      [][]int32 // by group of columns: places in down of its W
+	ups                        [][2]int  // by group of columns: its part of up
+	downBy, upBy               []laneCoef
 
 	loads  [lists]*vector.Loads
 	asked  *powers
@@ -56,6 +59,13 @@ type Lanes struct {
 	member []int32  // by injection: its place in the list
 
 	least float64 // change that keeps every node's mismatch, where loads are at their largest
+}
+
+// laneCoef is a coefficient that differs from lane to lane: its number, and its place as in
+// down and up.
+type laneCoef struct {
+	coef  int
+	place int32
 }
 
 // Block is the voltages that lanes found: who takes it out of a Lanes, by Exchange, can
@@ -100,6 +110,10 @@ func NewLanes(s *Solver, largest []float64) *Lanes {
 // refresh takes over the coefficients of the solver's device state.
 func (l *Lanes) refresh() {
 	s := l.s
+	if l.states != nil {
+		l.states.ready()
+		return
+	}
 	if l.version == s.version {
 		return
 	}
@@ -126,18 +140,24 @@ func (l *Lanes) refresh() {
 			continue
 		}
 		b.update(i, s.pat, s.f)
-		for _, k := range l.downs[i] {
-			z := b.w[l.down[k]]
-			l.forward.Coef[2*k], l.forward.Coef[2*k+1] = -real(z), -imag(z)
-		}
-		for k := l.ups[i][0]; k < l.ups[i][1]; k++ {
-			at := l.up[k]
-			if at >= 0 {
-				l.backward.Coef[2*k], l.backward.Coef[2*k+1] = real(b.m[at]), imag(b.m[at])
-			} else {
-				z := b.w[-1-at]
-				l.backward.Coef[2*k], l.backward.Coef[2*k+1] = -real(z), -imag(z)
-			}
+		l.take(i)
+	}
+}
+
+// take puts W and M of a group where the substitutions read them.
+func (l *Lanes) take(group int) {
+	b := l.blocks
+	for _, k := range l.downs[group] {
+		z := b.w[l.down[k]]
+		l.forward.Coef[2*k], l.forward.Coef[2*k+1] = -real(z), -imag(z)
+	}
+	for k := l.ups[group][0]; k < l.ups[group][1]; k++ {
+		at := l.up[k]
+		if at >= 0 {
+			l.backward.Coef[2*k], l.backward.Coef[2*k+1] = real(b.m[at]), imag(b.m[at])
+		} else {
+			z := b.w[-1-at]
+			l.backward.Coef[2*k], l.backward.Coef[2*k+1] = -real(z), -imag(z)
 		}
 	}
 }
@@ -193,7 +213,10 @@ func (l *Lanes) Start(mask uint8, start []complex128, in *Input) {
 // Solve iterates the lanes of a mask and returns those that arrived. The others, and
 // those at which some load stands below the corner, are the solver's.
 func (l *Lanes) Solve(mask uint8, tol Tolerance) (arrived uint8) {
-	if l.s.singular >= 0 {
+	switch {
+	case l.states != nil:
+		mask &^= l.states.bad
+	case l.s.singular >= 0:
 		return 0
 	}
 	l.refresh()
@@ -250,10 +273,13 @@ func (l *Lanes) Hold(mask uint8) (arrived uint8) {
 func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) {
 	below = l.draw(l.x, l.Block, l.asked, mask)
 	l.pull.Add(l.x, l.x)
+	l.pullBy.Add(l.x, l.x)
 	l.gather.Add(l.x, l.x)
+	l.gatherBy.Add(l.x, l.x)
 	l.forward.Add(l.x, l.x)
 	l.backward.Set(l.x, l.x)
 	l.expand.Set(l.x, l.x)
+	l.expandBy.Set(l.x, l.x)
 	vector.Advance(l.v, l.x[l.found*vector.Width:], l.weight, mask&^below, moved)
 	return below
 }

@@ -2,6 +2,7 @@ package powerflow
 
 import (
 	"math"
+	"slices"
 	"sort"
 
 	"yearflow/sim/network"
@@ -65,7 +66,7 @@ func (l *Lanes) rows() {
 		for _, x := range st {
 			src = append(src, l.held+int(x.fixed))
 		}
-		l.pull.Row(int(l.rank[row]), src...)
+		l.row(&l.pull, &l.pullBy, int(l.rank[row]), src)
 		l.pulls = append(l.pulls, st)
 	}
 	into := make([][]int, l.free)
@@ -86,15 +87,24 @@ func (l *Lanes) rows() {
 			src = append(src, from)
 			l.expands = append(l.expands, t.coef)
 		}
-		l.expand.Row(l.found+int(l.slot[u]), src...)
+		l.row(&l.expand, &l.expandBy, l.found+int(l.slot[u]), src)
 	}
 	for row, src := range into {
 		if len(src) > 0 {
-			l.gather.Row(row, src...)
+			l.row(&l.gather, &l.gatherBy, row, src)
 			l.gathers = append(l.gathers, coef[row]...)
 		}
 	}
 	l.sweep()
+}
+
+// row appends a row, in lanes of their own positions to the groups.
+func (l *Lanes) row(rows *vector.Rows, by *vector.Groups, target int, src []int) {
+	if l.states != nil && len(src) > 0 {
+		by.LaneGroup(target, 1, src...)
+		return
+	}
+	rows.Row(target, src...)
 }
 
 // sweep lists the groups of the two substitutions, each with what it depends on.
@@ -127,19 +137,6 @@ func (l *Lanes) sweep() {
 			}
 		}
 	}
-	for _, o := range l.order {
-		if len(left[o]) == 0 {
-			continue
-		}
-		columns := b.groups[o].columns
-		var src []int
-		for _, e := range left[o] {
-			src = append(src, e.column)
-			l.down = append(l.down, e.w[:len(columns)]...)
-		}
-		l.forward.Group(int(l.rank[columns[0]]), len(columns), src...)
-	}
-	l.downs, l.ups = make([][]int32, len(b.groups)), make([][2]int, len(b.groups))
 	owner := make([]int32, len(b.w))
 	for i := range b.groups {
 		g := &b.groups[i]
@@ -147,6 +144,27 @@ func (l *Lanes) sweep() {
 			owner[g.w+k] = int32(i)
 		}
 	}
+	for _, o := range l.order {
+		if len(left[o]) == 0 {
+			continue
+		}
+		columns := b.groups[o].columns
+		var src []int
+		var down []int32
+		differs := false
+		for _, e := range left[o] {
+			src = append(src, e.column)
+			down = append(down, e.w[:len(columns)]...)
+			differs = differs || l.states.differs(b, owner[slices.Min(e.w[:len(columns)])])
+		}
+		if differs {
+			l.downBy = appendLane(l.downBy, l.forward.LaneGroup(int(l.rank[columns[0]]), len(columns), src...), down)
+			continue
+		}
+		l.down = append(l.down, down...)
+		l.forward.Group(int(l.rank[columns[0]]), len(columns), src...)
+	}
+	l.downs, l.ups = make([][]int32, len(b.groups)), make([][2]int, len(b.groups))
 	for k, at := range l.down {
 		if int(at) < len(b.w)-1 {
 			l.downs[owner[at]] = append(l.downs[owner[at]], int32(k))
@@ -155,24 +173,37 @@ func (l *Lanes) sweep() {
 	for i := len(l.order) - 1; i >= 0; i-- {
 		g := &b.groups[l.order[i]]
 		n := len(g.columns)
-		begin := len(l.up)
 		var src []int
+		var up []int32
 		for d, col := range g.columns {
 			src = append(src, int(l.rank[col]))
 			for c := range n {
-				l.up = append(l.up, int32(g.m+c*n+d))
+				up = append(up, int32(g.m+c*n+d))
 			}
 		}
 		for r, row := range g.rows {
 			src = append(src, l.found+int(l.rank[row]))
 			for c := range n {
-				l.up = append(l.up, int32(-1-(g.w+r*n+c)))
+				up = append(up, int32(-1-(g.w+r*n+c)))
 			}
 		}
+		if l.states.differs(b, l.order[i]) {
+			l.upBy = appendLane(l.upBy, l.backward.LaneGroup(l.found+int(l.rank[g.columns[0]]), n, src...), up)
+			continue
+		}
+		l.ups[l.order[i]] = [2]int{len(l.up), len(l.up) + len(up)}
+		l.up = append(l.up, up...)
 		l.backward.Group(l.found+int(l.rank[g.columns[0]]), n, src...)
-		l.ups[l.order[i]] = [2]int{begin, len(l.up)}
 	}
 	l.forward.Coef, l.backward.Coef = make([]float64, 2*len(l.down)), make([]float64, 2*len(l.up))
+}
+
+// appendLane appends the places of coefficients from first on.
+func appendLane(to []laneCoef, first int, places []int32) []laneCoef {
+	for i, p := range places {
+		to = append(to, laneCoef{first + i, p})
+	}
+	return to
 }
 
 // branches sorts the injections into lists.

@@ -3,6 +3,7 @@ package powerflow
 import (
 	"fmt"
 	"math"
+	"slices"
 	"strings"
 
 	"yearflow/sim/network"
@@ -248,6 +249,18 @@ func (r *reduction) update(ratio []float64) int {
 		}
 	}
 	return -1
+}
+
+// clone returns a reduction that is updated by itself.
+func (r *reduction) clone() reduction {
+	out := *r
+	out.coef = slices.Clone(r.coef)
+	out.clusters = slices.Clone(r.clusters)
+	for k := range out.clusters {
+		c := &out.clusters[k]
+		c.inverse, c.cp, c.cf = slices.Clone(c.inverse), slices.Clone(c.cp), slices.Clone(c.cf)
+	}
+	return out
 }
 
 // value returns the coefficient of a term.
