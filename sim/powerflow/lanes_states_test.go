@@ -124,3 +124,45 @@ func TestPositionedLanesDoNotAllocate(t *testing.T) {
 		t.Errorf("%g allocations a solution", got)
 	}
 }
+
+// BenchmarkPositionedLanes is the factor of eight lanes that have all moved, and a block
+// with the iterations besides.
+func BenchmarkPositionedLanes(b *testing.B) {
+	s, in := demoSolver(b)
+	lanes := powerflow.NewPositionedLanes(s, largest(in.Power))
+	ratio, closed := make([]float64, len(s.Net.Couplings)), make([]bool, len(s.Net.Model.Capacitors))
+	at := 0
+	move := func() {
+		at++
+		for lane := range vector.Lanes {
+			for k, c := range s.Net.Couplings {
+				ratio[k] = 1
+				if c.Unit >= 0 {
+					ratio[k] += 0.00625 * float64((at+k*lane)%9)
+				}
+			}
+			lanes.Position(lane, ratio, closed)
+			lanes.Input(lane, in)
+		}
+	}
+	move()
+	b.Run("position", func(b *testing.B) {
+		for b.Loop() {
+			move()
+		}
+	})
+	b.Run("factor", func(b *testing.B) {
+		for b.Loop() {
+			lanes.Refactor()
+		}
+	})
+	b.Run("solve", func(b *testing.B) {
+		for b.Loop() {
+			lanes.Start(vector.All, nil, in)
+			if lanes.Solve(vector.All, powerflow.Contract) != vector.All {
+				b.Fatal("no solution")
+			}
+		}
+		b.ReportMetric(float64(lanes.Iterations[0]), "iterations")
+	})
+}
