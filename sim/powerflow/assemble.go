@@ -63,6 +63,17 @@ func (s *Solver) plan() {
 // changed. The error says that the network has no unique solution; Solve then finds
 // none, and where.
 func (s *Solver) SetDevices(ratio []float64, closed []bool) error {
+	if err := s.place(ratio, closed); err != nil {
+		return err
+	}
+	return s.ready()
+}
+
+// Place takes them as SetDevices does, and factors when a solution is asked for: who finds
+// it elsewhere, such as in positioned Lanes, need not wait for that.
+func (s *Solver) Place(ratio []float64, closed []bool) { _ = s.place(ratio, closed) }
+
+func (s *Solver) place(ratio []float64, closed []bool) error {
 	same := s.singular < 0
 	for i, r := range ratio {
 		same = same && s.ratio[i] == r
@@ -75,7 +86,7 @@ func (s *Solver) SetDevices(ratio []float64, closed []bool) error {
 	}
 	copy(s.ratio, ratio)
 	copy(s.closed, closed)
-	return s.refactor()
+	return s.moved()
 }
 
 // DeviceState numbers the device states that SetDevices has been given; two numbers
@@ -87,16 +98,30 @@ func (s *Solver) assemble() error {
 	for _, st := range s.still {
 		s.base[st.slot] += s.Net.Elements[st.element].Y[st.entry]
 	}
-	return s.refactor()
+	if err := s.moved(); err != nil {
+		return err
+	}
+	return s.ready()
 }
 
-func (s *Solver) refactor() error {
+// moved takes a new device state over, up to the factor.
+func (s *Solver) moved() error {
 	s.version++
 	s.noLoadValid = false
 	if k := s.red.update(s.ratio); k >= 0 {
 		s.singular = s.red.clusters[k].dep[0]
 		return fmt.Errorf("the taps of the regulators make the network's equations singular at %s: look at regulators in a loop", s.Net.Unknowns[s.singular].Name)
 	}
+	s.singular, s.late = -1, true
+	return nil
+}
+
+// ready factors, where devices have moved since that was done.
+func (s *Solver) ready() error {
+	if !s.late {
+		return nil
+	}
+	s.late = false
 	u := s.update
 	for _, slot := range u.moving {
 		s.next[slot] = s.base[slot]
@@ -121,7 +146,6 @@ func (s *Solver) refactor() error {
 		s.singular = s.unknownAt(row)
 		return fmt.Errorf("the network's equations are singular at %s: some part of the feeder has nothing to hold its voltage, or a capacitor resonates with a line", s.Net.Unknowns[s.singular].Name)
 	}
-	s.singular = -1
 	return nil
 }
 

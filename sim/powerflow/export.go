@@ -30,6 +30,7 @@ type Reduced struct {
 // owns the result. It costs as much as an assembly and allocates: once a device state,
 // not once an instant.
 func (s *Solver) Reduced(in *Input) *Reduced {
+	_ = s.ready()
 	s.setPull(in)
 	n, order := s.red.free, s.Order()
 	r := &Reduced{N: n, Pull: make([]complex128, n), Terms: make([][]Term, len(s.red.terms))}

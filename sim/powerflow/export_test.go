@@ -3,7 +3,10 @@ package powerflow
 // Refactor assembles and factors the whole matrix for the devices at hand.
 func (s *Solver) Refactor() error {
 	s.update.valid = false
-	return s.refactor()
+	if err := s.moved(); err != nil {
+		return err
+	}
+	return s.ready()
 }
 
 // Factor factors the matrix that was assembled last.

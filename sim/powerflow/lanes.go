@@ -194,9 +194,7 @@ func (l *Lanes) Input(lane int, in *Input) {
 // of their device state at the inputs in where start is nil.
 func (l *Lanes) Start(mask uint8, start []complex128, in *Input) {
 	if start == nil {
-		l.s.setPull(in)
-		l.s.ensureNoLoad(in)
-		start = l.s.noLoad
+		start = l.s.unloaded(in)
 	}
 	for u, at := range l.slot {
 		if int(at) >= l.all {
@@ -216,7 +214,7 @@ func (l *Lanes) Solve(mask uint8, tol Tolerance) (arrived uint8) {
 	switch {
 	case l.states != nil:
 		mask &^= l.states.bad
-	case l.s.singular >= 0:
+	case l.s.ready() != nil || l.s.singular >= 0:
 		return 0
 	}
 	l.refresh()

@@ -44,9 +44,7 @@ func (l *Lanes) StartAt(c *Curve) { vector.Predict(l.v, c.coef, &[vector.Lanes]f
 // no-load voltages of their device state at the inputs in where start is nil.
 func (l *Lanes) StartAll(start []complex128, in *Input) {
 	if start == nil {
-		l.s.setPull(in)
-		l.s.ensureNoLoad(in)
-		start = l.s.noLoad
+		start = l.s.unloaded(in)
 	}
 	for u, at := range l.slot {
 		if int(at) < l.all {

@@ -52,10 +52,13 @@ func (a *powers) drive(values []float64) {
 
 // of is the real power, W at 1 p.u., that an injection is asked for in a lane: of one in
 // a group what the group is given.
-func (a *powers) of(injection, lane int) float64 {
+func (a *powers) of(injection, lane int) float64 { return real(a.complex(injection, lane)) }
+
+// complex is the same with the reactive power, VA.
+func (a *powers) complex(injection, lane int) complex128 {
 	list := a.l.list[injection]
 	if list < 0 {
-		return real(a.given[int(a.l.s.Injections[injection].Group-1)*vector.Lanes+lane])
+		return a.given[int(a.l.s.Injections[injection].Group-1)*vector.Lanes+lane]
 	}
-	return real(vector.At(a.power[list], int(a.l.member[injection]), lane))
+	return vector.At(a.power[list], int(a.l.member[injection]), lane)
 }

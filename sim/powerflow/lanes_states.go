@@ -49,7 +49,7 @@ type movingEntry struct {
 // devices, which Position sets; before that they are those of the solver. It returns nil
 // where the equations are singular there.
 func NewPositionedLanes(s *Solver, largest []float64) *Lanes {
-	if s.singular >= 0 {
+	if s.ready() != nil || s.singular >= 0 {
 		return nil
 	}
 	l := &Lanes{s: s, version: -1, free: s.red.free, states: &states{s: s}}

@@ -4,12 +4,20 @@ import (
 	"math"
 	"math/cmplx"
 	"math/rand/v2"
+	"slices"
 	"testing"
 
 	"yearflow/sim/network"
 	"yearflow/sim/powerflow"
 	"yearflow/sim/powerflow/vector"
 )
+
+// reading is what a Sense reads.
+type reading struct{ flow, own, source []complex128 }
+
+func newReading(n *network.Network) reading {
+	return reading{make([]complex128, n.Offsets[len(n.Elements)]), make([]complex128, len(n.Couplings)), make([]complex128, len(n.Fixed))}
+}
 
 // Every lane of 300 seeded feeders, radial and meshed, each lane with its own positions of
 // the devices, equals the solution of the solver at these positions and inputs; one lane
@@ -29,6 +37,7 @@ func TestPositionedLanesEqualTheSolver(t *testing.T) {
 		r := rand.New(rand.NewPCG(seed, 10))
 		lanes, alone := powerflow.NewPositionedLanes(s, largest(power)), powerflow.NewPositionedLanes(s, largest(power))
 		want, got, one := s.NewSolution(), s.NewSolution(), s.NewSolution()
+		sense := s.NewLaneSense([]int{})
 		var in [vector.Lanes]powerflow.Input
 		var ratio [vector.Lanes][]float64
 		var closed [vector.Lanes][]bool
@@ -64,6 +73,10 @@ func TestPositionedLanesEqualTheSolver(t *testing.T) {
 					t.Fatal("a lane does not stand where it was put")
 				}
 				lanes.Take(lane, got)
+				sensed := newReading(n)
+				if !sense.Read(sensed.flow, sensed.own, sensed.source, lanes, lane) {
+					t.Fatal("the equations are regular")
+				}
 				alone.Position(5, ratio[lane], closed[lane])
 				alone.Input(5, &in[lane])
 				alone.Start(1<<5, start.V, &in[0])
@@ -78,6 +91,11 @@ func TestPositionedLanesEqualTheSolver(t *testing.T) {
 				}
 				if err := s.SetDevices(ratio[lane], closed[lane]); err != nil {
 					t.Fatal(err)
+				}
+				read := newReading(n)
+				s.NewSense([]int{}).Read(read.flow, read.own, read.source, &in[lane], got.V)
+				if !slices.Equal(read.own, sensed.own) || !slices.Equal(read.source, sensed.source) {
+					t.Fatalf("seed %d, lane %d: currents of couplings %v and sources %v, as of the solver %v and %v", seed, lane, sensed.own, sensed.source, read.own, read.source)
 				}
 				if !s.Solve(&in[lane], nil, powerflow.Reference, want) {
 					t.Fatalf("seed %d, lane %d: a solution where the solver finds none", seed, lane)

@@ -51,14 +51,14 @@ func (s *Solver) Couplings(own, source []complex128, in *Input, v, flow []comple
 			rest[u] += flow[off+p]
 		}
 	}
-	s.couple(own, source, rest)
+	s.couple(own, source, rest, s.red, s.ratio)
 }
 
 // couple finds the currents of couplings and fixed voltages from what dependent and fixed
 // unknowns still have to receive, rest, which it changes.
-func (s *Solver) couple(own, source, rest []complex128) {
-	for k := range s.red.clusters {
-		c := &s.red.clusters[k]
+func (s *Solver) couple(own, source, rest []complex128, red *reduction, ratio []float64) {
+	for k := range red.clusters {
+		c := &red.clusters[k]
 		m := len(c.dep)
 		for i, kk := range c.couplings {
 			var sum complex128
@@ -72,7 +72,7 @@ func (s *Solver) couple(own, source, rest []complex128) {
 	for kk := range s.Net.Couplings {
 		cp := &s.Net.Couplings[kk]
 		for t, u := range cp.Terminals {
-			rest[u] += complex(cp.Base[t]+cp.Inverse[t]/s.ratio[kk], 0) * own[kk]
+			rest[u] += complex(cp.Base[t]+cp.Inverse[t]/ratio[kk], 0) * own[kk]
 		}
 	}
 	for f, x := range s.Net.Fixed {
@@ -136,25 +136,31 @@ func (s *Solver) NewSense(flows []int) *Sense {
 // Couplings does.
 func (x *Sense) Read(flow, own, source []complex128, in *Input, v []complex128) {
 	s := x.s
+	x.read(flow, own, source, in.Power, v, s.red, s.ratio, s.closed)
+}
+
+// read is Read at positions of the devices.
+func (x *Sense) read(flow, own, source, power, v []complex128, red *reduction, ratio []float64, closed []bool) {
+	s := x.s
 	for _, u := range x.unknowns {
 		x.rest[u] = 0
 	}
 	for _, k := range x.injections {
 		j := &s.Injections[k]
-		i := j.current(in.Power[k], j.across(v))
+		i := j.current(power[k], j.across(v))
 		x.rest[j.From] += i
 		if j.To != network.Ground {
 			x.rest[j.To] -= i
 		}
 	}
 	for _, e := range x.elements {
-		s.flowsOf(int(e), flow, v, s.closed)
+		s.flowsOf(int(e), flow, v, closed)
 		off := s.Net.Offsets[e]
 		for p, u := range s.Net.Elements[e].Terminals {
 			x.rest[u] += flow[off+p]
 		}
 	}
-	s.couple(own, source, x.rest)
+	s.couple(own, source, x.rest, red, ratio)
 }
 
 // DrawnBy is what an injection that stands alone draws, VA, where it is asked for power.

@@ -91,6 +91,7 @@ type Solver struct {
 	noLoadSource []complex128
 	version      int       // counts the device states that were factored
 	singular     int32     // unknown at which the equations of the devices' state are singular; −1: they are not
+	late         bool      // the factor is not yet that of the devices' state
 	perUnit      []float64 // 1/V by unknown
 	newton       *newton
 }
@@ -164,9 +165,15 @@ func New(n *network.Network, injections []Injection, groups ...Group) (*Solver, 
 
 // NoLoad sets dst to the voltages without any injection.
 func (s *Solver) NoLoad(dst []complex128, in *Input) {
+	copy(dst, s.unloaded(in))
+}
+
+// unloaded are the voltages without any injection.
+func (s *Solver) unloaded(in *Input) []complex128 {
+	_ = s.ready() // where it is singular they mean nothing
 	s.setPull(in)
 	s.ensureNoLoad(in)
-	copy(dst, s.noLoad)
+	return s.noLoad
 }
 
 func (s *Solver) ensureNoLoad(in *Input) {
@@ -255,6 +262,7 @@ func (s *Solver) currents(inject, v []complex128, in *Input) {
 // SolveBy solves by one method alone, from the no-load voltages: for tests and for
 // the engineer who doubts the other.
 func (s *Solver) SolveBy(p Path, in *Input, tol Tolerance, out *Solution) bool {
+	_ = s.ready()
 	s.setPull(in)
 	s.ensureNoLoad(in)
 	out.Iterations = 0
@@ -312,6 +320,7 @@ const maxFixedPoint = 80
 // out says which and how.
 func (s *Solver) Solve(in *Input, start []complex128, tol Tolerance, out *Solution) bool {
 	out.Iterations = 0
+	_ = s.ready() // singular says it
 	if s.singular < 0 {
 		s.setPull(in)
 		s.ensureNoLoad(in)
