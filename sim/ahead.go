@@ -99,6 +99,9 @@ func (a *ahead) begin() {
 // solveAhead takes the step at hand from its lane, after solving lanes where it must. It
 // reports whether there was a solution to take: without one the step is the solver's.
 func (e *Engine) solveAhead() bool {
+	if e.foresight != nil {
+		return e.solveForeseen()
+	}
 	a := e.ahead
 	if e.step < a.first || e.step >= a.end || a.state != e.flow.DeviceState() {
 		e.solveLanes()

@@ -12,15 +12,9 @@ import (
 // everything that is measured from them. It reports whether there is a solution.
 func (e *Engine) solve(tol powerflow.Tolerance) (bool, error) {
 	e.lap(&e.timing.Controls)
-	for k := range e.net.Couplings {
-		c := &e.net.Couplings[k]
-		e.ratio[k] = 1
-		if c.Unit >= 0 {
-			e.ratio[k] = e.tapRatio(c.Index, e.state.Taps[e.unitAt[c.Index]+c.Unit])
-		}
-	}
+	e.ratios(e.state.Taps, e.ratio)
 	// Positions at which the equations are singular have no solution: Solve says where.
-	_ = e.flow.SetDevices(e.ratio, e.state.Closed)
+	e.flow.Place(e.ratio, e.state.Closed)
 	e.lap(&e.timing.Assembling)
 	ok := e.speculate && tol == powerflow.Contract && e.solveAhead()
 	if !ok {
@@ -96,6 +90,17 @@ func (e *Engine) sources() {
 	clear(e.state.Source)
 	for f, x := range e.net.Fixed {
 		e.state.Source[x.Source][x.Phase] = e.source[f]
+	}
+}
+
+// ratios sets ratio to that of every coupling at the positions of the regulators' units.
+func (e *Engine) ratios(taps []int, ratio []float64) {
+	for k := range e.net.Couplings {
+		c := &e.net.Couplings[k]
+		ratio[k] = 1
+		if c.Unit >= 0 {
+			ratio[k] = e.tapRatio(c.Index, taps[e.unitAt[c.Index]+c.Unit])
+		}
 	}
 }
 

@@ -70,9 +70,11 @@ type Engine struct {
 	relay     *relay // nil: a recorder looks at the engine itself, and is called by it
 	// sense, where it is not nil, reads what controls look at; the relay reads the rest.
 	sense     *powerflow.Sense
-	stepwise  string // why there is no ahead
-	speculate bool   // a run is going through its steps in order
-	step      int    // whose inputs are at hand
+	stepwise  string       // why there is no ahead
+	speculate bool         // a run is going through its steps in order
+	step      int          // whose inputs are at hand
+	now       devices.Time // of the solution that is asked for
+	foresight *foresight   // nil: the lanes of ahead have one device state
 
 	steady bool  // lags are left out: at start-up, and of a single instant
 	unitAt []int // by Model.Regulators: position of its first unit in State.Taps
@@ -202,6 +204,7 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 	if st.Settings.Limits.Allowance != 0 {
 		e.Plan.LoadPeak = e.peaks(len(m.Loads))
 	}
+	e.prepareForesight()
 	e.Reset()
 	e.Warnings = append(e.Warnings, e.oddMeasured(e.meterPoints())...)
 	tables.Faults(e.Warnings).Sort()
@@ -415,16 +418,19 @@ func (e *Engine) Reset() {
 }
 
 // takePositions copies where the controls stand into the state.
-func (e *Engine) takePositions() {
+func (e *Engine) takePositions() { e.standAt(e.state.Taps, e.state.Closed) }
+
+// standAt moves taps and closed to where the controls stand.
+func (e *Engine) standAt(taps []int, closed []bool) {
 	for _, d := range e.devices {
 		if d.Kind == results.CapacitorDevice {
-			e.state.Closed[d.Index] = d.Position() == 1
+			closed[d.Index] = d.Position() == 1
 			continue
 		}
 		// The units of a ganged bank keep their distance from the watched one.
-		move := d.Position() - e.state.Taps[e.unitAt[d.Index]+d.Unit]
+		move := d.Position() - taps[e.unitAt[d.Index]+d.Unit]
 		for _, u := range d.Units {
-			e.state.Taps[u] += move
+			taps[u] += move
 		}
 	}
 }

@@ -59,6 +59,9 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 	r.coarse = newCoarse(e)
 	if e.ahead != nil {
 		e.ahead.begin()
+		if e.foresight != nil {
+			e.foresight.begin()
+		}
 		e.speculate = true
 		defer func() { e.speculate = false }()
 	}
@@ -256,7 +259,7 @@ func (e *Engine) nearEdge() bool {
 // exact. Batteries that follow a flow are moved until they rest, at the inputs as they
 // are; one that swings is taken as it is after dispatchRounds.
 func (e *Engine) solveExact(now devices.Time) (bool, error) {
-	e.exact = false
+	e.exact, e.now = false, now
 	e.setPlants(now)
 	for round := 0; ; round++ {
 		ok, err := e.solve(powerflow.Contract)

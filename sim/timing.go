@@ -22,6 +22,7 @@ type Timing struct {
 	Beside                                             bool
 
 	Blocks                 int // of steps solved at once
+	Scouts                 int // of steps solved roughly, for a forecast of what devices will do
 	LanesSolved, LanesUsed int // instants solved in blocks, and those taken from there
 	Iterations, Solutions  int // of the solutions taken
 	Edges                  int // instants solved again for a measurement near an edge
@@ -73,7 +74,7 @@ func (e *Engine) countLane(lane int) {
 // speed is what run.json says of the paths that the steps took.
 func (e *Engine) speed() results.Speed {
 	t := e.Timing()
-	s := results.Speed{Blocks: t.Blocks, LanesSolved: t.LanesSolved, LanesUsed: t.LanesUsed, Iterations: t.Iterations, Solutions: t.Solutions,
+	s := results.Speed{Blocks: t.Blocks, Scouts: t.Scouts, LanesSolved: t.LanesSolved, LanesUsed: t.LanesUsed, Iterations: t.Iterations, Solutions: t.Solutions,
 		Edges: t.Edges, QuietSteps: t.QuietSteps, StepByStep: map[string]int{}}
 	if e.stepwise != "" {
 		s.StepByStep[e.stepwise] = e.Steps()

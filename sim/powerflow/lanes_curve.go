@@ -56,3 +56,10 @@ func (l *Lanes) StartAll(start []complex128, in *Input) {
 
 // Slot is where an unknown's voltage stands among the values of a block.
 func (l *Lanes) Slot(u int32) int { return int(l.slot[u]) }
+
+// StartLanes starts lane k from the voltages of lane from[k] of the block at hand or, from
+// vector.Lanes on, of lane from[k]−vector.Lanes of the block of other lanes of the solver.
+func (l *Lanes) StartLanes(other *Lanes, from *[vector.Lanes]uint64) {
+	n := l.all * vector.Width
+	vector.Pick(l.v[:n], other.v[:n], from)
+}

@@ -313,11 +313,6 @@ func (l *Lanes) Position(lane int, ratio []float64, closed []bool) {
 	}
 }
 
-// Positioned tells whether the devices of a lane stand so.
-func (l *Lanes) Positioned(lane int, ratio []float64, closed []bool) bool {
-	return same(l.states.ratio[lane], ratio) && same(l.states.closed[lane], closed)
-}
-
 func same[T comparable](a, b []T) bool {
 	if len(a) != len(b) {
 		return false

@@ -167,7 +167,9 @@ type Outcome struct {
 type Speed struct {
 	// Blocks of steps were solved at once; of the steps in them LanesUsed were taken, the
 	// others were solved for nothing, since a device moved before or they did not arrive.
-	Blocks      int `json:"blocks"`
+	Blocks int `json:"blocks"`
+	// Scouts are blocks of steps solved roughly, to forecast what devices will do.
+	Scouts      int `json:"scouting_blocks"`
 	LanesSolved int `json:"lanes_solved"`
 	LanesUsed   int `json:"lanes_used"`
 	// Iterations and Solutions are those that were taken.

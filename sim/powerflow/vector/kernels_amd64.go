@@ -165,3 +165,11 @@ func products(x *float64, index *int32, rows int) {
 		plainProducts(x, index, rows)
 	}
 }
+
+func pick(a, b *float64, from *uint64, n int) {
+	if kernel == 2 {
+		pick512(a, b, from, n)
+		return
+	}
+	plainPick(a, b, from, n)
+}

@@ -3217,3 +3217,26 @@ store0:
 	JNZ     row
 	VZEROUPPER
 	RET
+
+// func pick512(a *float64, b *float64, from *uint64, n int)
+// Requires: AVX, AVX512F
+TEXT ·pick512(SB), NOSPLIT, $0-32
+	MOVQ    a+0(FP), AX
+	MOVQ    b+8(FP), CX
+	MOVQ    from+16(FP), DX
+	MOVQ    n+24(FP), BX
+	VMOVUPD (DX), Z0
+
+value:
+	VMOVUPD   (AX), Z1
+	VMOVUPD   64(AX), Z2
+	VPERMT2PD (CX), Z0, Z1
+	VPERMT2PD 64(CX), Z0, Z2
+	VMOVUPD   Z1, (AX)
+	VMOVUPD   Z2, 64(AX)
+	ADDQ      $0x00000080, AX
+	ADDQ      $0x00000080, CX
+	DECQ      BX
+	JNZ       value
+	VZEROUPPER
+	RET

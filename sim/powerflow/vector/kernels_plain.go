@@ -56,3 +56,5 @@ func drawWyeZIPFirst(into, v, power *float64, index *int32, shape *float64, n in
 }
 
 func products(x *float64, index *int32, rows int) { plainProducts(x, index, rows) }
+
+func pick(a, b *float64, from *uint64, n int) { plainPick(a, b, from, n) }

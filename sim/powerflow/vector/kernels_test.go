@@ -234,6 +234,18 @@ func twins(random func() *rand.Rand, wild bool) (out []twin) {
 		f(&x[0], &p.index[0], p.rows)
 		return [][]float64{whole}
 	}})
+	out = append(out, twin{"pick", func(t *testing.T, k int) [][]float64 {
+		rng := random()
+		whole, a := fence(n, rng)
+		_, b := fence(n, rng)
+		var from [Lanes]uint64
+		for l := range from {
+			from[l] = rng.Uint64N(2 * Lanes)
+		}
+		f := []func(a, b *float64, from *uint64, n int){plainPick, plainPick, pick512}[k]
+		f(&a[0], &b[0], &from[0], n)
+		return [][]float64{whole}
+	}})
 	return append(out, twin{"advance", func(t *testing.T, k int) [][]float64 {
 		rng := random()
 		whole, v := fence(n, rng)

@@ -143,3 +143,8 @@ func groupsAdd512(dst *float64, src *float64, index *int32, coef *float64, lanes
 //
 //go:noescape
 func products512(x *float64, index *int32, rows int)
+
+// pick512 is the kernel of Pick.
+//
+//go:noescape
+func pick512(a *float64, b *float64, from *uint64, n int)

@@ -37,6 +37,7 @@ func main() {
 		m.groups("Set")
 		m.groups("Add")
 		m.products()
+		m.pick()
 	}
 	Generate()
 }
