@@ -35,6 +35,8 @@ type relay struct {
 	month    int // whose shares the currents have
 	lanes    results.Lanes
 	out      results.Quiet
+	gather   *gathering // nil: intervals are taken one by one
+	rest     sensedRest
 	tally    plantTally // of quiet steps
 	busy     time.Duration
 	timed    bool
@@ -45,7 +47,9 @@ type relay struct {
 type event struct {
 	interval, step, action bool
 	state                  results.State
-	power                  []complex128 // of the state, where it is to be completed
+	sensed                 bool // the state is to be completed, from what follows
+	number                 int  // of the step
+	values                 []float64
 	devices                []results.DeviceState
 	asInterval             results.Interval
 	asStep                 results.Step
@@ -55,7 +59,7 @@ type event struct {
 	lane     int
 	start    int64
 	block    *powerflow.Block
-	number   int       // of the block
+	blockOf  int       // number of the block
 	rows     []float64 // values of the series in the block's steps
 	month    int       // of the block
 	settling bool
@@ -74,6 +78,7 @@ type plantTally struct{ generated, curtailed []float64 }
 // relayed bounds what is under way, in events and in numbers of their states.
 const (
 	relayEvents  = 128
+	relayLeast   = 64 // more than twice what is held back to be gathered
 	relayBlocks  = 48
 	relayNumbers = 4 << 20
 )
@@ -81,11 +86,11 @@ const (
 // newRelay begins to receive. Close ends it.
 func newRelay(e *Engine, recorders []quietRecorder) *relay {
 	numbers := len(e.state.V) + len(e.state.Flow)
-	n := max(8, min(relayEvents, relayNumbers/max(numbers, 1)))
+	n := max(relayLeast, min(relayEvents, relayNumbers/max(numbers, 1)))
 	r := &relay{e: e, recorders: recorders, events: make(chan []*event, n), free: make(chan *event, n), done: make(chan struct{}), timed: e.timed, solved: -1, month: -1, sent: max(1, 12),
 		tally: plantTally{make([]float64, len(e.state.Generation)), make([]float64, len(e.state.Generation))}}
 	for range n {
-		r.free <- &event{state: e.state.Like(), devices: make([]results.DeviceState, len(e.devices)), taps: make([]int, len(e.state.Taps)), closed: make([]bool, len(e.state.Closed))}
+		r.free <- &event{devices: make([]results.DeviceState, len(e.devices)), taps: make([]int, len(e.state.Taps)), closed: make([]bool, len(e.state.Closed))}
 	}
 	if e.ahead != nil {
 		l := e.ahead.lanes
@@ -99,6 +104,7 @@ func newRelay(e *Engine, recorders []quietRecorder) *relay {
 		for range blocks {
 			r.blocks <- l.NewBlock()
 		}
+		r.gather = newGathering(r)
 	}
 	go r.receive()
 	return r
@@ -118,8 +124,7 @@ func (r *relay) next() (*event, error) {
 		r.send()
 		ev = <-r.free
 	}
-	ev.power = ev.power[:0]
-	ev.interval, ev.step, ev.action, ev.quiet, ev.block, ev.retired = false, false, false, 0, nil, nil
+	ev.interval, ev.step, ev.action, ev.quiet, ev.block, ev.retired, ev.sensed = false, false, false, 0, nil, nil, false
 	return ev, nil
 }
 
@@ -170,8 +175,9 @@ func (r *relay) copy(ev *event, s *results.State) {
 		ev.state.Copy(s)
 		return
 	}
-	ev.state.CopyBut(s)
-	ev.power = append(ev.power[:0], r.e.input.Power...)
+	ev.state.CopySensed(s)
+	ev.sensed, ev.number = true, r.e.step
+	ev.values = append(ev.values[:0], r.e.in.values...)
 }
 
 // Step takes a step. Its last state is that of its last interval, but for what plants
@@ -218,7 +224,7 @@ func (r *relay) quiet(step, n int, states []results.DeviceState, settling bool) 
 	}
 	a := r.e.ahead
 	ev.settling = settling
-	ev.quiet, ev.lane, ev.block, ev.number, ev.arrived = n, step%vector.Lanes, a.lanes.Block, a.number, a.arrived
+	ev.quiet, ev.lane, ev.block, ev.blockOf, ev.arrived = n, step%vector.Lanes, a.lanes.Block, a.number, a.arrived
 	ev.start, _ = r.e.in.axis.Bounds(step)
 	if r.devices == nil || r.state != a.state { // those before may still be in use
 		r.state, r.devices = a.state, &powerflow.LaneDevices{}
@@ -265,8 +271,23 @@ func (r *relay) close() error {
 func (r *relay) receive() {
 	defer close(r.done)
 	for batch := range r.events {
+		began := r.now()
 		for _, ev := range batch {
-			r.handle(ev)
+			if r.gather != nil {
+				r.gather.sort(ev)
+			} else {
+				r.handle(ev)
+			}
+		}
+		if r.timed {
+			r.busy += time.Since(began)
+		}
+	}
+	if r.gather != nil {
+		began := r.now()
+		r.gather.end()
+		if r.timed {
+			r.busy += time.Since(began)
 		}
 	}
 }
@@ -274,18 +295,20 @@ func (r *relay) receive() {
 // handle takes an event in and gives back what was lent with it.
 func (r *relay) handle(ev *event) {
 	if r.err == nil {
-		began := r.now()
-		if r.err = r.take(ev); r.err != nil {
-			r.failed.Store(true)
-		}
-		if r.timed {
-			r.busy += time.Since(began)
-		}
+		r.fail(r.take(ev))
 	}
 	if ev.retired != nil {
 		r.blocks <- ev.retired
 	}
 	r.free <- ev
+}
+
+// fail keeps the error of a recorder, if any.
+func (r *relay) fail(err error) {
+	if err != nil {
+		r.err = err
+		r.failed.Store(true)
+	}
 }
 
 func (r *relay) now() (t time.Time) {
@@ -300,8 +323,8 @@ func (r *relay) take(ev *event) error {
 	if ev.quiet > 0 {
 		r.read(ev)
 	}
-	if len(ev.power) > 0 {
-		r.e.complete(&ev.state, ev.power)
+	if ev.sensed {
+		r.complete(ev)
 	}
 	for _, rec := range r.recorders {
 		var err error
@@ -325,15 +348,38 @@ func (r *relay) take(ev *event) error {
 	return nil
 }
 
+// follow has the currents follow the loads' shares of a month.
+func (r *relay) follow(month int) {
+	if r.month != month {
+		r.month = month
+		r.currents.Follow(r.e.in.follow(month))
+	}
+}
+
+// sensedRest has room for what sensed leaves out of a state.
+type sensedRest struct {
+	flow, load []complex128
+	input      powerflow.Input
+}
+
+// complete reads the rest of a state. It holds until the next one is completed.
+func (r *relay) complete(ev *event) {
+	e, x := r.e, &r.rest
+	if x.flow == nil {
+		x.flow, x.load = make([]complex128, len(e.state.Flow)), make([]complex128, len(e.state.Load))
+		x.input = powerflow.Input{Source: make([]complex128, len(e.in.fixed)), Power: make([]complex128, len(e.in.injections))}
+	}
+	e.in.scale(ev.values, ev.number, &x.input)
+	ev.state.Flow, ev.state.Load = x.flow, x.load
+	e.complete(&ev.state, x.input.Power)
+}
+
 // read reads what quiet steps are made of from their block.
 func (r *relay) read(ev *event) {
 	e, b := r.e, ev.block
-	if r.solved != ev.number {
-		r.solved = ev.number
-		if r.month != ev.month {
-			r.month = ev.month
-			r.currents.Follow(e.in.follow(ev.month))
-		}
+	if r.solved != ev.blockOf {
+		r.solved = ev.blockOf
+		r.follow(ev.month)
 		r.currents.Drive(ev.rows)
 		r.currents.Use(ev.positions)
 		r.currents.Read(b, ev.arrived)

@@ -44,6 +44,14 @@ func (p *progress) Step(*results.Step) error {
 // Whole: no step need come by itself.
 func (p *progress) Whole(start, end int64) bool { return false }
 
+// Gathers: of a step nothing is needed but that it has been.
+func (p *progress) Gathers() bool { return true }
+
+func (p *progress) Gathered(g *results.Gathered) error {
+	p.count(len(g.Steps))
+	return nil
+}
+
 func (p *progress) Quiet(q *results.Quiet) error {
 	p.count(q.Count)
 	return nil

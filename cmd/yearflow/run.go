@@ -173,6 +173,8 @@ func (t *tally) Interval(*results.Interval) error { return nil }
 func (t *tally) Action(*results.Action) error     { return nil }
 func (t *tally) Whole(start, end int64) bool      { return false }
 func (t *tally) Quiet(*results.Quiet) error       { return nil }
+func (t *tally) Gathers() bool                    { return true }
+func (t *tally) Gathered(*results.Gathered) error { return nil } // steps that are ok
 
 func (t *tally) Step(s *results.Step) error {
 	switch s.Status {

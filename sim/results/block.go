@@ -109,7 +109,6 @@ func (q *Quiet) check() error {
 
 // read reads a Quiet.
 func (b *block) read(q *Quiet) {
-	l := q.State
 	b.mask = 0
 	for k := range q.Count {
 		b.mask |= 1 << q.lane(k)
@@ -118,15 +117,20 @@ func (b *block) read(q *Quiet) {
 	if q.Settling {
 		settled = 0
 	}
-	b.seen, b.left = b.points.Watch(b.pu, l.V, settled, &b.least, &b.most)
+	b.readLanes(q.State, settled, b.mask)
+}
+
+// readLanes reads lanes: sums and flags are of a mask for voltages, and of one for losses.
+func (b *block) readLanes(l *Lanes, voltages, losses uint8) {
+	b.seen, b.left = b.points.Watch(b.pu, l.V, voltages, &b.least, &b.most)
 	for k := range b.parts {
 		var over uint8
-		b.flagged[k], over = b.parts[k].Watch(b.power[k], l.V, l.Flow, b.mask, &b.byKind[k])
+		b.flagged[k], over = b.parts[k].Watch(b.power[k], l.V, l.Flow, losses, &b.byKind[k])
 		if LossKind(k) == LineLoss {
 			b.over = over
 		}
 	}
-	b.caps.Watch(b.capW, l.V, l.Flow, b.mask, &b.condenser)
+	b.caps.Watch(b.capW, l.V, l.Flow, losses, &b.condenser)
 	b.losses, b.source, b.sourceVar = [vector.Lanes]float64{}, [vector.Lanes]float64{}, [vector.Lanes]float64{}
 	for k := range b.byKind {
 		for x := range vector.Lanes {
@@ -163,6 +167,21 @@ func (b *block) energies(q *Quiet) (e energies) {
 	e.losses *= ns
 	for kind := range e.byKind {
 		e.byKind[kind] *= ns
+	}
+	return e
+}
+
+// energiesOf are those of some lanes, W·ns.
+func (b *block) energiesOf(g *Gathered, first, last int) (e energies) {
+	for k := first; k <= last; k++ {
+		ns := float64(g.End[k] - g.Start[k])
+		e.source += b.source[k] * ns
+		e.load += g.State.Load[k] * ns
+		e.generation += g.State.Generation[k] * ns
+		e.losses += b.losses[k] * ns
+		for kind := range b.byKind {
+			e.byKind[kind] += b.byKind[kind][k] * ns
+		}
 	}
 	return e
 }
@@ -218,11 +237,26 @@ func (b *block) look(i int) uint32 {
 
 // settleOutside turns the lanes outside into times and customers' times, and forgets
 // them.
-func (b *block) settleOutside(ns int64) (out outsideTimes) {
-	if len(b.touched) == 0 {
-		return out
+func (b *block) settleOutside(long *durations) (out outsideTimes) {
+	if len(b.touched) > 0 {
+		out = b.timesOutside(long, b.mask)
+		b.forgetOutside()
 	}
-	below, above, belowB, aboveB := times(b.some, ns)
+	return out
+}
+
+func (b *block) forgetOutside() {
+	for _, i := range b.touched {
+		b.outside[i] = 0
+	}
+	b.touched, b.some = b.touched[:0], 0
+}
+
+// timesOutside are the times and the customers' times outside in the lanes of a mask.
+func (b *block) timesOutside(long *durations, mask uint8) (out outsideTimes) {
+	m := uint32(mask)
+	m |= m<<aboveShift | m<<belowOuterShift | m<<aboveOuterShift
+	below, above, belowB, aboveB := long.times(b.some & m)
 	out.belowA, out.aboveA, out.belowB, out.aboveB = below, above, belowB, aboveB
 	for i := range b.judge.services {
 		v := &b.judge.services[i]
@@ -230,25 +264,37 @@ func (b *block) settleOutside(ns int64) (out outsideTimes) {
 		for _, k := range v.points {
 			lanes |= b.outside[k]
 		}
-		if lanes == 0 {
+		if lanes &= m; lanes == 0 {
 			continue
 		}
-		below, above, belowB, aboveB := times(lanes, ns)
+		below, above, belowB, aboveB := long.times(lanes)
 		out.customersBelow += v.customers * float64(below)
 		out.customersAbove += v.customers * float64(above)
 		out.customersBelowB += v.customers * float64(belowB)
 		out.customersAboveB += v.customers * float64(aboveB)
-		v.outside += ns * int64(bits.OnesCount8(uint8(lanes|lanes>>aboveShift)))
+		v.outside += long.of(uint8(lanes | lanes>>aboveShift))
 	}
-	for _, i := range b.touched {
-		b.outside[i] = 0
-	}
-	b.touched, b.some = b.touched[:0], 0
 	return out
 }
 
+// durations is how long the interval of each lane is, ns.
+type durations struct {
+	even int64 // of all; 0: each has its own
+	each [vector.Lanes]int64
+}
+
+// of sums the lengths of the lanes of a mask.
+func (l *durations) of(mask uint8) (ns int64) {
+	if l.even > 0 {
+		return l.even * int64(bits.OnesCount8(mask))
+	}
+	for ; mask != 0; mask &= mask - 1 {
+		ns += l.each[bits.TrailingZeros8(mask)]
+	}
+	return ns
+}
+
 // times are those of lanes below A, above A, below B and above B.
-func times(lanes uint32, ns int64) (below, above, belowB, aboveB int64) {
-	of := func(shift int) int64 { return ns * int64(bits.OnesCount8(uint8(lanes>>shift))) }
-	return of(0), of(aboveShift), of(belowOuterShift), of(aboveOuterShift)
+func (l *durations) times(lanes uint32) (below, above, belowB, aboveB int64) {
+	return l.of(uint8(lanes)), l.of(uint8(lanes >> aboveShift)), l.of(uint8(lanes >> belowOuterShift)), l.of(uint8(lanes >> aboveOuterShift))
 }

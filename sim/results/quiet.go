@@ -22,6 +22,11 @@ type Lanes struct {
 	Load, Generation [vector.Lanes]float64
 	Taps             []int
 	Closed           []bool
+
+	// Of a Gathered alone, which tells of reactive power too: Turned is the values of V
+	// times −j, and the others are var.
+	Turned                 []float64
+	LoadVar, GenerationVar [vector.Lanes]float64
 }
 
 // Quiet is a row of steps in which nothing moves and nothing asks: each is one settled

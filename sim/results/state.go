@@ -1,24 +1,17 @@
 package results
 
-// Like makes a state with room for another.
-func (s *State) Like() State {
-	var out State
-	out.Copy(s)
-	return out
-}
-
 // Copy takes over another state; its room is used where it suffices.
 func (s *State) Copy(from *State) {
 	s.Flow = append(s.Flow[:0], from.Flow...)
-	s.CopyBut(from)
+	s.Load = append(s.Load[:0], from.Load...)
+	s.CopySensed(from)
 }
 
-// CopyBut takes over all but Flow.
-func (s *State) CopyBut(from *State) {
+// CopySensed takes over all but Flow and Load.
+func (s *State) CopySensed(from *State) {
 	s.V = append(s.V[:0], from.V...)
 	s.Coupling = append(s.Coupling[:0], from.Coupling...)
 	s.Source = append(s.Source[:0], from.Source...)
-	s.Load = append(s.Load[:0], from.Load...)
 	s.Generation = append(s.Generation[:0], from.Generation...)
 	s.Storage = append(s.Storage[:0], from.Storage...)
 	s.Charging = append(s.Charging[:0], from.Charging...)

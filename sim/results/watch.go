@@ -29,6 +29,14 @@ type watch struct {
 	bankFlow  vector.Rows // sums of currents
 	bankAmps  []float64
 
+	// Settled intervals of the lanes at hand, in the order of time, how long all are, and
+	// the positions that they stand at.
+	spans     []span
+	long      durations
+	positions [vector.Lanes][]int
+
+	apart *apart // of gathered intervals; nil before the first
+
 	triples      vector.Triples
 	triple       []float64
 	far, ratioSq [vector.Lanes]float64
@@ -154,6 +162,9 @@ func (w *watch) place(l *Lanes) {
 	for _, u := range m.three {
 		w.triples.Row(int(l.Slot[u[0]]), int(l.Slot[u[1]]), int(l.Slot[u[2]]))
 	}
+	if w.apart != nil {
+		w.apart.place(m, l.Slot)
+	}
 	w.stale = true
 }
 
@@ -168,11 +179,7 @@ func (w *watch) gather() {
 	for kind := range w.parts {
 		for i := range w.parts[kind].Rows {
 			r := &w.parts[kind].Rows[i]
-			row := w.rowOf[kind][i]
-			if row < 0 {
-				row = w.sharedRow(LossKind(kind), i)
-			}
-			w.s.lossEnergy[row] += r.Sum * ns
+			w.s.lossEnergy[w.rowOfPart(LossKind(kind), i)] += r.Sum * ns
 			r.Sum = 0
 		}
 	}
@@ -180,6 +187,9 @@ func (w *watch) gather() {
 		for i := range w.s.dist.bins {
 			w.release(i)
 		}
+	}
+	if w.apart != nil {
+		w.apart.gather(w)
 	}
 	w.calls = 0
 }
@@ -192,7 +202,10 @@ func (w *watch) release(i int) {
 	w.since[i] = w.clock
 }
 
-func (w *watch) sharedRow(kind LossKind, part int) int {
+func (w *watch) rowOfPart(kind LossKind, part int) int {
+	if row := w.rowOf[kind][part]; row >= 0 {
+		return row
+	}
 	for _, s := range w.shared {
 		if s.kind != kind {
 			continue
@@ -211,6 +224,11 @@ func (w *watch) bound() {
 	w.stale = false
 	for i := range w.points.Rows {
 		w.boundPoint(i)
+	}
+	if w.apart != nil {
+		for i := range w.apart.points {
+			w.boundSettling(i)
+		}
 	}
 	for kind := range w.parts {
 		for i, row := range w.rowOf[kind] {

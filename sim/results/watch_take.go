@@ -14,50 +14,64 @@ const gatherEvery = 4096
 
 // quiet takes a Quiet whose steps lie in one month.
 func (s *statistics) quiet(q *Quiet, month *bucket) {
-	w := s.watching(q)
+	w := s.watching(q.State, q.Step, q.State.Taps)
 	if q.Settling {
 		s.settling(q, month)
 		return
 	}
 	w.read(q)
+	w.spans = w.spans[:0]
+	for k := range q.Count {
+		x := q.lane(k)
+		w.spans = append(w.spans, span{x, q.Start + int64(k)*q.Step, q.Step})
+		w.positions[x] = q.State.Taps
+	}
+	w.long.even = q.Step
 	w.distribute(q)
 	if w.seen != 0 {
-		w.voltages(q)
+		w.voltages()
 	}
-	out := w.settleOutside(q.Step)
+	out := w.settleOutside(&w.long)
 	energies := w.energies(q)
 	for _, b := range [...]*bucket{&s.total, month} {
 		b.steps += q.Count
 		b.settled += int64(q.Count) * q.Step
 		b.outsideTimes.add(&out)
 		b.energies.merge(&energies)
-		w.extremes(q, b)
-		for k := range q.Count {
-			b.peakDemand.take(w.source[q.lane(k)], q.Start+int64(k)*q.Step)
+		for _, t := range w.spans {
+			w.extremes(t, b)
+			b.peakDemand.take(w.source[t.lane], t.at)
 		}
 	}
-	w.powers(q)
-	w.lossPeaks(q)
-	w.loadings(q)
-	w.unbalances(q)
+	w.powers()
+	w.lossPeaks()
+	w.loadings(q.State)
+	w.unbalances(q.State)
 }
 
-// watching has the watch ready for steps.
-func (s *statistics) watching(q *Quiet) *watch {
+// span is a settled interval: its lane, when it began and how long it is, ns.
+type span struct {
+	lane   int
+	at, ns int64
+}
+
+// watching has the watch ready for lanes, of steps of a length or (0) of intervals whose
+// sums do not come from the lists.
+func (s *statistics) watching(l *Lanes, step int64, taps []int) *watch {
 	if s.watch == nil {
 		s.watch = newWatch(s)
 	}
 	w := s.watch
-	if !w.fits(q.State) {
-		w.place(q.State)
+	if !w.fits(l) {
+		w.place(l)
 	}
-	if w.step != q.Step || w.calls >= gatherEvery {
+	if w.step != step || w.calls >= gatherEvery {
 		w.gather()
-		w.step = q.Step
+		w.step = step
 	}
 	w.calls++
-	if w.stale || !slices.Equal(w.taps, q.State.Taps) {
-		w.taps = append(w.taps[:0], q.State.Taps...)
+	if w.stale || step > 0 && !slices.Equal(w.taps, taps) {
+		w.taps = append(w.taps[:0], taps...)
 		w.bound()
 	}
 	return w
@@ -156,7 +170,7 @@ func (w *watch) stay(i int, bin int32) {
 }
 
 // voltages looks closer at what is flagged.
-func (w *watch) voltages(q *Quiet) {
+func (w *watch) voltages() {
 	s := w.s
 	for i, flag := range w.points.Flags {
 		if flag == 0 {
@@ -164,8 +178,8 @@ func (w *watch) voltages(q *Quiet) {
 		}
 		p := &s.points[i]
 		x := (*[vector.Lanes]float64)(w.pu[i*vector.Lanes:])
-		for k := range q.Count {
-			v, at := x[q.lane(k)], q.Start+int64(k)*q.Step
+		for _, t := range w.spans {
+			v, at := x[t.lane], t.at
 			if v < p.min {
 				p.min, p.minTime = v, at
 				if w.judge.judged[i] {
@@ -180,7 +194,7 @@ func (w *watch) voltages(q *Quiet) {
 			}
 		}
 		if out := w.look(i); out != 0 {
-			below, above, belowB, aboveB := times(out, q.Step)
+			below, above, belowB, aboveB := w.long.times(out)
 			p.belowA += below
 			p.aboveA += above
 			p.belowB += belowB
@@ -204,19 +218,16 @@ func (e *extreme) higher(v float64, point int, at int64) {
 	}
 }
 
-// extremes enters the lowest and the highest voltage of each step.
-func (w *watch) extremes(q *Quiet, b *bucket) {
+// extremes enters the lowest and the highest voltage of an interval.
+func (w *watch) extremes(t span, b *bucket) {
 	if len(w.meter.Points) == 0 {
 		return
 	}
-	for k := range q.Count {
-		x, at := q.lane(k), q.Start+int64(k)*q.Step
-		if v := w.least[x]; !b.lowestPU.known || v < b.lowestPU.value {
-			b.lowestPU.low(v, w.find(v, x), at)
-		}
-		if v := w.most[x]; !b.highestP.known || v > b.highestP.value {
-			b.highestP.high(v, w.find(v, x), at)
-		}
+	if v := w.least[t.lane]; !b.lowestPU.known || v < b.lowestPU.value {
+		b.lowestPU.low(v, w.find(v, t.lane), t.at)
+	}
+	if v := w.most[t.lane]; !b.highestP.known || v > b.highestP.value {
+		b.highestP.high(v, w.find(v, t.lane), t.at)
 	}
 }
 
@@ -231,19 +242,19 @@ func (w *watch) find(v float64, lane int) int {
 }
 
 // powers enters the power of the sources and all losses.
-func (w *watch) powers(q *Quiet) {
+func (w *watch) powers() {
 	s := w.s
-	for k := range q.Count {
-		x, at := q.lane(k), q.Start+int64(k)*q.Step
+	for _, t := range w.spans {
+		x, at := t.lane, t.at
 		s.lossesPeak.take(w.losses[x], at)
 		s.leastDemand.take(-w.source[x], at)
 		if w.source[x] < 0 {
-			s.reverse += q.Step
+			s.reverse += t.ns
 		}
 	}
 }
 
-func (w *watch) lossPeaks(q *Quiet) {
+func (w *watch) lossPeaks() {
 	s := w.s
 	for kind := range w.parts {
 		if w.flagged[kind] == 0 {
@@ -256,8 +267,8 @@ func (w *watch) lossPeaks(q *Quiet) {
 				continue
 			}
 			p := &s.lossPeak[row]
-			for k := range q.Count {
-				p.take(w.power[kind][i*vector.Lanes+q.lane(k)], q.Start+int64(k)*q.Step)
+			for _, t := range w.spans {
+				p.take(w.power[kind][i*vector.Lanes+t.lane], t.at)
 			}
 			d.Rows[i].High = p.least()
 		}
@@ -265,12 +276,12 @@ func (w *watch) lossPeaks(q *Quiet) {
 	for i := range w.shared {
 		r := &w.shared[i]
 		p, power := &s.lossPeak[r.row], w.power[r.kind]
-		for k := range q.Count {
-			x, sum := q.lane(k), 0.0
+		for _, t := range w.spans {
+			sum := 0.0
 			for _, part := range r.parts {
-				sum += power[part*vector.Lanes+x]
+				sum += power[part*vector.Lanes+t.lane]
 			}
-			p.take(sum, q.Start+int64(k)*q.Step)
+			p.take(sum, t.at)
 		}
 	}
 	if w.bareAt {
@@ -278,19 +289,18 @@ func (w *watch) lossPeaks(q *Quiet) {
 	}
 	w.bareAt = true
 	for _, row := range w.bare {
-		s.lossPeak[row].take(0, q.Start)
+		s.lossPeak[row].take(0, w.spans[0].at)
 	}
 }
 
-func (w *watch) loadings(q *Quiet) {
-	l := q.State
+func (w *watch) loadings(l *Lanes) {
 	if w.over != 0 {
 		for part, flag := range w.parts[LineLoss].Over {
 			if flag == 0 {
 				continue
 			}
 			for _, i := range w.ofPart[part] {
-				w.loading(q, w.sections[i].row)
+				w.loading(l, w.sections[i].row)
 				w.boundSection(i)
 			}
 		}
@@ -298,7 +308,7 @@ func (w *watch) loadings(q *Quiet) {
 	if w.couplings.Watch(l.Coupling, w.mask) != 0 {
 		for i, flag := range w.couplings.Flags {
 			if flag != 0 {
-				w.loading(q, w.coupleRow[i])
+				w.loading(l, w.coupleRow[i])
 				w.boundCoupling(i)
 			}
 		}
@@ -310,7 +320,7 @@ func (w *watch) loadings(q *Quiet) {
 	if w.banks.Watch(l.V, w.bankAmps, w.mask) != 0 {
 		for i, flag := range w.banks.Flags {
 			if flag != 0 {
-				w.loading(q, w.bankRow[i])
+				w.loading(l, w.bankRow[i])
 				w.boundBank(i)
 			}
 		}
@@ -318,10 +328,10 @@ func (w *watch) loadings(q *Quiet) {
 }
 
 // loading looks at a row of loading.csv.
-func (w *watch) loading(q *Quiet, i int) {
-	s, l, row := w.s, q.State, &w.meter.loading[i]
-	for k := range q.Count {
-		x := q.lane(k)
+func (w *watch) loading(l *Lanes, i int) {
+	s, row := w.s, &w.meter.loading[i]
+	for _, t := range w.spans {
+		x := t.lane
 		var a float64
 		switch row.kind {
 		case network.Section:
@@ -331,15 +341,15 @@ func (w *watch) loading(q *Quiet, i int) {
 		default:
 			a = magnitude(vector.At(l.Coupling, row.coupling, x))
 			if row.ratioOf >= 0 {
-				a = max(a, a/ratioOf(row.reg, l.Taps[row.ratioOf]))
+				a = max(a, a/ratioOf(row.reg, w.positions[x][row.ratioOf]))
 			}
 		}
-		s.loadPeak[i].take(a, q.Start+int64(k)*q.Step)
+		s.loadPeak[i].take(a, t.at)
 		if a > row.rating {
-			s.aboveRating[i] += q.Step
+			s.aboveRating[i] += t.ns
 		}
 		if a > row.emergency {
-			s.aboveEmergency[i] += q.Step
+			s.aboveEmergency[i] += t.ns
 		}
 	}
 }
@@ -371,19 +381,19 @@ func unbalanceSpread(far float64) float64 { return 0.07*far*far + far*far*far + 
 
 // unbalances looks closer at lanes that may have a new largest unbalance or negative
 // sequence, or that may be on either side of 3 %.
-func (w *watch) unbalances(q *Quiet) {
+func (w *watch) unbalances(l *Lanes) {
 	if len(w.meter.three) == 0 {
 		return
 	}
 	s := w.s
-	w.triples.Watch(w.triple, q.State.V, &w.far, &w.ratioSq)
-	for k := range q.Count {
-		x, at := q.lane(k), q.Start+int64(k)*q.Step
+	w.triples.Watch(w.triple, l.V, &w.far, &w.ratioSq)
+	for _, t := range w.spans {
+		x, at := t.lane, t.at
 		if w.far[x] >= 0 {
 			low, high := unbalanceBetween(w.far[x])
 			switch {
 			case 100*high > s.unbalance.least() || 100*low <= 3 && 100*high > 3:
-				u, node := w.unbalance(q, x)
+				u, node := w.unbalance(l, x)
 				if node < 0 {
 					break
 				}
@@ -392,15 +402,15 @@ func (w *watch) unbalances(q *Quiet) {
 				}
 				s.unbalance.take(u, at)
 				if u > 3 {
-					s.unbalanceAbove3 += q.Step
+					s.unbalanceAbove3 += t.ns
 				}
 			case 100*low > 3:
-				s.unbalanceAbove3 += q.Step
+				s.unbalanceAbove3 += t.ns
 			}
 		}
 		if w.ratioSq[x] >= 0 {
 			if r := math.Sqrt(w.ratioSq[x]); 100*(r+ratioSlack) > s.negative.least() {
-				if n := w.negative(q, x, r); n >= 0 {
+				if n := w.negative(l, x, r); n >= 0 {
 					s.negative.take(n, at)
 				}
 			}
@@ -412,7 +422,7 @@ func (w *watch) unbalances(q *Quiet) {
 const ratioSlack = 1e-13
 
 // unbalance returns the largest unbalance of a lane, %, and its node.
-func (w *watch) unbalance(q *Quiet, lane int) (float64, int) {
+func (w *watch) unbalance(l *Lanes, lane int) (float64, int) {
 	// Nodes below this have less than the one that is furthest out at least has.
 	least := math.Inf(-1)
 	if far := w.far[lane]; far < 0.2 {
@@ -423,7 +433,7 @@ func (w *watch) unbalance(q *Quiet, lane int) (float64, int) {
 		if w.triple[k*vector.Width+lane] < least {
 			continue
 		}
-		if d, ok := unbalance(w.voltage(q, u[0], lane), w.voltage(q, u[1], lane), w.voltage(q, u[2], lane)); ok && d > worst {
+		if d, ok := unbalance(w.voltage(l, u[0], lane), w.voltage(l, u[1], lane), w.voltage(l, u[2], lane)); ok && d > worst {
 			worst, at = d, w.meter.threeAt[k]
 		}
 	}
@@ -431,7 +441,7 @@ func (w *watch) unbalance(q *Quiet, lane int) (float64, int) {
 }
 
 // negative returns the largest |V2|/|V1| of a lane, %; below zero: none.
-func (w *watch) negative(q *Quiet, lane int, about float64) float64 {
+func (w *watch) negative(l *Lanes, lane int, about float64) float64 {
 	least := 0.0
 	if !math.IsInf(about, 1) && about > 2*ratioSlack {
 		least = (about - 2*ratioSlack) * (about - 2*ratioSlack)
@@ -441,13 +451,13 @@ func (w *watch) negative(q *Quiet, lane int, about float64) float64 {
 		if w.triple[k*vector.Width+vector.Lanes+lane] < least {
 			continue
 		}
-		if r, ok := sequences(w.voltage(q, u[0], lane), w.voltage(q, u[1], lane), w.voltage(q, u[2], lane)); ok {
+		if r, ok := sequences(w.voltage(l, u[0], lane), w.voltage(l, u[1], lane), w.voltage(l, u[2], lane)); ok {
 			ratio = max(ratio, r)
 		}
 	}
 	return 100 * ratio
 }
 
-func (w *watch) voltage(q *Quiet, u int32, lane int) complex128 {
-	return vector.At(q.State.V, int(q.State.Slot[u]), lane)
+func (w *watch) voltage(l *Lanes, u int32, lane int) complex128 {
+	return vector.At(l.V, int(l.Slot[u]), lane)
 }

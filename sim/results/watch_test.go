@@ -85,7 +85,7 @@ func TestLargestUnbalanceOfANode(t *testing.T) {
 				furthest = 100 + k
 			}
 		}
-		got, node := w.unbalance(&Quiet{State: l}, 0)
+		got, node := w.unbalance(l, 0)
 		if got != 100*want || node != at {
 			t.Fatalf("unbalance %g at %d, want %g at %d", got, node, 100*want, at)
 		}

@@ -1,0 +1,242 @@
+package sim
+
+import (
+	"yearflow/sim/powerflow"
+	"yearflow/sim/powerflow/vector"
+	"yearflow/sim/results"
+)
+
+// gatherer takes whole steps several at a time, their intervals side by side.
+type gatherer interface {
+	// Gathers tells whether no more of a step is needed than is in results.Gathered.
+	Gathers() bool
+	Gathered(*results.Gathered) error
+}
+
+// gathering puts the intervals of whole steps side by side where a relay receives them, so
+// that what no control looks at is read of as many at once as there are lanes. What is
+// gathered depends on the order of events alone.
+type gathering struct {
+	r         *relay
+	recorders []gatherer
+	events    []*event // of the steps that have been gathered
+	lanes     int      // intervals among them
+	month     int      // of all of them
+	open      []*event // of the step at hand
+	intervals int      // among them
+	single    bool     // the step at hand is handed on as it comes
+
+	abreast *powerflow.Abreast
+	v       [vector.Lanes][]complex128
+	rows    []float64 // ones, then the values of each series, by lane
+	moves   []results.Action
+	out     results.Gathered
+}
+
+const (
+	// openMost bounds the events of one step, and of all that are gathered.
+	openMost = 24
+	// gatherLeast is the number of intervals from which on lanes pay.
+	gatherLeast = 3
+)
+
+// newGathering returns nil where states come whole or a recorder must see them one by one.
+func newGathering(r *relay) *gathering {
+	e := r.e
+	if len(e.in.groups) > 0 {
+		return nil
+	}
+	g := &gathering{r: r, abreast: r.currents.NewAbreast(), rows: make([]float64, (len(e.in.values)+1)*vector.Lanes)}
+	for _, x := range r.recorders {
+		to, ok := x.(gatherer)
+		if !ok || !to.Gathers() {
+			return nil
+		}
+		g.recorders = append(g.recorders, to)
+	}
+	for k := range vector.Lanes {
+		g.rows[k] = 1
+	}
+	g.out.State = &results.Lanes{Flow: r.currents.Flow, Coupling: r.currents.Coupling, Source: r.lanes.Source, Turned: g.abreast.Turned}
+	g.out.State.V, g.out.State.Slot = g.abreast.Block.Voltages()
+	return g
+}
+
+// sort takes an event: it waits for its step to be whole, and the step for others.
+func (g *gathering) sort(ev *event) {
+	if ev.quiet > 0 || !ev.interval && !ev.step && !ev.action {
+		if ev.quiet > 0 {
+			g.flush()
+		}
+		g.r.handle(ev)
+		return
+	}
+	g.open = append(g.open, ev)
+	if ev.interval {
+		g.intervals++
+	}
+	ends := ev.step
+	switch {
+	case !g.single && ends && g.fits():
+		g.keep()
+	case g.single || ends || g.intervals > vector.Lanes || len(g.open) == openMost:
+		if !g.single {
+			g.flush()
+		}
+		g.hand(&g.open)
+		g.single = true
+	}
+	if ends {
+		g.intervals, g.single = 0, false
+	}
+}
+
+// fits tells whether the step at hand, which is whole, can stand in lanes.
+func (g *gathering) fits() bool {
+	if g.intervals == 0 || g.intervals > vector.Lanes {
+		return false
+	}
+	last := g.open[len(g.open)-1]
+	if !last.interval || last.asStep.Status != results.OK {
+		return false
+	}
+	for _, ev := range g.open {
+		if !ev.action && (!ev.sensed || ev.asInterval.End <= ev.asInterval.Start) {
+			return false
+		}
+	}
+	return true
+}
+
+// keep puts the step at hand behind those that have been gathered.
+func (g *gathering) keep() {
+	month := g.r.e.in.monthOf(g.open[len(g.open)-1].number)
+	if g.lanes+g.intervals > vector.Lanes || month != g.month || len(g.events)+len(g.open) > openMost {
+		g.flush()
+	}
+	g.month = month
+	g.events = append(g.events, g.open...)
+	g.lanes += g.intervals
+	g.open = g.open[:0]
+	if g.lanes == vector.Lanes {
+		g.flush()
+	}
+}
+
+// end hands on what is left, of a run that ended in the midst of a step too.
+func (g *gathering) end() {
+	g.flush()
+	g.hand(&g.open)
+}
+
+// flush hands on what has been gathered.
+func (g *gathering) flush() {
+	if g.lanes >= gatherLeast && g.r.err == nil && g.read() {
+		for _, rec := range g.recorders {
+			if g.r.fail(rec.Gathered(&g.out)); g.r.err != nil {
+				break
+			}
+		}
+		for i, ev := range g.events {
+			g.events[i] = nil
+			g.r.free <- ev
+		}
+		g.events = g.events[:0]
+	}
+	g.hand(&g.events)
+	g.lanes = 0
+}
+
+// hand hands events on one by one.
+func (g *gathering) hand(events *[]*event) {
+	for i, ev := range *events {
+		(*events)[i] = nil
+		g.r.handle(ev)
+	}
+	*events = (*events)[:0]
+}
+
+// read reads what has been gathered side by side. It reports whether it can be: below the
+// corner injections draw otherwise.
+func (g *gathering) read() bool {
+	r, out := g.r, &g.out
+	l := out.State
+	g.list()
+	k := 0
+	for _, ev := range g.events {
+		if !ev.interval {
+			continue
+		}
+		s := &ev.state
+		out.Start[k], out.End[k], out.Devices[k], out.Taps[k], out.Closed[k] = ev.asInterval.Start, ev.asInterval.End, ev.devices, s.Taps, s.Closed
+		if ev.asInterval.Settled {
+			out.Settled |= 1 << k
+		}
+		g.load(k, ev)
+		var generation complex128
+		for _, va := range s.Generation {
+			generation += va
+		}
+		l.Generation[k], l.GenerationVar[k] = real(generation), imag(generation)
+		k++
+		if k == g.lanes {
+			for ; k < vector.Lanes; k++ { // lanes beyond stand as the last does
+				g.load(k, ev)
+			}
+		}
+	}
+	r.follow(g.month)
+	r.solved = -1 // the currents of quiet steps are read anew
+	r.currents.Drive(g.rows)
+	g.abreast.Load(&g.v)
+	below := g.abreast.Read(&out.Closed)
+	for k := range g.lanes {
+		l.Load[k] = r.currents.Drawn[k] + l.Generation[k]
+		l.LoadVar[k] = g.abreast.Var[k] + l.GenerationVar[k]
+	}
+	return below&(1<<g.lanes-1) == 0
+}
+
+// list lists the steps and their actions.
+func (g *gathering) list() {
+	out := &g.out
+	out.Count, out.Settled, out.Steps = g.lanes, 0, out.Steps[:0]
+	g.moves = g.moves[:0]
+	for _, ev := range g.events {
+		if ev.action {
+			g.moves = append(g.moves, ev.asAction)
+		}
+	}
+	intervals, moves, from := 0, 0, 0
+	for _, ev := range g.events {
+		if ev.action {
+			moves++
+		}
+		if ev.interval {
+			intervals++
+		}
+		if ev.step {
+			s := results.GatheredStep{Step: ev.asStep, Intervals: intervals, Moves: g.moves[from : from+moves]}
+			s.Last = nil
+			out.Steps = append(out.Steps, s)
+			intervals, from, moves = 0, from+moves, 0
+		}
+	}
+}
+
+// load puts an interval into a lane.
+func (g *gathering) load(k int, ev *event) {
+	l, s := g.out.State, &ev.state
+	g.v[k], g.out.Closed[k] = s.V, s.Closed
+	for i, z := range s.Coupling {
+		vector.Put(l.Coupling, i, k, z)
+	}
+	for i := range s.Source {
+		for p, z := range s.Source[i] {
+			vector.Put(l.Source, 3*i+p, k, z)
+		}
+	}
+	for i, v := range ev.values {
+		g.rows[(i+1)*vector.Lanes+k] = v
+	}
+}
