@@ -119,7 +119,11 @@ func (e *Engine) add() bool {
 func (e *Engine) see() bool {
 	f := e.foresight
 	if f.here.step < f.first || f.here.step >= f.end {
-		e.scout(f.here.step)
+		first := f.here.step
+		if f.count > 0 { // what the lanes start from must be known of all their steps
+			first = f.plan[0].step
+		}
+		e.scout(first)
 	}
 	x, _ := f.at(f.here.step)
 	if x == nil {
@@ -154,6 +158,9 @@ func (r *Reading) add(d *Reading, times float64) {
 func (e *Engine) scout(step int) {
 	f := e.foresight
 	f.first, f.end = step, step
+	for k := range f.scouted {
+		f.scouted[k].step = -1
+	}
 	mask := uint8(0)
 	for ; f.end < min(step+vector.Lanes, f.steps) && e.in.monthOf(f.end) == f.month; f.end++ {
 		k := f.end % vector.Lanes
@@ -169,7 +176,6 @@ func (e *Engine) scout(step int) {
 	at := f.here
 	for at.step = f.first; at.step < f.end; at.step++ {
 		k := at.step % vector.Lanes
-		f.scouted[k].step = -1
 		if arrived>>k&1 == 1 {
 			f.know(e, &f.scouted[k], &f.ahead, k, &at)
 		}
@@ -210,6 +216,7 @@ func (e *Engine) measureGains() {
 				copy(base, x.readings)
 				continue
 			}
+			f.scouts.Direct(f.move, i, k, 1/float64(moved[k]))
 			for j := range base {
 				g := &f.gain[i][j]
 				*g = Reading{}

@@ -39,7 +39,8 @@ type foresight struct {
 	here         wanted // where the devices of the forecast stand
 	ratio        []float64
 	reading      []Reading
-	gain         [][]Reading // by device that moves by one, and by device that sees it
+	move         *vector.Directions // of the voltages: by device that moves by one
+	gain         [][]Reading        // by device that moves by one, and by device that sees it
 	gained       bool
 	month        int
 	steps        int
@@ -120,6 +121,7 @@ func (e *Engine) prepareForesight() {
 		return
 	}
 	f.block, f.ahead = newStepBlock(e.in, f.lanes), newStepBlock(e.in, f.scouts)
+	f.move = f.scouts.NewDirections(n)
 	f.sense = e.flow.NewLaneSense(e.watchedFlows())
 	f.gain = make([][]Reading, n)
 	for k := range f.gain {
@@ -235,11 +237,29 @@ func (f *foresight) start(e *Engine) {
 	}
 	for k := range f.laneOfSource {
 		if k < f.count {
-			_, lane = f.at(f.plan[k].step)
+			if x, at := f.at(f.plan[k].step); x != nil {
+				lane = at
+			}
 		}
 		f.laneOfSource[k] = lane
 	}
 	f.lanes.StartLanes(f.scouts, &f.laneOfSource)
+	f.move.Begin()
+	for i, d := range e.devices {
+		var times [vector.Lanes]float64
+		moved := false
+		for k := range f.count {
+			w := &f.plan[k]
+			if x, _ := f.at(w.step); x != nil { // else it starts elsewhere anyway
+				times[k] = float64(position(d, w) - x.positions[i])
+				moved = moved || times[k] != 0
+			}
+		}
+		if moved {
+			f.move.Use(i, &times)
+		}
+	}
+	f.lanes.Shift(f.move)
 }
 
 // startAll starts lanes of which nothing is known.

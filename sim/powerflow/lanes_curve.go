@@ -54,6 +54,19 @@ func (l *Lanes) StartAll(start []complex128, in *Input) {
 	l.StartAt(l.flat)
 }
 
+// NewDirections makes room for ways in which the voltages of lanes can be moved.
+func (l *Lanes) NewDirections(n int) *vector.Directions { return vector.NewDirections(n, l.all) }
+
+// Direct sets a direction to what it is from lane 0 to another lane, times so much.
+func (l *Lanes) Direct(d *vector.Directions, direction, lane int, times float64) {
+	for at := range l.all {
+		d.Set(direction, at, (vector.At(l.v, at, lane)-vector.At(l.v, at, 0))*complex(times, 0))
+	}
+}
+
+// Shift moves the voltages that lanes start from.
+func (l *Lanes) Shift(d *vector.Directions) { d.Shift(l.v) }
+
 // Slot is where an unknown's voltage stands among the values of a block.
 func (l *Lanes) Slot(u int32) int { return int(l.slot[u]) }
 

@@ -173,3 +173,14 @@ func pick(a, b *float64, from *uint64, n int) {
 	}
 	plainPick(a, b, from, n)
 }
+
+func shift(v, coef *float64, offset *int64, times *float64, directions, n int) {
+	switch kernel {
+	case 2:
+		shift512(v, coef, offset, times, directions, n)
+	case 1:
+		shift256(v, coef, offset, times, directions, n)
+	default:
+		plainShift(v, coef, offset, times, directions, n)
+	}
+}

@@ -2041,6 +2041,62 @@ store1:
 	VZEROUPPER
 	RET
 
+// func shift256(v *float64, coef *float64, offset *int64, times *float64, directions int, n int)
+// Requires: AVX, FMA3
+TEXT ·shift256(SB), NOSPLIT, $0-48
+	MOVQ v+0(FP), AX
+	MOVQ coef+8(FP), CX
+	MOVQ offset+16(FP), DX
+	MOVQ times+24(FP), BX
+	MOVQ directions+32(FP), SI
+	MOVQ n+40(FP), DI
+
+value:
+	VMOVUPD (AX), Y0
+	VMOVUPD 64(AX), Y1
+	MOVQ    DX, R8
+	MOVQ    BX, R9
+	MOVQ    SI, R10
+
+direction0:
+	MOVQ         (R8), R11
+	VMOVUPD      (R9), Y2
+	VBROADCASTSD (CX)(R11*1), Y3
+	VFMADD231PD  Y3, Y2, Y0
+	VBROADCASTSD 8(CX)(R11*1), Y3
+	VFMADD231PD  Y3, Y2, Y1
+	ADDQ         $0x08, R8
+	ADDQ         $0x40, R9
+	DECQ         R10
+	JNZ          direction0
+	VMOVUPD      Y0, (AX)
+	VMOVUPD      Y1, 64(AX)
+	VMOVUPD      32(AX), Y0
+	VMOVUPD      96(AX), Y1
+	MOVQ         DX, R8
+	MOVQ         BX, R9
+	MOVQ         SI, R10
+
+direction1:
+	MOVQ         (R8), R11
+	VMOVUPD      32(R9), Y2
+	VBROADCASTSD (CX)(R11*1), Y3
+	VFMADD231PD  Y3, Y2, Y0
+	VBROADCASTSD 8(CX)(R11*1), Y3
+	VFMADD231PD  Y3, Y2, Y1
+	ADDQ         $0x08, R8
+	ADDQ         $0x40, R9
+	DECQ         R10
+	JNZ          direction1
+	VMOVUPD      Y0, 32(AX)
+	VMOVUPD      Y1, 96(AX)
+	ADDQ         $0x10, CX
+	ADDQ         $0x00000080, AX
+	DECQ         DI
+	JNZ          value
+	VZEROUPPER
+	RET
+
 // func rowsSet512(dst *float64, src *float64, index *int32, coef *float64, rows int)
 // Requires: AVX, AVX512F
 TEXT ·rowsSet512(SB), NOSPLIT, $0-40
@@ -3238,5 +3294,42 @@ value:
 	ADDQ      $0x00000080, CX
 	DECQ      BX
 	JNZ       value
+	VZEROUPPER
+	RET
+
+// func shift512(v *float64, coef *float64, offset *int64, times *float64, directions int, n int)
+// Requires: AVX, AVX512F
+TEXT ·shift512(SB), NOSPLIT, $0-48
+	MOVQ v+0(FP), AX
+	MOVQ coef+8(FP), CX
+	MOVQ offset+16(FP), DX
+	MOVQ times+24(FP), BX
+	MOVQ directions+32(FP), SI
+	MOVQ n+40(FP), DI
+
+value:
+	VMOVUPD (AX), Z0
+	VMOVUPD 64(AX), Z1
+	MOVQ    DX, R8
+	MOVQ    BX, R9
+	MOVQ    SI, R10
+
+direction0:
+	MOVQ         (R8), R11
+	VMOVUPD      (R9), Z2
+	VBROADCASTSD (CX)(R11*1), Z3
+	VFMADD231PD  Z3, Z2, Z0
+	VBROADCASTSD 8(CX)(R11*1), Z3
+	VFMADD231PD  Z3, Z2, Z1
+	ADDQ         $0x08, R8
+	ADDQ         $0x40, R9
+	DECQ         R10
+	JNZ          direction0
+	VMOVUPD      Z0, (AX)
+	VMOVUPD      Z1, 64(AX)
+	ADDQ         $0x10, CX
+	ADDQ         $0x00000080, AX
+	DECQ         DI
+	JNZ          value
 	VZEROUPPER
 	RET

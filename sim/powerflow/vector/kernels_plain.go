@@ -58,3 +58,7 @@ func drawWyeZIPFirst(into, v, power *float64, index *int32, shape *float64, n in
 func products(x *float64, index *int32, rows int) { plainProducts(x, index, rows) }
 
 func pick(a, b *float64, from *uint64, n int) { plainPick(a, b, from, n) }
+
+func shift(v, coef *float64, offset *int64, times *float64, directions, n int) {
+	plainShift(v, coef, offset, times, directions, n)
+}

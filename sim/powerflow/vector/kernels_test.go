@@ -246,6 +246,27 @@ func twins(random func() *rand.Rand, wild bool) (out []twin) {
 		f(&a[0], &b[0], &from[0], n)
 		return [][]float64{whole}
 	}})
+	out = append(out, twin{"shift", func(t *testing.T, k int) [][]float64 {
+		rng := random()
+		whole, v := fence(n, rng)
+		d := NewDirections(5, n)
+		for i := range d.coef {
+			d.coef[i] = rng.NormFloat64()
+		}
+		if wild {
+			odd(d.coef, rng)
+		}
+		for range 1 + rng.IntN(4) {
+			var times [Lanes]float64
+			for l := range times {
+				times[l] = float64(rng.IntN(5) - 2)
+			}
+			d.Use(rng.IntN(5), &times)
+		}
+		f := []func(v, coef *float64, offset *int64, times *float64, directions, n int){plainShift, shift256, shift512}[k]
+		f(&v[0], &d.coef[0], &d.offset[0], &d.times[0], len(d.offset), d.n)
+		return [][]float64{whole}
+	}})
 	return append(out, twin{"advance", func(t *testing.T, k int) [][]float64 {
 		rng := random()
 		whole, v := fence(n, rng)

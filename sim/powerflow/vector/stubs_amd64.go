@@ -74,6 +74,11 @@ func groupsAdd256(dst *float64, src *float64, index *int32, coef *float64, lanes
 //go:noescape
 func products256(x *float64, index *int32, rows int)
 
+// shift256 is the kernel of Directions.Shift.
+//
+//go:noescape
+func shift256(v *float64, coef *float64, offset *int64, times *float64, directions int, n int)
+
 // rowsSet512 is the kernel of Rows.Set.
 //
 //go:noescape
@@ -148,3 +153,8 @@ func products512(x *float64, index *int32, rows int)
 //
 //go:noescape
 func pick512(a *float64, b *float64, from *uint64, n int)
+
+// shift512 is the kernel of Directions.Shift.
+//
+//go:noescape
+func shift512(v *float64, coef *float64, offset *int64, times *float64, directions int, n int)

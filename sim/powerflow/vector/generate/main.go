@@ -38,6 +38,7 @@ func main() {
 		m.groups("Add")
 		m.products()
 		m.pick()
+		m.shift()
 	}
 	Generate()
 }
