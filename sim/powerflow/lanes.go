@@ -26,8 +26,8 @@ type Lanes struct {
 	// Values: the independent unknowns level by level of the factor, the dependent ones,
 	// then two of each fixed voltage. Of v the first of these two is the voltage that
 	// injections see, of x the second that of the equations; the first of x takes the
-	// current that is put into a fixed voltage. x has currents there, and behind them the
-	// voltages that follow.
+	// current that is put into a fixed voltage. x has currents, in whose place the voltages
+	// that follow come on the way back: a group reads its own currents before it writes.
 	*Block
 	flat      *Curve // of the voltages that all lanes start from
 	x         []float64
@@ -36,7 +36,6 @@ type Lanes struct {
 	rank      []int32 // of an independent unknown's place in the elimination order among the values
 	free, all int     // independent ones, and those with the dependent ones
 	held      int     // the second value of the first fixed voltage
-	found     int     // first of the voltages in x
 	weight    []float64
 
 	pull, gather, expand       vector.Rows
@@ -278,7 +277,7 @@ func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) 
 	l.backward.Set(l.x, l.x)
 	l.expand.Set(l.x, l.x)
 	l.expandBy.Set(l.x, l.x)
-	vector.Advance(l.v, l.x[l.found*vector.Width:], l.weight, mask&^below, moved)
+	vector.Advance(l.v, l.x, l.weight, mask&^below, moved)
 	return below
 }
 

@@ -43,8 +43,7 @@ func (l *Lanes) place() {
 		}
 		l.weight[l.slot[u]] = s.perUnit[u] * s.perUnit[u]
 	}
-	l.found = l.held + len(s.Net.Fixed)
-	l.x = vector.Make(l.found + l.all)
+	l.x = vector.Make(l.held + len(s.Net.Fixed))
 }
 
 // plainTerm tells whether an unknown is an independent or a fixed one.
@@ -82,12 +81,11 @@ func (l *Lanes) rows() {
 				from = int(l.rank[s.pat.place[t.col]])
 				into[from] = append(into[from], int(l.slot[u]))
 				coef[from] = append(coef[from], t.coef)
-				from += l.found
 			}
 			src = append(src, from)
 			l.expands = append(l.expands, t.coef)
 		}
-		l.row(&l.expand, &l.expandBy, l.found+int(l.slot[u]), src)
+		l.row(&l.expand, &l.expandBy, int(l.slot[u]), src)
 	}
 	for row, src := range into {
 		if len(src) > 0 {
@@ -182,18 +180,18 @@ func (l *Lanes) sweep() {
 			}
 		}
 		for r, row := range g.rows {
-			src = append(src, l.found+int(l.rank[row]))
+			src = append(src, int(l.rank[row]))
 			for c := range n {
 				up = append(up, int32(-1-(g.w+r*n+c)))
 			}
 		}
 		if l.states.differs(b, l.order[i]) {
-			l.upBy = appendLane(l.upBy, l.backward.LaneGroup(l.found+int(l.rank[g.columns[0]]), n, src...), up)
+			l.upBy = appendLane(l.upBy, l.backward.LaneGroup(int(l.rank[g.columns[0]]), n, src...), up)
 			continue
 		}
 		l.ups[l.order[i]] = [2]int{len(l.up), len(l.up) + len(up)}
 		l.up = append(l.up, up...)
-		l.backward.Group(l.found+int(l.rank[g.columns[0]]), n, src...)
+		l.backward.Group(int(l.rank[g.columns[0]]), n, src...)
 	}
 	l.forward.Coef, l.backward.Coef = make([]float64, 2*len(l.down)), make([]float64, 2*len(l.up))
 }
