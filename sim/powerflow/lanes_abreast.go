@@ -44,11 +44,21 @@ func (a *Abreast) Load(v *[vector.Lanes][]complex128) {
 	for u, at := range slot {
 		x := (*[vector.Width]float64)(a.Block.v[int(at)*vector.Width:])
 		y := (*[vector.Width]float64)(a.Turned[int(at)*vector.Width:])
-		for k, z := range [vector.Lanes]complex128{v0[u], v1[u], v2[u], v3[u], v4[u], v5[u], v6[u], v7[u]} {
-			x[k], x[vector.Lanes+k] = real(z), imag(z)
-			y[k], y[vector.Lanes+k] = imag(z), -real(z)
-		}
+		putTurned(x, y, 0, v0[u])
+		putTurned(x, y, 1, v1[u])
+		putTurned(x, y, 2, v2[u])
+		putTurned(x, y, 3, v3[u])
+		putTurned(x, y, 4, v4[u])
+		putTurned(x, y, 5, v5[u])
+		putTurned(x, y, 6, v6[u])
+		putTurned(x, y, 7, v7[u])
 	}
+}
+
+// putTurned sets a lane of x to z and that of y to −j·z.
+func putTurned(x, y *[vector.Width]float64, k int, z complex128) {
+	x[k], x[vector.Lanes+k] = real(z), imag(z)
+	y[k], y[vector.Lanes+k] = imag(z), -real(z)
 }
 
 // Read reads flows and what injections draw for the powers that Follow and Drive say, with

@@ -14,9 +14,12 @@ type apart struct {
 	energy [lossKinds][]float64 // W·ns, by part
 	ratios []int                // couplings that have a ratio
 
-	losses, caps      vector.Dots // of reactive power: one row
-	lossVar, capVar   [vector.Lanes]float64
-	row               [vector.Lanes]float64
+	losses, caps    vector.Dots // of reactive power: one row
+	lossVar, capVar [vector.Lanes]float64
+	row             [vector.Lanes]float64
+	held            []uint16 // bins of settled voltages, by point and interval, that wait for others
+	ns              []int64  // of these intervals
+
 	span              [vector.Lanes]float64 // ns, 0 beyond the last
 	settled, settling uint8
 	settlingOutside   [vector.Lanes]int64
@@ -26,8 +29,12 @@ type apart struct {
 // settling one is no news.
 type apartPoint struct{ sum, low, high float64 }
 
+// binsHeld is how many intervals' voltages wait to be entered into the histograms: those
+// of many points are far apart in memory, and each is best met seldom.
+const binsHeld = 32
+
 func newApart(w *watch) *apart {
-	a := &apart{points: make([]apartPoint, len(w.meter.Points))}
+	a := &apart{points: make([]apartPoint, len(w.meter.Points)), ns: make([]int64, 0, binsHeld)}
 	for k := range a.energy {
 		a.energy[k] = make([]float64, len(w.rowOf[k]))
 	}
@@ -66,6 +73,7 @@ func (a *apart) gather(w *watch) {
 			a.energy[kind][i] = 0
 		}
 	}
+	a.enter(w.s.dist)
 }
 
 // boundSettling draws the range of a point anew.
@@ -190,12 +198,34 @@ func (w *watch) share() {
 		return
 	}
 	vector.Bins(w.bins, w.pu, binWidth, lastBin)
+	a := w.apart
+	if len(a.ns)+len(w.spans) > binsHeld {
+		a.enter(d)
+	}
+	if a.held == nil {
+		a.held = make([]uint16, len(d.bins)*binsHeld)
+	}
+	at := len(a.ns)
 	for i := range d.bins {
-		h, b := &d.bins[i], (*[vector.Lanes]int32)(w.bins[i*vector.Lanes:])
-		for _, t := range w.spans {
-			h.enter(int(b[t.lane]), t.ns)
+		held, b := a.held[i*binsHeld+at:(i+1)*binsHeld], (*[vector.Lanes]int32)(w.bins[i*vector.Lanes:])
+		for k, t := range w.spans {
+			held[k] = uint16(b[t.lane&7])
 		}
 	}
+	for _, t := range w.spans {
+		a.ns = append(a.ns, t.ns)
+	}
+}
+
+// enter enters into the histograms what has been held back.
+func (a *apart) enter(d *distribution) {
+	for i := range d.bins {
+		h := &d.bins[i]
+		for k, ns := range a.ns {
+			h.enter(int(a.held[i*binsHeld+k]), ns)
+		}
+	}
+	a.ns = a.ns[:0]
 }
 
 // book takes what months are told of: the steps from one on to before another, all of
