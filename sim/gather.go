@@ -28,7 +28,7 @@ type gathering struct {
 
 	abreast *powerflow.Abreast
 	v       [vector.Lanes][]complex128
-	rows    []float64 // ones, then the values of each series, by lane
+	rows    []float64 // ones, then the values of each series, by lane, where states were sensed
 	moves   []results.Action
 	out     results.Gathered
 }
@@ -40,13 +40,9 @@ const (
 	gatherLeast = 3
 )
 
-// newGathering returns nil where states come whole or a recorder must see them one by one.
+// newGathering returns nil where a recorder must see intervals one by one.
 func newGathering(r *relay) *gathering {
-	e := r.e
-	if len(e.in.groups) > 0 {
-		return nil
-	}
-	g := &gathering{r: r, abreast: r.currents.NewAbreast(), rows: make([]float64, (len(e.in.values)+1)*vector.Lanes)}
+	g := &gathering{r: r, abreast: r.currents.NewAbreast(), rows: make([]float64, (len(r.e.in.values)+1)*vector.Lanes)}
 	for _, x := range r.recorders {
 		to, ok := x.(gatherer)
 		if !ok || !to.Gathers() {
@@ -101,7 +97,7 @@ func (g *gathering) fits() bool {
 		return false
 	}
 	for _, ev := range g.open {
-		if !ev.action && (!ev.sensed || ev.asInterval.End <= ev.asInterval.Start) {
+		if !ev.action && ev.asInterval.End <= ev.asInterval.Start {
 			return false
 		}
 	}
@@ -162,7 +158,7 @@ func (g *gathering) read() bool {
 	r, out := g.r, &g.out
 	l := out.State
 	g.list()
-	k := 0
+	k, sensed := 0, false // all of them are, or none
 	for _, ev := range g.events {
 		if !ev.interval {
 			continue
@@ -173,11 +169,10 @@ func (g *gathering) read() bool {
 			out.Settled |= 1 << k
 		}
 		g.load(k, ev)
-		var generation complex128
-		for _, va := range s.Generation {
-			generation += va
-		}
+		generation, load := sum(s.Generation), sum(s.Load)
 		l.Generation[k], l.GenerationVar[k] = real(generation), imag(generation)
+		l.Load[k], l.LoadVar[k] = real(load), imag(load)
+		sensed = ev.sensed
 		k++
 		if k == g.lanes {
 			for ; k < vector.Lanes; k++ { // lanes beyond stand as the last does
@@ -185,16 +180,27 @@ func (g *gathering) read() bool {
 			}
 		}
 	}
-	r.follow(g.month)
 	r.solved = -1 // the currents of quiet steps are read anew
-	r.currents.Drive(g.rows)
 	g.abreast.Load(&g.v)
-	below := g.abreast.Read(&out.Closed)
+	g.abreast.Flows(&out.Closed)
+	if !sensed {
+		return true
+	}
+	r.follow(g.month)
+	r.currents.Drive(g.rows)
+	below := g.abreast.Draws()
 	for k := range g.lanes {
 		l.Load[k] = r.currents.Drawn[k] + l.Generation[k]
 		l.LoadVar[k] = g.abreast.Var[k] + l.GenerationVar[k]
 	}
 	return below&(1<<g.lanes-1) == 0
+}
+
+func sum(x []complex128) (all complex128) {
+	for _, va := range x {
+		all += va
+	}
+	return all
 }
 
 // list lists the steps and their actions.

@@ -78,9 +78,11 @@ func TestGatheringChangesNothing(t *testing.T) {
 		if testing.Short() && seed > 4 {
 			break
 		}
-		study := wild(seed) // without functions, which are read where they are solved
-		s := string(study["feeder/generators.csv"].Data)
-		study["feeder/generators.csv"] = text(strings.ReplaceAll(s, ",f\n", ",\n"))
+		study := wild(seed)
+		if seed%3 > 0 { // without functions, with which states come whole
+			s := string(study["feeder/generators.csv"].Data)
+			study["feeder/generators.csv"] = text(strings.ReplaceAll(s, ",f\n", ",\n"))
+		}
 		studies[fmt.Sprint("wild ", seed)] = study
 	}
 	gathered, single := 0, 0

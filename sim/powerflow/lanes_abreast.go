@@ -61,16 +61,13 @@ func putTurned(x, y *[vector.Width]float64, k int, z complex128) {
 	y[k], y[vector.Lanes+k] = imag(z), -real(z)
 }
 
-// Read reads flows and what injections draw for the powers that Follow and Drive say, with
-// the capacitors of each lane as they are. It returns the lanes in which some injection
-// stands below the corner: those are not read right. Coupling and Source are left alone.
-func (a *Abreast) Read(closed *[vector.Lanes][]bool) (below uint8) {
+// Flows reads what elements take in, with the capacitors of each lane as they are. Coupling
+// and Source are left alone.
+func (a *Abreast) Flows(closed *[vector.Lanes][]bool) {
 	c := a.LaneCurrents
-	v := a.Block.v
-	below = c.l.draw(c.put, a.Block, c.asked, vector.All)
-	c.elements.Set(c.Flow, v)
+	c.elements.Set(c.Flow, a.Block.v)
 	c.capacitors.Coef = a.closed // Use comes before the next block
-	c.capacitors.Set(c.Flow, v)
+	c.capacitors.Set(c.Flow, a.Block.v)
 	for _, b := range a.banks {
 		for k := range vector.Lanes {
 			if closed[k][b.index] {
@@ -81,7 +78,15 @@ func (a *Abreast) Read(closed *[vector.Lanes][]bool) (below uint8) {
 			}
 		}
 	}
-	c.power.Watch(c.drawn, v, c.put, vector.All, &c.Drawn)
+}
+
+// Draws reads what injections draw together for the powers that Follow and Drive say. It
+// returns the lanes in which some injection stands below the corner: those are not read
+// right.
+func (a *Abreast) Draws() (below uint8) {
+	c := a.LaneCurrents
+	below = c.l.draw(c.put, a.Block, c.asked, vector.All)
+	c.power.Watch(c.drawn, a.Block.v, c.put, vector.All, &c.Drawn)
 	c.power.Watch(c.drawn, a.Turned, c.put, vector.All, &a.Var)
 	for k := range vector.Lanes {
 		c.Drawn[k], a.Var[k] = -c.Drawn[k], -a.Var[k]

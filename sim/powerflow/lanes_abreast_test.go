@@ -82,7 +82,8 @@ seeds:
 		c.Follow(p, q, share)
 		c.Drive(rows)
 		a.Load(&v)
-		told := a.Read(&closed)
+		a.Flows(&closed)
+		told := a.Draws()
 		if told&low != low {
 			t.Errorf("seed %d: lanes %b stand below the corner, told %b", seed, low, told)
 		}
