@@ -25,9 +25,9 @@ type Lanes struct {
 
 	// Values: the independent unknowns level by level of the factor, the dependent ones,
 	// then two of each fixed voltage. Of v the first of these two is the voltage that
-	// injections see, of x the second that of the equations; the first of x takes the
-	// current that is put into a fixed voltage. x has currents, in whose place the voltages
-	// that follow come on the way back: a group reads its own currents before it writes.
+	// injections see, the second that of the equations; the first of x takes the current that
+	// is put into a fixed voltage. x has currents, and of the dependent ones the voltages that
+	// follow.
 	*Block
 	flat      *Curve // of the voltages that all lanes start from
 	x         []float64
@@ -171,6 +171,7 @@ func (l *Lanes) Drive(values []float64) { l.asked.drive(values) }
 // Source sets what a fixed voltage is in a lane, V.
 func (l *Lanes) Source(lane, fixed int, z complex128) {
 	vector.Put(l.v, l.all+fixed, lane, z)
+	vector.Put(l.v, l.held+fixed, lane, z)
 	vector.Put(l.x, l.held+fixed, lane, z)
 }
 
@@ -274,10 +275,16 @@ func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) 
 	l.gather.Add(l.x, l.x)
 	l.gatherBy.Add(l.x, l.x)
 	l.forward.Add(l.x, l.x)
-	l.backward.Set(l.x, l.x)
-	l.expand.Set(l.x, l.x)
-	l.expandBy.Set(l.x, l.x)
-	vector.Advance(l.v, l.x, l.weight, mask&^below, moved)
+	keep := mask &^ below
+	var found vector.Moved
+	l.backward.Back(l.v, l.x, l.weight, keep, &found)
+	l.expand.Set(l.x, l.v)
+	l.expandBy.Set(l.x, l.v)
+	free := l.free * vector.Width
+	vector.Advance(l.v[free:], l.x[free:], l.weight[l.free:], keep, moved)
+	for lane := range moved {
+		moved[lane] = max(moved[lane], found.Most(lane))
+	}
 	return below
 }
 

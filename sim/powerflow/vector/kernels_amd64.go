@@ -184,3 +184,14 @@ func shift(v, coef *float64, offset *int64, times *float64, directions, n int) {
 		plainShift(v, coef, offset, times, directions, n)
 	}
 }
+
+func groupsBack(v, x *float64, index *int32, coef, lanes, weight *float64, mask *uint64, moved *float64, groups int) {
+	switch kernel {
+	case 2:
+		groupsBack512(v, x, index, coef, lanes, weight, mask, moved, groups)
+	case 1:
+		groupsBack256(v, x, index, coef, lanes, weight, mask, moved, groups)
+	default:
+		plainBack(v, x, index, coef, lanes, weight, mask, moved, groups)
+	}
+}

@@ -62,3 +62,7 @@ func pick(a, b *float64, from *uint64, n int) { plainPick(a, b, from, n) }
 func shift(v, coef *float64, offset *int64, times *float64, directions, n int) {
 	plainShift(v, coef, offset, times, directions, n)
 }
+
+func groupsBack(v, x *float64, index *int32, coef, lanes, weight *float64, mask *uint64, moved *float64, groups int) {
+	plainBack(v, x, index, coef, lanes, weight, mask, moved, groups)
+}

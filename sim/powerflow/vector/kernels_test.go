@@ -188,6 +188,45 @@ func twins(random func() *rand.Rand, wild bool) (out []twin) {
 			return [][]float64{whole, from}
 		}})
 	}
+	out = append(out, twin{"groups Back", func(t *testing.T, k int) [][]float64 {
+		rng := random()
+		whole, v := fence(n, rng)
+		_, x := fence(n, rng)
+		if wild {
+			odd(v, rng)
+			odd(x, rng)
+		}
+		var g Groups
+		for i := 0; i < n-3; {
+			rows := 1 + rng.IntN(3)
+			var src []int
+			for r := range rows {
+				src = append(src, i+r)
+			}
+			for range rng.IntN(4) {
+				src = append(src, rng.IntN(n))
+			}
+			if rng.IntN(2) == 0 {
+				g.Group(i, rows, src...)
+			} else {
+				g.LaneGroup(i, rows, src...)
+			}
+			i += rows
+		}
+		for range 2 * g.coefs {
+			g.Coef = append(g.Coef, rng.NormFloat64())
+		}
+		_, g.LaneCoef = fence(g.laneCoefs, rng)
+		w := make([]float64, n)
+		for i := range w {
+			w[i] = rng.Float64()
+		}
+		m := &masks[rng.IntN(256)]
+		var moved Moved
+		f := []func(v, x *float64, index *int32, coef, lanes, weight *float64, mask *uint64, moved *float64, groups int){plainBack, groupsBack256, groupsBack512}[k]
+		f(&v[0], &x[0], &g.index[0], first(g.Coef), first(g.LaneCoef), &w[0], &m[0], &moved.most[0], g.groups)
+		return [][]float64{whole, moved.most[:], moved.sum[:]}
+	}})
 	out = append(out, twin{"scale", func(t *testing.T, k int) [][]float64 {
 		rng := random()
 		whole, power := fence(n, rng)

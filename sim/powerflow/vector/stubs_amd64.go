@@ -69,6 +69,11 @@ func groupsSet256(dst *float64, src *float64, index *int32, coef *float64, lanes
 //go:noescape
 func groupsAdd256(dst *float64, src *float64, index *int32, coef *float64, lanes *float64, groups int)
 
+// groupsBack256 is the kernel of Groups.Back.
+//
+//go:noescape
+func groupsBack256(v *float64, x *float64, index *int32, coef *float64, lanes *float64, weight *float64, mask *uint64, moved *float64, groups int)
+
 // products256 is the kernel of Products.
 //
 //go:noescape
@@ -143,6 +148,11 @@ func groupsSet512(dst *float64, src *float64, index *int32, coef *float64, lanes
 //
 //go:noescape
 func groupsAdd512(dst *float64, src *float64, index *int32, coef *float64, lanes *float64, groups int)
+
+// groupsBack512 is the kernel of Groups.Back.
+//
+//go:noescape
+func groupsBack512(v *float64, x *float64, index *int32, coef *float64, lanes *float64, weight *float64, mask *uint64, moved *float64, groups int)
 
 // products512 is the kernel of Products.
 //

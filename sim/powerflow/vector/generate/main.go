@@ -36,6 +36,7 @@ func main() {
 		m.predict()
 		m.groups("Set")
 		m.groups("Add")
+		m.back()
 		m.products()
 		m.pick()
 		m.shift()
