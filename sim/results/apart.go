@@ -17,8 +17,8 @@ type apart struct {
 	losses, caps    vector.Dots // of reactive power: one row
 	lossVar, capVar [vector.Lanes]float64
 	row             [vector.Lanes]float64
-	held            []uint16 // bins of settled voltages, by point and interval, that wait for others
-	ns              []int64  // of these intervals
+	held            []heldBins // settled voltages that wait for others
+	last            int        // of held that is being filled
 
 	span              [vector.Lanes]float64 // ns, 0 beyond the last
 	settled, settling uint8
@@ -29,12 +29,22 @@ type apart struct {
 // settling one is no news.
 type apartPoint struct{ sum, low, high float64 }
 
-// binsHeld is how many intervals' voltages wait to be entered into the histograms: those
-// of many points are far apart in memory, and each is best met seldom.
-const binsHeld = 32
+// heldBins is the bins of up to binsHeld intervals, by point and interval: as much of a
+// point as a line of the cache has.
+type heldBins struct {
+	bins []uint16
+	ns   []int64 // by interval
+}
+
+// binsHeld times binLists is how many intervals' voltages wait to be entered into the
+// histograms: those of many points are far apart in memory, and each is best met seldom.
+const (
+	binsHeld = 32
+	binLists = 4
+)
 
 func newApart(w *watch) *apart {
-	a := &apart{points: make([]apartPoint, len(w.meter.Points)), ns: make([]int64, 0, binsHeld)}
+	a := &apart{points: make([]apartPoint, len(w.meter.Points))}
 	for k := range a.energy {
 		a.energy[k] = make([]float64, len(w.rowOf[k]))
 	}
@@ -198,34 +208,47 @@ func (w *watch) share() {
 		return
 	}
 	vector.Bins(w.bins, w.pu, binWidth, lastBin)
-	a := w.apart
-	if len(a.ns)+len(w.spans) > binsHeld {
-		a.enter(d)
-	}
-	if a.held == nil {
-		a.held = make([]uint16, len(d.bins)*binsHeld)
-	}
-	at := len(a.ns)
+	to := w.apart.room(len(w.spans), d)
+	at := len(to.ns)
 	for i := range d.bins {
-		held, b := a.held[i*binsHeld+at:(i+1)*binsHeld], (*[vector.Lanes]int32)(w.bins[i*vector.Lanes:])
+		held, b := to.bins[i*binsHeld+at:(i+1)*binsHeld], (*[vector.Lanes]int32)(w.bins[i*vector.Lanes:])
 		for k, t := range w.spans {
-			held[k] = uint16(b[t.lane&7])
+			held[k] = uint16(b[t.lane&(vector.Lanes-1)])
 		}
 	}
 	for _, t := range w.spans {
-		a.ns = append(a.ns, t.ns)
+		to.ns = append(to.ns, t.ns)
 	}
+}
+
+// room returns a list with room for some intervals.
+func (a *apart) room(intervals int, d *distribution) *heldBins {
+	if a.held == nil {
+		a.held = make([]heldBins, binLists)
+		for i := range a.held {
+			a.held[i] = heldBins{make([]uint16, len(d.bins)*binsHeld), make([]int64, 0, binsHeld)}
+		}
+	}
+	if len(a.held[a.last].ns)+intervals > binsHeld {
+		if a.last++; a.last == binLists {
+			a.enter(d)
+		}
+	}
+	return &a.held[a.last]
 }
 
 // enter enters into the histograms what has been held back.
 func (a *apart) enter(d *distribution) {
 	for i := range d.bins {
-		h := &d.bins[i]
-		for k, ns := range a.ns {
-			h.enter(int(a.held[i*binsHeld+k]), ns)
+		for k := range a.held {
+			x := &a.held[k]
+			d.bins[i].enterAll(x.bins[i*binsHeld:(i+1)*binsHeld], x.ns)
 		}
 	}
-	a.ns = a.ns[:0]
+	for k := range a.held {
+		a.held[k].ns = a.held[k].ns[:0]
+	}
+	a.last = 0
 }
 
 // book takes what months are told of: the steps from one on to before another, all of

@@ -255,6 +255,24 @@ func (h *histogram) enterLanes(bin *[vector.Lanes]int32, mask uint8, ns int64) {
 	h.total += vector.Lanes * ns
 }
 
+// enterAll adds to each bin the time that stands beside it.
+func (h *histogram) enterAll(bins []uint16, ns []int64) {
+	bins = bins[:len(ns)]
+	time, first := h.time, h.first
+	var total int64
+	for k, t := range ns {
+		at := int(bins[k]) - first
+		if uint(at) >= uint(len(time)) {
+			h.grow(int(bins[k]))
+			time, first = h.time, h.first
+			at = int(bins[k]) - first
+		}
+		time[at] += t
+		total += t
+	}
+	h.total += total
+}
+
 // reach makes room for a bin.
 func (h *histogram) reach(b int) {
 	if b < h.first || b >= h.first+len(h.time) {
