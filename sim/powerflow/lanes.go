@@ -38,33 +38,22 @@ type Lanes struct {
 	held      int     // the second value of the first fixed voltage
 	weight    []float64
 
-	pull, gather, expand       vector.Rows
-	pullBy, gatherBy, expandBy vector.Groups // the same in lanes of their own positions
-	forward, backward          vector.Groups
-	states                     *states // of lanes of their own positions
-	pulls                      [][]fixedStamp
-	gathers, expands           []int32 // coefficients
-	blocks                     *blocks
-	down, up                   []int32   // places in W; in M, and below zero −1 − place in W
-	downs                      [][]int32 // by group of columns: places in down of its W
-	ups                        [][2]int  // by group of columns: its part of up
-	downBy, upBy               []laneCoef
+	states    *states // of lanes of their own positions
+	blocks    *blocks
+	parts     []lanePart
+	partOf    []int32    // by group of columns
+	valuePart []int32    // by value
+	downs     [][]coefAt // by group of columns: where its W goes forth
+	ups       []coefs    // by group of columns: where its M and W come back
+	forth     bool       // the subtrees have gone forth already
+	below     uint8      // lanes that had a load below the corner then
 
-	loads  [lists]*vector.Loads
 	asked  *powers
-	blank  [][2]int // parts of values at which no list begins
-	listed []int32  // injections in the order of the lists
-	list   []int8   // by injection: its list, −1: it is one of a group
-	member []int32  // by injection: its place in the list
+	listed []int32 // injections in the order of the lists
+	list   []int32 // by injection: its list, by part and kind; −1: it is one of a group
+	member []int32 // by injection: its place in the list
 
 	least float64 // change that keeps every node's mismatch, where loads are at their largest
-}
-
-// laneCoef is a coefficient that differs from lane to lane: its number, and its place as in
-// down and up.
-type laneCoef struct {
-	coef  int
-	place int32
 }
 
 // Block is the voltages that lanes found: who takes it out of a Lanes, by Exchange, can
@@ -96,9 +85,11 @@ const (
 
 // NewLanes prepares lanes of a solver. largest is the most that each injection draws,
 // VA, whatever the instant.
-func NewLanes(s *Solver, largest []float64) *Lanes {
+func NewLanes(s *Solver, largest []float64) *Lanes { return newLanes(s, largest, mostOfPart) }
+
+func newLanes(s *Solver, largest []float64, mostOfPart int) *Lanes {
 	l := &Lanes{s: s, version: -1, free: s.red.free}
-	l.place()
+	l.place(mostOfPart)
 	l.rows()
 	l.branches()
 	l.tolerate(largest)
@@ -119,19 +110,20 @@ func (l *Lanes) refresh() {
 	before := l.version
 	l.version = s.version
 	put := func(r *vector.Rows, z complex128) { r.Coef = append(r.Coef, real(z), imag(z)) }
-	l.pull.Coef = l.pull.Coef[:0]
-	for _, row := range l.pulls {
-		for _, st := range row {
-			put(&l.pull, -s.Net.Elements[st.element].Y[st.entry]*complex(s.coef(st.a)*s.coef(st.b), 0))
+	for k := range l.parts {
+		p := &l.parts[k]
+		p.pull.Coef, p.gather.Coef, p.expand.Coef = p.pull.Coef[:0], p.gather.Coef[:0], p.expand.Coef[:0]
+		for _, row := range p.pulls {
+			for _, st := range row {
+				put(&p.pull, -s.Net.Elements[st.element].Y[st.entry]*complex(s.coef(st.a)*s.coef(st.b), 0))
+			}
 		}
-	}
-	l.gather.Coef = l.gather.Coef[:0]
-	for _, c := range l.gathers {
-		put(&l.gather, complex(s.coef(c), 0))
-	}
-	l.expand.Coef = l.expand.Coef[:0]
-	for _, c := range l.expands {
-		put(&l.expand, complex(s.coef(c), 0))
+		for _, c := range p.gathers {
+			put(&p.gather, complex(s.coef(c), 0))
+		}
+		for _, c := range p.expands {
+			put(&p.expand, complex(s.coef(c), 0))
+		}
 	}
 	b := l.blocks
 	for i := range b.groups {
@@ -147,16 +139,17 @@ func (l *Lanes) refresh() {
 func (l *Lanes) take(group int) {
 	b := l.blocks
 	for _, k := range l.downs[group] {
-		z := b.w[l.down[k]]
-		l.forward.Coef[2*k], l.forward.Coef[2*k+1] = -real(z), -imag(z)
+		p := &l.parts[k.part]
+		z := b.w[p.down[k.at]]
+		p.forward.Coef[2*k.at], p.forward.Coef[2*k.at+1] = -real(z), -imag(z)
 	}
-	for k := l.ups[group][0]; k < l.ups[group][1]; k++ {
-		at := l.up[k]
-		if at >= 0 {
-			l.backward.Coef[2*k], l.backward.Coef[2*k+1] = real(b.m[at]), imag(b.m[at])
+	p := &l.parts[l.ups[group].part]
+	for k := l.ups[group].from; k < l.ups[group].to; k++ {
+		if at := p.up[k]; at >= 0 {
+			p.backward.Coef[2*k], p.backward.Coef[2*k+1] = real(b.m[at]), imag(b.m[at])
 		} else {
 			z := b.w[-1-at]
-			l.backward.Coef[2*k], l.backward.Coef[2*k+1] = -real(z), -imag(z)
+			p.backward.Coef[2*k], p.backward.Coef[2*k+1] = -real(z), -imag(z)
 		}
 	}
 }
@@ -225,8 +218,11 @@ func (l *Lanes) Solve(mask uint8, tol Tolerance) (arrived uint8) {
 		last[lane] = math.Inf(1)
 		l.Iterations[lane] = 0
 	}
+	l.forth = false
+	on := false
 	for range maxFixedPoint {
-		below := l.iterate(mask, &moved)
+		below := l.iterate(mask, &moved, on)
+		on = false
 		mask &^= below
 		for lane := range vector.Lanes {
 			if mask>>lane&1 == 0 {
@@ -250,6 +246,7 @@ func (l *Lanes) Solve(mask uint8, tol Tolerance) (arrived uint8) {
 					mask &^= 1 << lane
 				}
 			}
+			on = on || !(change*min(change/last[lane], 0.1) < limit) // of one that goes on so
 			last[lane] = change
 		}
 		if mask == 0 {
@@ -266,28 +263,6 @@ func (l *Lanes) Hold(mask uint8) (arrived uint8) {
 	return mask
 }
 
-// iterate moves the lanes of a mask by one iteration, and returns those that had a
-// load below the corner before it.
-func (l *Lanes) iterate(mask uint8, moved *[vector.Lanes]float64) (below uint8) {
-	below = l.draw(l.x, l.Block, l.asked, mask)
-	l.pull.Add(l.x, l.x)
-	l.pullBy.Add(l.x, l.x)
-	l.gather.Add(l.x, l.x)
-	l.gatherBy.Add(l.x, l.x)
-	l.forward.Add(l.x, l.x)
-	keep := mask &^ below
-	var found vector.Moved
-	l.backward.Back(l.v, l.x, l.weight, keep, &found)
-	l.expand.Set(l.x, l.v)
-	l.expandBy.Set(l.x, l.v)
-	free := l.free * vector.Width
-	vector.Advance(l.v[free:], l.x[free:], l.weight[l.free:], keep, moved)
-	for lane := range moved {
-		moved[lane] = max(moved[lane], found.Most(lane))
-	}
-	return below
-}
-
 // The lists of injections: by whether they stand across a pair (1) and are not of constant
 // power alone (2), and those that are the first at their value.
 const (
@@ -299,14 +274,8 @@ const (
 // draw sets the currents that are put in to what the injections draw at the voltages of a
 // block, negative, and returns the lanes with a load below the corner.
 func (l *Lanes) draw(into []float64, b *Block, a *powers, mask uint8) (below uint8) {
-	for _, part := range l.blank {
-		clear(into[part[0]:part[1]])
-	}
-	for i := lists - 1; i >= 0; i-- { // those that begin come first
-		below |= l.loads[i].Draw(into, b.v, a.power[i])
-	}
-	for g := range l.s.Groups {
-		below |= l.drawGroup(into, b, a, g, mask)
+	for k := range l.parts {
+		below |= l.drawPart(into, b, a, k, mask)
 	}
 	return below
 }

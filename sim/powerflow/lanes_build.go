@@ -9,26 +9,41 @@ import (
 	"yearflow/sim/powerflow/vector"
 )
 
-// place gives every unknown its value.
-func (l *Lanes) place() {
+// place gives every unknown its value: the independent ones part by part, the top last,
+// within a part level by level of the factor, then the dependent ones part by part.
+func (l *Lanes) place(mostOfPart int) {
 	s := l.s
 	l.slot = make([]int32, len(s.Net.Unknowns))
 	l.blocks = newBlocks(s.pat)
+	l.divide(mostOfPart)
 	l.rank = make([]int32, l.free)
-	next := int32(0)
-	for _, g := range l.blocks.levels() {
-		l.order = append(l.order, g)
-		for _, c := range l.blocks.groups[g].columns {
-			l.rank[c] = next
-			next++
+	order := l.blocks.levels()
+	for i := range l.parts {
+		k := (i + 1) % len(l.parts)
+		for _, g := range order {
+			if l.partOf[g] != int32(k) {
+				continue
+			}
+			l.order = append(l.order, g)
+			for _, c := range l.blocks.groups[g].columns {
+				l.rank[c] = int32(len(l.valuePart))
+				l.valuePart = append(l.valuePart, int32(k))
+			}
 		}
 	}
-	l.all = l.free
-	for u, terms := range s.red.terms {
-		if !plainTerm(terms) {
-			l.slot[u] = int32(l.all)
-			l.all++
+	for k := range l.parts {
+		l.parts[k].dependent[0] = len(l.valuePart)
+		for u, terms := range s.red.terms {
+			if !plainTerm(terms) && l.partOfTerms(terms) == int32(k) {
+				l.slot[u] = int32(len(l.valuePart))
+				l.valuePart = append(l.valuePart, int32(k))
+			}
 		}
+		l.parts[k].dependent[1] = len(l.valuePart)
+	}
+	l.all = len(l.valuePart)
+	for range s.Net.Fixed {
+		l.valuePart = append(l.valuePart, 0)
 	}
 	l.held = l.all + len(s.Net.Fixed)
 	l.weight = make([]float64, l.all)
@@ -65,33 +80,45 @@ func (l *Lanes) rows() {
 		for _, x := range st {
 			src = append(src, l.held+int(x.fixed))
 		}
-		l.row(&l.pull, &l.pullBy, int(l.rank[row]), src)
-		l.pulls = append(l.pulls, st)
+		p := &l.parts[l.valuePart[l.rank[row]]]
+		l.row(&p.pull, &p.pullBy, int(l.rank[row]), src)
+		p.pulls = append(p.pulls, st)
 	}
-	into := make([][]int, l.free)
-	coef := make([][]int32, l.free)
+	type entry struct {
+		part, target, source int
+		coef                 int32
+	}
+	var into []entry
 	for u, terms := range s.red.terms {
 		if plainTerm(terms) {
 			continue
 		}
+		k := l.valuePart[l.slot[u]]
+		p := &l.parts[k]
 		var src []int
 		for _, t := range terms {
 			from := l.held + int(-1-t.col)
 			if t.col >= 0 {
 				from = int(l.rank[s.pat.place[t.col]])
-				into[from] = append(into[from], int(l.slot[u]))
-				coef[from] = append(coef[from], t.coef)
+				into = append(into, entry{int(k), from, int(l.slot[u]), t.coef})
 			}
 			src = append(src, from)
-			l.expands = append(l.expands, t.coef)
+			p.expands = append(p.expands, t.coef)
 		}
-		l.row(&l.expand, &l.expandBy, int(l.slot[u]), src)
+		l.row(&p.expand, &p.expandBy, int(l.slot[u]), src)
 	}
-	for row, src := range into {
-		if len(src) > 0 {
-			l.row(&l.gather, &l.gatherBy, row, src)
-			l.gathers = append(l.gathers, coef[row]...)
+	sort.SliceStable(into, func(a, b int) bool {
+		return into[a].part < into[b].part || into[a].part == into[b].part && into[a].target < into[b].target
+	})
+	for i := 0; i < len(into); {
+		x := into[i]
+		p := &l.parts[x.part]
+		var src []int
+		for ; i < len(into) && into[i].part == x.part && into[i].target == x.target; i++ {
+			src = append(src, into[i].source)
+			p.gathers = append(p.gathers, into[i].coef)
 		}
+		l.row(&p.gather, &p.gatherBy, x.target, src)
 	}
 	l.sweep()
 }
@@ -113,8 +140,12 @@ func (l *Lanes) sweep() {
 		w      [mostColumns]int32 // by row of the group
 	}
 	left := make([][]entry, len(b.groups)) // of each group
+	owner := make([]int32, len(b.w))
 	for i := range b.groups {
 		g := &b.groups[i]
+		for k := range len(g.rows) * len(g.columns) {
+			owner[g.w+k] = int32(i)
+		}
 		for c, col := range g.columns {
 			for r, row := range g.rows {
 				to := b.of[row]
@@ -135,17 +166,12 @@ func (l *Lanes) sweep() {
 			}
 		}
 	}
-	owner := make([]int32, len(b.w))
-	for i := range b.groups {
-		g := &b.groups[i]
-		for k := range len(g.rows) * len(g.columns) {
-			owner[g.w+k] = int32(i)
-		}
-	}
+	l.downs, l.ups = make([][]coefAt, len(b.groups)), make([]coefs, len(b.groups))
 	for _, o := range l.order {
 		if len(left[o]) == 0 {
 			continue
 		}
+		p := &l.parts[l.partOf[o]]
 		columns := b.groups[o].columns
 		var src []int
 		var down []int32
@@ -156,20 +182,20 @@ func (l *Lanes) sweep() {
 			differs = differs || l.states.differs(b, owner[slices.Min(e.w[:len(columns)])])
 		}
 		if differs {
-			l.downBy = appendLane(l.downBy, l.forward.LaneGroup(int(l.rank[columns[0]]), len(columns), src...), down)
+			p.downBy = appendLane(p.downBy, p.forward.LaneGroup(int(l.rank[columns[0]]), len(columns), src...), down)
 			continue
 		}
-		l.down = append(l.down, down...)
-		l.forward.Group(int(l.rank[columns[0]]), len(columns), src...)
-	}
-	l.downs, l.ups = make([][]int32, len(b.groups)), make([][2]int, len(b.groups))
-	for k, at := range l.down {
-		if int(at) < len(b.w)-1 {
-			l.downs[owner[at]] = append(l.downs[owner[at]], int32(k))
+		for i, at := range down {
+			if int(at) < len(b.w)-1 {
+				l.downs[owner[at]] = append(l.downs[owner[at]], coefAt{l.partOf[o], int32(len(p.down) + i)})
+			}
 		}
+		p.down = append(p.down, down...)
+		p.forward.Group(int(l.rank[columns[0]]), len(columns), src...)
 	}
 	for i := len(l.order) - 1; i >= 0; i-- {
-		g := &b.groups[l.order[i]]
+		o := l.order[i]
+		p, g := &l.parts[l.partOf[o]], &b.groups[o]
 		n := len(g.columns)
 		var src []int
 		var up []int32
@@ -185,15 +211,18 @@ func (l *Lanes) sweep() {
 				up = append(up, int32(-1-(g.w+r*n+c)))
 			}
 		}
-		if l.states.differs(b, l.order[i]) {
-			l.upBy = appendLane(l.upBy, l.backward.LaneGroup(int(l.rank[g.columns[0]]), n, src...), up)
+		if l.states.differs(b, o) {
+			p.upBy = appendLane(p.upBy, p.backward.LaneGroup(int(l.rank[g.columns[0]]), n, src...), up)
 			continue
 		}
-		l.ups[l.order[i]] = [2]int{len(l.up), len(l.up) + len(up)}
-		l.up = append(l.up, up...)
-		l.backward.Group(int(l.rank[g.columns[0]]), n, src...)
+		l.ups[o] = coefs{l.partOf[o], len(p.up), len(p.up) + len(up)}
+		p.up = append(p.up, up...)
+		p.backward.Group(int(l.rank[g.columns[0]]), n, src...)
 	}
-	l.forward.Coef, l.backward.Coef = make([]float64, 2*len(l.down)), make([]float64, 2*len(l.up))
+	for k := range l.parts {
+		p := &l.parts[k]
+		p.forward.Coef, p.backward.Coef = make([]float64, 2*len(p.down)), make([]float64, 2*len(p.up))
+	}
 }
 
 // appendLane appends the places of coefficients from first on.
@@ -207,12 +236,15 @@ func appendLane(to []laneCoef, first int, places []int32) []laneCoef {
 // branches sorts the injections into lists.
 func (l *Lanes) branches() {
 	s := l.s
-	for i := range l.loads {
-		l.loads[i] = vector.NewLoads(i&1 == 1, i&2 == 2)
+	for k := range l.parts {
+		p := &l.parts[k]
+		for i := range p.loads {
+			p.loads[i] = vector.NewLoads(i&1 == 1, i&2 == 2)
+		}
+		p.loads[firstWye], p.loads[firstZIP] = vector.NewFirstLoads(false), vector.NewFirstLoads(true)
 	}
-	l.loads[firstWye], l.loads[firstZIP] = vector.NewFirstLoads(false), vector.NewFirstLoads(true)
 	begun := make([]bool, l.held)
-	l.list, l.member = make([]int8, len(s.Injections)), make([]int32, len(s.Injections))
+	l.list, l.member = make([]int32, len(s.Injections)), make([]int32, len(s.Injections))
 	l.listed = make([]int32, len(s.Injections))
 	for k := range l.listed {
 		l.listed[k] = int32(k)
@@ -235,28 +267,34 @@ func (l *Lanes) branches() {
 		if zip {
 			list += 2
 		}
+		part := l.valuePart[l.slot[j.From]]
 		if at := l.slot[j.From]; j.To == network.Ground && !begun[at] {
 			begun[at] = true
 			if list = firstWye; zip {
 				list = firstZIP
 			}
+		} else if j.To != network.Ground {
+			part = max(part, l.valuePart[to])
 		}
 		least := 0.0
 		if j.Bent() {
 			least = Corner * Corner * j.Nominal * j.Nominal
 		}
 		n := j.Nominal
-		l.list[k], l.member[k] = int8(list), int32(l.loads[list].Len())
-		l.loads[list].Branch(int(l.slot[j.From]), to, least, [6]float64{j.PC, j.PI / n, j.PZ / (n * n), j.QC, j.QI / n, j.QZ / (n * n)})
+		loads := l.parts[part].loads[list]
+		l.list[k], l.member[k] = part*lists+int32(list), int32(loads.Len())
+		loads.Branch(int(l.slot[j.From]), to, least, [6]float64{j.PC, j.PI / n, j.PZ / (n * n), j.QC, j.QI / n, j.QZ / (n * n)})
 	}
 	l.Block, l.asked = l.NewBlock(), l.newPowers()
 	for at := 0; at < l.held; at++ {
+		p := &l.parts[l.valuePart[at]]
+		n := len(p.blank)
 		switch {
 		case begun[at]:
-		case at > 0 && !begun[at-1]:
-			l.blank[len(l.blank)-1][1] = (at + 1) * vector.Width
+		case n > 0 && p.blank[n-1][1] == at*vector.Width:
+			p.blank[n-1][1] = (at + 1) * vector.Width
 		default:
-			l.blank = append(l.blank, [2]int{at * vector.Width, (at + 1) * vector.Width})
+			p.blank = append(p.blank, [2]int{at * vector.Width, (at + 1) * vector.Width})
 		}
 	}
 }

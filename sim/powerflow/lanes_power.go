@@ -5,9 +5,9 @@ import "yearflow/sim/powerflow/vector"
 // powers are what the injections of a Lanes are asked for, by lane.
 type powers struct {
 	l      *Lanes
-	power  [lists][]float64 // values: P and Q at 1 p.u., VA, as the lists have them
-	given  []complex128     // by group and lane
-	drives [lists]vector.Drives
+	power  [][]float64  // by part and list, values: P and Q at 1 p.u., VA, as the lists have them
+	given  []complex128 // by group and lane
+	drives []vector.Drives
 	lead   []drive // by group: how its first member's power follows the series
 }
 
@@ -19,14 +19,16 @@ type drive struct {
 
 func (l *Lanes) newPowers() *powers {
 	a := &powers{l: l, given: make([]complex128, len(l.s.Groups)*vector.Lanes)}
-	for i := range l.loads {
-		a.power[i] = vector.Make(l.loads[i].Len())
+	for k := range l.parts {
+		for _, list := range l.parts[k].loads {
+			a.power = append(a.power, vector.Make(list.Len()))
+		}
 	}
 	return a
 }
 
 func (a *powers) follow(l *Lanes, p, q []int, share []complex128) {
-	a.drives = [lists]vector.Drives{}
+	a.drives = make([]vector.Drives, len(a.power))
 	a.lead = make([]drive, len(l.s.Groups))
 	for _, k := range l.listed {
 		if list := l.list[k]; list >= 0 {

@@ -30,12 +30,14 @@ type states struct {
 	begin  map[int]int // by slot of an own column: its y
 	moving []movingEntry
 
-	pull, gather, expand int // first coefficients
-	forward, backward    int
-	inverse, lower       map[int]int // by column 1/D, by slot L
-	w, m                 map[int]int // by place in blocks.w and blocks.m
-	n                    int         // values given away
+	at             []partCoefs // first coefficients, by part
+	inverse, lower map[int]int // by column 1/D, by slot L
+	w, m           map[int]int // by place in blocks.w and blocks.m
+	n              int         // values given away
 }
+
+// partCoefs is where the coefficients of a part begin.
+type partCoefs struct{ pull, gather, expand, forward, backward int }
 
 // movingEntry is an entry of the equations that devices change: its value, and the part
 // that they do not change.
@@ -49,11 +51,15 @@ type movingEntry struct {
 // devices, which Position sets; before that they are those of the solver. It returns nil
 // where the equations are singular there.
 func NewPositionedLanes(s *Solver, largest []float64) *Lanes {
+	return newPositionedLanes(s, largest, mostOfPart)
+}
+
+func newPositionedLanes(s *Solver, largest []float64, mostOfPart int) *Lanes {
 	if s.ready() != nil || s.singular >= 0 {
 		return nil
 	}
 	l := &Lanes{s: s, version: -1, free: s.red.free, states: &states{s: s}}
-	l.place()
+	l.place(mostOfPart)
 	l.states.mark(l.blocks)
 	l.rows()
 	l.branches()
@@ -102,8 +108,11 @@ func (t *states) room(n int) int {
 func (t *states) build(l *Lanes) {
 	s, p, b := t.s, t.s.pat, l.blocks
 	t.red = s.red.clone()
-	t.pull, t.gather, t.expand = t.room(l.pullBy.LaneCoefs()), t.room(l.gatherBy.LaneCoefs()), t.room(l.expandBy.LaneCoefs())
-	t.forward, t.backward = t.room(l.forward.LaneCoefs()), t.room(l.backward.LaneCoefs())
+	for k := range l.parts {
+		p := &l.parts[k]
+		t.at = append(t.at, partCoefs{t.room(p.pullBy.LaneCoefs()), t.room(p.gatherBy.LaneCoefs()), t.room(p.expandBy.LaneCoefs()),
+			t.room(p.forward.LaneCoefs()), t.room(p.backward.LaneCoefs())})
+	}
 	t.begin, t.inverse, t.lower = map[int]int{}, map[int]int{}, map[int]int{}
 	t.w, t.m = map[int]int{}, map[int]int{}
 	constant := map[int]complex128{} // by value
@@ -123,12 +132,15 @@ func (t *states) build(l *Lanes) {
 			vector.Put(t.x, at, lane, z)
 		}
 	}
-	part := func(at, n int) []float64 { return t.x[at*vector.Width : (at+n)*vector.Width] }
-	l.pullBy.LaneCoef = part(t.pull, l.pullBy.LaneCoefs())
-	l.gatherBy.LaneCoef = part(t.gather, l.gatherBy.LaneCoefs())
-	l.expandBy.LaneCoef = part(t.expand, l.expandBy.LaneCoefs())
-	l.forward.LaneCoef = part(t.forward, l.forward.LaneCoefs())
-	l.backward.LaneCoef = part(t.backward, l.backward.LaneCoefs())
+	give := func(g *vector.Groups, at int) { g.LaneCoef = t.x[at*vector.Width : (at+g.LaneCoefs())*vector.Width] }
+	for k, at := range t.at {
+		p := &l.parts[k]
+		give(&p.pullBy, at.pull)
+		give(&p.gatherBy, at.gather)
+		give(&p.expandBy, at.expand)
+		give(&p.forward, at.forward)
+		give(&p.backward, at.backward)
+	}
 }
 
 // factor writes the columns' part of the program.
@@ -254,15 +266,17 @@ func (t *states) place(l *Lanes, constant map[int]complex128) {
 			constant[at] = -b.w[place]
 		}
 	}
-	for _, x := range l.downBy {
-		negative(t.forward+x.coef, x.place)
-	}
-	for _, x := range l.upBy {
-		if x.place < 0 {
-			negative(t.backward+x.coef, -1-x.place)
-			continue
+	for k, at := range t.at {
+		for _, x := range l.parts[k].downBy {
+			negative(at.forward+x.coef, x.place)
 		}
-		t.program.Row(vector.Minus, t.backward+x.coef, t.m[int(x.place)])
+		for _, x := range l.parts[k].upBy {
+			if x.place < 0 {
+				negative(at.backward+x.coef, -1-x.place)
+				continue
+			}
+			t.program.Row(vector.Minus, at.backward+x.coef, t.m[int(x.place)])
+		}
 	}
 }
 
@@ -298,18 +312,20 @@ func (l *Lanes) Position(lane int, ratio []float64, closed []bool) {
 		}
 		vector.Put(t.x, m.at, lane, z)
 	}
-	at := t.pull
-	for _, row := range l.pulls {
-		for _, st := range row {
-			vector.Put(t.x, at, lane, -s.Net.Elements[st.element].Y[st.entry]*coef(st.a)*coef(st.b))
-			at++
+	for k, at := range t.at {
+		p := &l.parts[k]
+		for _, row := range p.pulls {
+			for _, st := range row {
+				vector.Put(t.x, at.pull, lane, -s.Net.Elements[st.element].Y[st.entry]*coef(st.a)*coef(st.b))
+				at.pull++
+			}
 		}
-	}
-	for i, c := range l.gathers {
-		vector.Put(t.x, t.gather+i, lane, coef(c))
-	}
-	for i, c := range l.expands {
-		vector.Put(t.x, t.expand+i, lane, coef(c))
+		for i, c := range p.gathers {
+			vector.Put(t.x, at.gather+i, lane, coef(c))
+		}
+		for i, c := range p.expands {
+			vector.Put(t.x, at.expand+i, lane, coef(c))
+		}
 	}
 }
 

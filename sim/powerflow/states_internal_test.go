@@ -12,3 +12,14 @@ func (l *Lanes) Program() (rows, own, all int) {
 	}
 	return l.states.program.Len(), own, len(l.states.own)
 }
+
+// NewLanesOfParts prepares lanes, positioned or not, in parts of a size at most.
+func NewLanesOfParts(s *Solver, largest []float64, most int, positioned bool) *Lanes {
+	if positioned {
+		return newPositionedLanes(s, largest, most)
+	}
+	return newLanes(s, largest, most)
+}
+
+// Parts is the number of subtrees.
+func (l *Lanes) Parts() int { return len(l.parts) - 1 }
