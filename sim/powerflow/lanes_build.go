@@ -287,14 +287,8 @@ func (l *Lanes) branches() {
 	}
 	l.Block, l.asked = l.NewBlock(), l.newPowers()
 	for at := 0; at < l.held; at++ {
-		p := &l.parts[l.valuePart[at]]
-		n := len(p.blank)
-		switch {
-		case begun[at]:
-		case n > 0 && p.blank[n-1][1] == at*vector.Width:
-			p.blank[n-1][1] = (at + 1) * vector.Width
-		default:
-			p.blank = append(p.blank, [2]int{at * vector.Width, (at + 1) * vector.Width})
+		if !begun[at] {
+			l.parts[l.valuePart[at]].blank.Value(at)
 		}
 	}
 }

@@ -12,7 +12,7 @@ import (
 // on one path to the root.
 type lanePart struct {
 	loads [lists]*vector.Loads
-	blank [][2]int // parts of values at which no list begins
+	blank vector.Blank // values at which no list begins
 
 	pull, gather, expand       vector.Rows
 	pullBy, gatherBy, expandBy vector.Groups // the same in lanes of their own positions
@@ -196,9 +196,7 @@ func (l *Lanes) goBack(p *lanePart, keep uint8, found *vector.Moved, moved *[vec
 // voltages of a block, negative, and returns the lanes with a load below the corner.
 func (l *Lanes) drawPart(into []float64, b *Block, a *powers, part int, mask uint8) (below uint8) {
 	p := &l.parts[part]
-	for _, x := range p.blank {
-		clear(into[x[0]:x[1]])
-	}
+	p.blank.Clear(into)
 	for i := lists - 1; i >= 0; i-- { // those that begin come first
 		below |= p.loads[i].Draw(into, b.v, a.power[part*lists+i])
 	}

@@ -195,3 +195,14 @@ func groupsBack(v, x *float64, index *int32, coef, lanes, weight *float64, mask 
 		plainBack(v, x, index, coef, lanes, weight, mask, moved, groups)
 	}
 }
+
+func blank(x *float64, index *int32, n int) {
+	switch kernel {
+	case 2:
+		blank512(x, index, n)
+	case 1:
+		blank256(x, index, n)
+	default:
+		plainBlank(x, index, n)
+	}
+}

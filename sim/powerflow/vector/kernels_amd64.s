@@ -3469,6 +3469,26 @@ store1:
 	VZEROUPPER
 	RET
 
+// func blank256(x *float64, index *int32, n int)
+// Requires: AVX
+TEXT ·blank256(SB), NOSPLIT, $0-24
+	MOVQ   x+0(FP), AX
+	MOVQ   index+8(FP), CX
+	MOVQ   n+16(FP), DX
+	VXORPD Y0, Y0, Y0
+
+value:
+	MOVLQSX (CX), BX
+	ADDQ    $0x04, CX
+	VMOVUPD Y0, (AX)(BX*1)
+	VMOVUPD Y0, 64(AX)(BX*1)
+	VMOVUPD Y0, 32(AX)(BX*1)
+	VMOVUPD Y0, 96(AX)(BX*1)
+	DECQ    DX
+	JNZ     value
+	VZEROUPPER
+	RET
+
 // func shift256(v *float64, coef *float64, offset *int64, times *float64, directions int, n int)
 // Requires: AVX, FMA3
 TEXT ·shift256(SB), NOSPLIT, $0-48
@@ -5394,6 +5414,24 @@ value:
 	ADDQ      $0x00000080, CX
 	DECQ      BX
 	JNZ       value
+	VZEROUPPER
+	RET
+
+// func blank512(x *float64, index *int32, n int)
+// Requires: AVX, AVX512F
+TEXT ·blank512(SB), NOSPLIT, $0-24
+	MOVQ   x+0(FP), AX
+	MOVQ   index+8(FP), CX
+	MOVQ   n+16(FP), DX
+	VPXORQ Z0, Z0, Z0
+
+value:
+	MOVLQSX (CX), BX
+	ADDQ    $0x04, CX
+	VMOVUPD Z0, (AX)(BX*1)
+	VMOVUPD Z0, 64(AX)(BX*1)
+	DECQ    DX
+	JNZ     value
 	VZEROUPPER
 	RET
 

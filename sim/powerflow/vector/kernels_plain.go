@@ -66,3 +66,5 @@ func shift(v, coef *float64, offset *int64, times *float64, directions, n int) {
 func groupsBack(v, x *float64, index *int32, coef, lanes, weight *float64, mask *uint64, moved *float64, groups int) {
 	plainBack(v, x, index, coef, lanes, weight, mask, moved, groups)
 }
+
+func blank(x *float64, index *int32, n int) { plainBlank(x, index, n) }

@@ -285,6 +285,17 @@ func twins(random func() *rand.Rand, wild bool) (out []twin) {
 		f(&a[0], &b[0], &from[0], n)
 		return [][]float64{whole}
 	}})
+	out = append(out, twin{"blank", func(t *testing.T, k int) [][]float64 {
+		rng := random()
+		whole, x := fence(n, rng)
+		var b Blank
+		for range 1 + rng.IntN(n) {
+			b.Value(rng.IntN(n))
+		}
+		f := []func(x *float64, index *int32, n int){plainBlank, blank256, blank512}[k]
+		f(&x[0], &b.index[0], len(b.index))
+		return [][]float64{whole}
+	}})
 	out = append(out, twin{"shift", func(t *testing.T, k int) [][]float64 {
 		rng := random()
 		whole, v := fence(n, rng)

@@ -79,6 +79,11 @@ func groupsBack256(v *float64, x *float64, index *int32, coef *float64, lanes *f
 //go:noescape
 func products256(x *float64, index *int32, rows int)
 
+// blank256 is the kernel of Blank.
+//
+//go:noescape
+func blank256(x *float64, index *int32, n int)
+
 // shift256 is the kernel of Directions.Shift.
 //
 //go:noescape
@@ -163,6 +168,11 @@ func products512(x *float64, index *int32, rows int)
 //
 //go:noescape
 func pick512(a *float64, b *float64, from *uint64, n int)
+
+// blank512 is the kernel of Blank.
+//
+//go:noescape
+func blank512(x *float64, index *int32, n int)
 
 // shift512 is the kernel of Directions.Shift.
 //

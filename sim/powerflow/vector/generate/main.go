@@ -39,6 +39,7 @@ func main() {
 		m.back()
 		m.products()
 		m.pick()
+		m.blank()
 		m.shift()
 	}
 	Generate()
