@@ -11,11 +11,29 @@ import (
 
 // appendPU appends a voltage in p.u. with six decimals.
 func appendPU(dst []byte, x float64) []byte {
+	if scaled := x * 1e6; scaled >= 0 && scaled < 9_999_999 { // nearly all there are
+		n := uint32(scaled)
+		if scaled-float64(n) >= 0.5 {
+			n++
+		}
+		whole := n / 1_000_000
+		n -= whole * 1_000_000
+		a, b := n/10_000, n/100
+		c := n - b*100
+		b -= a * 100
+		return append(dst, byte('0'+whole), '.', tens[a], ones[a], tens[b], ones[b], tens[c], ones[c])
+	}
 	if math.IsNaN(x) {
 		return dst
 	}
 	return appendFixed(dst, x, 6)
 }
+
+// The two digits of a number below a hundred.
+const (
+	tens = "0000000000111111111122222222223333333333444444444455555555556666666666777777777788888888889999999999"
+	ones = "0123456789012345678901234567890123456789012345678901234567890123456789012345678901234567890123456789"
+)
 
 // appendFigure appends a power, a current, an energy or a share: four decimals,
 // and as many more as six significant digits take. What is smaller than 1e-12
@@ -37,11 +55,21 @@ func figureDecimals(x float64) int {
 	if a < 1e-12 {
 		return -1
 	}
-	for limit := 10.0; a < limit && decimals < 17; limit /= 10 {
+	for decimals < 17 && a < figureLimits[decimals-4] {
 		decimals++
 	}
 	return decimals
 }
+
+// figureLimits are what a figure must reach to do with four decimals, with five and so on.
+var figureLimits = func() (limits [13]float64) {
+	limit := 10.0
+	for i := range limits {
+		limits[i] = limit
+		limit /= 10
+	}
+	return limits
+}()
 
 // roundPU and roundFigure return the number that appendPU and appendFigure print, as it
 // is read from the text.
@@ -69,27 +97,55 @@ func roundFixed(x float64, decimals int) float64 {
 var powersOfTen = [...]float64{1, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9,
 	1e10, 1e11, 1e12, 1e13, 1e14, 1e15, 1e16, 1e17, 1e18}
 
+// wholePowers are the powers of ten as whole numbers, as far as digits are counted.
+var wholePowers = [...]uint64{1, 1e1, 1e2, 1e3, 1e4, 1e5, 1e6, 1e7, 1e8, 1e9,
+	1e10, 1e11, 1e12, 1e13, 1e14, 1e15, 1e16, 1e17, 1e18}
+
 // appendFixed appends x with the given number of decimals. Up to 2⁵³ units of the
 // last decimal it works in integers; above, and for infinities, strconv does it.
 func appendFixed(dst []byte, x float64, decimals int) []byte {
-	scaled := math.Round(math.Abs(x) * powersOfTen[decimals])
+	scaled := math.Abs(x) * powersOfTen[decimals]
 	if !(scaled < 1<<53) {
 		return strconv.AppendFloat(dst, x, 'f', decimals, 64)
 	}
 	n := uint64(scaled)
+	if scaled-float64(n) >= 0.5 {
+		if n++; n == 1<<53 {
+			return strconv.AppendFloat(dst, x, 'f', decimals, 64)
+		}
+	}
 	if x < 0 && n != 0 {
 		dst = append(dst, '-')
 	}
-	var digits [24]byte
+	whole := n / wholePowers[decimals]
+	part := n - whole*wholePowers[decimals]
+	var digits [40]byte
 	i := len(digits)
-	for k := 0; n != 0 || k <= decimals; k++ {
-		if k == decimals && decimals > 0 {
+	if decimals > 0 {
+		for k := decimals; k >= 2; k -= 2 {
+			two := part % 100
+			part /= 100
+			i -= 2
+			digits[i], digits[i+1] = tens[two], ones[two]
+		}
+		if decimals&1 == 1 {
 			i--
-			digits[i] = '.'
+			digits[i] = ones[part]
 		}
 		i--
-		digits[i] = byte('0' + n%10)
-		n /= 10
+		digits[i] = '.'
+	}
+	for whole >= 100 {
+		two := whole % 100
+		whole /= 100
+		i -= 2
+		digits[i], digits[i+1] = tens[two], ones[two]
+	}
+	i--
+	digits[i] = ones[whole]
+	if whole >= 10 {
+		i--
+		digits[i] = tens[whole]
 	}
 	return append(dst, digits[i:]...)
 }

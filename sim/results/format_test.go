@@ -76,6 +76,68 @@ func TestFixedAgreesWithTheStandardLibrary(t *testing.T) {
 	}
 }
 
+// digitByDigit is appendFixed without any haste.
+func digitByDigit(x float64, decimals int) string {
+	scaled := math.Round(math.Abs(x) * powersOfTen[decimals])
+	if !(scaled < 1<<53) {
+		return strconv.FormatFloat(x, 'f', decimals, 64)
+	}
+	text := strconv.FormatUint(uint64(scaled), 10)
+	for len(text) <= decimals {
+		text = "0" + text
+	}
+	if decimals > 0 {
+		text = text[:len(text)-decimals] + "." + text[len(text)-decimals:]
+	}
+	if x < 0 && scaled != 0 {
+		text = "-" + text
+	}
+	return text
+}
+
+func TestFixedIsDigitByDigit(t *testing.T) {
+	r := rand.New(rand.NewPCG(3, 1))
+	values := []float64{0, math.Copysign(0, -1), 0.49999999999999994, 0.5, 1.5, 2.5, 0.9999995, 0.99999949999, 9.999998, 9.9999985, 9.999999, 9.9999995, 10, -1,
+		5e-7, 4.9999999999999e-7, 1 << 53, 1<<53 - 1, 1<<52 + 0.5, 1<<52 - 0.5, (1<<53 - 0.5) / 1e6, math.Inf(-1), 99, 100, 99.5, 9, 1e18}
+	for range 300_000 {
+		x := math.Pow(10, 40*r.Float64()-22) * (2*r.Float64() - 1)
+		values = append(values, x, math.Trunc(x*1e6)/1e6, math.Trunc(x*2e6)/2e6, 0.9+0.2*r.Float64())
+	}
+	for k, x := range values {
+		d := k % len(powersOfTen)
+		if k < 100 {
+			for d := range powersOfTen {
+				if got, want := string(appendFixed(nil, x, d)), digitByDigit(x, d); got != want {
+					t.Fatalf("%v with %d decimals: %q, want %q", x, d, got, want)
+				}
+			}
+		}
+		if got, want := string(appendFixed(nil, x, d)), digitByDigit(x, d); got != want {
+			t.Fatalf("%v with %d decimals: %q, want %q", x, d, got, want)
+		}
+		if got, want := string(appendPU(nil, x)), digitByDigit(x, 6); got != want {
+			t.Fatalf("%v p.u.: %q, want %q", x, got, want)
+		}
+	}
+}
+
+func BenchmarkFigures(b *testing.B) {
+	buf := make([]byte, 0, 64)
+	x := 0.95
+	b.Run("pu", func(b *testing.B) {
+		for b.Loop() {
+			buf = appendPU(buf[:0], x)
+			x = math.Abs(x-1.0123) + 0.4567
+		}
+	})
+	b.Run("figure", func(b *testing.B) {
+		for b.Loop() {
+			buf = appendFigure(buf[:0], 1000*x)
+			x = math.Abs(x-1.0123) + 0.4567
+		}
+	})
+}
+
 func TestTrimmed(t *testing.T) {
 	for x, want := range map[float64]string{30: "30", 0: "0", 45.5: "45.5", 30.000000001: "30.000000001", 0.1 + 0.2: "0.3", 12.47: "12.47", 1200: "1200"} {
 		if got := string(appendTrimmed(nil, x)); got != want {
