@@ -74,6 +74,7 @@ type Engine struct {
 	speculate bool         // a run is going through its steps in order
 	step      int          // whose inputs are at hand
 	now       devices.Time // of the solution that is asked for
+	held      *heldLanes   // of HeldAll; nil: not asked for yet
 	foresight *foresight   // nil: the lanes of ahead have one device state
 
 	steady bool  // lags are left out: at start-up, and of a single instant

@@ -27,6 +27,8 @@ type jump struct {
 	active   func(step int, s *results.State) bool
 	known    func(step int, s *results.State) []complex128 // the voltages after, where they were found before; nil: solve
 	step     int
+	ends     []stepEnd
+	held     []sim.HeldInstant
 	worst    []change  // by point
 	low, hi  []float64 // p.u., of the probe: the voltage with the devices held
 	lowAt    []int64
@@ -100,47 +102,98 @@ func (j *jump) Step(s *results.Step) error {
 	if s.Status != results.OK || s.Last == nil {
 		return nil
 	}
-	after := s.Last.V // nothing changes where the units do nothing
+	e := j.end()
+	e.start, e.before = s.Start, append(e.before[:0], s.Last.V...)
+	e.after, e.solve = e.before, false // nothing changes where the units do nothing
 	if j.active(step, s.Last) {
 		if j.known != nil {
-			if v := j.known(step, s.Last); v != nil {
-				j.see(s, v)
-				return nil
-			}
+			e.after = j.known(step, s.Last)
+		} else {
+			e.after = nil
 		}
-		p := sim.Positions{Taps: s.Last.Taps, Closed: s.Last.Closed}
-		if j.storage != nil {
-			p.Storage = j.storage(step, s.Last)
+		if e.solve = e.after == nil; e.solve {
+			j.solve(e, step, s.Last)
 		}
-		in, err := j.probe.Held(step, p, s.Last.V)
-		if err != nil {
+	}
+	if len(j.ends) == cap(j.ends) {
+		return j.finish()
+	}
+	return nil
+}
+
+// stepEnd is the end of a step that waits for the voltages after its jump.
+type stepEnd struct {
+	start         int64
+	before, after []complex128
+	solve         bool // after is to be solved
+}
+
+// end returns the next end of a step to fill, with the room of one that was there before.
+func (j *jump) end() *stepEnd {
+	if j.ends == nil {
+		j.ends, j.held = make([]stepEnd, 0, atOnce), make([]sim.HeldInstant, 0, atOnce)
+	}
+	j.ends = j.ends[:len(j.ends)+1]
+	return &j.ends[len(j.ends)-1]
+}
+
+// atOnce is the number of ends that are looked at together: jumps are solved side by side.
+const atOnce = 16
+
+// solve notes that the voltages after a jump are wanted.
+func (j *jump) solve(e *stepEnd, step int, s *results.State) {
+	j.held = j.held[:len(j.held)+1]
+	h := &j.held[len(j.held)-1]
+	h.Step, h.Start = step, e.before
+	if h.V == nil { // positions that are nil would not be held
+		h.V, h.Positions.Taps, h.Positions.Closed = make([]complex128, len(e.before)), []int{}, []bool{}
+	}
+	h.Positions.Taps, h.Positions.Closed = append(h.Positions.Taps[:0], s.Taps...), append(h.Positions.Closed[:0], s.Closed...)
+	if h.Positions.Storage = nil; j.storage != nil {
+		h.Positions.Storage = j.storage(step, s)
+	}
+}
+
+// finish looks at the ends that wait.
+func (j *jump) finish() error {
+	if len(j.held) > 0 {
+		if err := j.probe.HeldAll(j.held); err != nil {
 			return err
 		}
-		if in.State == nil {
-			if j.skipped++; j.firstOff == "" {
-				j.firstOff = in.Where
-			}
-			return nil
-		}
-		after = in.State.V
 	}
-	j.see(s, after)
+	k := 0
+	for i := range j.ends {
+		e := &j.ends[i]
+		if e.solve {
+			h := &j.held[k]
+			k++
+			if !h.Found {
+				if j.skipped++; j.firstOff == "" {
+					j.firstOff = h.Where
+				}
+				continue
+			}
+			e.after = h.V
+		}
+		j.see(e)
+	}
+	j.ends, j.held = j.ends[:0], j.held[:0]
 	return nil
 }
 
 // see takes the voltages after a jump from the end of a step.
-func (j *jump) see(s *results.Step, after []complex128) {
+func (j *jump) see(e *stepEnd) {
 	for i := range j.points {
 		p := &j.points[i]
-		v, before := p.PU(after), p.PU(s.Last.V)
+		v, before := p.PU(e.after), p.PU(e.before)
 		if v < j.low[i] {
-			j.low[i], j.lowAt[i] = v, s.Start
+			j.low[i], j.lowAt[i] = v, e.start
 		}
 		if v > j.hi[i] {
-			j.hi[i], j.hiAt[i] = v, s.Start
+			j.hi[i], j.hiAt[i] = v, e.start
 		}
 		if d := 100 * (v - before); math.Abs(d) > math.Abs(j.worst[i].percent) {
-			j.worst[i] = change{d, s.Start}
+			j.worst[i] = change{d, e.start}
 		}
 	}
 }

@@ -52,6 +52,13 @@ func runTrial(ctx context.Context, w *baseWalks, st *feeder.Study, demo bool, mo
 	if t.outcome, err = e.Run(ctx, recorders...); err != nil {
 		return nil, err
 	}
+	for _, r := range recorders {
+		if f, ok := r.(finisher); ok {
+			if err := f.finish(); err != nil {
+				return nil, err
+			}
+		}
+	}
 	rows, err := t.tally.Summary()
 	if err != nil {
 		return nil, err
@@ -63,6 +70,9 @@ func runTrial(ctx context.Context, w *baseWalks, st *feeder.Study, demo bool, mo
 	t.points, t.loading, t.acted, t.reverse = t.tally.Points(), t.tally.Loading(), t.tally.Operations(), back.total
 	return t, nil
 }
+
+// finisher is a recorder that has something left to do behind the last step.
+type finisher interface{ finish() error }
 
 // number is a row of the trial's summary, NaN where there is none.
 func (t *trial) number(quantity string) float64 { return parse(t.summary[quantity].Value) }
