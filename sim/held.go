@@ -77,7 +77,7 @@ func (e *Engine) heldBlock(all []HeldInstant, month int) error {
 	arrived := h.lanes.Solve(mask, powerflow.Contract)
 	for k := range all {
 		if arrived>>k&1 == 0 {
-			if err := e.heldEach(all[k:k+1]); err != nil {
+			if err := e.heldEach(all[k : k+1]); err != nil {
 				return err
 			}
 			continue
