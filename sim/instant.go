@@ -113,8 +113,10 @@ func (e *Engine) tapRatio(regulator, tap int) float64 {
 // keep makes the solution at hand the start of those to come, until the next action
 // or the next day.
 func (e *Engine) keep() {
-	copy(e.anchor, e.solution.V)
 	e.anchored = true
+	if n := len(e.state.V); n > 0 && &e.state.V[0] == &e.solution.V[0] { // else it is kept already
+		e.anchor, e.solution.V = e.solution.V, e.anchor // the state stays what it is until the next solution
+	}
 }
 
 // low returns the place of a load below the corner, or blank.
