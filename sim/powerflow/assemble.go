@@ -109,7 +109,7 @@ func (s *Solver) moved() error {
 	s.version++
 	s.noLoadValid = false
 	if k := s.red.update(s.ratio); k >= 0 {
-		s.singular = s.red.clusters[k].dep[0]
+		s.singular, s.late = s.red.clusters[k].dep[0], false // nothing to factor: the place stands
 		return fmt.Errorf("the taps of the regulators make the network's equations singular at %s: look at regulators in a loop", s.Net.Unknowns[s.singular].Name)
 	}
 	s.singular, s.late = -1, true
