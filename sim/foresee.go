@@ -103,8 +103,13 @@ func (b *stepBlock) load(e *Engine, k, step int) {
 // roughly is the change, p.u., at which scouts have seen enough.
 var roughly = powerflow.Tolerance{Change: 1e-3, Mismatch: math.Inf(1)}
 
-// prepareForesight makes the lanes, where steps are long and a forecast is possible.
+// prepareForesight has the lanes ready for a run, where steps are long and a forecast is
+// possible.
 func (e *Engine) prepareForesight() {
+	if e.foresight != nil {
+		e.foresight.begin()
+		return
+	}
 	if e.ahead == nil || e.in.axis.Step < noQuiet || len(e.in.groups) > 0 || len(e.devices) == 0 {
 		return
 	}
@@ -131,6 +136,7 @@ func (e *Engine) prepareForesight() {
 		f.scouted[k] = known{positions: make([]int, n), readings: make([]Reading, n)}
 		f.solved[k] = known{positions: make([]int, n), readings: make([]Reading, n)}
 	}
+	f.begin()
 	e.foresight = f
 }
 

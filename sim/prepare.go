@@ -205,7 +205,6 @@ func Prepare(st *feeder.Study, o Options) (*Engine, error) {
 	if st.Settings.Limits.Allowance != 0 {
 		e.Plan.LoadPeak = e.peaks(len(m.Loads))
 	}
-	e.prepareForesight()
 	e.Reset()
 	e.Warnings = append(e.Warnings, e.oddMeasured(e.meterPoints())...)
 	tables.Faults(e.Warnings).Sort()

@@ -59,9 +59,7 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 	r.coarse = newCoarse(e)
 	if e.ahead != nil {
 		e.ahead.begin()
-		if e.foresight != nil {
-			e.foresight.begin()
-		}
+		e.prepareForesight()
 		e.speculate = true
 		defer func() { e.speculate = false }()
 	}

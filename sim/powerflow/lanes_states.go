@@ -25,15 +25,15 @@ type states struct {
 	stale   bool  // the program must run
 	program vector.Products
 
-	own    []bool      // by column: it differs from lane to lane
-	x      []float64   // values: all of the following
-	begin  map[int]int // by slot of an own column: its y
+	own    []bool    // by column: it differs from lane to lane
+	x      []float64 // values: all of the following
 	moving []movingEntry
 
-	at             []partCoefs // first coefficients, by part
-	inverse, lower map[int]int // by column 1/D, by slot L
-	w, m           map[int]int // by place in blocks.w and blocks.m
-	n              int         // values given away
+	at []partCoefs // first coefficients, by part
+	n  int         // values given away
+	// Only while the program is written: the values of 1/D by column, of L by slot, of W and
+	// M by their places in blocks.
+	inverse, lower, w, m map[int]int
 }
 
 // partCoefs is where the coefficients of a part begin.
@@ -113,7 +113,7 @@ func (t *states) build(l *Lanes) {
 		t.at = append(t.at, partCoefs{t.room(p.pullBy.LaneCoefs()), t.room(p.gatherBy.LaneCoefs()), t.room(p.expandBy.LaneCoefs()),
 			t.room(p.forward.LaneCoefs()), t.room(p.backward.LaneCoefs())})
 	}
-	t.begin, t.inverse, t.lower = map[int]int{}, map[int]int{}, map[int]int{}
+	t.inverse, t.lower = map[int]int{}, map[int]int{}
 	t.w, t.m = map[int]int{}, map[int]int{}
 	constant := map[int]complex128{} // by value
 	t.factor(constant)
@@ -126,6 +126,7 @@ func (t *states) build(l *Lanes) {
 		}
 	}
 	t.place(l, constant)
+	t.inverse, t.lower, t.w, t.m = nil, nil, nil, nil
 	t.x = vector.Make(t.n)
 	for at, z := range constant {
 		for lane := range vector.Lanes {
