@@ -1,6 +1,8 @@
 package powerflow
 
 import (
+	"slices"
+
 	"yearflow/sim/network"
 	"yearflow/sim/powerflow/vector"
 )
@@ -284,7 +286,7 @@ func (t *states) place(l *Lanes, constant map[int]complex128) {
 // Position sets where the devices of a lane stand, as Solver.SetDevices takes it.
 func (l *Lanes) Position(lane int, ratio []float64, closed []bool) {
 	t := l.states
-	if same(t.ratio[lane], ratio) && same(t.closed[lane], closed) {
+	if slices.Equal(t.ratio[lane], ratio) && slices.Equal(t.closed[lane], closed) {
 		return
 	}
 	t.ratio[lane], t.closed[lane] = append(t.ratio[lane][:0], ratio...), append(t.closed[lane][:0], closed...)
@@ -328,18 +330,6 @@ func (l *Lanes) Position(lane int, ratio []float64, closed []bool) {
 			vector.Put(t.x, at.expand+i, lane, coef(c))
 		}
 	}
-}
-
-func same[T comparable](a, b []T) bool {
-	if len(a) != len(b) {
-		return false
-	}
-	for i, x := range a {
-		if x != b[i] {
-			return false
-		}
-	}
-	return true
 }
 
 // ready computes the factor of all lanes, where one of them has been positioned anew.

@@ -21,6 +21,9 @@ type reduction struct {
 	terms    [][]term // by unknown
 	coef     []float64
 	clusters []cluster
+
+	at   []float64 // ratios that the coefficients are of
+	fail int       // cluster without a unique solution there, or −1
 }
 
 // cluster is a set of couplings that share terminals. It gives the voltages of its
@@ -36,7 +39,7 @@ type cluster struct {
 }
 
 func newReduction(n *network.Network) (*reduction, error) {
-	r := &reduction{net: n, terms: make([][]term, len(n.Unknowns))}
+	r := &reduction{net: n, fail: -1, terms: make([][]term, len(n.Unknowns))}
 	fixed := make([]int32, len(n.Unknowns))
 	for i := range fixed {
 		fixed[i] = -1
@@ -214,6 +217,15 @@ func (r *reduction) loopError(members []int32) error {
 // update computes the coefficients of every cluster at the couplings' ratios. It
 // allocates nothing, and returns the cluster that has no unique solution, or −1.
 func (r *reduction) update(ratio []float64) int {
+	if len(r.clusters) == 0 || len(r.at) > 0 && slices.Equal(r.at, ratio) {
+		return r.fail
+	}
+	r.at = append(r.at[:0], ratio...)
+	r.fail = r.compute(ratio)
+	return r.fail
+}
+
+func (r *reduction) compute(ratio []float64) int {
 	for k := range r.clusters {
 		c := &r.clusters[k]
 		m, f := len(c.dep), len(c.ind)
@@ -254,7 +266,7 @@ func (r *reduction) update(ratio []float64) int {
 // clone returns a reduction that is updated by itself.
 func (r *reduction) clone() reduction {
 	out := *r
-	out.coef = slices.Clone(r.coef)
+	out.coef, out.at = slices.Clone(r.coef), slices.Clone(r.at)
 	out.clusters = slices.Clone(r.clusters)
 	for k := range out.clusters {
 		c := &out.clusters[k]
