@@ -142,7 +142,13 @@ func (e *Engine) prepareForesight() {
 
 // begin forgets what was solved before a run.
 func (f *foresight) begin() {
-	f.count, f.first, f.end, f.month, f.gained, f.kept = 0, 0, 0, -1, false, false
+	f.count, f.first, f.end, f.month, f.kept = 0, 0, 0, -1, false
+	if f.gained { // what cannot be measured now must not be that of another settings sheet
+		f.gained, f.move = false, f.scouts.NewDirections(len(f.gain))
+		for _, row := range f.gain {
+			clear(row)
+		}
+	}
 	f.forget()
 	f.block.forget()
 	f.ahead.forget()
