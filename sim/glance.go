@@ -11,7 +11,7 @@ import (
 
 // glance looks at all lanes of a block with most devices at once: the tap changers
 // without limits and capacitors on voltage, whose readings leave them at rest as long as
-// a voltage is well inside a range. Where one is not, every device looks for itself.
+// a voltage is well inside a range. One that is not, or does not rest, looks for itself.
 type glance struct {
 	e     *Engine
 	taps  []glanced
@@ -28,10 +28,10 @@ type glance struct {
 	size            []float64 // by device of lengths and lane
 	power           vector.Dots
 	watts           []float64 // by tap changer and lane
-	rests           bool
-	rough           uint8   // lanes in which some voltage is not well inside
-	reverse         []uint8 // by tap changer: lanes in which power flows back
-	number          int     // of the block
+	resting         []bool    // by tap changer, then by capacitor
+	rests           bool      // one of them does
+	reverse         []uint8   // by tap changer: lanes in which power flows back
+	number          int       // of the block
 	leastOf, mostOf [vector.Lanes]float64
 	total           [vector.Lanes]float64
 }
@@ -107,6 +107,7 @@ func newGlance(e *Engine) *glance {
 	}
 	n := len(g.taps) + len(g.caps)
 	g.phasors, g.size = vector.Make(3*len(g.taps)+len(g.caps)), make([]float64, n*vector.Lanes)
+	g.resting = make([]bool, n)
 	g.watts, g.reverse = make([]float64, len(g.taps)*vector.Lanes), make([]uint8, len(g.taps))
 	return g
 }
@@ -133,17 +134,23 @@ func (g *glance) refresh() {
 	}
 }
 
-// rest takes over whether all devices rest. They do not change while quiet steps are
-// found, but may in the midst of a block, by a step of the event loop.
+// rest takes over which devices rest. That does not change while quiet steps are found, but
+// may in the midst of a block, by a step of the event loop.
 func (g *glance) rest() {
-	g.rests = true
-	for _, x := range g.taps {
-		g.rests = g.rests && x.tap.state.Rests()
+	g.rests = false
+	for j, x := range g.taps {
+		g.resting[j] = x.tap.state.Rests()
+		g.rests = g.rests || g.resting[j]
 	}
-	for _, x := range g.caps {
-		g.rests = g.rests && x.cap.sheet.Rests(x.cap.state)
+	for j, x := range g.caps {
+		r := x.cap.sheet.Rests(x.cap.state)
+		g.resting[len(g.taps)+j] = r
+		g.rests = g.rests || r
 	}
 }
+
+// inside tells whether the device of a row rests and has its voltage well inside in a lane.
+func (g *glance) inside(row, k int) bool { return g.resting[row] && g.lengths.Flags[row]>>k&1 == 0 }
 
 // look looks at the block at hand, once.
 func (g *glance) look(coupling []float64) {
@@ -156,7 +163,7 @@ func (g *glance) look(coupling []float64) {
 	v, _ := a.lanes.Voltages()
 	g.fromV.Set(g.phasors, v)
 	g.fromI.Add(g.phasors, coupling)
-	g.rough, _ = g.lengths.Watch(g.size, g.phasors, a.arrived, &g.leastOf, &g.mostOf)
+	g.lengths.Watch(g.size, g.phasors, a.arrived, &g.leastOf, &g.mostOf)
 	g.power.Watch(g.watts, g.phasors, g.phasors, a.arrived, &g.total)
 	for j := range g.taps {
 		g.reverse[j] = 0
@@ -169,9 +176,15 @@ func (g *glance) look(coupling []float64) {
 }
 
 // calm tells whether lane k leaves its devices as they are and as states says; the first
-// lane says what that is. It sets what coarse watches.
-func (g *glance) calm(k int, first bool, now int64, states []results.DeviceState, coarse []float64) bool {
+// lane says what that is. It sets what coarse watches. alone looks with one device.
+func (g *glance) calm(k int, first bool, now int64, states []results.DeviceState, coarse []float64, alone func(device int) bool) bool {
 	for j, x := range g.taps {
+		if !g.inside(j, k) {
+			if !alone(x.device) {
+				return false
+			}
+			continue
+		}
 		back := g.reverse[j]>>k&1 == 1
 		c := x.tap
 		if first {
@@ -181,7 +194,13 @@ func (g *glance) calm(k int, first bool, now int64, states []results.DeviceState
 		}
 		coarse[x.device*vector.Lanes+k] = g.size[j*vector.Lanes+k] / c.sheet.Ratio(c.state.Position)
 	}
-	for _, x := range g.caps {
+	for j, x := range g.caps {
+		if !g.inside(len(g.taps)+j, k) {
+			if !alone(x.device) {
+				return false
+			}
+			continue
+		}
 		if first {
 			states[x.device] = results.DeviceState{Hunting: g.e.devices[x.device].hunting.Hunts(now)}
 		}

@@ -188,19 +188,20 @@ func (q *quiet) read(e *Engine, k int, now devices.Time, first bool) bool {
 	if g.rests {
 		g.look(q.currents.Coupling)
 	}
-	if g.rests && g.rough>>k&1 == 0 {
-		if !g.calm(k, first, now, q.states, q.coarse) {
-			return false
-		}
-		for _, i := range g.slow {
-			if !q.look(e, i, k, now, first) {
+	alone := func(i int) bool { return q.look(e, i, k, now, first) }
+	if !g.rests {
+		for i := range e.devices {
+			if !alone(i) {
 				return false
 			}
 		}
 		return true
 	}
-	for i := range e.devices {
-		if !q.look(e, i, k, now, first) {
+	if !g.calm(k, first, now, q.states, q.coarse, alone) {
+		return false
+	}
+	for _, i := range g.slow {
+		if !alone(i) {
 			return false
 		}
 	}
