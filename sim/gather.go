@@ -6,24 +6,24 @@ import (
 	"yearflow/sim/results"
 )
 
-// gatherer takes whole steps several at a time, their intervals side by side.
+// gatherer takes steps several at a time, their intervals side by side.
 type gatherer interface {
 	// Gathers tells whether no more of a step is needed than is in results.Gathered.
 	Gathers() bool
 	Gathered(*results.Gathered) error
 }
 
-// gathering puts the intervals of whole steps side by side where a relay receives them, so
-// that what no control looks at is read of as many at once as there are lanes. What is
-// gathered depends on the order of events alone.
+// gathering puts the intervals of steps side by side where a relay receives them, so that
+// what no control looks at is read of as many at once as there are lanes. A step is known
+// to be ok before any of it is gathered. What is gathered depends on the order of events
+// alone.
 type gathering struct {
 	r         *relay
 	recorders []gatherer
-	events    []*event // of the steps that have been gathered
+	events    []*event // that have been gathered
 	lanes     int      // intervals among them
 	month     int      // of all of them
 	open      []*event // of the step at hand
-	intervals int      // among them
 	single    bool     // the step at hand is handed on as it comes
 
 	abreast *powerflow.Abreast
@@ -68,14 +68,11 @@ func (g *gathering) sort(ev *event) {
 		return
 	}
 	g.open = append(g.open, ev)
-	if ev.interval {
-		g.intervals++
-	}
 	ends := ev.step
 	switch {
 	case !g.single && ends && g.fits():
 		g.keep()
-	case g.single || ends || g.intervals > vector.Lanes || len(g.open) == openMost:
+	case g.single || ends || len(g.open) == openMost:
 		if !g.single {
 			g.flush()
 		}
@@ -83,15 +80,12 @@ func (g *gathering) sort(ev *event) {
 		g.single = true
 	}
 	if ends {
-		g.intervals, g.single = 0, false
+		g.single = false
 	}
 }
 
 // fits tells whether the step at hand, which is whole, can stand in lanes.
 func (g *gathering) fits() bool {
-	if g.intervals == 0 || g.intervals > vector.Lanes {
-		return false
-	}
 	last := g.open[len(g.open)-1]
 	if !last.interval || last.asStep.Status != results.OK {
 		return false
@@ -104,19 +98,31 @@ func (g *gathering) fits() bool {
 	return true
 }
 
-// keep puts the step at hand behind those that have been gathered.
+// keep puts the step at hand behind those that have been gathered. What has no room any
+// more begins the next lanes.
 func (g *gathering) keep() {
-	month := g.r.e.in.monthOf(g.open[len(g.open)-1].number)
-	if g.lanes+g.intervals > vector.Lanes || month != g.month || len(g.events)+len(g.open) > openMost {
+	last := g.open[len(g.open)-1]
+	month := g.r.e.in.monthOf(last.number)
+	if month != g.month || len(g.events)+len(g.open) > openMost {
 		g.flush()
 	}
 	g.month = month
-	g.events = append(g.events, g.open...)
-	g.lanes += g.intervals
-	g.open = g.open[:0]
-	if g.lanes == vector.Lanes {
-		g.flush()
+	single := false
+	for i, ev := range g.open {
+		g.open[i] = nil
+		if single { // the step goes on as it has begun
+			g.r.handle(ev)
+			continue
+		}
+		g.events = append(g.events, ev)
+		if ev.interval {
+			ev.asStep = last.asStep
+			if g.lanes++; g.lanes == vector.Lanes {
+				single = !g.flush()
+			}
+		}
 	}
+	g.open = g.open[:0]
 }
 
 // end hands on what is left, of a run that ended in the midst of a step too.
@@ -125,9 +131,10 @@ func (g *gathering) end() {
 	g.hand(&g.open)
 }
 
-// flush hands on what has been gathered.
-func (g *gathering) flush() {
+// flush hands on what has been gathered. It reports whether that went side by side.
+func (g *gathering) flush() (abreast bool) {
 	if g.lanes >= gatherLeast && g.r.err == nil && g.read() {
+		abreast = true
 		for _, rec := range g.recorders {
 			if g.r.fail(rec.Gathered(&g.out)); g.r.err != nil {
 				break
@@ -141,6 +148,7 @@ func (g *gathering) flush() {
 	}
 	g.hand(&g.events)
 	g.lanes = 0
+	return abreast
 }
 
 // hand hands events on one by one.
@@ -213,19 +221,22 @@ func (g *gathering) list() {
 			g.moves = append(g.moves, ev.asAction)
 		}
 	}
-	intervals, moves, from := 0, 0, 0
-	for _, ev := range g.events {
+	var s results.GatheredStep
+	from := 0
+	for i, ev := range g.events {
 		if ev.action {
-			moves++
+			s.Moves = g.moves[from : from+len(s.Moves)+1]
 		}
-		if ev.interval {
-			intervals++
+		if !ev.interval {
+			continue
 		}
-		if ev.step {
-			s := results.GatheredStep{Step: ev.asStep, Intervals: intervals, Moves: g.moves[from : from+moves]}
+		s.Step, s.More = ev.asStep, !ev.step
+		s.Intervals++
+		if ev.step || i == len(g.events)-1 {
 			s.Last = nil
 			out.Steps = append(out.Steps, s)
-			intervals, from, moves = 0, from+moves, 0
+			from += len(s.Moves)
+			s = results.GatheredStep{}
 		}
 	}
 }

@@ -48,7 +48,7 @@ func (p *progress) Whole(start, end int64) bool { return false }
 func (p *progress) Gathers() bool { return true }
 
 func (p *progress) Gathered(g *results.Gathered) error {
-	p.count(len(g.Steps))
+	p.count(g.Ended())
 	return nil
 }
 

@@ -278,7 +278,7 @@ func (s *statistics) book(g *Gathered, from, to int, month *bucket) {
 		out = w.timesOutside(&w.long, mask&a.settled)
 	}
 	for _, b := range [...]*bucket{&s.total, month} {
-		b.steps += to - from
+		b.steps += min(to, g.Ended()) - from
 		b.settled += settled
 		b.settling += settling
 		b.outsideTimes.add(&out)

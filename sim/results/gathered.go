@@ -2,13 +2,12 @@ package results
 
 import (
 	"fmt"
-	"math"
 
 	"yearflow/sim/powerflow/vector"
 )
 
-// Gathered is whole steps side by side, each of them ok: the intervals stand in the lanes
-// in the order of time, each with its own length and its own positions of the devices.
+// Gathered is steps side by side, each of them ok: the intervals stand in the lanes in the
+// order of time, each with its own length and its own positions of the devices.
 type Gathered struct {
 	State      *Lanes // but for Taps and Closed; what stands in the lanes beyond must be numbers
 	Count      int    // intervals, 1 to vector.Lanes
@@ -26,14 +25,26 @@ type GatheredStep struct {
 	Step
 	Intervals int // at least 1
 	Moves     []Action
+	// More: the step goes on in what comes next, be it gathered or not. Only the last one
+	// may.
+	More bool
+}
+
+// Ended is the number of steps that end in g.
+func (g *Gathered) Ended() int {
+	n := len(g.Steps)
+	if n > 0 && g.Steps[n-1].More {
+		n--
+	}
+	return n
 }
 
 // check refuses what cannot stand in lanes.
 func (g *Gathered) check() error {
 	n := 0
 	for i := range g.Steps {
-		if s := &g.Steps[i]; s.Intervals < 1 || s.Status != OK {
-			return fmt.Errorf("results: a gathered step of %d intervals that is %v", s.Intervals, s.Status)
+		if s := &g.Steps[i]; s.Intervals < 1 || s.Status != OK || s.More && i < len(g.Steps)-1 {
+			return fmt.Errorf("results: a gathered step of %d intervals that is %v (more to come: %v)", s.Intervals, s.Status, s.More)
 		}
 		n += g.Steps[i].Intervals
 	}
@@ -70,7 +81,7 @@ func (w *Writer) Gathered(g *Gathered) error {
 			}
 		}
 		last := first + s.Intervals - 1
-		if s.Solver != "" {
+		if s.Solver != "" && !s.More {
 			w.solver[s.Solver]++
 		}
 		copy(w.taps, g.Taps[last])
@@ -107,20 +118,15 @@ func (w *Writer) count(g *Gathered) error {
 			w.duty[i].hours.add(d, g.End[k]-g.Start[k], g.Settled>>k&1 == 1)
 		}
 	}
-	w.balance.checked += len(g.Steps) // the end of each step
+	w.balance.checked += g.Ended() // the end of each step
 	return nil
 }
 
 // rowOf adds a step to the row of the logs, and writes it where it ends.
 func (w *Writer) rowOf(g *Gathered, s *GatheredStep, first, last int) error {
 	r := w.stats.watch
-	if w.row.steps == 0 {
-		w.row = row{start: s.Start, lowest: math.Inf(1), highest: math.Inf(-1)}
-	}
 	row := &w.row
-	row.steps++
-	row.solved++
-	row.actions += s.Step.Actions
+	row.begin(s.Start)
 	for k := first; k <= last; k++ {
 		if len(w.meter.Points) > 0 {
 			row.lowest, row.highest = min(row.lowest, r.least[k]), max(row.highest, r.most[k])
@@ -128,6 +134,12 @@ func (w *Writer) rowOf(g *Gathered, s *GatheredStep, first, last int) error {
 	}
 	e := r.energiesOf(g, first, last)
 	row.energies.merge(&e)
+	if s.More {
+		return nil
+	}
+	row.steps++
+	row.solved++
+	row.actions += s.Step.Actions
 	row.last = w.rowEnds(&s.Step) // what a row says of its end is read there
 	if !row.last {
 		return nil

@@ -25,6 +25,7 @@ type gatherer interface {
 // and now and then one by one, and returns the number of intervals that went in lanes.
 func (s *script) playGathered(t testing.TB, w gatherer, rnd *rand.Rand) (gathered int) {
 	t.Helper()
+	s = &script{steps: slices.Clone(s.steps)} // a step that goes on is cut
 	var slot []int32
 	for i := 0; i < len(s.steps); {
 		if rnd.IntN(6) == 0 {
@@ -42,22 +43,30 @@ func (s *script) playGathered(t testing.TB, w gatherer, rnd *rand.Rand) (gathere
 		var states []*State
 		for ; i < len(s.steps); i++ {
 			st := &s.steps[i]
-			if st.Status != OK || len(states)+len(st.intervals) > vector.Lanes || rnd.IntN(30) == 0 {
+			if st.Status != OK || len(states) == vector.Lanes || rnd.IntN(30) == 0 {
 				break
 			}
-			x := GatheredStep{Step: st.Step, Intervals: len(st.intervals)}
+			n := min(len(st.intervals), vector.Lanes-len(states))
+			if n > 1 && rnd.IntN(8) == 0 {
+				n-- // the rest may come one by one
+			}
+			x := GatheredStep{Step: st.Step, Intervals: n, More: n < len(st.intervals)}
 			x.Last = nil
-			for _, a := range st.actions {
+			for _, a := range st.actions[:min(n, len(st.actions))] {
 				x.Moves = append(x.Moves, *a)
 			}
 			g.Steps = append(g.Steps, x)
-			for _, iv := range st.intervals {
+			for _, iv := range st.intervals[:n] {
 				k := len(states)
 				g.Start[k], g.End[k], g.Devices[k], g.Taps[k], g.Closed[k] = iv.Start, iv.End, iv.Devices, iv.State.Taps, iv.State.Closed
 				if iv.Settled {
 					g.Settled |= 1 << k
 				}
 				states = append(states, iv.State)
+			}
+			if x.More {
+				s.steps[i].intervals, s.steps[i].actions = st.intervals[n:], st.actions[len(x.Moves):]
+				break
 			}
 		}
 		if len(states) == 0 {
@@ -254,6 +263,7 @@ func TestWhatCannotBeGathered(t *testing.T) {
 		{Count: 1, End: lasting, Steps: []GatheredStep{step(1, Low)}},
 		{Count: 1, Steps: []GatheredStep{step(1, OK)}},
 		{Count: 1, End: lasting, Steps: []GatheredStep{step(1, OK), step(0, OK)}},
+		{Count: 2, End: lasting, Steps: []GatheredStep{{Intervals: 1, More: true}, step(1, OK)}},
 		{Count: 9, End: lasting, Steps: []GatheredStep{step(9, OK)}},
 	} {
 		if g.check() == nil {

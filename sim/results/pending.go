@@ -151,6 +151,7 @@ func (t *deviceTime) merge(o *deviceTime) {
 // row is a row of the logs while its steps come in.
 type row struct {
 	start           int64
+	begun           bool // by a step, which may not have ended
 	status          Status
 	steps, solved   int
 	last            bool // the last step has a solution at its end
@@ -159,10 +160,15 @@ type row struct {
 	energies
 }
 
-func (r *row) add(s *Step, p *pending) {
-	if r.steps == 0 {
-		*r = row{start: s.Start, lowest: math.Inf(1), highest: math.Inf(-1)}
+// begin begins a row with a step, unless it has begun.
+func (r *row) begin(start int64) {
+	if !r.begun {
+		*r = row{start: start, begun: true, lowest: math.Inf(1), highest: math.Inf(-1)}
 	}
+}
+
+func (r *row) add(s *Step, p *pending) {
+	r.begin(s.Start)
 	r.steps++
 	r.status = max(r.status, s.Status)
 	r.last = s.Last != nil && s.Status != Unsolved

@@ -1,10 +1,6 @@
 package results
 
-import (
-	"math"
-
-	"yearflow/sim/powerflow/vector"
-)
+import "yearflow/sim/powerflow/vector"
 
 // Lanes is several solved steps side by side, with the devices at the same positions:
 // arrays of package vector.
@@ -104,9 +100,7 @@ func (q *Quiet) cut(clock *zoneClock) (part Quiet, month int) {
 
 // quiet adds the steps to the row, which goes on behind them.
 func (r *row) quiet(q *Quiet, w *watch, e *energies) {
-	if r.steps == 0 {
-		*r = row{start: q.Start, lowest: math.Inf(1), highest: math.Inf(-1)}
-	}
+	r.begin(q.Start)
 	r.steps += q.Count
 	r.solved += q.Count
 	r.last = false // what a row says of its end is read there

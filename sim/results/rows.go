@@ -82,7 +82,7 @@ func (w *Writer) writeRow() error {
 	if err == nil && w.storage != nil {
 		err = w.writeStorage()
 	}
-	w.row.steps = 0
+	w.row.steps, w.row.begun = 0, false
 	return err
 }
 

@@ -140,8 +140,10 @@ func (t *Totals) Gathered(g *Gathered) error {
 				return err
 			}
 		}
-		total.steps++
-		t.ok = append(t.ok, byte(OK))
+		if !s.More {
+			total.steps++
+			t.ok = append(t.ok, byte(OK))
+		}
 		month := t.month(t.clock.monthOf(s.Start))
 		e := b.energiesOf(g, k, k+s.Intervals-1)
 		total.energies.merge(&e)
