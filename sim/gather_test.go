@@ -74,10 +74,14 @@ func TestGatheringChangesNothing(t *testing.T) {
 		}
 		studies[fmt.Sprint("hours ", seed)] = study
 	}
+	// In 77 and 211 a step is in lanes until one of its intervals stands below the corner.
+	seeds := []uint64{77, 211}
 	for seed := range uint64(20) {
-		if testing.Short() && seed > 4 {
-			break
+		if !testing.Short() || seed < 4 {
+			seeds = append(seeds, seed)
 		}
+	}
+	for _, seed := range seeds {
 		study := wild(seed)
 		if seed%3 > 0 { // without functions, with which states come whole
 			s := string(study["feeder/generators.csv"].Data)
