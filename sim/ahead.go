@@ -88,7 +88,11 @@ func (e *Engine) whyStepwise() string {
 }
 
 // begin forgets what was solved before a run.
-func (a *ahead) begin() {
+func (a *ahead) begin(in *inputs) {
+	a.lanes.Expect(in.largest()) // units may have been given another size
+	if a.window.lanes != nil {
+		a.window.lanes.Expect(in.largest())
+	}
 	a.first, a.end, a.dayEnd, a.month = -1, -1, -1, -1
 	a.window.first, a.window.end, a.nearStep = -1, -1, -1
 	for lane := range a.loaded {

@@ -63,3 +63,39 @@ func TestHeldAllIsHeld(t *testing.T) {
 		t.Error("an instant alone is another one than among others")
 	}
 }
+
+// What a unit draws after it has been given another size is what counts.
+func TestHeldAllKnowsSizes(t *testing.T) {
+	e, one := prepare(t, demo.Study(), "", sim.Options{}), prepare(t, demo.Study(), "", sim.Options{})
+	in, err := one.Solve(4380, sim.Positions{}) // noon in July
+	if err != nil || in.State == nil {
+		t.Fatal(err, "no solution")
+	}
+	h := []sim.HeldInstant{{Step: 4380, Start: slices.Clone(in.State.V), V: make([]complex128, len(in.State.V)),
+		Positions: sim.Positions{Taps: slices.Clone(in.State.Taps), Closed: slices.Clone(in.State.Closed)}}}
+	if err := e.HeldAll(h); err != nil {
+		t.Fatal(err)
+	}
+	before := slices.Clone(h[0].V)
+	for _, s := range []*sim.Sizer{e.NewSizer(), one.NewSizer()} {
+		for g := range e.Study.Model.Generators {
+			s.Set(g, 0)
+		}
+	}
+	if err := e.HeldAll(h); err != nil {
+		t.Fatal(err)
+	}
+	if in, err = one.Held(4380, h[0].Positions, h[0].Start); err != nil {
+		t.Fatal(err)
+	}
+	moved := 0.0
+	for u, v := range in.State.V {
+		if d := cmplx.Abs(h[0].V[u]-v) / cmplx.Abs(v); d > 1e-7 {
+			t.Fatalf("unknown %d: %v, by itself %v", u, h[0].V[u], v)
+		}
+		moved = max(moved, cmplx.Abs(h[0].V[u]-before[u])/cmplx.Abs(v))
+	}
+	if moved < 1e-4 {
+		t.Errorf("without generators voltages move by %g: the test shows nothing", moved)
+	}
+}

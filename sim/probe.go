@@ -120,6 +120,7 @@ const least = 1e-9
 // says, its rating too. factor must not be negative.
 func (s *Sizer) Set(generator int, factor float64) {
 	e := s.e
+	e.held, e.foresight = nil, nil // their lanes know the powers as they were
 	for k, g := range e.in.generator {
 		if g == generator {
 			e.in.share[k] = s.full[k] * complex(factor, 0)

@@ -58,7 +58,7 @@ func (e *Engine) Run(ctx context.Context, recorders ...Recorder) (*results.Outco
 		stepGenerated: make([]float64, len(e.state.Generation)), stepCurtailed: make([]float64, len(e.state.Generation))}
 	r.coarse = newCoarse(e)
 	if e.ahead != nil {
-		e.ahead.begin()
+		e.ahead.begin(e.in)
 		e.prepareForesight()
 		e.speculate = true
 		defer func() { e.speculate = false }()

@@ -293,6 +293,9 @@ func (l *Lanes) branches() {
 	}
 }
 
+// Expect says anew what each injection draws at most, VA, whatever the instant.
+func (l *Lanes) Expect(largest []float64) { l.tolerate(largest) }
+
 // tolerate finds how small a change must be for the mismatch at every node to be within
 // a tolerance of 1, whatever the instant.
 func (l *Lanes) tolerate(largest []float64) {
