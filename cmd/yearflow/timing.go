@@ -80,12 +80,12 @@ func (p *runProfile) write(w io.Writer) {
 		fmt.Fprintf(w, "; %d by %s", p.paths[path], path)
 	}
 	fmt.Fprintln(w)
-	if p.timing.Scouts > 0 {
-		fmt.Fprintf(w, "%s solved roughly, to forecast what devices will do\n", count(p.timing.Scouts, "block"))
-	}
 	if p.timing.Blocks > 0 {
 		fmt.Fprintf(w, "%s of steps solved at once, %d instants, %d lost to cuts (%.1f %%); %d steps handed on as quiet\n", count(p.timing.Blocks, "block"),
 			p.timing.LanesSolved, p.timing.LanesLost(), 100*per(p.timing.LanesLost(), p.timing.LanesSolved), p.timing.QuietSteps)
+	}
+	if p.timing.Scouts > 0 {
+		fmt.Fprintf(w, "%s solved roughly, to forecast what devices will do\n", count(p.timing.Scouts, "block"))
 	}
 	var why []string
 	for _, reason := range slices.Sorted(maps.Keys(p.speed.StepByStep)) {
