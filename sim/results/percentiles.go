@@ -3,7 +3,10 @@ package results
 import (
 	"math"
 	"math/bits"
+	"runtime"
 	"slices"
+	"sync"
+	"sync/atomic"
 
 	"yearflow/sim/powerflow/vector"
 )
@@ -107,16 +110,54 @@ func (d *distribution) toBins() {
 	d.blocks, d.spans = nil, nil
 }
 
-// percentiles returns the percentiles of a point, NaN where nothing was gathered.
-func (d *distribution) percentiles(point int, s *selector) [len(percents)]float64 {
+// percentiles returns the percentiles of every point, NaN where nothing was gathered. The
+// processors share the points.
+func (d *distribution) percentiles() [][len(percents)]float64 {
+	out := make([][len(percents)]float64, d.points)
+	var next atomic.Int64
+	var done sync.WaitGroup
+	for range min(runtime.GOMAXPROCS(0), d.points/pointsAtOnce+1) {
+		done.Go(func() {
+			var s selector
+			for {
+				first := int(next.Add(pointsAtOnce)) - pointsAtOnce
+				if first >= d.points {
+					return
+				}
+				d.some(out[first:min(first+pointsAtOnce, d.points)], first, &s)
+			}
+		})
+	}
+	done.Wait()
+	return out
+}
+
+// pointsAtOnce is the number of points whose voltages are taken out of their rows together:
+// as many as stand in a line of the cache.
+const pointsAtOnce = 8
+
+// some sets out to the percentiles of points from one on.
+func (d *distribution) some(out [][len(percents)]float64, first int, s *selector) {
 	if d.bins != nil {
-		return d.bins[point].percentiles()
+		for i := range out {
+			out[i] = d.bins[first+i].percentiles()
+		}
+		return
 	}
-	s.values = s.values[:0]
-	for r := range d.spans {
-		s.values = append(s.values, d.blocks[r/rowsPerBlock][r%rowsPerBlock*d.points+point])
+	n := len(d.spans)
+	if cap(s.several) < n*pointsAtOnce {
+		s.several = make([]float64, n*pointsAtOnce)
 	}
-	return s.percentiles(d.spans)
+	for r := range n {
+		row := d.blocks[r/rowsPerBlock][r%rowsPerBlock*d.points+first:][:len(out)]
+		for i, v := range row {
+			s.several[i*n+r] = v
+		}
+	}
+	for i := range out {
+		s.values = s.several[i*n : (i+1)*n : (i+1)*n]
+		out[i] = s.percentiles(d.spans)
+	}
 }
 
 // reached tells whether sum is at least p % of total; exact in 128 bits.
@@ -130,10 +171,11 @@ func reached(sum, total int64, p uint64) bool {
 // out over bins, adds up the time in each, and sorts only the bins that hold a
 // percentile. It keeps its memory from point to point.
 type selector struct {
-	values []float64
-	bin    []uint16
-	time   []int64
-	inside []weighted
+	several []float64 // point by point
+	values  []float64
+	bin     []uint16
+	time    []int64
+	inside  []weighted
 }
 
 type weighted struct {

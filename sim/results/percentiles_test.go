@@ -17,7 +17,7 @@ func TestPercentilesByHand(t *testing.T) {
 		d.add([]float64{x.v}, x.h*hour)
 	}
 	want := [...]float64{0.95, 0.95, 0.95, 0.95, 1.05}
-	if got := d.percentiles(0, new(selector)); got != want {
+	if got := d.percentiles()[0]; got != want {
 		t.Errorf("percentiles %v, want %v", got, want)
 	}
 	// Exactly half of the time at 0.95: p50 is 0.95, since half of the time is enough.
@@ -25,7 +25,7 @@ func TestPercentilesByHand(t *testing.T) {
 	d.add([]float64{1.02}, hour)
 	d.add([]float64{0.95}, hour)
 	want = [...]float64{0.95, 0.95, 0.95, 1.02, 1.02}
-	if got := d.percentiles(0, new(selector)); got != want {
+	if got := d.percentiles()[0]; got != want {
 		t.Errorf("percentiles %v, want %v", got, want)
 	}
 }
@@ -49,7 +49,7 @@ func TestPercentilesAgreeWithSorting(t *testing.T) {
 			binned.add([]float64{0, u}, span)
 			v, h = append(v, u), append(h, float64(span))
 		}
-		got, near := exact.percentiles(1, new(selector)), binned.percentiles(1, new(selector))
+		got, near := exact.percentiles()[1], binned.percentiles()[1]
 		for k, p := range percents {
 			want := percentile(v, h, float64(p))
 			if got[k] != want {
@@ -74,7 +74,7 @@ func TestValuesBeyondTheStoreGoOverIntoHistograms(t *testing.T) {
 		}
 	}
 	for i := range 3 {
-		if a, b := d.percentiles(i, new(selector)), all.percentiles(i, new(selector)); a != b {
+		if a, b := d.percentiles()[i], all.percentiles()[i]; a != b {
 			t.Errorf("place %d: %v after going over, %v from the start", i, a, b)
 		}
 	}
@@ -82,7 +82,7 @@ func TestValuesBeyondTheStoreGoOverIntoHistograms(t *testing.T) {
 
 func TestNothingHasNoPercentiles(t *testing.T) {
 	for _, limit := range []int{0, exactValues} {
-		for _, v := range newDistribution(1, 1, limit).percentiles(0, new(selector)) {
+		for _, v := range newDistribution(1, 1, limit).percentiles()[0] {
 			if !math.IsNaN(v) {
 				t.Errorf("percentile of nothing is %g", v)
 			}

@@ -273,9 +273,9 @@ func sameStatistics(t *testing.T, a, b *statistics) {
 			t.Errorf("service %d: outside for %d, step by step %d", i, y, x)
 		}
 	}
-	var one, two selector
+	one, two := a.dist.percentiles(), b.dist.percentiles()
 	for i := range a.points {
-		if x, y := a.dist.percentiles(i, &one), b.dist.percentiles(i, &two); x != y {
+		if x, y := one[i], two[i]; x != y {
 			t.Errorf("point %d: percentiles %v, step by step %v", i, y, x)
 		}
 	}

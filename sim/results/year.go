@@ -37,7 +37,7 @@ func (w *Writer) writeNodes(f *outFile) error {
 		"customer-hours below A [h]", "customer-hours above A [h]", "settling hours outside A [h]", "lowest settling [pu]", "highest settling [pu]"); err != nil {
 		return err
 	}
-	var sel selector
+	percentiles := w.stats.dist.percentiles()
 	settled := w.stats.total.settled
 	for i := range w.stats.points {
 		s, p := &w.stats.points[i], &w.meter.Points[i]
@@ -53,7 +53,7 @@ func (w *Writer) writeNodes(f *outFile) error {
 			f.pu(s.max)
 			f.at(w.clock, s.maxTime, true)
 			f.pu(s.sum / float64(settled))
-			for _, v := range w.stats.dist.percentiles(i, &sel) {
+			for _, v := range percentiles[i] {
 				f.pu(v)
 			}
 		} else {
