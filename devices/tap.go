@@ -109,6 +109,18 @@ type TapState struct {
 	Measured float64 // V, what was seen last of the request's quantity; 0 without a request
 }
 
+// Backward tells whether power flows back through a unit with the current i, A, turned as the
+// compensator turns it, at the voltage v, V: whether Re(v·ī)/|v| is below zero by more than a
+// billionth of the current transformer's rating. Less is what rounding makes of no flow.
+func (c *TapChanger) Backward(v, i complex128) bool {
+	p := real(v)*real(i) + imag(v)*imag(i)
+	if !(p < 0) {
+		return false
+	}
+	least := 1e-9 * max(c.CT, 0)
+	return p*p > least*least*(real(v)*real(v)+imag(v)*imag(v))
+}
+
 // Observe returns the state after a reading. A request starts its clock when it
 // appears or changes direction. One that vanishes drops it, or leaves it running
 // down where timers integrate.

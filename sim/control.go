@@ -108,5 +108,5 @@ func (c *tapControl) reverse(r Reading) bool {
 	if c.sheet.Rotation != 0 {
 		i *= cmplx.Rect(1, c.sheet.Rotation)
 	}
-	return real(r.Volts)*real(i)+imag(r.Volts)*imag(i) < 0
+	return c.sheet.Backward(r.Volts, i)
 }

@@ -103,6 +103,10 @@ func (b *stepBlock) load(e *Engine, k, step int) {
 // roughly is the change, p.u., at which scouts have seen enough.
 var roughly = powerflow.Tolerance{Change: 1e-3, Mismatch: math.Inf(1)}
 
+// mostGains bounds what is kept of what movements make, in numbers: some 16 of a Reading for
+// each pair of devices, and a voltage of every unknown for each device.
+const mostGains = 16 << 20
+
 // prepareForesight has the lanes ready for a run, where steps are long and a forecast is
 // possible.
 func (e *Engine) prepareForesight() {
@@ -119,6 +123,9 @@ func (e *Engine) prepareForesight() {
 		}
 	}
 	n := len(e.devices)
+	if n*(16*n+2*len(e.net.Unknowns)) > mostGains {
+		return
+	}
 	f := &foresight{steps: e.in.axis.Steps(), ratio: make([]float64, len(e.net.Couplings)), reading: make([]Reading, n), saved: make([]saved, n),
 		flow: make([]complex128, len(e.state.Flow)), own: make([]complex128, len(e.net.Couplings)), source: make([]complex128, len(e.net.Fixed))}
 	f.lanes, f.scouts = powerflow.NewPositionedLanes(e.flow, e.in.largest()), powerflow.NewPositionedLanes(e.flow, e.in.largest())

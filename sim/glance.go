@@ -165,10 +165,10 @@ func (g *glance) look(coupling []float64) {
 	g.fromI.Add(g.phasors, coupling)
 	g.lengths.Watch(g.size, g.phasors, a.arrived, &g.leastOf, &g.mostOf)
 	g.power.Watch(g.watts, g.phasors, g.phasors, a.arrived, &g.total)
-	for j := range g.taps {
+	for j, x := range g.taps {
 		g.reverse[j] = 0
 		for k, w := range g.watts[j*vector.Lanes : (j+1)*vector.Lanes] {
-			if w < 0 {
+			if w < 0 && x.tap.sheet.Backward(vector.At(g.phasors, 3*j+1, k), vector.At(g.phasors, 3*j+2, k)) {
 				g.reverse[j] |= 1 << k
 			}
 		}

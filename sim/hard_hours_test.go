@@ -141,7 +141,7 @@ func sameTrail(t *testing.T, want, got *trail) {
 // An engine that is given another sheet runs as a new one whose tables have it: bit by bit,
 // and whatever it ran before.
 func TestSheetsBetweenRunsByTheHour(t *testing.T) {
-	for _, reverse := range []feeder.ReverseMode{feeder.ReverseNone, feeder.ForwardOnly, feeder.ReverseIdle, feeder.ReverseNeutral, feeder.ReverseStay} {
+	for _, reverse := range []feeder.ReverseMode{feeder.ReverseNone, feeder.ForwardOnly, feeder.ReverseOnly, feeder.ReverseIdle, feeder.ReverseFollow, feeder.ReverseNeutral, feeder.ReverseStay} {
 		t.Run(fmt.Sprint(reverse), func(t *testing.T) {
 			f := longOverload(2500, "1h", 12)
 			f["feeder/generators.csv"] = text("generator,node,phases,kind,rating [kVA],profile\npv,end,ABC,other,3500,sun\n")

@@ -56,7 +56,7 @@ func (c *reverseControl) State(r Reading) (results.DeviceState, bool) {
 	return results.DeviceState{
 		OutOfBand: c.sheet.OutOfBand(c.state, m),
 		AtStop:    c.sheet.AtStop(c.state),
-		Reverse:   m.Current < 0, // whatever the threshold, as without a mode
+		Reverse:   c.sheet.Forward.Backward(1, complex(m.Current, 0)), // whatever the threshold, as without a mode
 	}, c.sheet.Standing(c.state)
 }
 

@@ -43,6 +43,7 @@ func (e *Engine) SetTapSheet(device string, s feeder.TapSettings) error {
 	} else {
 		d.Controller = &tapControl{sheet: forward}
 	}
+	d.tap.forward = s.Reverse == feeder.ReverseNone
 	d.Highest, d.Lowest = s.HighestTap, s.LowestTap
 	for i := range e.devices {
 		if e.devices[i] == d {
