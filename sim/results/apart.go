@@ -17,8 +17,6 @@ type apart struct {
 	losses, caps    vector.Dots // of reactive power: one row
 	lossVar, capVar [vector.Lanes]float64
 	row             [vector.Lanes]float64
-	held            []heldBins // settled voltages that wait for others
-	last            int        // of held that is being filled
 
 	span              [vector.Lanes]float64 // ns, 0 beyond the last
 	settled, settling uint8
@@ -28,20 +26,6 @@ type apart struct {
 // apartPoint has the sum of a point's settled voltages, p.u.·ns, and the range in which a
 // settling one is no news.
 type apartPoint struct{ sum, low, high float64 }
-
-// heldBins is the bins of up to binsHeld intervals, by point and interval: as much of a
-// point as a line of the cache has.
-type heldBins struct {
-	bins []uint16
-	ns   []int64 // by interval
-}
-
-// binsHeld times binLists is how many intervals' voltages wait to be entered into the
-// histograms: those of many points are far apart in memory, and each is best met seldom.
-const (
-	binsHeld = 32
-	binLists = 4
-)
 
 func newApart(w *watch) *apart {
 	a := &apart{points: make([]apartPoint, len(w.meter.Points))}
@@ -83,7 +67,6 @@ func (a *apart) gather(w *watch) {
 			a.energy[kind][i] = 0
 		}
 	}
-	a.enter(w.s.dist)
 }
 
 // boundSettling draws the range of a point anew.
@@ -208,47 +191,7 @@ func (w *watch) share() {
 		return
 	}
 	vector.Bins(w.bins, w.pu, binWidth, lastBin)
-	to := w.apart.room(len(w.spans), d)
-	at := len(to.ns)
-	for i := range d.bins {
-		held, b := to.bins[i*binsHeld+at:(i+1)*binsHeld], (*[vector.Lanes]int32)(w.bins[i*vector.Lanes:])
-		for k, t := range w.spans {
-			held[k] = uint16(b[t.lane&(vector.Lanes-1)])
-		}
-	}
-	for _, t := range w.spans {
-		to.ns = append(to.ns, t.ns)
-	}
-}
-
-// room returns a list with room for some intervals.
-func (a *apart) room(intervals int, d *distribution) *heldBins {
-	if a.held == nil {
-		a.held = make([]heldBins, binLists)
-		for i := range a.held {
-			a.held[i] = heldBins{make([]uint16, len(d.bins)*binsHeld), make([]int64, 0, binsHeld)}
-		}
-	}
-	if len(a.held[a.last].ns)+intervals > binsHeld {
-		if a.last++; a.last == binLists {
-			a.enter(d)
-		}
-	}
-	return &a.held[a.last]
-}
-
-// enter enters into the histograms what has been held back.
-func (a *apart) enter(d *distribution) {
-	for i := range d.bins {
-		for k := range a.held {
-			x := &a.held[k]
-			d.bins[i].enterAll(x.bins[i*binsHeld:(i+1)*binsHeld], x.ns)
-		}
-	}
-	for k := range a.held {
-		a.held[k].ns = a.held[k].ns[:0]
-	}
-	a.last = 0
+	w.waiting.hold(w.bins, w.spans, d)
 }
 
 // book takes what months are told of: the steps from one on to before another, all of

@@ -48,6 +48,10 @@ type watch struct {
 	bin    []int32
 	since  []int64
 	clock  int64
+	// Where most voltages leave their bins anyway they wait, and no point stands in one:
+	// everyone moves until waiting has been entered.
+	moving  bool
+	waiting waiting
 
 	step  int64 // ns, length of the steps whose sums stand in the rows of the lists
 	calls int   // since the sums were taken
@@ -182,6 +186,10 @@ func (w *watch) gather() {
 			w.s.lossEnergy[w.rowOfPart(LossKind(kind), i)] += r.Sum * ns
 			r.Sum = 0
 		}
+	}
+	w.waiting.enter(w.s.dist)
+	if w.moving { // no time stands elsewhere
+		w.moving, w.binned = false, false
 	}
 	if w.binned {
 		for i := range w.s.dist.bins {

@@ -119,6 +119,10 @@ func (w *watch) distribute(q *Quiet) {
 		}
 		return
 	}
+	if w.moving {
+		w.move(q)
+		return
+	}
 	if !w.binned { // nothing stands in a bin yet
 		w.binned = true
 		for i := range w.points.Left {
@@ -137,20 +141,23 @@ func (w *watch) distribute(q *Quiet) {
 			few++
 		}
 	}
-	all := few > len(w.bin)/4
-	if all {
-		vector.Bins(w.bins, w.pu, binWidth, lastBin)
+	if few > len(w.bin)/4 {
+		w.clock = then
+		for i := range d.bins {
+			w.release(i)
+		}
+		w.moving = true
+		w.move(q)
+		return
 	}
 	last := q.lane(q.Count - 1)
 	for i, left := range w.points.Left {
 		if left == 0 {
 			continue
 		}
-		if !all {
-			at := i * vector.Lanes
-			vector.Bins(w.bins[at:at+vector.Lanes], w.pu[at:at+vector.Lanes], binWidth, lastBin)
-		}
-		h, b := &d.bins[i], (*[vector.Lanes]int32)(w.bins[i*vector.Lanes:])
+		at := i * vector.Lanes
+		vector.Bins(w.bins[at:at+vector.Lanes], w.pu[at:at+vector.Lanes], binWidth, lastBin)
+		h, b := &d.bins[i], (*[vector.Lanes]int32)(w.bins[at:])
 		if ns := then - w.since[i]; ns > 0 {
 			h.enter(int(w.bin[i]), ns)
 		}
@@ -159,6 +166,24 @@ func (w *watch) distribute(q *Quiet) {
 		if w.bin[i] != b[last] || math.IsInf(w.points.Rows[i].To, 1) {
 			w.stay(i, b[last])
 		}
+	}
+}
+
+// move keeps the bins of all points until others have come: where most of them leave theirs
+// nothing is gained by looking which. Then every point stands where it is, to begin with.
+func (w *watch) move(q *Quiet) {
+	d := w.s.dist
+	vector.Bins(w.bins, w.pu, binWidth, lastBin)
+	w.waiting.hold(w.bins, w.spans, d)
+	if !w.waiting.full(vector.Lanes) {
+		return
+	}
+	w.waiting.enter(d)
+	w.moving = false
+	last := q.lane(q.Count - 1)
+	for i := range d.bins {
+		w.since[i] = w.clock
+		w.stay(i, w.bins[i*vector.Lanes+last])
 	}
 }
 
