@@ -126,6 +126,13 @@ func (e *Engine) see() bool {
 		e.scout(first)
 	}
 	x, _ := f.at(f.here.step)
+	if x != nil && x.unread { // a scout's
+		at := f.scoutedAt
+		at.step = x.step
+		if f.know(e, x, &f.ahead, x.lane, &at); x.step < 0 {
+			x = nil
+		}
+	}
 	if x == nil {
 		return false
 	}
@@ -173,11 +180,12 @@ func (e *Engine) scout(step int) {
 	e.lap(&e.timing.Assembling)
 	e.timing.Scouts++
 	arrived := f.scouts.Solve(mask, roughly)
-	at := f.here
+	f.scoutedAt.set(step, f.here.taps, f.here.closed)
+	at := f.scoutedAt
 	for at.step = f.first; at.step < f.end; at.step++ {
 		k := at.step % vector.Lanes
 		if arrived>>k&1 == 1 {
-			f.know(e, &f.scouted[k], &f.ahead, k, &at)
+			f.knows(e, &f.scouted[k], k, &at)
 		}
 	}
 	e.lap(&e.timing.Solving)

@@ -37,6 +37,7 @@ type foresight struct {
 	flow         []complex128 // what sense reads
 	own, source  []complex128
 	here         wanted // where the devices of the forecast stand
+	scoutedAt    wanted // where they stand in all lanes of the scouts
 	ratio        []float64
 	reading      []Reading
 	move         *vector.Directions // of the voltages: by device that moves by one
@@ -70,6 +71,7 @@ type known struct {
 	lane      int
 	positions []int
 	readings  []Reading
+	unread    bool // the readings are still to be taken from the lane
 }
 
 // stepBlock is the inputs of the steps in the lanes of a block.
@@ -216,7 +218,7 @@ func (f *foresight) find(e *Engine) int {
 func (e *Engine) foresee() {
 	f := e.foresight
 	if month := e.in.monthOf(e.step); month != f.month { // shares of loads may change
-		f.month = month
+		f.month, f.gained = month, false
 		f.lanes.Follow(e.in.follow(month))
 		f.scouts.Follow(e.in.follow(month))
 		f.forget()
@@ -306,9 +308,17 @@ func (f *foresight) learn(e *Engine) {
 	}
 }
 
+// knows notes a lane in which what devices see can be read while its block is at hand.
+func (f *foresight) knows(e *Engine, x *known, k int, w *wanted) {
+	x.step, x.lane, x.unread = w.step, k, true
+	for i, d := range e.devices {
+		x.positions[i] = position(d, w)
+	}
+}
+
 // know reads what devices see in a lane.
 func (f *foresight) know(e *Engine, x *known, b *stepBlock, k int, w *wanted) {
-	x.step = -1
+	x.step, x.unread = -1, false
 	e.ratios(w.taps, e.ratio)
 	if !f.sense.Read(f.flow, f.own, f.source, b.lanes, k) {
 		return
