@@ -94,7 +94,7 @@ func (a *ahead) begin(in *inputs) {
 		a.window.lanes.Expect(in.largest())
 	}
 	a.first, a.end, a.dayEnd, a.month = -1, -1, -1, -1
-	a.window.first, a.window.end, a.nearStep = -1, -1, -1
+	a.window.first, a.window.end, a.window.behind.first, a.nearStep = -1, -1, -1, -1
 	for lane := range a.loaded {
 		a.loaded[lane] = -1
 	}

@@ -8,7 +8,7 @@ import (
 // window is a row of steps between two instants of the calendar, or from the last action
 // to such an instant, over which inputs are straight lines or constant. Its first, middle
 // and last step are solved before the others, which start from a curve through the three:
-// nearly a solution.
+// nearly a solution. Those of the window behind it are solved with them.
 type window struct {
 	length     int // steps from one instant of the calendar to the next; 0: no windows
 	first, end int // steps that the curve is of
@@ -17,6 +17,11 @@ type window struct {
 	rows       []float64
 	curve      *powerflow.Curve
 	last       *powerflow.Solution // at its last step
+	behind     struct {
+		first, end int // −1: not solved
+		curve      *powerflow.Curve
+		last       *powerflow.Solution
+	}
 }
 
 // A window is as long as it is from one value of the profiles to the next, or a part of
@@ -40,6 +45,7 @@ func (e *Engine) prepareWindow() {
 	w.lanes = powerflow.NewLanes(e.flow, e.in.largest())
 	w.rows = make([]float64, len(a.rows))
 	w.curve, w.last = w.lanes.NewCurve(), e.flow.NewSolution()
+	w.behind.curve, w.behind.last = w.lanes.NewCurve(), e.flow.NewSolution()
 	e.in.still(w.lanes, w.rows)
 }
 
@@ -60,13 +66,23 @@ func (w *window) prepare(e *Engine) bool {
 	if known && step >= w.first && step < w.end {
 		return true
 	}
-	end := min((step/w.length+1)*w.length, e.in.axis.Steps(), e.dayEnd(step))
+	if b := &w.behind; known && b.first == step && w.end == step {
+		w.first, w.end = b.first, b.end
+		w.curve, b.curve = b.curve, w.curve
+		w.last, b.last = b.last, w.last
+		b.first = -1
+		return true
+	}
+	end := w.endOf(e, step)
 	if end-step < leastWindow {
 		return false
 	}
-	middle := (step + end - 1) / 2
-	for k, s := range [...]int{step, middle, end - 1} {
-		e.in.loadLane(w.lanes, w.rows, e.ahead.values, k, s)
+	w.load(e, 0, step, end)
+	mask := uint8(7)
+	behind := w.endOf(e, end)
+	if end < min(e.in.axis.Steps(), e.dayEnd(step)) && behind-end >= leastWindow {
+		w.load(e, 3, end, behind)
+		mask |= 7 << 3
 	}
 	w.lanes.Drive(w.rows)
 	start := e.anchor
@@ -74,14 +90,38 @@ func (w *window) prepare(e *Engine) bool {
 		start = w.last.V
 	}
 	w.lanes.StartAll(start, &e.input)
-	if w.lanes.Solve(7, powerflow.Contract) != 7 {
+	arrived := w.lanes.Solve(mask, powerflow.Contract)
+	w.behind.first = -1
+	if arrived&7 != 7 {
 		w.first, w.end = -1, -1
 		return false
 	}
 	w.lanes.Take(2, w.last)
-	w.lanes.Fit(w.curve, float64(middle-step)/float64(end-1-step))
+	w.lanes.Fit(w.curve, 0, middleOf(step, end))
 	w.first, w.end, w.state = step, end, state
+	if arrived>>3 == 7 {
+		w.lanes.Take(5, w.behind.last)
+		w.lanes.Fit(w.behind.curve, 3, middleOf(end, behind))
+		w.behind.first, w.behind.end = end, behind
+	}
 	return true
+}
+
+// endOf is the end of the window that begins at a step.
+func (w *window) endOf(e *Engine, step int) int {
+	return min((step/w.length+1)*w.length, e.in.axis.Steps(), e.dayEnd(e.step))
+}
+
+// load puts the first, the middle and the last step of a window into three lanes.
+func (w *window) load(e *Engine, lane, first, end int) {
+	for k, s := range [...]int{first, (first + end - 1) / 2, end - 1} {
+		e.in.loadLane(w.lanes, w.rows, e.ahead.values, lane+k, s)
+	}
+}
+
+// middleOf is where the middle of a window lies between its first and its last step.
+func middleOf(first, end int) float64 {
+	return float64((first+end-1)/2-first) / float64(end-1-first)
 }
 
 // start starts the lanes of a block on the curve.

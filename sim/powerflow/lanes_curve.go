@@ -9,19 +9,20 @@ type Curve struct{ coef []float64 }
 // NewCurve makes room for a curve.
 func (l *Lanes) NewCurve() *Curve { return &Curve{make([]float64, 6*l.all)} }
 
-// Fit lays c through lanes 0, 1 and 2 at w = 0, middle and 1.
+// Fit lays c through three lanes in a row at w = 0, middle and 1.
 //
 //	V(w) = a + b·w + c·w²,  a = V₀,  c = (V₁ − V₀ − m·(V₂ − V₀))/(m² − m),  b = V₂ − V₀ − c
 //
 // m being the middle, which must lie between 0 and 1.
-func (l *Lanes) Fit(c *Curve, middle float64) {
+func (l *Lanes) Fit(c *Curve, first int, middle float64) {
 	scale := 1 / (middle*middle - middle)
 	for at := range l.all {
-		v := l.v[at*vector.Width:]
+		v, into := l.v[at*vector.Width:], c.coef[6*at:6*at+6]
 		for part := range 2 {
-			v0, v1, v2 := v[part*vector.Lanes], v[part*vector.Lanes+1], v[part*vector.Lanes+2]
+			at := part*vector.Lanes + first
+			v0, v1, v2 := v[at], v[at+1], v[at+2]
 			q := (v1 - v0 - middle*(v2-v0)) * scale
-			c.coef[6*at+part], c.coef[6*at+2+part], c.coef[6*at+4+part] = v0, v2-v0-q, q
+			into[part], into[2+part], into[4+part] = v0, v2-v0-q, q
 		}
 	}
 }

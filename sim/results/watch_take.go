@@ -141,7 +141,8 @@ func (w *watch) distribute(q *Quiet) {
 			few++
 		}
 	}
-	if few > len(w.bin)/4 {
+	all := few > len(w.bin)/4
+	if all && len(w.bin) > d.near {
 		w.clock = then
 		for i := range d.bins {
 			w.release(i)
@@ -150,13 +151,18 @@ func (w *watch) distribute(q *Quiet) {
 		w.move(q)
 		return
 	}
+	if all {
+		vector.Bins(w.bins, w.pu, binWidth, lastBin)
+	}
 	last := q.lane(q.Count - 1)
 	for i, left := range w.points.Left {
 		if left == 0 {
 			continue
 		}
 		at := i * vector.Lanes
-		vector.Bins(w.bins[at:at+vector.Lanes], w.pu[at:at+vector.Lanes], binWidth, lastBin)
+		if !all {
+			vector.Bins(w.bins[at:at+vector.Lanes], w.pu[at:at+vector.Lanes], binWidth, lastBin)
+		}
 		h, b := &d.bins[i], (*[vector.Lanes]int32)(w.bins[at:])
 		if ns := then - w.since[i]; ns > 0 {
 			h.enter(int(w.bin[i]), ns)
