@@ -37,48 +37,25 @@ func plainBack(v, x *float64, index *int32, coef, lanes, weight *float64, mask *
 	out := (*[Width]float64)(unsafe.Pointer(moved))
 	r, own := reader{index: index, coef: coef}, int32(0)
 	for range groups {
-		d, rows, n := r.next(), r.next(), r.next()
-		each := rows > GroupRows
-		if each {
-			rows -= GroupRows
-		}
-		var rr, ii, ri, ir [GroupRows][Lanes]float64
+		d, rows, n, each := r.group()
+		var a sums
 		for i := range n {
 			base := v
 			if i < rows {
 				base = x
 			}
-			s := value(base, r.next())
-			for k := range rows {
-				var c [Width]float64
-				if each {
-					c = *value(lanes, own)
-					own += Stride
-				} else {
-					cr, ci := r.number(), r.number()
-					for l := range Lanes {
-						c[l], c[Lanes+l] = cr, ci
-					}
-				}
-				for l := range Lanes {
-					cr, ci := c[l], c[Lanes+l]
-					rr[k][l] = math.FMA(cr, s[l], rr[k][l])
-					ii[k][l] = math.FMA(ci, s[Lanes+l], ii[k][l])
-					ri[k][l] = math.FMA(cr, s[Lanes+l], ri[k][l])
-					ir[k][l] = math.FMA(ci, s[l], ir[k][l])
-				}
-			}
+			a.column(value(base, r.next()), &r, lanes, &own, rows, each)
 		}
 		for k := range rows {
-			t := value(v, d+k*Stride)
-			w := *(*float64)(unsafe.Add(unsafe.Pointer(weight), 8*int(d/Stride+k)))
+			t := value(v, d+int32(k*Stride))
+			w := *(*float64)(unsafe.Add(unsafe.Pointer(weight), 8*(int(d)/Stride+k)))
 			for l := range Lanes {
-				re, im := rr[k][l]-ii[k][l], ri[k][l]+ir[k][l]
-				a, b := re-t[l], im-t[Lanes+l]
+				re, im := a.rr[k][l]-a.ii[k][l], a.ri[k][l]+a.ir[k][l]
+				x, y := re-t[l], im-t[Lanes+l]
 				if m[l] != 0 {
 					t[l], t[Lanes+l] = re, im
 				}
-				far := math.FMA(a, a, b*b) * w
+				far := math.FMA(x, x, y*y) * w
 				if far > out[l] {
 					out[l] = far
 				}

@@ -47,15 +47,7 @@ func (m machine) back() {
 	MOVLQSX(Mem{Base: index, Disp: 4}, r)
 	MOVLQSX(Mem{Base: index, Disp: 8}, n)
 	ADDQ(U8(12), index)
-	CMPQ(r, U8(2))
-	JLT(LabelRef("rows1"))
-	JEQ(LabelRef("rows2"))
-	CMPQ(r, U8(4))
-	JLT(LabelRef("rows3"))
-	JEQ(LabelRef("rows4"))
-	CMPQ(r, U8(5))
-	JEQ(LabelRef("rows5"))
-	JMP(LabelRef("rows6"))
+	toRows(r)
 	for code := 6; code >= 1; code-- {
 		t, from, size := code, coef, 16
 		if code > 3 {

@@ -36,15 +36,7 @@ func (m machine) groups(kind string) {
 	MOVLQSX(Mem{Base: index, Disp: 4}, r)
 	MOVLQSX(Mem{Base: index, Disp: 8}, n)
 	ADDQ(U8(12), index)
-	CMPQ(r, U8(2))
-	JLT(LabelRef("rows1"))
-	JEQ(LabelRef("rows2"))
-	CMPQ(r, U8(4))
-	JLT(LabelRef("rows3"))
-	JEQ(LabelRef("rows4"))
-	CMPQ(r, U8(5))
-	JEQ(LabelRef("rows5"))
-	JMP(LabelRef("rows6"))
+	toRows(r)
 	for code := 6; code >= 1; code-- {
 		t, from, wide := code, coef, 16
 		if code > 3 {
@@ -110,4 +102,17 @@ func (m machine) groups(kind string) {
 	JNZ(LabelRef("group"))
 	VZEROUPPER()
 	RET()
+}
+
+// toRows jumps to the code of a group's rows.
+func toRows(r reg.Register) {
+	CMPQ(r, U8(2))
+	JLT(LabelRef("rows1"))
+	JEQ(LabelRef("rows2"))
+	CMPQ(r, U8(4))
+	JLT(LabelRef("rows3"))
+	JEQ(LabelRef("rows4"))
+	CMPQ(r, U8(5))
+	JEQ(LabelRef("rows5"))
+	JMP(LabelRef("rows6"))
 }
