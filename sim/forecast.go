@@ -129,7 +129,7 @@ func (e *Engine) see() bool {
 	if x != nil && x.unread { // a scout's
 		at := f.scoutedAt
 		at.step = x.step
-		if f.know(e, x, &f.ahead, x.lane, &at); x.step < 0 {
+		if f.know(e, x, &f.scoutBlock, x.lane, &at); x.step < 0 {
 			x = nil
 		}
 	}
@@ -172,10 +172,10 @@ func (e *Engine) scout(step int) {
 	for ; f.end < min(step+vector.Lanes, f.steps) && e.in.monthOf(f.end) == f.month; f.end++ {
 		k := f.end % vector.Lanes
 		mask |= 1 << k
-		f.ahead.load(e, k, f.end)
+		f.scoutBlock.load(e, k, f.end)
 		f.position(e, f.scouts, k, &f.here)
 	}
-	f.scouts.Drive(f.ahead.rows)
+	f.scouts.Drive(f.scoutBlock.rows)
 	f.startAll(e, f.scouts)
 	e.lap(&e.timing.Assembling)
 	e.timing.Scouts++
@@ -205,10 +205,10 @@ func (e *Engine) measureGains() {
 			if i := begin + k - 1; k > 0 && i < len(e.devices) {
 				moved[k] = move(e.devices[i], w)
 			}
-			f.ahead.load(e, k, e.step)
+			f.scoutBlock.load(e, k, e.step)
 			f.position(e, f.scouts, k, w)
 		}
-		f.scouts.Drive(f.ahead.rows)
+		f.scouts.Drive(f.scoutBlock.rows)
 		f.scouts.StartAll(nil, &e.input)
 		arrived := f.scouts.Solve(vector.All, powerflow.Contract)
 		for k := range vector.Lanes {
@@ -217,7 +217,7 @@ func (e *Engine) measureGains() {
 				continue
 			}
 			x := &f.scouted[0]
-			if f.know(e, x, &f.ahead, k, &at[k]); x.step < 0 {
+			if f.know(e, x, &f.scoutBlock, k, &at[k]); x.step < 0 {
 				continue
 			}
 			if k == 0 {
@@ -233,7 +233,7 @@ func (e *Engine) measureGains() {
 			}
 		}
 	}
-	f.ahead.forget()
+	f.scoutBlock.forget()
 	f.forget()
 }
 

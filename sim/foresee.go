@@ -26,28 +26,28 @@ type foresight struct {
 
 	// Scouts are solved roughly, eight steps at once with the devices where they stand: what
 	// the forecast begins with, and start voltages.
-	scouts  *powerflow.Lanes
-	ahead   stepBlock
-	first   int // step of the scouts' window; end is the one after the last
-	end     int
-	scouted [vector.Lanes]known // by step, modulo: in the scouts' lanes
-	solved  [vector.Lanes]known // the same, in the lanes: nearer to what will be
+	scouts     *powerflow.Lanes
+	scoutBlock stepBlock
+	first      int // step of the scouts' window; end is the one after the last
+	end        int
+	scouted    [vector.Lanes]known // by step, modulo: in the scouts' lanes
+	solved     [vector.Lanes]known // the same, in the lanes: nearer to what will be
 
-	sense        *powerflow.LaneSense
-	flow         []complex128 // what sense reads
-	own, source  []complex128
-	here         wanted // where the devices of the forecast stand
-	scoutedAt    wanted // where they stand in all lanes of the scouts
-	ratio        []float64
-	reading      []Reading
-	move         *vector.Directions // of the voltages: by device that moves by one
-	gain         [][]Reading        // by device that moves by one, and by device that sees it
-	gained       bool
-	month        int
-	steps        int
-	kept         bool // there is a solution to start from
-	saved        []saved
-	laneOfSource [vector.Lanes]uint64
+	sense       *powerflow.LaneSense
+	flow        []complex128 // what sense reads
+	own, source []complex128
+	here        wanted // where the devices of the forecast stand
+	scoutedAt   wanted // where they stand in all lanes of the scouts
+	ratio       []float64
+	reading     []Reading
+	move        *vector.Directions // of the voltages: by device that moves by one
+	gain        [][]Reading        // by device that moves by one, and by device that sees it
+	gained      bool
+	month       int
+	steps       int
+	kept        bool // there is a solution to start from
+	saved       []saved
+	startFrom   [vector.Lanes]uint64
 }
 
 // wanted is a solution that is asked for: a step and where the devices stand.
@@ -134,7 +134,7 @@ func (e *Engine) prepareForesight() {
 	if f.lanes == nil || f.scouts == nil {
 		return
 	}
-	f.block, f.ahead = newStepBlock(e.in, f.lanes), newStepBlock(e.in, f.scouts)
+	f.block, f.scoutBlock = newStepBlock(e.in, f.lanes), newStepBlock(e.in, f.scouts)
 	f.move = f.scouts.NewDirections(n)
 	f.sense = e.flow.NewLaneSense(e.watchedFlows())
 	f.gain = make([][]Reading, n)
@@ -160,7 +160,7 @@ func (f *foresight) begin() {
 	}
 	f.forget()
 	f.block.forget()
-	f.ahead.forget()
+	f.scoutBlock.forget()
 }
 
 // forget forgets what is known.
@@ -256,15 +256,15 @@ func (f *foresight) start(e *Engine) {
 		f.startAll(e, f.lanes)
 		return
 	}
-	for k := range f.laneOfSource {
+	for k := range f.startFrom {
 		if k < f.count {
 			if x, at := f.at(f.plan[k].step); x != nil {
 				lane = at
 			}
 		}
-		f.laneOfSource[k] = lane
+		f.startFrom[k] = lane
 	}
-	f.lanes.StartLanes(f.scouts, &f.laneOfSource)
+	f.lanes.StartLanes(f.scouts, &f.startFrom)
 	f.move.Begin()
 	for i, d := range e.devices {
 		var times [vector.Lanes]float64
