@@ -55,28 +55,7 @@ func (m machine) back() {
 		}
 		Label(fmt.Sprintf("rows%d", code))
 		for p := range m.parts() {
-			column := func(base reg.Register) {
-				MOVLQSX(Mem{Base: at}, s)
-				ADDQ(U8(4), at)
-				VMOVUPD(m.re(base, s, p), xr)
-				VMOVUPD(m.im(base, s, p), xi)
-				for k := range t {
-					a := acc[k]
-					if code > 3 {
-						at := Mem{Base: c, Disp: stride*k + p*m.bytes}
-						VMOVUPD(at, cr)
-						VMOVUPD(at.Offset(8*lanes), ci)
-					} else {
-						VBROADCASTSD(Mem{Base: c, Disp: 16 * k}, cr)
-						VBROADCASTSD(Mem{Base: c, Disp: 16*k + 8}, ci)
-					}
-					VFMADD231PD(xr, cr, a[0])
-					VFMADD231PD(xi, ci, a[1])
-					VFMADD231PD(xi, cr, a[2])
-					VFMADD231PD(xr, ci, a[3])
-				}
-				ADDQ(U32(size*t), c)
-			}
+			column := func(base reg.Register) { m.column(base, at, s, c, xr, xi, cr, ci, acc[:t], size, p) }
 			MOVQ(index, at)
 			MOVQ(from, c)
 			for k := range t {

@@ -61,26 +61,7 @@ func (m machine) groups(kind string) {
 			}
 			loop := fmt.Sprintf("columns%d_%d", code, p)
 			Label(loop)
-			MOVLQSX(Mem{Base: at}, s)
-			ADDQ(U8(4), at)
-			VMOVUPD(m.re(src, s, p), xr)
-			VMOVUPD(m.im(src, s, p), xi)
-			for k := range t {
-				a := acc[k]
-				if code > 3 {
-					at := Mem{Base: c, Disp: stride*k + p*m.bytes}
-					VMOVUPD(at, cr)
-					VMOVUPD(at.Offset(8*lanes), ci)
-				} else {
-					VBROADCASTSD(Mem{Base: c, Disp: 16 * k}, cr)
-					VBROADCASTSD(Mem{Base: c, Disp: 16*k + 8}, ci)
-				}
-				VFMADD231PD(xr, cr, a[0])
-				VFMADD231PD(xi, ci, a[1])
-				VFMADD231PD(xi, cr, a[2])
-				VFMADD231PD(xr, ci, a[3])
-			}
-			ADDQ(U32(wide*t), c)
+			m.column(src, at, s, c, xr, xi, cr, ci, acc[:t], wide, p)
 			DECQ(left)
 			JNZ(LabelRef(loop))
 			for k := range t {
@@ -115,4 +96,28 @@ func toRows(r reg.Register) {
 	CMPQ(r, U8(5))
 	JEQ(LabelRef("rows5"))
 	JMP(LabelRef("rows6"))
+}
+
+// column adds a source, whose offset stands at, times its coefficients at c, to the sums of
+// a group's rows. A coefficient that all lanes share has 16 bytes, else it has a stride.
+func (m machine) column(base reg.Register, at, s, c reg.GPVirtual, xr, xi, cr, ci reg.VecVirtual, acc [][4]reg.VecVirtual, size, part int) {
+	MOVLQSX(Mem{Base: at}, s)
+	ADDQ(U8(4), at)
+	VMOVUPD(m.re(base, s, part), xr)
+	VMOVUPD(m.im(base, s, part), xi)
+	for k, a := range acc {
+		if size == stride {
+			z := Mem{Base: c, Disp: stride*k + part*m.bytes}
+			VMOVUPD(z, cr)
+			VMOVUPD(z.Offset(8*lanes), ci)
+		} else {
+			VBROADCASTSD(Mem{Base: c, Disp: 16 * k}, cr)
+			VBROADCASTSD(Mem{Base: c, Disp: 16*k + 8}, ci)
+		}
+		VFMADD231PD(xr, cr, a[0])
+		VFMADD231PD(xi, ci, a[1])
+		VFMADD231PD(xi, cr, a[2])
+		VFMADD231PD(xr, ci, a[3])
+	}
+	ADDQ(U32(size*len(acc)), c)
 }
