@@ -5,7 +5,6 @@ import (
 	"math/rand/v2"
 	"testing"
 
-	"yearflow/sim/network"
 	"yearflow/sim/powerflow"
 	"yearflow/sim/powerflow/vector"
 )
@@ -15,23 +14,9 @@ import (
 func TestPartsMakeNoDifference(t *testing.T) {
 	subtrees, left, all := 0, 0, 0
 	for seed := range uint64(300) {
-		m, inj, power := randomFeeder(seed)
-		n, err := network.Build(m)
-		if err != nil {
-			t.Fatal(err)
-		}
-		s, err := powerflow.New(n, inj)
-		if err != nil {
-			t.Fatalf("seed %d: %v", seed, err)
-		}
+		n, s, _, power := randomSolver(t, seed)
 		r := rand.New(rand.NewPCG(seed, 12))
-		ratio := make([]float64, len(n.Couplings))
-		for k, c := range n.Couplings {
-			ratio[k] = 1
-			if c.Unit >= 0 {
-				ratio[k] = 1 + 0.00625*float64(r.IntN(33)-16)
-			}
-		}
+		ratio := randomRatios(r, n)
 		closed := []bool{r.IntN(2) == 0, r.IntN(2) == 0}
 		if err := s.SetDevices(ratio, closed); err != nil {
 			t.Fatal(err)

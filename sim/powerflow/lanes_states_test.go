@@ -25,15 +25,7 @@ func newReading(n *network.Network) reading {
 func TestPositionedLanesEqualTheSolver(t *testing.T) {
 	worst, left, all, moved := 0.0, 0, 0, 0
 	for seed := range uint64(300) {
-		m, inj, power := randomFeeder(seed)
-		n, err := network.Build(m)
-		if err != nil {
-			t.Fatal(err)
-		}
-		s, err := powerflow.New(n, inj)
-		if err != nil {
-			t.Fatalf("seed %d: %v", seed, err)
-		}
+		n, s, _, power := randomSolver(t, seed)
 		r := rand.New(rand.NewPCG(seed, 10))
 		lanes, alone := powerflow.NewPositionedLanes(s, largest(power)), powerflow.NewPositionedLanes(s, largest(power))
 		want, got, one := s.NewSolution(), s.NewSolution(), s.NewSolution()
@@ -43,11 +35,9 @@ func TestPositionedLanesEqualTheSolver(t *testing.T) {
 		var closed [vector.Lanes][]bool
 		for range 3 {
 			for lane := range in {
-				ratio[lane] = make([]float64, len(n.Couplings))
-				for k, c := range n.Couplings {
-					ratio[lane][k] = 1
-					if c.Unit >= 0 {
-						ratio[lane][k] = 1 + 0.00625*float64(r.IntN(33)-16)
+				ratio[lane] = randomRatios(r, n)
+				for _, x := range ratio[lane] {
+					if x != 1 {
 						moved++
 					}
 				}

@@ -7,7 +7,6 @@ import (
 	"math/rand/v2"
 	"testing"
 
-	"yearflow/sim/network"
 	"yearflow/sim/powerflow"
 	"yearflow/sim/powerflow/vector"
 )
@@ -27,23 +26,9 @@ func largest(power []complex128) []float64 {
 func TestLanesEqualTheSolver(t *testing.T) {
 	worst, left, all := 0.0, 0, 0
 	for seed := range uint64(300) {
-		m, inj, power := randomFeeder(seed)
-		n, err := network.Build(m)
-		if err != nil {
-			t.Fatal(err)
-		}
-		s, err := powerflow.New(n, inj)
-		if err != nil {
-			t.Fatalf("seed %d: %v", seed, err)
-		}
+		n, s, _, power := randomSolver(t, seed)
 		r := rand.New(rand.NewPCG(seed, 9))
-		ratio := make([]float64, len(n.Couplings))
-		for k, c := range n.Couplings {
-			ratio[k] = 1
-			if c.Unit >= 0 {
-				ratio[k] = 1 + 0.00625*float64(r.IntN(33)-16)
-			}
-		}
+		ratio := randomRatios(r, n)
 		lanes := powerflow.NewLanes(s, largest(power))
 		alone := powerflow.NewLanes(s, largest(power))
 		want, got, one := s.NewSolution(), s.NewSolution(), s.NewSolution()
@@ -183,15 +168,7 @@ func BenchmarkLanes(b *testing.B) {
 // After any row of device states the factor is, to the bit, that of the last one alone.
 func TestTheFactorDoesNotDependOnTheWay(t *testing.T) {
 	for seed := range uint64(60) {
-		m, inj, _ := randomFeeder(seed)
-		n, err := network.Build(m)
-		if err != nil {
-			t.Fatal(err)
-		}
-		s, err := powerflow.New(n, inj)
-		if err != nil {
-			t.Fatalf("seed %d: %v", seed, err)
-		}
+		n, s, _, _ := randomSolver(t, seed)
 		r := rand.New(rand.NewPCG(seed, 5))
 		ratio := make([]float64, len(n.Couplings))
 		for k := range ratio {
@@ -212,5 +189,29 @@ func TestTheFactorDoesNotDependOnTheWay(t *testing.T) {
 				t.Fatalf("seed %d, move %d: the factor differs from that of all columns", seed, move)
 			}
 		}
+	}
+}
+
+// Where injections may draw more, a smaller change is asked for, so that what they draw
+// still meets every node.
+func TestLanesExpectWhatIsDrawn(t *testing.T) {
+	s, in := demoSolver(t)
+	lanes := powerflow.NewLanes(s, largest(in.Power))
+	iterations := func(times float64) int {
+		most := largest(in.Power)
+		for k := range most {
+			most[k] *= times
+		}
+		lanes.Expect(most)
+		lanes.Input(0, in)
+		lanes.Start(1, nil, in)
+		if lanes.Solve(1, powerflow.Contract) != 1 {
+			t.Fatal("no solution")
+		}
+		return lanes.Iterations[0]
+	}
+	few, more, again := iterations(1), iterations(1e4), iterations(1)
+	if more <= few || again != few {
+		t.Errorf("%d iterations, %d where ten thousand times as much may be drawn, then %d", few, more, again)
 	}
 }

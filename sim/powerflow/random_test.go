@@ -264,23 +264,9 @@ func sources(n *network.Network) []complex128 {
 func TestDenseSolverAgrees(t *testing.T) {
 	worst := 0.0
 	for seed := range uint64(500) {
-		m, inj, power := randomFeeder(seed)
-		n, err := network.Build(m)
-		if err != nil {
-			t.Fatal(err)
-		}
-		s, err := powerflow.New(n, inj)
-		if err != nil {
-			t.Fatalf("seed %d: %v", seed, err)
-		}
+		n, s, inj, power := randomSolver(t, seed)
 		r := rand.New(rand.NewPCG(seed, 9))
-		ratio := make([]float64, len(n.Couplings))
-		for k, c := range n.Couplings {
-			ratio[k] = 1
-			if c.Unit >= 0 {
-				ratio[k] = 1 + 0.00625*float64(r.IntN(33)-16)
-			}
-		}
+		ratio := randomRatios(r, n)
 		closed := []bool{r.IntN(2) == 0, r.IntN(2) == 0}
 		if err := s.SetDevices(ratio, closed); err != nil {
 			t.Fatal(err)
@@ -311,4 +297,31 @@ func TestDenseSolverAgrees(t *testing.T) {
 		}
 	}
 	t.Logf("largest difference %.2g p.u.", worst)
+}
+
+// randomSolver is the solver of a feeder of chance, with its injections and their powers.
+func randomSolver(t *testing.T, seed uint64) (*network.Network, *powerflow.Solver, []powerflow.Injection, []complex128) {
+	t.Helper()
+	m, inj, power := randomFeeder(seed)
+	n, err := network.Build(m)
+	if err != nil {
+		t.Fatal(err)
+	}
+	s, err := powerflow.New(n, inj)
+	if err != nil {
+		t.Fatalf("seed %d: %v", seed, err)
+	}
+	return n, s, inj, power
+}
+
+// randomRatios are those of couplings whose units stand at taps of chance.
+func randomRatios(r *rand.Rand, n *network.Network) []float64 {
+	ratio := make([]float64, len(n.Couplings))
+	for k, c := range n.Couplings {
+		ratio[k] = 1
+		if c.Unit >= 0 {
+			ratio[k] = 1 + 0.00625*float64(r.IntN(33)-16)
+		}
+	}
+	return ratio
 }
